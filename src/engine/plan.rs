@@ -1,0 +1,233 @@
+//! The compiled stage file, ready to play. Built by `stage/`, played by the engine, changed by nobody.
+
+use crate::intonation::Method;
+use crate::limits::{KEYBOARDS_MAX, PARTS_MAX, SYNTHS_MAX};
+use crate::pitch::Interval;
+use crate::pitch::word::BendRange;
+use crate::time::Span;
+use crate::tuning::{Key, Tuning};
+use std::sync::Arc;
+
+/// A keyboard, by place in the plan; always below `KEYBOARDS_MAX`.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord, Hash)]
+pub struct KeyboardId(u8);
+
+/// A synth, by place in the plan; always below `SYNTHS_MAX`.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord, Hash)]
+pub struct SynthId(u8);
+
+/// A part, by place in the plan; always below `PARTS_MAX`.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord, Hash)]
+pub struct PartId(u8);
+
+macro_rules! place {
+    ($name:ident, $max:expr) => {
+        impl $name {
+            /// `None` beyond the limit.
+            pub const fn new(index: usize) -> Option<$name> {
+                if index < $max {
+                    Some($name(index as u8))
+                } else {
+                    None
+                }
+            }
+
+            pub const fn index(self) -> usize {
+                self.0 as usize
+            }
+        }
+    };
+}
+place!(KeyboardId, KEYBOARDS_MAX);
+place!(SynthId, SYNTHS_MAX);
+place!(PartId, PARTS_MAX);
+
+/// A set of MIDI channels, bit 0 = channel 1.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub struct ChannelSet(pub u16);
+
+impl ChannelSet {
+    pub const ALL: ChannelSet = ChannelSet(0xFFFF);
+    pub const NONE: ChannelSet = ChannelSet(0);
+
+    /// `channel` 0-15.
+    pub const fn has(self, channel: u8) -> bool {
+        self.0 >> channel & 1 == 1
+    }
+
+    pub const fn with(self, channel: u8) -> ChannelSet {
+        ChannelSet(self.0 | 1 << channel)
+    }
+
+    pub const fn without(self, others: ChannelSet) -> ChannelSet {
+        ChannelSet(self.0 & !others.0)
+    }
+
+    pub const fn count(self) -> u32 {
+        self.0.count_ones()
+    }
+
+    /// From the lowest channel up, 0-15.
+    pub fn iter(self) -> impl Iterator<Item = u8> {
+        (0..16).filter(move |channel| self.has(*channel))
+    }
+}
+
+/// Everything the engine needs to play an evening.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Plan {
+    /// At most `KEYBOARDS_MAX`, at least one.
+    pub keyboards: Vec<KeyboardPlan>,
+    /// At most `SYNTHS_MAX`, at least one.
+    pub synths: Vec<SynthPlan>,
+    /// At most `PARTS_MAX`, at least one.
+    pub parts: Vec<PartPlan>,
+    /// In tonight's order; at most `SONGS_MAX`, at least one.
+    pub set: Vec<SongPlan>,
+    pub cues: Vec<CuePlan>,
+    /// Whether a song whose own settings were edited takes them at once or at its next beginning.
+    pub edits_at_once: bool,
+}
+
+#[derive(Clone, Debug, PartialEq)]
+pub struct KeyboardPlan {
+    pub name: Box<str>,
+    /// Only these input channels are the keyboard; others are not heard at all.
+    pub channels: ChannelSet,
+    /// What a full push of its wheel means, in semitones, until it says otherwise by RPN 0.
+    pub wheel_semitones: u8,
+    /// False: the device is told Local Control off on set-up, and on again at the end..
+    pub local_sound: bool,
+}
+
+/// How pitch is spelt on the wire.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Dialect {
+    /// An MPE zone. Members keep a released note's pitch whatever their bend does after (MPE 1.1, 2.2.6).
+    Mpe { manager: u8 },
+    /// A multitimbral synth: every channel bends all that rings on it.
+    ChannelBend,
+}
+
+/// Which held note gives way when no channel is left.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub enum Steal {
+    /// The channel whose youngest note is the oldest.
+    #[default]
+    Oldest,
+    /// The channel whose loudest note was struck softest.
+    Quietest,
+    /// None: the new note is refused.
+    Nothing,
+}
+
+/// How a synth is left when trued stops.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub enum Leave {
+    /// As a stranger would want it: bends centred, range 2, zone off, local control on.
+    #[default]
+    Plain,
+    /// As it is, silent.
+    AsIs,
+}
+
+#[derive(Clone, Debug, PartialEq)]
+pub struct SynthPlan {
+    pub name: Box<str>,
+    pub dialect: Dialect,
+    /// Channels that carry notes: never a drum channel, never an MPE manager.
+    pub members: ChannelSet,
+    pub bend_range: BendRange,
+    /// What still rings after a note-off.
+    pub tail: Span,
+    /// Channels passed through untouched.
+    pub drums: ChannelSet,
+    /// Whether keys of equal bend may sound on one channel.
+    pub share: bool,
+    pub steal: Steal,
+    pub leave: Leave,
+    /// Time between the pieces of a set-up, so that it never holds up a key on a slow wire; zero says it all at once.
+    pub pace: Span,
+}
+
+/// Which of a player's gestures reach a part.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct Pass {
+    pub wheel: bool,
+    pub pedals: bool,
+    pub pressure: bool,
+    pub controllers: bool,
+    pub programs: bool,
+}
+
+impl Pass {
+    pub const ALL: Pass = Pass {
+        wheel: true,
+        pedals: true,
+        pressure: true,
+        controllers: true,
+        programs: true,
+    };
+}
+
+#[derive(Clone, Debug, PartialEq)]
+pub struct PartPlan {
+    /// `None`: every keyboard.
+    pub from: Option<KeyboardId>,
+    /// Input channels that belong to this part; usually all.
+    pub hears: ChannelSet,
+    /// First and last key, inclusive, as pressed.
+    pub keys: (Key, Key),
+    pub to: SynthId,
+    /// Channels of the synth that are this part's own; a subset of its members.
+    pub pool: ChannelSet,
+    pub transpose_keys: i8,
+    /// Added to every pitch of the part.
+    pub offset: Interval,
+    pub pass: Pass,
+    /// False: plays plain twelve-equal at A4 = 440 Hz, whatever the song.
+    pub tune: bool,
+    /// This part shares an MPE manager with another, so its pedals are played by late note-offs instead.
+    pub late_offs: bool,
+}
+
+#[derive(Clone, Debug, PartialEq)]
+pub struct SongPlan {
+    pub title: Box<str>,
+    /// Shared between the songs that use it; built when the plan is, never touched after.
+    pub tuning: Arc<Tuning>,
+    pub transpose_keys: i8,
+    pub method: Method,
+    /// Whole messages sent when the song begins, once nothing is held by a key: synth, channel messages.
+    pub sends: Vec<(SynthId, Box<[u8]>)>,
+}
+
+/// A gesture and what it does.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct CuePlan {
+    pub from: Option<KeyboardId>,
+    /// Input channels on which the gesture counts.
+    pub channels: ChannelSet,
+    pub gesture: Gesture,
+    pub act: Act,
+    /// The message also goes on to the synth.
+    pub pass: bool,
+}
+
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Gesture {
+    AnyProgram,
+    /// 0-127 as on the wire.
+    Program(u8),
+    /// A controller rising through 64.
+    Controller(u8),
+    /// A key going down. It sounds nothing unless `pass`.
+    Note(Key),
+}
+
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Act {
+    /// The song with the number of the program.
+    SongByProgram,
+    Command(super::traffic::Command),
+}

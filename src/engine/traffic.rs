@@ -1,0 +1,139 @@
+//! What goes into the engine and what comes out: closed lists.
+
+use super::plan::{KeyboardId, PartId, SynthId};
+use crate::pitch::Pitch;
+use crate::tuning::Key;
+
+/// One thing that happened.
+#[derive(Clone, Copy, Debug)]
+pub enum Input<'a> {
+    /// Bytes from a keyboard, in any portions: running status, cut messages and broken bytes are all right.
+    Midi {
+        keyboard: KeyboardId,
+        bytes: &'a [u8],
+    },
+    /// The keyboard's port has gone: everything it held is let go.
+    KeyboardLost(KeyboardId),
+    /// The state of a synth's port has changed. Synths start `Down`.
+    Synth { synth: SynthId, link: Link },
+    /// The player, or whoever looks after the daemon, wants something.
+    Command(Command),
+}
+
+/// A synth's port, as the driver sees it.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Link {
+    /// Nothing can be sent; what sounded there is forgotten.
+    Down,
+    /// Connected: the synth is set up at once.
+    Up,
+    /// Connected again after having been lost, or perhaps still waking: set up at once, and once more 2 s later.
+    Back,
+    /// The driver's outbox runs short: no new notes until `Easy`, everything owed still goes.
+    Tight,
+    Easy,
+}
+
+/// What can be asked of a running engine. Grows with the words of `tell`.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Command {
+    /// The n-th song of the set, from 0. Beyond the set: ignored and counted.
+    Song(u16),
+    Next,
+    Back,
+    /// Silence everything, change nothing else, set the synths up again.
+    Panic,
+    /// Set a synth up again (all of them for `None`).
+    Resend(Option<SynthId>),
+    /// A file has ended: note-offs and pedals up for what is open, nothing more.
+    End,
+    /// Going away: as `End`, and once the last tail has died each synth is left as its plan says.
+    /// `Report::stopped` tells when nothing more will come.
+    Stop,
+}
+
+/// One thing to do, in order. Drain with `poll_output` until `None` before time moves on.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Output<'a> {
+    /// One whole message, or a bundle of whole messages that go out together or not at all. Each has its status byte.
+    Send {
+        synth: SynthId,
+        weight: Weight,
+        bytes: &'a [u8],
+    },
+    /// A note has just been started by the `Send` before; for records and displays, nothing need be done.
+    Onset(Onset),
+}
+
+/// How a driver that runs short treats an output.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Weight {
+    /// Note-offs, pedals up, bends of sounding notes, set-up: never dropped, first in line.
+    Owed,
+    /// A note with all that must precede it.
+    Note,
+    /// Wheel, pressure, controllers: the newest value of each is enough.
+    Control,
+    /// Not ours: passed on in order.
+    Through,
+}
+
+/// A note as it started.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct Onset {
+    pub part: PartId,
+    pub keyboard: KeyboardId,
+    /// The key the player pressed (before any transposition).
+    pub key: Key,
+    pub velocity: u8,
+    pub synth: SynthId,
+    /// 0-15.
+    pub channel: u8,
+    /// The MIDI note number sent.
+    pub number: u8,
+    /// Where the tuning wants it; the player's wheel is not in it.
+    pub target: Pitch,
+    /// Where number and tuning bend put it.
+    pub sent: Pitch,
+}
+
+/// What gave way, and how often. All start at 0 and only grow.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub struct Counters {
+    /// Note-ons sent.
+    pub notes: u64,
+    /// Tuning bends sent (the player's wheel not counted).
+    pub bends: u64,
+    /// Notes ended early because no channel was left.
+    pub stolen: u64,
+    /// Tails bent because no other channel was left.
+    pub tails_cut: u64,
+    /// Keys that are silent in the tuning, or out of reach.
+    pub silent: u64,
+    /// New notes refused (outbox short, no voice left, synth away, or `steal: none`).
+    pub refused: u64,
+    /// Bends held at the end of their range.
+    pub clipped: u64,
+    /// Input bytes that made no message.
+    pub bad_bytes: u64,
+    /// System exclusive messages too long or cut off.
+    pub sysex_lost: u64,
+    /// Commands that could not be followed (a program beyond the set).
+    pub ignored: u64,
+    /// Note-offs for which no note was open.
+    pub orphans: u64,
+    /// Outputs dropped because the engine's own outbox was full: always 0 unless a driver fails to drain it.
+    pub overrun: u64,
+}
+
+/// A plain copy of the engine's state for status and tests.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct Report {
+    /// The song now playing, by place in the set, from 0.
+    pub song: u16,
+    /// Keys held (voices whose note-off is still to come).
+    pub voices: u16,
+    pub counters: Counters,
+    /// After `Command::Stop`: everything has been said.
+    pub stopped: bool,
+}

@@ -1,0 +1,42 @@
+//! Every bound in the house, and the proofs that they agree with each other.
+//!
+//! The engine allocates by these once, when it is made, so a plan loaded later can never need more.
+
+/// Keys of a keyboard, MIDI numbers 0-127.
+pub const KEYS: usize = 128;
+/// Channels of one MIDI port.
+pub const CHANNELS: usize = 16;
+pub const KEYBOARDS_MAX: usize = 8;
+pub const SYNTHS_MAX: usize = 8;
+pub const PARTS_MAX: usize = 16;
+/// Keys held down at once, over all keyboards and layers. Pedal-held notes do not count: their note-off is out.
+pub const VOICES_MAX: usize = 256;
+/// Songs in a set (a program change reaches 128 of them; cues reach all).
+pub const SONGS_MAX: usize = 512;
+/// Cues in one stage file.
+pub const CUES_MAX: usize = 128;
+/// Longest system exclusive message passed on whole; longer ones are dropped and counted.
+pub const SYSEX_BYTES_MAX: usize = 64 * 1024;
+/// Room in the engine for output that one input can cause.
+pub const OUTBOX_BYTES: usize = 512 * 1024;
+/// Outputs (messages or bundles) that one input can cause.
+pub const OUTBOX_ITEMS: usize = 32 * 1024;
+/// Bytes of the longest bundle that goes out whole: CC88, CC84, pressure, bend, catch-up is sent apart, note-on.
+pub const BUNDLE_BYTES_MAX: usize = 24;
+
+/// Pitch bend range a synth may be told, in semitones (MPE 1.1, 2.1).
+pub const BEND_RANGE_MAX: u8 = 96;
+pub const TAIL_MS_MAX: u64 = 60_000;
+/// Active Sensing: a keyboard that sent FE once and is then silent this long has gone (MIDI 1.0, p. 32: over 300 ms).
+pub const SENSING_MS: u64 = 330;
+/// A synth that has just come back may not hear yet: its set-up is said once more after this long.
+pub const SETTLE_MS: u64 = 2_000;
+/// A General MIDI reset is done within 100 ms (GM2 4.9.1); set-up follows then.
+pub const RESET_MS: u64 = 100;
+
+// The worst single input is a panic: every voice off, then pedals, centring and set-up on every channel of every synth.
+const _: () = assert!(VOICES_MAX + SYNTHS_MAX * CHANNELS * 160 <= OUTBOX_ITEMS);
+const _: () =
+    assert!(OUTBOX_BYTES >= SYNTHS_MAX * SYSEX_BYTES_MAX || OUTBOX_BYTES >= 2 * SYSEX_BYTES_MAX);
+const _: () = assert!(OUTBOX_ITEMS * 3 + SYSEX_BYTES_MAX <= OUTBOX_BYTES);
+const _: () = assert!(KEYBOARDS_MAX * CHANNELS <= 128 && SYNTHS_MAX * CHANNELS <= 128);

@@ -1,0 +1,104 @@
+//! The paper side: a stage file in, a plan out.
+//!
+//! **What this room is**: YAML to a tree with paths (`node`), the tree to checked types with every complaint at once
+//! (`complaint`, `locate`, `slips`), checked types to a [`Plan`](crate::engine::Plan).
+//! **Start reading at** [`Stage`].
+//! **May know** `engine/` (its plan), `tuning/`, `pitch/`, `intonation/`, `limits`.
+//! **Owns** serde_yaml. A [`Stage`] cannot be wrong.
+//! **Not here**: who reads the file again while playing (`daemon/`).
+
+pub mod complaint;
+mod locate;
+pub mod node;
+
+use crate::engine::Plan;
+use crate::engine::plan::Dialect;
+use crate::tuning::{Key, Letter, Placement, Scale, Tuning};
+use complaint::Complaint;
+use std::path::{Path, PathBuf};
+use std::sync::Arc;
+
+/// An evening that cannot be wrong: rig, tunings, set, cues, all checked.
+pub struct Stage {
+    pub name: String,
+    pub keyboards: Vec<Device>,
+    pub synths: Vec<Device>,
+    /// Tonight's order; the same song may stand twice.
+    pub set: Vec<Song>,
+    /// What is worth knowing and not wrong: wolves, reach, pins, two ports for one wish, what is not played yet.
+    pub advice: Vec<String>,
+    /// Every file that was read: the stage file first, then rig and tuning files. To be watched.
+    pub files: Vec<PathBuf>,
+    plan: Plan,
+}
+
+/// A keyboard or synth as named in the rig, in the order of the plan's ids.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Device {
+    pub name: String,
+    pub port: Wish,
+}
+
+/// Which port a device wants.
+#[derive(Clone, Debug, PartialEq)]
+pub enum Wish {
+    /// Nothing was said: keyboards take every port that fits, a synth the first one.
+    Any,
+    /// A port of our own that others connect to, named after the device.
+    Virtual,
+    /// Globs on port or device names, any case, in order of preference; `socket` is a USB place such as `1-1.3`.
+    Named {
+        globs: Vec<String>,
+        socket: Option<String>,
+    },
+}
+
+/// A song with everything that chart, check and the offline commands want to say about it.
+#[derive(Clone, Debug)]
+pub struct Song {
+    pub title: String,
+    pub tuning_name: String,
+    pub tuning_about: Option<String>,
+    pub scale: Scale,
+    pub placement: Placement,
+    /// Of the placement; shared with the plan.
+    pub tuning: Arc<Tuning>,
+    /// The keys the piece is `in`: tonic and mode as typed (`E phrygian`).
+    pub in_keys: Vec<(Letter, String)>,
+    /// What each of the twelve keys is called in this song (`Ab` or `G#`).
+    pub names: [Letter; 12],
+}
+
+impl Stage {
+    /// Reads a stage file and whatever it names (rig file, tuning folders).
+    ///
+    /// # Errors
+    /// Every complaint at once, in reading order. A file that cannot be read is one complaint with line 0.
+    pub fn read(path: &Path) -> Result<Stage, Vec<Complaint>> {
+        let _ = path;
+        todo!()
+    }
+
+    /// As `read`, for a text already in hand; `path` is where it is said to come from.
+    pub fn parse(path: &Path, text: &str) -> Result<Stage, Vec<Complaint>> {
+        let _ = (path, text);
+        todo!()
+    }
+
+    /// A plan for the live engine.
+    pub fn plan(&self) -> Box<Plan> {
+        Box::new(self.plan.clone())
+    }
+
+    /// The same plan for a file's clock: set-up is said all at once, so that it stands before the first note.
+    pub fn plan_offline(&self) -> Box<Plan> {
+        let mut plan = self.plan.clone();
+        for synth in &mut plan.synths {
+            synth.pace = crate::time::Span::ZERO;
+        }
+        Box::new(plan)
+    }
+}
+
+#[allow(unused_imports)]
+use {Dialect as _, Key as _};

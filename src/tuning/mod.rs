@@ -1,0 +1,36 @@
+//! Scales and temperaments, and the keys they fall on.
+//!
+//! **What this room is**: the ways a tuning can be described ([`Scale`]), where one is put ([`Placement`]), and the 128
+//! pitches that come out ([`Tuning`]).
+//! **Start reading at** [`Scale`] and [`Scale::tune`].
+//! **May know** `pitch/`, `limits`.
+//! **Owns**: a [`Tuning`] never changes once built; a tuning by letter never moves because of the key a piece is in.
+//! **Not here**: how players write a tuning (`stage/`), what a chord makes of it (`intonation/`).
+
+mod key;
+mod letter;
+mod scale;
+
+pub use key::Key;
+pub use letter::Letter;
+pub use scale::{ByLetter, FromTonic, KeyMap, Pin, Placement, Scale, TuneError};
+
+use crate::limits::KEYS;
+use crate::pitch::Pitch;
+
+/// 128 keys, each with a pitch or silent.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub struct Tuning {
+    keys: [Option<Pitch>; KEYS],
+}
+
+impl Tuning {
+    pub const fn new(keys: [Option<Pitch>; KEYS]) -> Tuning {
+        Tuning { keys }
+    }
+
+    /// The pitch of a key, or `None` where the key is silent.
+    pub fn pitch(&self, key: Key) -> Option<Pitch> {
+        self.keys[key.number() as usize]
+    }
+}
