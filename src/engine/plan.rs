@@ -96,8 +96,6 @@ pub struct KeyboardPlan {
     pub channels: ChannelSet,
     /// What a full push of its wheel means, in semitones, until it says otherwise by RPN 0.
     pub wheel_semitones: u8,
-    /// False: the device is told Local Control off on set-up, and on again at the end..
-    pub local_sound: bool,
 }
 
 /// How pitch is spelt on the wire.
@@ -142,6 +140,8 @@ pub struct SynthPlan {
     pub tail: Span,
     /// Channels passed through untouched.
     pub drums: ChannelSet,
+    /// The device is also a keyboard whose own sound is to be off: it is told Local Control off on set-up, on at the end.
+    pub local_off: bool,
     /// Whether keys of equal bend may sound on one channel.
     pub share: bool,
     pub steal: Steal,
@@ -198,7 +198,8 @@ pub struct SongPlan {
     pub tuning: Arc<Tuning>,
     pub transpose_keys: i8,
     pub method: Method,
-    /// Whole messages sent when the song begins, once nothing is held by a key: synth, channel messages.
+    /// Whole messages given to a synth when the song begins, once no key is held, as if a player of it had sent them:
+    /// their own channel is ignored, the synth's parts spread them as they do a player's.
     pub sends: Vec<(SynthId, Box<[u8]>)>,
 }
 
