@@ -7,13 +7,15 @@
 //! **Owns**: a [`Tuning`] never changes once built; a tuning by letter never moves because of the key a piece is in.
 //! **Not here**: how players write a tuning (`stage/`), what a chord makes of it (`intonation/`).
 
+mod by_letter;
 mod key;
 mod letter;
 mod scale;
 
+pub use by_letter::{ByLetter, near_key};
 pub use key::Key;
 pub use letter::Letter;
-pub use scale::{ByLetter, FromTonic, KeyMap, Pin, Placement, Scale, TuneError};
+pub use scale::{FromTonic, KeyMap, Pin, Placement, Scale, TonicWanted, TuneError};
 
 use crate::limits::KEYS;
 use crate::pitch::Pitch;

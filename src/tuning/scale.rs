@@ -1,7 +1,8 @@
 //! The two kinds of tuning, and where one is put to become 128 pitches.
 
-use super::{Key, Letter, Tuning};
-use crate::pitch::{Hertz, Log};
+use super::{ByLetter, Key, Letter, Tuning};
+use crate::limits::KEYS;
+use crate::pitch::{Hertz, Interval, Log};
 
 /// A tuning as described, not yet put anywhere.
 #[derive(Clone, Debug, PartialEq)]
@@ -10,20 +11,6 @@ pub enum Scale {
     ByLetter(ByLetter),
     /// Step 0 sits on the song's tonic.
     FromTonic(FromTonic),
-}
-
-/// Twelve named keys, repeating at the octave.
-#[derive(Clone, Debug, PartialEq)]
-pub struct ByLetter {
-    /// For each pitch class from C: its place above the C of its octave; `None` is silent. Need not rise.
-    pub places: [Option<Log>; 12],
-    /// What each key is called in this tuning.
-    pub names: [Letter; 12],
-    /// The pitch class the description starts from: C, or the tonic that `notes` gives for itself.
-    pub home: u8,
-    /// Every name of a chain of fifths with its place above C, when it was written as a chain (it may be longer than
-    /// twelve: two names for one key).
-    pub chain: Vec<(Letter, Log)>,
 }
 
 /// Steps counted from 0 at the tonic, repeating at a period.
@@ -78,12 +65,118 @@ pub enum TuneError {
     NothingSounds,
 }
 
+/// What a tuning takes as the tonic a song names.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum TonicWanted {
+    /// By letter: the key a piece is in changes nothing.
+    Nothing,
+    /// Twelve keys to the period: a letter says it all.
+    Letter,
+    /// Any other count of keys: a key with its octave.
+    Key,
+}
+
 impl Scale {
     /// The 128 pitches.
     ///
     /// # Errors
     /// Where the pinned key is silent, or nothing sounds.
-    pub fn tune(&self, _placement: &Placement) -> Result<Tuning, TuneError> {
-        todo!()
+    pub fn tune(&self, placement: &Placement) -> Result<Tuning, TuneError> {
+        match (self, placement.turned_to) {
+            (Scale::ByLetter(scale), Some(letter)) => {
+                let turned = scale.turned(letter);
+                put(placement, turned.home_key(), |key| turned.place_of_key(key))
+            }
+            (Scale::ByLetter(scale), None) => {
+                put(placement, scale.home_key(), |key| scale.place_of_key(key))
+            }
+            (Scale::FromTonic(scale), _) => {
+                let tonic = placement.tonic.unwrap_or(scale.default_tonic());
+                put(placement, tonic, |key| scale.place_of_key(key, tonic))
+            }
+        }
+    }
+
+    /// Whether a song may name a tonic for this tuning, and how.
+    pub fn tonic_wanted(&self) -> TonicWanted {
+        match self {
+            Scale::ByLetter(_) => TonicWanted::Nothing,
+            Scale::FromTonic(scale) if scale.keys_to_period() == 12 => TonicWanted::Letter,
+            Scale::FromTonic(_) => TonicWanted::Key,
+        }
+    }
+
+    /// The key a `tonic` letter means: the one in the octave from middle C.
+    pub fn tonic_key(letter: Letter) -> Key {
+        Key::C4
+            .moved(letter.pitch_class() as i32)
+            .expect("the octave above C4 is on the keyboard")
     }
 }
+
+impl FromTonic {
+    /// The key that has step 0 where no song names a tonic.
+    pub fn default_tonic(&self) -> Key {
+        match &self.map {
+            KeyMap::EachKey => Key::C4,
+            KeyMap::Letters { home, .. } => Key::C4
+                .moved(*home as i32)
+                .expect("the octave above C4 is on the keyboard"),
+            KeyMap::Keys { start, .. } => *start,
+        }
+    }
+
+    /// After how many keys the scale repeats.
+    pub fn keys_to_period(&self) -> usize {
+        match &self.map {
+            KeyMap::EachKey => self.steps.len(),
+            KeyMap::Letters { .. } => 12,
+            KeyMap::Keys { steps, .. } => steps.len(),
+        }
+    }
+
+    /// Where a key stands above step 0, or `None` where it is silent.
+    fn place_of_key(&self, key: Key, tonic: Key) -> Option<Log> {
+        let above = key.number() as i64 - tonic.number() as i64;
+        let every = self.keys_to_period() as i64;
+        let (times, within) = (above.div_euclid(every), above.rem_euclid(every) as usize);
+        let step = match &self.map {
+            KeyMap::EachKey => within,
+            KeyMap::Letters { home, steps } => steps[(*home as usize + within) % 12]? as usize,
+            KeyMap::Keys { steps, .. } => steps[within]? as usize,
+        };
+        let count = self.steps.len();
+        let periods = times + (step / count) as i64;
+        let change = self.changes[key.pitch_class() as usize];
+        Some(self.steps[step % count] + self.period.times(periods) + change)
+    }
+}
+
+/// Lays places out over the keyboard so that the pinned key stands where it should.
+fn put(
+    placement: &Placement,
+    tonic: Key,
+    place: impl Fn(Key) -> Option<Log>,
+) -> Result<Tuning, TuneError> {
+    if Key::all().all(|key| place(key).is_none()) {
+        return Err(TuneError::NothingSounds);
+    }
+    let pinned = match placement.pin {
+        Pin::Key => placement.reference,
+        Pin::Tonic => tonic,
+    };
+    let zero = place(pinned).ok_or(TuneError::SilentReference(pinned))?;
+    let semitones = pinned.number() as i64 - placement.reference.number() as i64;
+    let pinned_at = placement.hertz.pitch() + Interval::SEMITONE * semitones;
+
+    let mut keys = [None; KEYS];
+    for key in Key::all() {
+        // Rounded here and nowhere before.
+        keys[key.number() as usize] = place(key).map(|at| pinned_at + (at - zero).interval());
+    }
+    Ok(Tuning::new(keys))
+}
+
+#[cfg(test)]
+#[path = "scale_tests.rs"]
+mod tests;
