@@ -1,0 +1,17 @@
+//! What the tests share: an independent receiver, a rig that drives the engine on a scripted clock, published figures.
+
+/// A small seeded generator, so that a failure can be played again.
+pub mod dice;
+/// Plans put together by hand, for tests that need no stage file.
+pub mod plans;
+/// Hears what was sent and says what sounded; knows nothing of trued.
+pub mod receiver;
+/// Engine, scripted clock and receivers; scripts in, transcripts out.
+pub mod rig;
+
+/// Bytes written as in the standards: `90 3C 64`.
+pub fn hex(text: &str) -> Vec<u8> {
+    text.split_whitespace()
+        .map(|byte| u8::from_str_radix(byte, 16).expect("two hexadecimal digits"))
+        .collect()
+}

@@ -1,0 +1,162 @@
+//! The engine on a scripted clock, with an independent receiver on every synth port.
+
+use super::receiver::{Hold, Kind, Receiver};
+use std::fmt::Write;
+use std::time::Duration;
+use trued::engine::plan::Dialect;
+use trued::engine::{
+    Command, Engine, Input, KeyboardId, Link, Onset, Output, Plan, SynthId, Weight,
+};
+use trued::time::Time;
+
+/// Strange on purpose, so that a range never told is heard at once.
+const RANGE_AT_POWER_ON: u8 = 7;
+/// Deadlines at one moment, before a test calls it a loop.
+const DEADLINES_MAX: usize = 100_000;
+
+/// What went out.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub struct Sent {
+    pub at: Time,
+    pub synth: usize,
+    pub weight: Weight,
+    pub bytes: Vec<u8>,
+}
+
+pub struct Rig {
+    pub engine: Engine,
+    pub now: Time,
+    /// One for each synth of the plan.
+    pub receivers: Vec<Receiver>,
+    pub sent: Vec<Sent>,
+    pub onsets: Vec<(Time, Onset)>,
+}
+
+impl Rig {
+    /// Synths are still down.
+    pub fn new(plan: &Plan) -> Rig {
+        let receivers = plan.synths.iter().map(|synth| {
+            let kind = match synth.dialect {
+                Dialect::Mpe { .. } => Kind::Mpe,
+                Dialect::ChannelBend => Kind::Plain,
+            };
+            let tail = Duration::from_nanos(synth.tail.nanos());
+            Receiver::new(kind, tail, RANGE_AT_POWER_ON)
+        });
+        Rig {
+            receivers: receivers.collect(),
+            engine: Engine::new(Box::new(plan.clone())),
+            now: Time::START,
+            sent: Vec::new(),
+            onsets: Vec::new(),
+        }
+    }
+
+    /// All synths are up and set up; the clock stands where set-up has been said.
+    pub fn ready(plan: &Plan) -> Rig {
+        let mut rig = Rig::new(plan);
+        for place in 0..plan.synths.len() {
+            rig.link(place, Link::Up);
+        }
+        rig
+    }
+
+    /// Runs every deadline up to `at`, each at its own time.
+    pub fn until(&mut self, at: Time) {
+        let mut deadlines = 0;
+        while let Some(due) = self.engine.poll_timeout().filter(|due| *due <= at) {
+            self.now = self.now.max(due);
+            self.engine.handle_timeout(self.now);
+            self.drain();
+            deadlines += 1;
+            assert!(
+                deadlines < DEADLINES_MAX,
+                "deadlines without end at {:?}",
+                self.now
+            );
+        }
+        self.now = self.now.max(at);
+    }
+
+    /// Time stands still; the next input comes at this very moment.
+    pub fn input(&mut self, input: Input<'_>) {
+        self.engine.handle_input(self.now, input);
+        self.drain();
+    }
+
+    pub fn midi(&mut self, keyboard: usize, bytes: &[u8]) {
+        self.input(Input::Midi {
+            keyboard: keyboard_id(keyboard),
+            bytes,
+        });
+    }
+
+    pub fn command(&mut self, command: Command) {
+        self.input(Input::Command(command));
+    }
+
+    /// A synth that comes up has just been switched on.
+    pub fn link(&mut self, place: usize, link: Link) {
+        if link == Link::Down {
+            self.receivers[place].power_cycle(elapsed(self.now));
+        }
+        let synth = SynthId::new(place).expect("a synth of the plan");
+        self.input(Input::Synth { synth, link });
+    }
+
+    pub fn plan(&mut self, plan: &Plan) {
+        let old = self.engine.handle_plan(self.now, Box::new(plan.clone()));
+        drop(old);
+        self.drain();
+    }
+
+    /// The receiver of the first synth.
+    pub fn heard(&self) -> &Receiver {
+        &self.receivers[0]
+    }
+
+    /// Every byte sent, in order, with time and port.
+    pub fn transcript_of_bytes(&self) -> String {
+        let mut out = String::new();
+        for sent in &self.sent {
+            let _ = write!(out, "{} {}:", sent.at.nanos(), sent.synth);
+            for byte in &sent.bytes {
+                let _ = write!(out, " {byte:02X}");
+            }
+            out.push('\n');
+        }
+        out
+    }
+
+    fn drain(&mut self) {
+        let at = self.now;
+        while let Some(output) = self.engine.poll_output() {
+            match output {
+                Output::Send {
+                    synth,
+                    weight,
+                    bytes,
+                } => {
+                    let synth = synth.index();
+                    self.receivers[synth].hear(elapsed(at), bytes);
+                    self.sent.push(Sent {
+                        at,
+                        synth,
+                        weight,
+                        bytes: bytes.to_vec(),
+                    });
+                }
+                Output::Onset(onset) => self.onsets.push((at, onset)),
+            }
+        }
+    }
+}
+
+/// The receiver's own kind of time.
+pub fn elapsed(at: Time) -> Duration {
+    Duration::from_nanos(at.nanos())
+}
+
+pub fn keyboard_id(place: usize) -> KeyboardId {
+    KeyboardId::new(place).expect("a keyboard of the plan")
+}
