@@ -14,7 +14,10 @@ mod rehearse;
 mod retune;
 mod run;
 
+use crate::stage::Stage;
 use clap::{Parser, Subcommand};
+use std::io::Write;
+use std::path::Path;
 use std::process::ExitCode;
 
 /// Gives every note of a keyboard the pitch the song asks for.
@@ -23,7 +26,20 @@ use std::process::ExitCode;
     name = "trued",
     version,
     propagate_version = true,
-    arg_required_else_help = true
+    arg_required_else_help = true,
+    disable_help_subcommand = true,
+    after_help = "\
+Examples:
+  trued rehearse                             hear what it does; no keyboard or synth needed
+  trued ports --stage > evening.yaml         a stage file from what is plugged in
+  trued check evening.yaml                   what is wrong with it, and what to expect
+  trued run evening.yaml                     play
+  trued chart --tuning vallotti              what every key sounds
+  trued retune evening.yaml in.mid out.mid   the same for a MIDI file
+
+Ends with 0 when done, 64 for a wrong command line, 65 for a file with mistakes in it, 66 for a file that is not there,
+69 when ports or a sound system are missing, 70 for a bug of ours, 74 when reading or writing failed.
+Colours are left out when NO_COLOR is set."
 )]
 struct Trued {
     #[command(subcommand)]
@@ -32,15 +48,56 @@ struct Trued {
 
 #[derive(Subcommand)]
 enum Command {
+    /// Plays a score through the real engine into a built-in synth; no hardware needed
+    #[command(after_help = "\
+Examples:
+  trued rehearse                              the demo, into the folder rehearsal
+  trued rehearse rehearsal/stage.yaml         the demo again after you changed its stage file
+  trued rehearse evening.yaml hymn.mid --out hymn-tonight
+
+Writes rehearsal.mid (what the synth was told), .wav (what it sounds like), .svg (a picture of it) and .jsonl
+(one line a note), and measures from the .wav what there is to hear. Nothing is played aloud.")]
     Rehearse(rehearse::Args),
+    /// Plays: keyboards in, synths out, until it is told to stop
+    #[command(after_help = "\
+Example:
+  trued run evening.yaml
+
+Volume down before the first note. Ctrl-C or SIGTERM ends it cleanly: nothing is left sounding.")]
     Run(run::Args),
+    /// Reads a stage file and says what is wrong with it, or what to expect of it
+    #[command(after_help = "\
+Examples:
+  trued check evening.yaml
+  trued check evening.yaml --defaults         with everything you did not say")]
     Check(check::Args),
+    /// Says what every key sounds, for a song or for a tuning by name
+    #[command(after_help = "\
+Examples:
+  trued chart evening.yaml --song 'Lantern hymn'
+  trued chart --tuning werckmeister-3 --pitch 415
+  trued chart --list")]
     Chart(chart::Args),
+    /// Plays a MIDI file through the engine into a file
+    #[command(after_help = "\
+Examples:
+  trued retune evening.yaml in.mid out.mid
+  trued retune evening.yaml in.mid out.wav out.svg out.jsonl --song 'Lantern hymn'
+
+What is written goes by the ending: .mid MIDI with every input time and the division kept, .wav what it sounds like,
+.svg a picture of the notes and where they stand, .jsonl one line a note.")]
     Retune(retune::Args),
+    /// Says what is connected, and which of it a stage file would use
+    #[command(after_help = "\
+Examples:
+  trued ports
+  trued ports --watch                         press something: each gesture as a line to paste
+  trued ports --stage > evening.yaml")]
     Ports(ports::Args),
 }
 
 /// Why a command could not do what was asked: one clear text for stderr, and the exit code.
+#[derive(Debug)]
 pub struct Failure {
     pub code: u8,
     pub text: String,
@@ -51,6 +108,7 @@ impl Failure {
     pub const DATA: u8 = 65;
     pub const NO_INPUT: u8 = 66;
     pub const UNAVAILABLE: u8 = 69;
+    pub const BUG: u8 = 70;
     pub const IO: u8 = 74;
 
     pub fn new(code: u8, text: impl Into<String>) -> Failure {
@@ -58,6 +116,24 @@ impl Failure {
             code,
             text: text.into(),
         }
+    }
+
+    /// A file that could not be opened or read.
+    pub fn unread(path: &Path, error: &std::io::Error) -> Failure {
+        let (code, why) = match error.kind() {
+            std::io::ErrorKind::NotFound => (Failure::NO_INPUT, "there is no such file".into()),
+            std::io::ErrorKind::IsADirectory => {
+                (Failure::NO_INPUT, "that is a folder, not a file".into())
+            }
+            _ => (Failure::IO, format!("cannot be read: {error}")),
+        };
+        Failure::new(code, format!("{}: {why}", path.display()))
+    }
+
+    /// A file that could not be written.
+    pub fn unwritten(path: &Path, error: &std::io::Error) -> Failure {
+        let text = format!("{}: cannot be written: {error}", path.display());
+        Failure::new(Failure::IO, text)
     }
 }
 
@@ -74,19 +150,52 @@ pub fn run() -> ExitCode {
             });
         }
     };
-    let done = match arguments.command {
+    // A panic is a bug of ours; the hook has already said where. Nothing of the command is used again afterwards.
+    match std::panic::catch_unwind(|| dispatch(arguments.command)) {
+        Ok(Ok(())) => ExitCode::SUCCESS,
+        Ok(Err(failure)) => {
+            eprintln!("{}", failure.text.trim_end());
+            ExitCode::from(failure.code)
+        }
+        Err(_) => {
+            eprintln!("trued: this is a bug in trued, not a mistake of yours");
+            ExitCode::from(Failure::BUG)
+        }
+    }
+}
+
+fn dispatch(command: Command) -> Result<(), Failure> {
+    match command {
         Command::Rehearse(args) => rehearse::run(args),
         Command::Run(args) => run::run(args),
         Command::Check(args) => check::run(args),
         Command::Chart(args) => chart::run(args),
         Command::Retune(args) => retune::run(args),
         Command::Ports(args) => ports::run(args),
-    };
-    match done {
-        Ok(()) => ExitCode::SUCCESS,
-        Err(failure) => {
-            eprintln!("{}", failure.text.trim_end());
-            ExitCode::from(failure.code)
-        }
+    }
+}
+
+/// A stage file, or all complaints about it, one a line.
+pub fn read_stage(path: &Path) -> Result<Stage, Failure> {
+    // Looked at first, so that a missing file has its own exit code.
+    std::fs::File::open(path).map_err(|error| Failure::unread(path, &error))?;
+    Stage::read(path).map_err(|complaints| {
+        let lines: Vec<String> = complaints.iter().map(|c| c.to_string()).collect();
+        Failure::new(Failure::DATA, lines.join("\n"))
+    })
+}
+
+/// Data for stdout. A reader that has seen enough (`| head`) is no error.
+pub fn print(text: &str) -> Result<(), Failure> {
+    let mut stdout = std::io::stdout().lock();
+    match stdout
+        .write_all(text.as_bytes())
+        .and_then(|()| stdout.flush())
+    {
+        Err(error) if error.kind() != std::io::ErrorKind::BrokenPipe => Err(Failure::new(
+            Failure::IO,
+            format!("standard output cannot be written: {error}"),
+        )),
+        _ => Ok(()),
     }
 }
