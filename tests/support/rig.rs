@@ -1,6 +1,6 @@
 //! The engine on a scripted clock, with an independent receiver on every synth port.
 
-use super::receiver::{Hold, Kind, Receiver};
+use super::receiver::{Kind, Receiver};
 use std::fmt::Write;
 use std::time::Duration;
 use trued::engine::plan::Dialect;

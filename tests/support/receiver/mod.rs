@@ -8,9 +8,9 @@ mod stream;
 mod vectors;
 mod zone;
 
-use channel::{BEND, Channel, Entry, PRESSURE, PROGRAM};
+use channel::{BEND, Channel, PRESSURE, PROGRAM};
 use std::time::Duration;
-use stream::Stream;
+pub use stream::Stream;
 
 /// What kind of synth listens.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
