@@ -6,5 +6,8 @@ mod support;
 /// Bytes to messages, and parameter sequences, against printed examples.
 mod midi_stream;
 
+/// A counting allocator: the engine takes nothing from the heap once it is made.
+mod no_alloc;
+
 /// Arrows between rooms, banned words in the core, file length.
 mod tidy;

@@ -1,6 +1,7 @@
 //! What a key means in the chord now sounding.
 //!
 //! **What this room is**: the methods by which a song's tuning meets its harmony ([`Method`]).
+//! **Start reading at** [`Method`].
 //! **May know** `pitch/`, `tuning/`, `time`, `limits`.
 //! **Owns**: `fixed` is the tuning at rest, exactly.
 //! **Not here**: which channel carries the result (`engine/`). Methods that follow the chord are described and checked

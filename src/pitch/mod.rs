@@ -3,7 +3,7 @@
 //! **What this room is**: points ([`Pitch`]) and differences ([`Interval`]) on the line of pitch, in microcents; exact
 //! ratios turned into them ([`Log`]); the words that spell a pitch on the wire ([`word`]).
 //! **Start reading at** [`Pitch`], then `ratio.rs`.
-//! **May know** nothing.
+//! **May know** `limits`.
 //! **Owns**: the same input gives the same integer on every machine. No floating point decides anything; `f64` appears
 //! only to print hertz and cents for people.
 //! **Not here**: keys and letters (`tuning/`), which bytes carry a word (`midi/`).
