@@ -1,53 +1,408 @@
 //! The engine: bytes and times in, bytes and a deadline out.
 //!
 //! **What this room is**: the one thing that plays. Live, offline and under test it is the same.
-//! **Start reading at** [`Engine`], then `traffic.rs`, `plan.rs`.
+//! **Start reading at** [`Engine`], then `traffic.rs` (what goes in and out), `plan.rs`, `notes.rs`, `choose.rs`.
 //! **May know** `pitch/`, `midi/`, `tuning/`, `intonation/`, `time`, `limits`.
 //! **Owns** the nine promises; each is counted in [`Counters`] where it must give way.
 //! **Not here**: the stage file (`stage/`), ports and clocks (`ports/`), files (`offline/`).
 
+mod channel;
+mod choose;
+mod controls;
+mod dialect;
+mod keyboard;
+mod notes;
+mod outbox;
+mod part;
 pub mod plan;
+mod setup;
+mod songs;
+mod synth;
 pub mod traffic;
+mod voices;
 
 pub use plan::{KeyboardId, PartId, Plan, SynthId};
 pub use traffic::{Command, Counters, Input, Link, Onset, Output, Report, Weight};
 
-use crate::time::Time;
+use crate::limits::{KEYBOARDS_MAX, PARTS_MAX, RESET_MS, SYNTHS_MAX};
+use crate::midi::{Message, Splitter};
+use crate::time::{Span, Time};
+use crate::tuning::{Key, Tuning};
+use keyboard::{Keyboard, Source};
+use outbox::Outbox;
+use part::Part;
+use plan::{Gesture, PartPlan, SongPlan};
+use songs::Heard;
+use synth::{Rig, Synth};
+use voices::{Voice, Voices};
 
-pub struct Engine {}
+/// Turns what a player does into what synths are told.
+///
+/// One thing goes in (`handle_input`, `handle_timeout` or `handle_plan`), then `poll_output` is drained to `None`, then
+/// `poll_timeout` says when to come back. Nothing is allocated after [`Engine::new`].
+pub struct Engine {
+    plan: Box<Plan>,
+    /// Place in the set of the song now playing.
+    song: usize,
+    /// Its own settings, copied, so that they outlive the plan they came from.
+    playing: Playing,
+    keyboards: Vec<Keyboard>,
+    parts: Vec<Part>,
+    synths: Vec<Synth>,
+    voices: Voices,
+    out: Outbox,
+    strikes: u64,
+    sends_due: bool,
+    stepped_at: Option<Time>,
+    stopping: bool,
+}
+
+/// What of a song decides pitch.
+struct Playing {
+    tuning: Tuning,
+    transpose_keys: i8,
+}
+
+impl Playing {
+    fn of(song: &SongPlan) -> Playing {
+        Playing {
+            tuning: (*song.tuning).clone(), // an array: no heap
+            transpose_keys: song.transpose_keys,
+        }
+    }
+}
+
+/// One channel of one keyboard, as far as a player's hand can be told apart.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+struct Hand {
+    keyboard: KeyboardId,
+    channel: u8,
+}
+
+impl Hand {
+    fn new(keyboard: usize, channel: u8) -> Option<Hand> {
+        KeyboardId::new(keyboard).map(|keyboard| Hand { keyboard, channel })
+    }
+
+    fn is_of(self, voice: &Voice) -> bool {
+        voice.keyboard == self.keyboard && voice.heard_on == self.channel
+    }
+}
 
 impl Engine {
-    /// The only allocation.
-    pub fn new(_plan: Box<Plan>) -> Engine {
-        todo!()
+    /// The only allocation: all tables at the size of `limits.rs`, whatever the plan needs now.
+    ///
+    /// # Panics
+    /// If the plan breaks its own limits or its set is empty; `stage/` never makes such a plan.
+    pub fn new(plan: Box<Plan>) -> Engine {
+        let keyboards = (0..KEYBOARDS_MAX)
+            .map(|index| Keyboard::new(wheel_semitones(&plan, index)))
+            .collect();
+        let rig = |index: usize| Rig::of(plan.synths.get(index).unwrap_or(&plan.synths[0]));
+        let synths = (0..SYNTHS_MAX)
+            .map(|index| Synth::new(SynthId::new(index).expect("within limits"), rig(index)))
+            .collect();
+        Engine {
+            song: 0,
+            playing: Playing::of(&plan.set[0]),
+            sends_due: !plan.set[0].sends.is_empty(),
+            keyboards,
+            parts: vec![Part::NEW; PARTS_MAX],
+            synths,
+            voices: Voices::new(),
+            out: Outbox::new(),
+            strikes: 0,
+            stepped_at: None,
+            stopping: false,
+            plan,
+        }
     }
 
     /// Cannot fail; bad bytes are counted.
-    pub fn handle_input(&mut self, _now: Time, _input: Input<'_>) {
-        todo!()
+    pub fn handle_input(&mut self, now: Time, input: Input<'_>) {
+        match input {
+            Input::Midi { keyboard, bytes } => self.bytes_in(now, keyboard, bytes),
+            Input::KeyboardLost(keyboard) => self.let_go(now, keyboard),
+            Input::Synth { synth, link } if synth.index() < self.plan.synths.len() => {
+                self.link_changed(now, synth, link);
+            }
+            Input::Synth { .. } => self.out.counters.ignored += 1,
+            Input::Command(command) => self.command(now, command),
+        }
+        self.send_song(now);
     }
 
     /// To be called once `poll_timeout` has come; harmless earlier.
-    pub fn handle_timeout(&mut self, _now: Time) {
-        todo!()
+    pub fn handle_timeout(&mut self, now: Time) {
+        for index in 0..self.plan.keyboards.len() {
+            if self.keyboards[index].gone_at().is_some_and(|at| at <= now) {
+                self.keyboards[index].sensed_at = None;
+                self.let_go(now, KeyboardId::new(index).expect("within limits"));
+            }
+        }
+        for index in 0..self.plan.synths.len() {
+            let id = self.synths[index].id;
+            if self.synths[index].again_at.is_some_and(|at| at <= now) {
+                self.synths[index].again_at = None;
+                self.set_up(now, id);
+            }
+            self.say_pieces(now, id);
+        }
+        self.when_silent(now);
+        self.send_song(now);
     }
 
     /// A new plan takes over between two messages. The old one comes back, to be dropped off the hot path.
-    pub fn handle_plan(&mut self, _now: Time, _plan: Box<Plan>) -> Box<Plan> {
-        todo!()
+    ///
+    /// Nothing that sounds is disturbed. The song is found again by title and keeps its own settings until it is begun
+    /// again, unless the plan says that edits count at once. A synth whose rig changed takes it on once silent.
+    pub fn handle_plan(&mut self, now: Time, plan: Box<Plan>) -> Box<Plan> {
+        self.swap_plan(now, plan)
     }
 
     /// Drain to `None` before time moves on.
     pub fn poll_output(&mut self) -> Option<Output<'_>> {
-        todo!()
+        self.out.take()
     }
 
     /// When `handle_timeout` is next due.
     pub fn poll_timeout(&self) -> Option<Time> {
-        todo!()
+        let keyboards = self.keyboards.iter().take(self.plan.keyboards.len());
+        let synths = self.synths.iter().take(self.plan.synths.len());
+        let sensing = keyboards.filter_map(Keyboard::gone_at);
+        let due = synths.filter_map(|synth| synth.due_at(self.stopping));
+        sensing.chain(due).min()
     }
 
     pub fn report(&self) -> Report {
-        todo!()
+        let mut synths = self.synths.iter().take(self.plan.synths.len());
+        Report {
+            song: self.song as u16,
+            voices: self.voices.len() as u16,
+            counters: self.out.counters,
+            stopped: self.stopping && synths.all(|synth| synth.left || !synth.up),
+        }
     }
+
+    fn bytes_in(&mut self, now: Time, id: KeyboardId, bytes: &[u8]) {
+        if id.index() >= self.plan.keyboards.len() {
+            self.out.counters.bad_bytes += bytes.len() as u64;
+            return;
+        }
+        // The splitter lends out messages while the rest of the engine acts on them.
+        let keyboard = &mut self.keyboards[id.index()];
+        if keyboard.sensed_at.is_some() {
+            keyboard.sensed_at = Some(now);
+        }
+        let mut splitter = std::mem::replace(&mut keyboard.splitter, Splitter::lent());
+        for byte in bytes {
+            if let Some(message) = splitter.push(*byte) {
+                self.message_in(now, id, message);
+            }
+        }
+        self.out.counters.bad_bytes += splitter.take_bad_bytes();
+        self.out.counters.sysex_lost += splitter.take_sysex_lost();
+        self.keyboards[id.index()].splitter = splitter;
+    }
+
+    fn message_in(&mut self, now: Time, id: KeyboardId, message: Message<'_>) {
+        let channel = match message {
+            Message::NoteOn { channel, .. }
+            | Message::NoteOff { channel, .. }
+            | Message::PolyPressure { channel, .. }
+            | Message::Controller { channel, .. }
+            | Message::Program { channel, .. }
+            | Message::Pressure { channel, .. }
+            | Message::PitchBend { channel, .. } => channel,
+            Message::Sysex(bytes) => return self.sysex_in(now, id, bytes),
+            Message::Common(bytes) => return self.pass_on(id, bytes),
+            Message::RealTime(0xFE) => {
+                self.keyboards[id.index()].sensed_at = Some(now);
+                return;
+            }
+            Message::RealTime(0xFF) => return self.let_go(now, id), // System Reset: obeyed, never echoed
+            Message::RealTime(byte) => return self.pass_on(id, &[byte]),
+        };
+        if !self.plan.keyboards[id.index()].channels.has(channel) {
+            return;
+        }
+        let hand = Hand {
+            keyboard: id,
+            channel,
+        };
+        self.gesture_in(now, hand, message);
+    }
+
+    fn gesture_in(&mut self, now: Time, hand: Hand, message: Message<'_>) {
+        let heard = self.heard(hand, message);
+        if heard.is_some_and(|heard| self.cue(now, hand, heard)) {
+            return;
+        }
+        self.pass_drums(hand, message);
+        let key = |key| Key::new(key).expect("MIDI keys are 0-127");
+        match message {
+            Message::NoteOn {
+                key: k, velocity, ..
+            } => self.key_down(now, hand, key(k), velocity),
+            Message::NoteOff {
+                key: k, velocity, ..
+            } => self.key_up(now, hand, key(k), velocity),
+            Message::PolyPressure { key: k, value, .. } => {
+                self.poly_pressure_in(hand, key(k), value);
+            }
+            Message::Controller { number, value, .. } => {
+                self.controller_in(now, hand, number, value);
+            }
+            Message::Program { number, .. } => self.program_in(now, hand, number),
+            Message::Pressure { value, .. } => self.pressure_in(now, hand, value),
+            Message::PitchBend { bend, .. } => self.wheel_in(now, hand, bend),
+            Message::Sysex(_) | Message::Common(_) | Message::RealTime(_) => {}
+        }
+    }
+
+    /// The gesture in a message, if it can be one.
+    fn heard(&mut self, hand: Hand, message: Message<'_>) -> Option<Heard> {
+        match message {
+            Message::Program { number, .. } => Some(Heard::Program(number)),
+            Message::Controller { number, value, .. } => {
+                let latest = &mut self.source(hand).latest[number as usize];
+                let rises = *latest < 64 && value >= 64;
+                *latest = value;
+                Some(if rises {
+                    Heard::Rise(number)
+                } else {
+                    Heard::Idle(Gesture::Controller(number))
+                })
+            }
+            Message::NoteOn { key, .. } => Key::new(key).map(Heard::NoteOn),
+            Message::NoteOff { key, .. } => {
+                Key::new(key).map(|key| Heard::Idle(Gesture::Note(key)))
+            }
+            _ => None,
+        }
+    }
+
+    /// Whatever is on a synth's drum channel goes through as it came. Notes go by their own way, so that they can be
+    /// ended when a keyboard is lost.
+    fn pass_drums(&mut self, hand: Hand, message: Message<'_>) {
+        use crate::midi::status;
+        let channel = hand.channel;
+        let (bytes, length) = match message {
+            Message::PolyPressure { key, value, .. } => {
+                ([status::POLY_PRESSURE | channel, key, value], 3)
+            }
+            Message::Controller { number, value, .. } if number != 88 && number < 120 => {
+                ([status::CONTROLLER | channel, number, value], 3)
+            }
+            Message::Program { number, .. } => ([status::PROGRAM | channel, number, 0], 2),
+            Message::Pressure { value, .. } => ([status::PRESSURE | channel, value, 0], 2),
+            Message::PitchBend { bend, .. } => (synth::bend_message(channel, bend), 3),
+            _ => return,
+        };
+        for id in self.drum_synths(hand).iter() {
+            self.synths[id.index()].send(Weight::Through, &bytes[..length], &mut self.out);
+        }
+    }
+
+    fn sysex_in(&mut self, now: Time, id: KeyboardId, bytes: &[u8]) {
+        self.pass_on(id, bytes);
+        if songs::is_reset(bytes) {
+            for synth in self.synths_of(id).iter() {
+                self.synths[synth.index()].again_at = Some(now + Span::from_millis(RESET_MS));
+            }
+        }
+    }
+
+    /// Not ours: to every synth that the keyboard plays, once.
+    fn pass_on(&mut self, id: KeyboardId, bytes: &[u8]) {
+        for synth in self.synths_of(id).iter() {
+            self.synths[synth.index()].send(Weight::Through, bytes, &mut self.out);
+        }
+    }
+
+    /// A keyboard has gone, or wants everything reset: what it held is let go.
+    fn let_go(&mut self, now: Time, id: KeyboardId) {
+        let index = id.index();
+        if index >= self.plan.keyboards.len() {
+            return;
+        }
+        self.keyboards[index].splitter.reset();
+        self.release_keyboard(now, id);
+        for channel in 0..16 {
+            let hand = Hand {
+                keyboard: id,
+                channel,
+            };
+            self.hand_off(now, hand);
+        }
+        self.keyboards[index].let_go(wheel_semitones(&self.plan, index));
+    }
+
+    fn source(&mut self, hand: Hand) -> &mut Source {
+        &mut self.keyboards[hand.keyboard.index()].sources[hand.channel as usize]
+    }
+
+    /// Whether a part is played by a hand. What comes in on a synth's drum channel is not the part's.
+    fn feeds(&self, part: &PartPlan, hand: Hand) -> bool {
+        self.hears(part, hand) && !self.synths[part.to.index()].rig.drums.has(hand.channel)
+    }
+
+    fn hears(&self, part: &PartPlan, hand: Hand) -> bool {
+        let known = self.plan.keyboards.get(hand.keyboard.index());
+        part.from.is_none_or(|from| from == hand.keyboard)
+            && part.hears.has(hand.channel)
+            && known.is_some_and(|keyboard| keyboard.channels.has(hand.channel))
+    }
+
+    /// Does something for each part that a hand plays.
+    fn for_parts(&mut self, hand: Hand, mut act: impl FnMut(&mut Engine, usize, &PartPlan)) {
+        for index in 0..self.plan.parts.len() {
+            let part = self.plan.parts[index];
+            if self.feeds(&part, hand) {
+                act(self, index, &part);
+            }
+        }
+    }
+
+    fn drum_synths(&self, hand: Hand) -> SynthSet {
+        let mut set = SynthSet::default();
+        for part in self.plan.parts.iter().filter(|part| self.hears(part, hand)) {
+            if self.synths[part.to.index()].rig.drums.has(hand.channel) {
+                set.add(part.to);
+            }
+        }
+        set
+    }
+
+    fn synths_of(&self, id: KeyboardId) -> SynthSet {
+        let mut set = SynthSet::default();
+        for part in &self.plan.parts {
+            if part.from.is_none_or(|from| from == id) {
+                set.add(part.to);
+            }
+        }
+        set
+    }
+}
+
+/// Some of the plan's synths.
+#[derive(Clone, Copy, Default)]
+struct SynthSet(u8);
+
+const _: () = assert!(SYNTHS_MAX <= 8);
+
+impl SynthSet {
+    fn add(&mut self, id: SynthId) {
+        self.0 |= 1 << id.index();
+    }
+
+    fn iter(self) -> impl Iterator<Item = SynthId> {
+        (0..SYNTHS_MAX)
+            .filter(move |index| self.0 >> index & 1 == 1)
+            .filter_map(SynthId::new)
+    }
+}
+
+fn wheel_semitones(plan: &Plan, index: usize) -> u8 {
+    plan.keyboards.get(index).map_or(2, |k| k.wheel_semitones)
 }

@@ -170,7 +170,7 @@ impl Pass {
     };
 }
 
-#[derive(Clone, Debug, PartialEq)]
+#[derive(Clone, Copy, Debug, PartialEq)]
 pub struct PartPlan {
     /// `None`: every keyboard.
     pub from: Option<KeyboardId>,

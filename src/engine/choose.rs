@@ -1,0 +1,129 @@
+//! Which channel a new note takes.
+
+use super::channel::Rest;
+use super::plan::{PartId, Steal};
+use super::synth::Synth;
+use super::voices::Voices;
+use crate::pitch::word::Bend;
+use crate::pitch::{Interval, Pitch};
+use crate::time::Time;
+use crate::tuning::Key;
+
+/// What a new note asks of a channel.
+pub(super) struct Want {
+    pub part: PartId,
+    /// Channels it may take.
+    pub pool: super::plan::ChannelSet,
+    pub key: Key,
+    pub number: u8,
+    /// Distance of the wanted pitch from the number's own.
+    pub offset: Interval,
+    /// The player's wheel, where it is added to the channel's bend.
+    pub wheel: Interval,
+}
+
+/// The channel to take and what has to give way for it.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(super) struct Choice {
+    pub channel: u8,
+    pub cost: Cost,
+}
+
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(super) enum Cost {
+    Nothing,
+    /// A tail will be bent.
+    Tail,
+    /// What rings on the channel has to be ended first.
+    Steal,
+}
+
+/// The order of wishes, best first.
+#[derive(Clone, Copy, PartialEq, Eq, PartialOrd, Ord)]
+enum Wish {
+    /// Sounding at this very bend, and will not have to part.
+    Shared,
+    LastPlayedThisKey,
+    FreeAtThisBend,
+    NeverUsed,
+    BeyondTail,
+    InTail,
+    /// Sounding at this very bend with the same number still held: two note-ons on one number, better than a theft.
+    Doubled,
+    UnderPedal,
+    Held,
+}
+
+impl Want {
+    pub fn target(&self) -> Pitch {
+        Pitch::of_key(self.number) + self.offset
+    }
+}
+
+/// Finds the channel for a note, or `None` where nothing may give way. Always the same for the same history.
+pub(super) fn choose(want: &Want, synth: &Synth, voices: &Voices, now: Time) -> Option<Choice> {
+    let mut best: Option<(Wish, u64, Choice)> = None;
+    for channel in want.pool.iter() {
+        let Some((wish, order, cost)) = wish(want, synth, voices, channel, now) else {
+            continue;
+        };
+        if best.is_none_or(|(w, o, _)| (wish, order) < (w, o)) {
+            best = Some((wish, order, Choice { channel, cost }));
+        }
+    }
+    best.map(|(_, _, choice)| choice)
+}
+
+/// How well a channel fits, and its place among those that fit as well (lower first).
+fn wish(
+    want: &Want,
+    synth: &Synth,
+    voices: &Voices,
+    number: u8,
+    now: Time,
+) -> Option<(Wish, u64, Cost)> {
+    let channel = &synth.channels[number as usize];
+    let rest = channel.rest(now, synth.rig.tail, synth.rig.keeps_pitch());
+    let this_key = channel.last_key == Some(want.key);
+    let this_bend = rest != Rest::New && same_bend(want, channel.offset, channel.word, synth);
+    let must_part = voices
+        .iter()
+        .any(|v| v.synth == synth.id && v.channel == number && v.number == want.number);
+    let ringing = matches!(rest, Rest::Held | Rest::Pedal | Rest::Tail(_));
+    let may_share = synth.rig.share || (this_key && rest != Rest::Held);
+    let oldest_first = channel.released_at.map_or(0, Time::nanos);
+    Some(match rest {
+        _ if ringing && this_bend && may_share && !must_part => {
+            (Wish::Shared, !this_key as u64, Cost::Nothing)
+        }
+        Rest::Quiet(_) if this_key => (Wish::LastPlayedThisKey, 0, Cost::Nothing),
+        Rest::Quiet(_) if this_bend => (Wish::FreeAtThisBend, 0, Cost::Nothing),
+        Rest::New => (Wish::NeverUsed, 0, Cost::Nothing),
+        Rest::Quiet(_) => (Wish::BeyondTail, oldest_first, Cost::Nothing),
+        Rest::Tail(_) if synth.rig.keeps_pitch() => (Wish::InTail, oldest_first, Cost::Nothing),
+        Rest::Tail(_) => (Wish::InTail, oldest_first, Cost::Tail),
+        _ if this_bend && must_part => (Wish::Doubled, 0, Cost::Nothing),
+        Rest::Pedal => (Wish::UnderPedal, oldest_first, Cost::Steal),
+        Rest::Held => match synth.rig.steal {
+            Steal::Nothing => return None,
+            Steal::Oldest => (Wish::Held, channel.struck_at.nanos(), Cost::Steal),
+            Steal::Quietest => (Wish::Held, loudest(synth, voices, number), Cost::Steal),
+        },
+    })
+}
+
+/// Whether the note would send the very bend that the channel has, with and without the wheel.
+fn same_bend(want: &Want, offset: Interval, word: Bend, synth: &Synth) -> bool {
+    let range = synth.rig.bend_range;
+    Bend::encode(want.offset, range).0 == word
+        && Bend::encode(want.offset + want.wheel, range) == Bend::encode(offset + want.wheel, range)
+}
+
+fn loudest(synth: &Synth, voices: &Voices, channel: u8) -> u64 {
+    voices
+        .iter()
+        .filter(|v| v.synth == synth.id && v.channel == channel)
+        .map(|v| v.velocity as u64)
+        .max()
+        .unwrap_or(0)
+}

@@ -1,0 +1,470 @@
+//! The player's hands: wheel, pressure, pedals, controllers, programs. They keep their meaning for their own part only.
+
+use super::channel::{Program, RESET_VALUES, UNSAID};
+use super::dialect::{gesture_channels, members, on_members};
+use super::keyboard::Select;
+use super::plan::{ChannelSet, PartPlan};
+use super::synth::PEDALS;
+use super::traffic::Weight;
+use super::{Engine, Hand};
+use crate::limits::SYNTHS_MAX;
+use crate::midi::{controller, parameter, status};
+use crate::pitch::word::Bend;
+use crate::time::Time;
+
+/// Registered parameters that are trued's own business on a synth: bend range, tuning program and bank, MPE zone.
+const OURS: [[u8; 2]; 4] = [[0, 0], [0, 3], [0, 4], [0, 6]];
+
+impl Engine {
+    pub(super) fn controller_in(&mut self, now: Time, hand: Hand, number: u8, value: u8) {
+        let source = self.source(hand);
+        match number {
+            controller::ALL_SOUND_OFF | controller::ALL_NOTES_OFF..=127 => {
+                self.release(now, 64, None, |v| v.down && hand.is_of(v));
+            }
+            controller::RESET_ALL => self.reset_all(now, hand),
+            controller::LOCAL => {
+                self.to_gesture_channels(hand, |channel| {
+                    ([status::CONTROLLER | channel, number, value], 3)
+                });
+            }
+            controller::VELOCITY_LOW => source.velocity_low = Some(value),
+            controller::PORTAMENTO_FROM => source.portamento_from = Some(value),
+            controller::RPN_MSB => source.select_half(true, false, value),
+            controller::RPN_LSB => source.select_half(true, true, value),
+            controller::NRPN_MSB => source.select_half(false, false, value),
+            controller::NRPN_LSB => source.select_half(false, true, value),
+            controller::DATA_MSB => {
+                source.data_msb = value;
+                self.set_parameter(now, hand, value, 0);
+            }
+            controller::DATA_LSB => {
+                let msb = source.data_msb;
+                self.set_parameter(now, hand, msb, value);
+            }
+            controller::DATA_UP | controller::DATA_DOWN => self.step_parameter(hand, number, value),
+            controller::BANK_MSB => source.bank[0] = value,
+            controller::BANK_LSB => source.bank[1] = value,
+            number => match PEDALS.iter().position(|pedal| *pedal == number) {
+                Some(which) => {
+                    source.pedals[which] = value;
+                    self.for_parts(hand, |engine, index, part| {
+                        if part.pass.pedals {
+                            engine.set_pedal(now, index, which);
+                        }
+                    });
+                }
+                None => self.for_parts(hand, |engine, index, part| {
+                    if part.pass.controllers {
+                        engine.parts[index].set(number, value);
+                        engine.spread(now, index, number, value, Weight::Control);
+                    }
+                }),
+            },
+        }
+    }
+
+    /// Gives a controller to the channels that sound; the others catch up before their next note, so that a busy
+    /// controller on fifteen channels does not choke a slow wire.
+    fn spread(&mut self, now: Time, index: usize, number: u8, value: u8, weight: Weight) {
+        let part = self.plan.parts[index];
+        let version = self.parts[index].version;
+        let synth = &mut self.synths[part.to.index()];
+        let tail = synth.rig.tail;
+        for channel in gesture_channels(&synth.rig, &part).iter() {
+            let manager = synth.rig.manager() == Some(channel);
+            if manager || synth.channels[channel as usize].rings(now, tail) {
+                synth.controller(channel, number, value, weight, &mut self.out);
+                let channel = synth.channel(channel);
+                if channel.version + 1 == version {
+                    channel.version = version;
+                }
+            }
+        }
+    }
+
+    /// A pedal of a part is as far down as the keyboard that holds it deepest.
+    fn set_pedal(&mut self, now: Time, index: usize, which: usize) {
+        let part = self.plan.parts[index];
+        let number = PEDALS[which];
+        let value = self.deepest(&part, which);
+        let was_down = self.parts[index].pedal_down(number);
+        if self.parts[index].controllers[number as usize] == value {
+            return;
+        }
+        self.parts[index].set(number, value);
+        let is_down = self.parts[index].pedal_down(number);
+        let holds = matches!(number, controller::DAMPER | controller::SOSTENUTO);
+        if !(holds && part.late_offs) {
+            self.spread(now, index, number, value, Weight::Owed);
+        }
+        if !holds || was_down == is_down {
+            return;
+        }
+        if number == controller::SOSTENUTO {
+            for voice in self.voices.iter_mut().filter(|v| v.part.index() == index) {
+                voice.latched = is_down && (voice.down || voice.latched);
+            }
+        }
+        if is_down && number == controller::DAMPER && !part.late_offs {
+            self.catch_tails(now, &part);
+        }
+        if !is_down {
+            self.pedal_up(now, index, &part, number);
+        }
+    }
+
+    fn deepest(&self, part: &PartPlan, which: usize) -> u8 {
+        let mut deepest = 0;
+        for (index, keyboard) in self.keyboards.iter().enumerate() {
+            for (channel, source) in keyboard.sources.iter().enumerate() {
+                if source.pedals[which] > deepest
+                    && Hand::new(index, channel as u8).is_some_and(|hand| self.feeds(part, hand))
+                {
+                    deepest = source.pedals[which];
+                }
+            }
+        }
+        deepest
+    }
+
+    /// A damper that goes down while a note still rings may catch it (GM2 3.3.7), so it counts as held.
+    fn catch_tails(&mut self, now: Time, part: &PartPlan) {
+        let synth = &mut self.synths[part.to.index()];
+        let tail = synth.rig.tail;
+        for number in members(&synth.rig, part).iter() {
+            let channel = synth.channel(number);
+            if channel.held == 0 && channel.rings(now, tail) {
+                channel.damper = true;
+            }
+        }
+    }
+
+    fn pedal_up(&mut self, now: Time, index: usize, part: &PartPlan, number: u8) {
+        let synth = &mut self.synths[part.to.index()];
+        for member in members(&synth.rig, part).iter() {
+            let channel = synth.channel(member);
+            let held = if number == controller::DAMPER {
+                std::mem::take(&mut channel.damper)
+            } else {
+                std::mem::take(&mut channel.sostenuto)
+            };
+            if held && !channel.damper && !channel.sostenuto {
+                channel.released_at = Some(now);
+            }
+        }
+        self.release_waiting(now, index);
+    }
+
+    /// Ends the notes that only waited for a pedal of their part.
+    pub(super) fn release_waiting(&mut self, now: Time, index: usize) {
+        let damper = self.parts[index].damper_down();
+        while let Some(voice) = self
+            .voices
+            .take(|v| v.part.index() == index && !v.drum && !v.down && !v.latched && !damper)
+        {
+            self.end(now, &voice, 64, None);
+        }
+    }
+
+    pub(super) fn wheel_in(&mut self, now: Time, hand: Hand, bend: Bend) {
+        self.source(hand).wheel = bend;
+        self.wheel_moved(now, hand);
+    }
+
+    fn wheel_moved(&mut self, now: Time, hand: Hand) {
+        let wheel = self.source(hand).wheel_interval();
+        self.for_parts(hand, |engine, index, part| {
+            if part.pass.wheel && engine.parts[index].wheel != wheel {
+                engine.parts[index].wheel = wheel;
+                engine.play_wheel(now, index, Weight::Control);
+            }
+        });
+    }
+
+    /// Puts a part's wheel on the wire: on the manager, or on the channels that sound.
+    pub(super) fn play_wheel(&mut self, now: Time, index: usize, weight: Weight) {
+        let part = self.plan.parts[index];
+        let wheel = self.parts[index].wheel;
+        let synth = &mut self.synths[part.to.index()];
+        let (range, tail) = (synth.rig.bend_range, synth.rig.tail);
+        if !on_members(&synth.rig, &part) {
+            if let Some(manager) = synth.rig.manager() {
+                let bend = Bend::encode(wheel, synth.manager_range).0;
+                synth.bend(manager, bend, weight, &mut self.out);
+            }
+            return;
+        }
+        for number in members(&synth.rig, &part).iter() {
+            let channel = &synth.channels[number as usize];
+            if channel.rings(now, tail) {
+                let (bend, clipped) = Bend::encode(channel.offset + wheel, range);
+                self.out.counters.clipped += clipped as u64;
+                synth.bend(number, bend, weight, &mut self.out);
+            }
+        }
+    }
+
+    pub(super) fn pressure_in(&mut self, now: Time, hand: Hand, value: u8) {
+        self.source(hand).pressure = value;
+        self.for_parts(hand, |engine, index, part| {
+            if part.pass.pressure {
+                engine.parts[index].pressure = value;
+                engine.play_pressure(now, index);
+            }
+        });
+    }
+
+    /// Takes a hand off everything it moved: pedals up, wheel to centre, pressure to nothing.
+    pub(super) fn hand_off(&mut self, now: Time, hand: Hand) {
+        let source = self.source(hand);
+        let (wheel, pressure) = (source.wheel, source.pressure);
+        source.pedals = [0; PEDALS.len()];
+        for which in 0..PEDALS.len() {
+            self.for_parts(hand, |engine, index, part| {
+                let known = engine.parts[index].controllers[PEDALS[which] as usize] != UNSAID;
+                if part.pass.pedals && known {
+                    engine.set_pedal(now, index, which);
+                }
+            });
+        }
+        if wheel != Bend::CENTRE {
+            self.wheel_in(now, hand, Bend::CENTRE);
+        }
+        if pressure > 0 {
+            self.pressure_in(now, hand, 0);
+        }
+    }
+
+    fn play_pressure(&mut self, now: Time, index: usize) {
+        let part = self.plan.parts[index];
+        let synth = &self.synths[part.to.index()];
+        let tail = synth.rig.tail;
+        if !on_members(&synth.rig, &part) {
+            let value = self.parts[index].pressure;
+            let synth = &mut self.synths[part.to.index()];
+            if let Some(manager) = synth.rig.manager() {
+                synth.pressure(manager, value, Weight::Control, &mut self.out);
+            }
+            return;
+        }
+        for number in members(&synth.rig, &part).iter() {
+            if self.synths[part.to.index()].channels[number as usize].rings(now, tail) {
+                let Some((id, _)) = self.part_of(part.to, number) else {
+                    continue;
+                };
+                let value = self.pressure_for(&part, part.to, number, id);
+                let synth = &mut self.synths[part.to.index()];
+                synth.pressure(number, value, Weight::Control, &mut self.out);
+            }
+        }
+    }
+
+    /// Pressure on one key: as it came, where the synth may hear it so; as channel pressure of the note's own channel
+    /// under MPE, the highest where several share (MPE 1.1, 2.4).
+    pub(super) fn poly_pressure_in(&mut self, hand: Hand, key: crate::tuning::Key, value: u8) {
+        for index in 0..self.voices.len() {
+            let Some(voice) = self.voices.iter_mut().nth(index) else {
+                return;
+            };
+            if voice.drum || !voice.down || voice.key != key || !hand.is_of(voice) {
+                continue;
+            }
+            let Some(part) = self.plan.parts.get(voice.part.index()).copied() else {
+                continue;
+            };
+            if !part.pass.pressure {
+                continue;
+            }
+            voice.pressure = value;
+            let voice = *voice;
+            let synth = &self.synths[voice.synth.index()];
+            if synth.rig.keeps_pitch() {
+                let value = self.pressure_for(&part, voice.synth, voice.channel, voice.part);
+                let synth = &mut self.synths[voice.synth.index()];
+                synth.pressure(voice.channel, value, Weight::Control, &mut self.out);
+            } else {
+                let bytes = [status::POLY_PRESSURE | voice.channel, voice.number, value];
+                synth.send(Weight::Control, &bytes, &mut self.out);
+            }
+        }
+    }
+
+    pub(super) fn program_in(&mut self, now: Time, hand: Hand, number: u8) {
+        let [bank_msb, bank_lsb] = self.source(hand).bank;
+        let program = Program {
+            bank_msb,
+            bank_lsb,
+            program: number,
+        };
+        self.for_parts(hand, |engine, index, part| {
+            if part.pass.programs {
+                engine.set_program(now, index, program);
+            }
+        });
+    }
+
+    /// Gives a program to a part. Some synths reset their bend range with it, so that is said again.
+    pub(super) fn set_program(&mut self, now: Time, index: usize, program: Program) {
+        self.parts[index].program = program;
+        let part = self.plan.parts[index];
+        let synth = &mut self.synths[part.to.index()];
+        let mut told = ChannelSet::NONE;
+        for channel in gesture_channels(&synth.rig, &part).iter() {
+            if synth.program(channel, program, &mut self.out) {
+                told = told.with(channel);
+            }
+        }
+        if synth.rig.manager().is_some() && told.count() > 0 {
+            told = synth.rig.channels();
+        }
+        for channel in told.iter() {
+            synth.range_due(channel, now);
+        }
+        self.say_pieces(now, part.to);
+    }
+
+    /// Data entry. RPN 0 says what the wheel means and goes no further; what is trued's own is not passed on.
+    fn set_parameter(&mut self, now: Time, hand: Hand, msb: u8, lsb: u8) {
+        let source = self.source(hand);
+        let sequence: fn(u8, [u8; 2], [u8; 2]) -> [u8; parameter::PARAMETER_BYTES] =
+            match source.select {
+                Select::Registered([0, 0]) => {
+                    source.wheel_range = crate::pitch::Interval::from_cents(
+                        msb.min(crate::limits::BEND_RANGE_MAX) as i64 * 100 + lsb.min(99) as i64,
+                    );
+                    self.widen_managers(now, hand);
+                    self.wheel_moved(now, hand);
+                    return;
+                }
+                Select::Registered(number) if OURS.contains(&number) || number == [0x7F; 2] => {
+                    return;
+                }
+                Select::Nothing => return,
+                Select::Registered(_) => parameter::registered,
+                Select::NonRegistered(_) => parameter::non_registered,
+            };
+        let (Select::Registered(number) | Select::NonRegistered(number)) = source.select else {
+            return;
+        };
+        self.to_gesture_channels(hand, |channel| {
+            (
+                sequence(channel, number, [msb, lsb]),
+                parameter::PARAMETER_BYTES,
+            )
+        });
+    }
+
+    /// Data increment and decrement, passed on with the selection they belong to.
+    fn step_parameter(&mut self, hand: Hand, step: u8, value: u8) {
+        let (number, select) = match self.source(hand).select {
+            Select::Registered(number) if !OURS.contains(&number) && number != [0x7F; 2] => {
+                (number, [controller::RPN_MSB, controller::RPN_LSB])
+            }
+            Select::NonRegistered(number) => (number, [controller::NRPN_MSB, controller::NRPN_LSB]),
+            _ => return,
+        };
+        self.to_gesture_channels(hand, |channel| {
+            let s = status::CONTROLLER | channel;
+            let null = [controller::RPN_MSB, controller::RPN_LSB];
+            #[rustfmt::skip]
+            let bytes = [
+                s, select[0], number[0], s, select[1], number[1], s, step, value,
+                s, null[0], 0x7F, s, null[1], 0x7F,
+            ];
+            (bytes, bytes.len())
+        });
+    }
+
+    /// Sends bytes to every channel that hears the controllers of the parts that a hand plays, once each.
+    fn to_gesture_channels<const N: usize>(
+        &mut self,
+        hand: Hand,
+        bytes: impl Fn(u8) -> ([u8; N], usize),
+    ) {
+        let mut channels = [ChannelSet::NONE; SYNTHS_MAX];
+        for index in 0..self.plan.parts.len() {
+            let part = self.plan.parts[index];
+            if part.pass.controllers && self.feeds(&part, hand) {
+                let to = part.to.index();
+                channels[to].0 |= gesture_channels(&self.synths[to].rig, &part).0;
+            }
+        }
+        for (synth, channels) in self.synths.iter().zip(channels) {
+            for channel in channels.iter() {
+                let (bytes, length) = bytes(channel);
+                synth.send(Weight::Owed, &bytes[..length], &mut self.out);
+            }
+        }
+    }
+
+    /// Reset All Controllers: passed on, and since a receiver centres its bend then, the tuning is said again.
+    fn reset_all(&mut self, now: Time, hand: Hand) {
+        let source = self.source(hand);
+        source.wheel = Bend::CENTRE;
+        source.pedals = [0; PEDALS.len()];
+        source.select = Select::Nothing;
+        self.to_gesture_channels(hand, |channel| {
+            ([status::CONTROLLER | channel, controller::RESET_ALL, 0], 3)
+        });
+        self.for_parts(hand, |engine, index, part| {
+            if part.pass.controllers {
+                engine.after_reset(now, index, part);
+            }
+        });
+    }
+
+    fn after_reset(&mut self, now: Time, index: usize, part: &PartPlan) {
+        let settings = &mut self.parts[index];
+        settings.wheel = crate::pitch::Interval::ZERO;
+        settings.pressure = 0;
+        for (number, value) in RESET_VALUES {
+            if settings.controllers[number as usize] != UNSAID {
+                settings.controllers[number as usize] = value;
+            }
+        }
+        settings.version += 1;
+        for (which, pedal) in PEDALS.iter().enumerate() {
+            let deepest = self.deepest(part, which);
+            if self.parts[index].controllers[*pedal as usize] != UNSAID {
+                self.parts[index].controllers[*pedal as usize] = deepest;
+            }
+        }
+        let synth = &mut self.synths[part.to.index()];
+        for number in gesture_channels(&synth.rig, part).iter() {
+            synth.channel(number).reset_controllers();
+        }
+        for number in members(&synth.rig, part).iter() {
+            let mpe = synth.rig.keeps_pitch();
+            let channel = synth.channel(number);
+            if channel.damper || channel.sostenuto {
+                channel.released_at = Some(now);
+            }
+            channel.damper = false;
+            channel.sostenuto = false;
+            channel.pressure = 0;
+            if mpe {
+                channel.bend = None; // whether members follow a reset of their manager, receivers disagree
+            }
+        }
+        for voice in self.voices.iter_mut().filter(|v| v.part.index() == index) {
+            voice.latched &= part.late_offs;
+        }
+        self.say_again_what_sounds(now, index, part);
+        self.release_waiting(now, index);
+    }
+
+    fn say_again_what_sounds(&mut self, now: Time, index: usize, part: &PartPlan) {
+        let wheel_here = on_members(&self.synths[part.to.index()].rig, part);
+        for number in members(&self.synths[part.to.index()].rig, part).iter() {
+            let synth = &self.synths[part.to.index()];
+            if synth.channels[number as usize].rings(now, synth.rig.tail) {
+                self.say_bend(part.to, number);
+                self.catch_up(part.to, number);
+            }
+        }
+        if !wheel_here {
+            self.play_wheel(now, index, Weight::Owed);
+        }
+    }
+}

@@ -1,0 +1,389 @@
+//! Notes: started at the right pitch, ended where they were started.
+
+use super::channel::{Due, UNSAID};
+use super::choose::{Choice, Cost, Want, choose};
+use super::dialect::{self, on_members};
+use super::outbox::Bundle;
+use super::plan::{KeyboardId, PartId, PartPlan, SynthId};
+use super::synth::bend_message;
+use super::traffic::{Onset, Weight};
+use super::voices::Voice;
+use super::{Engine, Hand};
+use crate::midi::{controller, status};
+use crate::pitch::word::Bend;
+use crate::pitch::{Interval, Pitch};
+use crate::time::Time;
+use crate::tuning::Key;
+
+/// What travels with a note: CC88 and CC84 that came before it.
+#[derive(Clone, Copy, Default)]
+struct Luggage {
+    velocity_low: Option<u8>,
+    portamento_from: Option<u8>,
+}
+
+/// A key press on its way to a part.
+#[derive(Clone, Copy)]
+struct Press {
+    hand: Hand,
+    key: Key,
+    velocity: u8,
+    luggage: Luggage,
+}
+
+impl Engine {
+    pub(super) fn key_down(&mut self, now: Time, hand: Hand, key: Key, velocity: u8) {
+        self.strikes += 1;
+        let source = self.source(hand);
+        let luggage = Luggage {
+            velocity_low: source.velocity_low.take(),
+            portamento_from: source.portamento_from.take(),
+        };
+        let press = Press {
+            hand,
+            key,
+            velocity,
+            luggage,
+        };
+        for index in 0..self.plan.parts.len() {
+            let part = self.plan.parts[index];
+            if self.feeds(&part, hand) && (part.keys.0..=part.keys.1).contains(&key) {
+                let id = PartId::new(index).expect("a plan keeps to its limits");
+                self.start(now, id, &part, &press);
+            }
+        }
+        for synth in self.drum_synths(hand).iter() {
+            self.start_drum(now, synth, &press);
+        }
+    }
+
+    fn start(&mut self, now: Time, id: PartId, part: &PartPlan, press: &Press) {
+        let Some(target) = self.target(part, press.key) else {
+            self.out.counters.silent += 1;
+            return;
+        };
+        let Some(number) = target.nearest_key() else {
+            self.out.counters.silent += 1;
+            return;
+        };
+        let synth = &self.synths[part.to.index()];
+        if !synth.up || synth.tight || self.stopping || self.voices.full() {
+            self.out.counters.refused += 1;
+            return;
+        }
+        let wheel = if on_members(&synth.rig, part) {
+            self.parts[id.index()].wheel
+        } else {
+            Interval::ZERO
+        };
+        let want = Want {
+            part: id,
+            pool: dialect::members(&synth.rig, part),
+            key: press.key,
+            number,
+            offset: target - Pitch::of_key(number),
+            wheel,
+        };
+        match choose(&want, synth, &self.voices, now) {
+            Some(choice) => {
+                self.make_room(now, part.to, choice);
+                self.sound(now, part, press, &want, choice.channel);
+            }
+            None => self.out.counters.refused += 1,
+        }
+    }
+
+    /// Where the song puts a key of a part; `None` where it is silent.
+    pub(super) fn target(&self, part: &PartPlan, key: Key) -> Option<Pitch> {
+        let moved = key.moved(part.transpose_keys as i32 + self.playing.transpose_keys as i32)?;
+        let pitch = if part.tune {
+            self.playing.tuning.pitch(moved)?
+        } else {
+            Pitch::of_key(moved.number())
+        };
+        Some(pitch + part.offset)
+    }
+
+    fn make_room(&mut self, now: Time, id: SynthId, choice: Choice) {
+        match choice.cost {
+            Cost::Nothing => {}
+            Cost::Tail => self.out.counters.tails_cut += 1,
+            Cost::Steal => {
+                self.out.counters.stolen += 1;
+                while let Some(voice) = self
+                    .voices
+                    .take(|v| v.synth == id && v.channel == choice.channel)
+                {
+                    self.end(now, &voice, 64, None);
+                }
+                if !self.synths[id.index()].rig.keeps_pitch() {
+                    self.synths[id.index()].hush(choice.channel, &mut self.out);
+                }
+            }
+        }
+    }
+
+    /// Tells a chosen channel all that must be in force, then starts the note on it.
+    fn sound(&mut self, now: Time, part: &PartPlan, press: &Press, want: &Want, number: u8) {
+        let index = part.to.index();
+        self.say_what_a_note_needs(now, part.to, number);
+        let portamento = press
+            .luggage
+            .portamento_from
+            .and_then(|from| self.target(part, Key::new(from)?)?.nearest_key());
+        let pressure = self.pressure_for(part, part.to, number, want.part);
+        let out = &mut self.out;
+        let synth = &mut self.synths[index];
+        let range = synth.rig.bend_range;
+        let word = Bend::encode(want.offset, range).0;
+        let channel = &mut synth.channels[number as usize];
+        if channel.held == 0 || channel.word != word {
+            channel.offset = want.offset;
+        }
+        let (bend, clipped) = Bend::encode(channel.offset + want.wheel, range);
+        out.counters.clipped += clipped as u64;
+        let mut bundle = Bundle::new();
+        for (cc, value) in [
+            (controller::PORTAMENTO_FROM, portamento),
+            (controller::VELOCITY_LOW, press.luggage.velocity_low),
+        ] {
+            if let Some(value) = value {
+                bundle.add(&[status::CONTROLLER | number, cc, value]);
+            }
+        }
+        if channel.pressure != pressure {
+            channel.pressure = pressure;
+            bundle.add(&[status::PRESSURE | number, pressure]);
+        }
+        if channel.bend != Some(bend) {
+            out.counters.bends += (channel.word != word || channel.bend.is_none()) as u64;
+            channel.bend = Some(bend);
+            bundle.add(&bend_message(number, bend));
+        }
+        channel.word = word;
+        channel.last_key = Some(want.key);
+        channel.struck_at = now;
+        channel.released_at.get_or_insert(now);
+        channel.held = channel.held.saturating_add(1);
+        bundle.add(&[status::NOTE_ON | number, want.number, press.velocity]);
+        synth.send(Weight::Note, bundle.bytes(), out);
+        out.counters.notes += 1;
+        out.onset(Onset {
+            part: want.part,
+            keyboard: press.hand.keyboard,
+            key: press.key,
+            velocity: press.velocity,
+            synth: part.to,
+            channel: number,
+            number: want.number,
+            target: want.target(),
+            sent: Pitch::of_key(want.number) + word.decode(range),
+        });
+        self.voices.add(Voice {
+            part: want.part,
+            synth: part.to,
+            channel: number,
+            number: want.number,
+            velocity: press.velocity,
+            pressure: 0,
+            keyboard: press.hand.keyboard,
+            heard_on: press.hand.channel,
+            key: press.key,
+            strike: self.strikes,
+            down: true,
+            latched: false,
+            drum: false,
+        });
+    }
+
+    /// Set-up that is still due on a channel, then the controllers it has missed while it was silent.
+    fn say_what_a_note_needs(&mut self, now: Time, id: SynthId, number: u8) {
+        if self.synths[id.index()].zone_due || self.manager_due(id) {
+            self.say_manager(now, id);
+        }
+        if self.synths[id.index()].channels[number as usize].due != Due::Nothing {
+            self.say_channel(now, id, number);
+        }
+        self.catch_up(id, number);
+    }
+
+    /// The pressure a channel should have while a new note starts on it: nothing of the old notes may colour it.
+    pub(super) fn pressure_for(
+        &self,
+        part: &PartPlan,
+        id: SynthId,
+        number: u8,
+        part_id: PartId,
+    ) -> u8 {
+        let rig = &self.synths[id.index()].rig;
+        let of_part = if on_members(rig, part) {
+            self.parts[part_id.index()].pressure
+        } else {
+            0
+        };
+        let of_keys = if rig.keeps_pitch() {
+            self.voices
+                .iter()
+                .filter(|v| v.synth == id && v.channel == number)
+                .map(|v| v.pressure)
+                .max()
+                .unwrap_or(0)
+        } else {
+            0
+        };
+        of_part.max(of_keys)
+    }
+
+    fn start_drum(&mut self, _now: Time, id: SynthId, press: &Press) {
+        let synth = &self.synths[id.index()];
+        if !synth.up || synth.tight || self.stopping || self.voices.full() {
+            self.out.counters.refused += 1;
+            return;
+        }
+        let channel = press.hand.channel;
+        let mut bundle = Bundle::new();
+        if let Some(low) = press.luggage.velocity_low {
+            bundle.add(&[status::CONTROLLER | channel, controller::VELOCITY_LOW, low]);
+        }
+        bundle.add(&[
+            status::NOTE_ON | channel,
+            press.key.number(),
+            press.velocity,
+        ]);
+        synth.send(Weight::Note, bundle.bytes(), &mut self.out);
+        self.out.counters.notes += 1;
+        self.voices.add(Voice {
+            part: PartId::new(0).expect("there is a part"),
+            synth: id,
+            channel,
+            number: press.key.number(),
+            velocity: press.velocity,
+            pressure: 0,
+            keyboard: press.hand.keyboard,
+            heard_on: channel,
+            key: press.key,
+            strike: self.strikes,
+            down: true,
+            latched: false,
+            drum: true,
+        });
+    }
+
+    /// Ends the oldest press of a key, in all its layers.
+    pub(super) fn key_up(&mut self, now: Time, hand: Hand, key: Key, velocity: u8) {
+        let luggage = self.source(hand).velocity_low.take();
+        let of_key = |v: &Voice| v.down && v.key == key && hand.is_of(v);
+        let Some(strike) = self.voices.iter().find(|v| of_key(v)).map(|v| v.strike) else {
+            self.out.counters.orphans += 1;
+            return;
+        };
+        self.release(now, velocity, luggage, |v| v.down && v.strike == strike);
+    }
+
+    /// Lets go of every voice that fits: ends it, or, where pedals are played by late note-offs, keeps it for them.
+    pub(super) fn release(
+        &mut self,
+        now: Time,
+        velocity: u8,
+        luggage: Option<u8>,
+        fits: impl Fn(&Voice) -> bool,
+    ) {
+        loop {
+            let Engine {
+                voices,
+                plan,
+                parts,
+                ..
+            } = self;
+            let waits = |v: &Voice| {
+                !v.drum
+                    && plan.parts.get(v.part.index()).is_some_and(|p| p.late_offs)
+                    && (v.latched || parts[v.part.index()].damper_down())
+            };
+            for voice in voices.iter_mut() {
+                if fits(voice) && waits(voice) {
+                    voice.down = false;
+                }
+            }
+            match voices.take(|v| fits(v) && !waits(v)) {
+                Some(voice) => self.end(now, &voice, velocity, luggage),
+                None => return,
+            }
+        }
+    }
+
+    /// Sends the one note-off of a voice that has been taken out, and notes what keeps ringing.
+    pub(super) fn end(&mut self, now: Time, voice: &Voice, velocity: u8, luggage: Option<u8>) {
+        let part_id = voice.part;
+        let part = self.plan.parts.get(part_id.index()).copied();
+        let pedals_held = |parts: &[super::part::Part], number| {
+            part.is_some_and(|p| !p.late_offs) && parts[part_id.index()].pedal_down(number)
+        };
+        let damper = pedals_held(&self.parts, controller::DAMPER);
+        let sostenuto = voice.latched && pedals_held(&self.parts, controller::SOSTENUTO);
+        let synth = &mut self.synths[voice.synth.index()];
+        let mut bundle = Bundle::new();
+        if let Some(low) = luggage {
+            bundle.add(&[
+                status::CONTROLLER | voice.channel,
+                controller::VELOCITY_LOW,
+                low,
+            ]);
+        }
+        bundle.add(&[status::NOTE_OFF | voice.channel, voice.number, velocity]);
+        synth.send(Weight::Owed, bundle.bytes(), &mut self.out);
+        if voice.drum {
+            return;
+        }
+        let channel = synth.channel(voice.channel);
+        channel.held = channel.held.saturating_sub(1);
+        channel.released_at = Some(now);
+        channel.damper |= damper;
+        channel.sostenuto |= sostenuto;
+        if voice.pressure > 0
+            && let Some(part) = part
+        {
+            let pressure = self.pressure_for(&part, voice.synth, voice.channel, part_id);
+            let synth = &mut self.synths[voice.synth.index()];
+            if synth.channels[voice.channel as usize].held > 0 {
+                synth.pressure(voice.channel, pressure, Weight::Control, &mut self.out);
+            }
+        }
+    }
+
+    /// Tells a channel every controller of its part that it has not heard yet.
+    pub(super) fn catch_up(&mut self, id: SynthId, number: u8) {
+        let Some((part_id, _)) = self.part_of(id, number) else {
+            return;
+        };
+        let synth = &mut self.synths[id.index()];
+        if synth.rig.manager().is_some() {
+            return; // under MPE the manager hears every controller at once
+        }
+        let settings = &self.parts[part_id.index()];
+        if synth.channels[number as usize].version == settings.version {
+            return;
+        }
+        synth.channels[number as usize].version = settings.version;
+        for (cc, value) in settings.controllers.iter().enumerate() {
+            if *value != UNSAID {
+                synth.controller(number, cc as u8, *value, Weight::Owed, &mut self.out);
+            }
+        }
+    }
+
+    /// The part whose own channel this is.
+    pub(super) fn part_of(&self, id: SynthId, number: u8) -> Option<(PartId, PartPlan)> {
+        let index = self
+            .plan
+            .parts
+            .iter()
+            .position(|part| part.to == id && part.pool.has(number))?;
+        Some((PartId::new(index)?, self.plan.parts[index]))
+    }
+
+    /// Ends everything a keyboard holds.
+    pub(super) fn release_keyboard(&mut self, now: Time, keyboard: KeyboardId) {
+        self.release(now, 64, None, |v| v.keyboard == keyboard && v.down);
+    }
+}

@@ -1,0 +1,40 @@
+//! What the player of a part has set: wheel, pressure, controllers, program.
+
+use super::channel::{Program, UNSAID};
+use crate::midi::controller;
+use crate::pitch::Interval;
+
+#[derive(Clone, Copy)]
+pub(super) struct Part {
+    pub wheel: Interval,
+    pub pressure: u8,
+    pub controllers: [u8; 128],
+    /// Grows with every change of a controller, so that a channel knows whether it has to catch up.
+    pub version: u32,
+    pub program: Program,
+}
+
+impl Part {
+    pub const NEW: Part = Part {
+        wheel: Interval::ZERO,
+        pressure: 0,
+        controllers: [UNSAID; 128],
+        version: 0,
+        program: Program::UNSAID,
+    };
+
+    pub fn set(&mut self, number: u8, value: u8) {
+        self.controllers[number as usize] = value;
+        self.version += 1;
+    }
+
+    pub fn damper_down(&self) -> bool {
+        self.pedal_down(controller::DAMPER)
+    }
+
+    /// Down from 64 up (MIDI 1.0, p. 12).
+    pub fn pedal_down(&self, number: u8) -> bool {
+        let value = self.controllers[number as usize];
+        value != UNSAID && value >= 64
+    }
+}

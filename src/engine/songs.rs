@@ -1,0 +1,251 @@
+//! Songs, cues and commands.
+
+use super::channel::Program;
+use super::plan::{Act, Gesture, Plan, SynthId};
+use super::synth::Rig;
+use super::traffic::{Command, Weight};
+use super::{Engine, Hand, Playing};
+use crate::midi::{Message, controller, status};
+use crate::time::{Span, Time};
+use crate::tuning::Key;
+
+/// `next` and `back` are deaf to a second press within this time: footswitches bounce.
+const STEP_DEAF_MS: u64 = 400;
+
+impl Engine {
+    /// Runs the cues on a gesture; tells whether one took the message away from the synth.
+    pub(super) fn cue(&mut self, now: Time, hand: Hand, heard: Heard) -> bool {
+        let mut taken = false;
+        for index in 0..self.plan.cues.len() {
+            let cue = self.plan.cues[index];
+            if cue.from.is_some_and(|from| from != hand.keyboard)
+                || !cue.channels.has(hand.channel)
+                || !heard.is(cue.gesture)
+            {
+                continue;
+            }
+            taken |= !cue.pass;
+            match (cue.act, heard) {
+                (_, Heard::Idle(_)) => {}
+                (Act::SongByProgram, Heard::Program(number)) => {
+                    self.command(now, Command::Song(number as u16));
+                }
+                (Act::SongByProgram, _) => self.out.counters.ignored += 1,
+                (Act::Command(command), _) => self.command(now, command),
+            }
+        }
+        taken
+    }
+
+    pub(super) fn command(&mut self, now: Time, command: Command) {
+        match command {
+            Command::Song(place) => self.choose_song(now, place as usize),
+            Command::Next => self.step(now, 1),
+            Command::Back => self.step(now, -1),
+            Command::Panic => self.panic(now),
+            Command::Resend(Some(id)) if id.index() < self.plan.synths.len() => {
+                self.set_up(now, id);
+            }
+            Command::Resend(Some(_)) => self.out.counters.ignored += 1,
+            Command::Resend(None) => {
+                for index in 0..self.plan.synths.len() {
+                    let id = self.synths[index].id;
+                    self.set_up(now, id);
+                }
+            }
+            Command::End => self.end_all(now),
+            Command::Stop => {
+                self.end_all(now);
+                self.stopping = true;
+                self.when_silent(now);
+            }
+        }
+    }
+
+    fn step(&mut self, now: Time, by: i32) {
+        let deaf_until = self
+            .stepped_at
+            .map(|at| at + Span::from_millis(STEP_DEAF_MS));
+        if deaf_until.is_some_and(|until| now < until) {
+            return;
+        }
+        self.stepped_at = Some(now);
+        match usize::try_from(self.song as i32 + by) {
+            Ok(place) => self.choose_song(now, place),
+            Err(_) => self.out.counters.ignored += 1, // never wraps
+        }
+    }
+
+    /// Sounding notes keep their pitch: nothing is sent for them, and nothing they need is in the song.
+    fn choose_song(&mut self, now: Time, place: usize) {
+        let Some(song) = self.plan.set.get(place) else {
+            self.out.counters.ignored += 1;
+            return;
+        };
+        self.song = place;
+        self.playing = Playing::of(song);
+        self.sends_due = !song.sends.is_empty();
+        for synth in self.synths.iter_mut().take(self.plan.synths.len()) {
+            synth.repeat_when_silent = true;
+        }
+        self.send_song(now);
+        self.when_silent(now);
+    }
+
+    /// A song's own messages go out once no key is held.
+    pub(super) fn send_song(&mut self, now: Time) {
+        if !self.sends_due || self.voices.len() > 0 {
+            return;
+        }
+        self.sends_due = false;
+        for index in 0..self.plan.set[self.song].sends.len() {
+            let (id, ref bytes) = self.plan.set[self.song].sends[index];
+            match Message::read(bytes) {
+                Some(Message::Sysex(_)) => {
+                    self.synths[id.index()].send(Weight::Owed, bytes, &mut self.out);
+                }
+                Some(Message::Program { number, .. }) => self.send_program(now, id, number),
+                Some(Message::Controller { number, value, .. }) => {
+                    self.send_controller(id, number, value);
+                }
+                _ => self.out.counters.ignored += 1,
+            }
+        }
+    }
+
+    fn send_program(&mut self, now: Time, id: SynthId, number: u8) {
+        for index in 0..self.plan.parts.len() {
+            if self.plan.parts[index].to == id {
+                let bank = self.parts[index].program;
+                let program = Program {
+                    program: number,
+                    bank_msb: self.parts[index].controllers[controller::BANK_MSB as usize],
+                    bank_lsb: self.parts[index].controllers[controller::BANK_LSB as usize],
+                };
+                if bank != program {
+                    self.set_program(now, index, program);
+                }
+            }
+        }
+    }
+
+    /// Kept for every channel of the synth's parts; they hear it before their next note.
+    fn send_controller(&mut self, id: SynthId, number: u8, value: u8) {
+        for index in 0..self.plan.parts.len() {
+            if self.plan.parts[index].to == id {
+                self.parts[index].set(number, value);
+                let synth = &mut self.synths[id.index()];
+                if let Some(manager) = synth.rig.manager() {
+                    synth.controller(manager, number, value, Weight::Owed, &mut self.out);
+                }
+            }
+        }
+    }
+
+    /// Note-offs for all that is open, then pedals up.
+    fn end_all(&mut self, now: Time) {
+        for keyboard in &mut self.keyboards {
+            for source in &mut keyboard.sources {
+                source.pedals = Default::default();
+            }
+        }
+        while let Some(voice) = self.voices.take(|_| true) {
+            self.end(now, &voice, 64, None);
+        }
+        self.lift_all_pedals(now);
+    }
+
+    fn lift_all_pedals(&mut self, now: Time) {
+        for part in &mut self.parts {
+            for pedal in super::synth::PEDALS {
+                if part.controllers[pedal as usize] != super::channel::UNSAID {
+                    part.set(pedal, 0);
+                }
+            }
+        }
+        for synth in &mut self.synths {
+            for number in synth.rig.channels().iter() {
+                synth.lift_pedals(number, &mut self.out);
+                let channel = synth.channel(number);
+                if channel.damper || channel.sostenuto {
+                    channel.released_at = Some(now);
+                }
+                channel.damper = false;
+                channel.sostenuto = false;
+            }
+        }
+    }
+
+    /// Every note-off itself, then pedals up, then All Notes Off and All Sound Off, on every channel in use; then the
+    /// synths are set up again. No song state changes.
+    fn panic(&mut self, now: Time) {
+        self.end_all(now);
+        for index in 0..self.plan.synths.len() {
+            let synth = &mut self.synths[index];
+            let tail = synth.rig.tail;
+            for channel in synth.rig.channels().iter().chain(synth.rig.drums.iter()) {
+                for number in [controller::ALL_NOTES_OFF, controller::ALL_SOUND_OFF] {
+                    let bytes = [status::CONTROLLER | channel, number, 0];
+                    synth.send(Weight::Owed, &bytes, &mut self.out);
+                }
+                let channel = synth.channel(channel);
+                // All Sound Off leaves no tail.
+                channel.released_at = channel.released_at.map(|_| now - tail);
+            }
+            let id = synth.id;
+            self.set_up(now, id);
+        }
+    }
+
+    /// Takes over a new plan; gives back the old one.
+    pub(super) fn swap_plan(&mut self, now: Time, plan: Box<Plan>) -> Box<Plan> {
+        let old = std::mem::replace(&mut self.plan, plan);
+        let title = &old.set[self.song].title;
+        let stays = |place: usize| self.plan.set.get(place).is_some_and(|s| s.title == *title);
+        let place = if stays(self.song) {
+            Some(self.song)
+        } else {
+            self.plan.set.iter().position(|song| song.title == *title)
+        };
+        self.song = place.unwrap_or(self.song.min(self.plan.set.len() - 1));
+        if place.is_none() || self.plan.edits_at_once {
+            self.playing = Playing::of(&self.plan.set[self.song]);
+        }
+        for index in 0..self.plan.synths.len() {
+            let rig = Rig::of(&self.plan.synths[index]);
+            let synth = &mut self.synths[index];
+            synth.next_rig = (rig != synth.rig).then_some(rig);
+        }
+        self.when_silent(now);
+        old
+    }
+}
+
+/// A gesture as it came.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(super) enum Heard {
+    Program(u8),
+    /// A controller that has just risen through 64.
+    Rise(u8),
+    NoteOn(Key),
+    /// Another movement of a control that may have a cue: it does nothing, and is taken away all the same.
+    Idle(Gesture),
+}
+
+impl Heard {
+    fn is(self, gesture: Gesture) -> bool {
+        match self {
+            Heard::Program(number) => {
+                gesture == Gesture::AnyProgram || gesture == Gesture::Program(number)
+            }
+            Heard::Rise(number) => gesture == Gesture::Controller(number),
+            Heard::NoteOn(key) => gesture == Gesture::Note(key),
+            Heard::Idle(idle) => gesture == idle,
+        }
+    }
+}
+
+/// Whether a system exclusive message is General MIDI On or Off (universal, 09 01-03): the receiver forgets everything.
+pub(super) fn is_reset(sysex: &[u8]) -> bool {
+    matches!(sysex, [0xF0, 0x7E, _, 0x09, 0x01..=0x03, 0xF7])
+}
