@@ -8,8 +8,11 @@
 //! **Not here**: who reads the file again while playing (`daemon/`).
 
 pub mod complaint;
+pub mod expression;
 mod locate;
 pub mod node;
+pub mod shipped;
+pub mod tunings;
 
 use crate::engine::Plan;
 use crate::engine::plan::Dialect;
