@@ -40,3 +40,16 @@ const _: () =
     assert!(OUTBOX_BYTES >= SYNTHS_MAX * SYSEX_BYTES_MAX || OUTBOX_BYTES >= 2 * SYSEX_BYTES_MAX);
 const _: () = assert!(OUTBOX_ITEMS * 3 + SYSEX_BYTES_MAX <= OUTBOX_BYTES);
 const _: () = assert!(KEYBOARDS_MAX * CHANNELS <= 128 && SYNTHS_MAX * CHANNELS <= 128);
+
+/// Things that can arrive at the ports between two cycles; more is read in the next one.
+pub const INBOX_ARRIVALS: usize = 1024;
+pub const INBOX_BYTES: usize = 2 * SYSEX_BYTES_MAX;
+/// Messages and bundles that can wait for one synth's port while it is full.
+pub const WAITING_ITEMS: usize = 8 * 1024;
+pub const WAITING_BYTES: usize = 4 * SYSEX_BYTES_MAX;
+/// Of these, kept for what is owed: every note-off, then a whole panic, and as much again.
+pub const OWED_ITEMS: usize = 2 * (VOICES_MAX + CHANNELS * 160);
+pub const OWED_BYTES: usize = SYSEX_BYTES_MAX;
+const _: () =
+    assert!(OWED_ITEMS + 1024 <= WAITING_ITEMS && OWED_BYTES + SYSEX_BYTES_MAX <= WAITING_BYTES);
+const _: () = assert!(OWED_ITEMS * 3 <= OWED_BYTES && WAITING_BYTES <= u32::MAX as usize);

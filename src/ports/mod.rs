@@ -1,1 +1,75 @@
-//! placeholder
+//! Ports: bytes in from keyboards, bytes out to synths, and the loop that runs between them.
+//!
+//! **What this room is**: each backend is a loop ([`Backend::run`]) that waits, gathers what has arrived ([`Inbox`]),
+//! runs one [`Cycle`] and writes what comes out ([`Outlet`]). What a cycle does is not known here.
+//! **Start reading at** [`Cycle`], then `outbox.rs`; `alsa.rs` is the loop of a stage.
+//! **May know** `time`, `limits`.
+//! **Owns** alsa, the only clock (`clock.rs`), the only unsafe code (`system.rs`), which port fits which name (`names.rs`),
+//! and when a device has come or gone (`hotplug.rs`).
+//! Nothing in a loop blocks but its one wait, and nothing in it allocates, logs or locks.
+//! **Not here**: the engine and what is done in a cycle (`daemon/`), what a stage file says (`stage/`).
+
+#[cfg(target_os = "linux")]
+pub mod alsa;
+pub mod clock;
+pub mod hotplug;
+pub mod inbox;
+pub mod loopback;
+mod message;
+pub mod names;
+pub mod outbox;
+#[cfg(target_os = "linux")]
+#[allow(unsafe_code)]
+pub mod system;
+
+pub use inbox::{Inbox, What};
+pub use outbox::{Outlet, Room, Weight, Wire};
+
+use crate::time::Time;
+
+/// One unit of the score thread's work. Must not block, allocate, lock or log.
+pub trait Cycle {
+    /// Takes in what has arrived, in order, and everything that falls due up to `to`, and sends what comes of it.
+    fn run(&mut self, to: Time, inbox: &mut Inbox, outlet: &mut Outlet<'_>) -> Next;
+}
+
+/// What a loop does after a cycle.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Next {
+    /// Waits for something to arrive, or for this time.
+    Wait(Option<Time>),
+    /// Ends: there is nothing more to do.
+    Leave,
+}
+
+/// A way to ports.
+pub trait Backend {
+    /// Runs cycles until one of them says [`Next::Leave`].
+    ///
+    /// # Errors
+    /// The connection to the system's ports is gone and does not come back by waiting.
+    fn run(&mut self, cycle: &mut dyn Cycle) -> Result<(), Broken>;
+}
+
+/// Why a backend cannot be opened or cannot go on: what is wrong, and what would help.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub struct Broken {
+    pub wrong: String,
+    pub right: String,
+}
+
+impl std::fmt::Display for Broken {
+    fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
+        write!(f, "{}; {}", self.wrong, self.right)
+    }
+}
+
+/// What has become of the way to a synth.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Link {
+    /// Connected as the loop began.
+    Up,
+    /// Connected later: it may have been lost before, or still be waking.
+    Back,
+    Down,
+}

@@ -1,0 +1,349 @@
+//! The Linux sequencer: one client, one port of ours for each keyboard and synth, one loop.
+
+pub mod desk;
+mod events;
+mod wire;
+
+use super::clock::Clock;
+use super::hotplug::{Change, End, Hotplug, Notice};
+use super::names::Address;
+use super::outbox::{Outbox, RETRY, outboxes};
+use super::system::{Bell, readable, wait};
+use super::{Backend, Broken, Cycle, Inbox, Next, Outlet};
+use crate::limits::{KEYBOARDS_MAX, SYNTHS_MAX, SYSEX_BYTES_MAX};
+use crate::time::{Span, Time};
+use alsa::poll::{Descriptors, pollfd};
+use alsa::seq::{Addr, Connect, Event, EventType, PortCap, PortSubscribe, PortType};
+use alsa::{Direction, Seq};
+use std::ffi::CString;
+use std::sync::Arc;
+use std::sync::atomic::{AtomicU64, Ordering};
+
+/// Events that may wait for us in the kernel: its largest allowed pool. When it runs over, the kernel throws all away.
+const INPUT_POOL: u32 = 2000;
+
+/// Our client, open and with its ports in place.
+pub struct Alsa {
+    seq: Seq,
+    client: i32,
+    /// Our port number for each keyboard and each synth.
+    keyboards: Vec<i32>,
+    synths: Vec<i32>,
+    hotplug: Hotplug,
+    inbox: Inbox,
+    outboxes: Vec<Outbox>,
+    clock: Clock,
+    bell: Bell,
+    tally: Arc<Tally>,
+}
+
+/// Counts that the desk reads while the loop runs.
+#[derive(Debug, Default)]
+pub struct Tally {
+    /// Ports that came, went or changed: time to look for devices again.
+    pub changes: AtomicU64,
+    /// Times that the kernel threw our input away because we were too slow.
+    pub overruns: AtomicU64,
+    /// Packets too long for us.
+    pub too_long: AtomicU64,
+}
+
+impl Alsa {
+    /// Opens the client with one input port for each keyboard and one output port for each synth.
+    ///
+    /// # Errors
+    /// There is no sequencer, or it has no room for us.
+    pub fn open(name: &str, keyboards: &[String], synths: &[String]) -> Result<Alsa, Broken> {
+        assert!(keyboards.len() <= KEYBOARDS_MAX && synths.len() <= SYNTHS_MAX);
+        let seq = open_sequencer()?;
+        seq.set_client_name(&text(name)).map_err(broken)?;
+        seq.set_client_pool_input(INPUT_POOL).map_err(broken)?;
+        seq.input()
+            .set_input_buffer_size(SYSEX_BYTES_MAX as u32)
+            .map_err(broken)?;
+        let client = seq.client_id().map_err(broken)?;
+        let make = |names: &[String], can: PortCap| {
+            let kind = PortType::MIDI_GENERIC | PortType::APPLICATION;
+            names
+                .iter()
+                .map(|name| seq.create_simple_port(&text(name), can, kind))
+                .collect::<Result<Vec<i32>, alsa::Error>>()
+                .map_err(broken)
+        };
+        let keyboards = make(keyboards, PortCap::WRITE | PortCap::SUBS_WRITE)?;
+        let synths = make(synths, PortCap::READ | PortCap::SUBS_READ)?;
+        hear_announcements(&seq, client)?;
+        let bell = Bell::new().map_err(|error| Broken {
+            wrong: format!("The system gives no event descriptor ({error})"),
+            right: "raise the limit of open files".to_string(),
+        })?;
+        Ok(Alsa {
+            hotplug: Hotplug::new(keyboards.len(), synths.len()),
+            inbox: Inbox::new(),
+            outboxes: outboxes(synths.len()),
+            clock: Clock::start(),
+            seq,
+            client,
+            keyboards,
+            synths,
+            bell,
+            tally: Arc::default(),
+        })
+    }
+
+    /// Ends the loop's wait, so that it looks for what the desk has sent.
+    pub fn bell(&self) -> Bell {
+        self.bell.clone()
+    }
+
+    pub fn tally(&self) -> Arc<Tally> {
+        self.tally.clone()
+    }
+
+    pub fn client(&self) -> i32 {
+        self.client
+    }
+
+    /// Where a keyboard's bytes come in.
+    pub fn keyboard_address(&self, index: usize) -> Address {
+        Address {
+            client: self.client,
+            port: self.keyboards[index],
+        }
+    }
+
+    /// Where a synth's bytes go out.
+    pub fn synth_address(&self, index: usize) -> Address {
+        Address {
+            client: self.client,
+            port: self.synths[index],
+        }
+    }
+
+    /// Takes in what has come until there is no more, or no more room.
+    fn read(&mut self, now: Time) -> Result<Reading, Broken> {
+        let seq = &self.seq;
+        let mut reader = Reader {
+            now,
+            client: self.client,
+            keyboards: &self.keyboards,
+            synths: &self.synths,
+            hotplug: &mut self.hotplug,
+            inbox: &mut self.inbox,
+            tally: &self.tally,
+        };
+        let mut input = seq.input();
+        while reader.inbox.has_room() {
+            match input.event_input() {
+                Ok(event) => reader.take(&event),
+                Err(error) => match error.errno() {
+                    libc::EAGAIN | libc::EINTR => return Ok(Reading::Done),
+                    libc::ENOSPC => reader.overrun(),
+                    libc::ENOTSUP => {} // an event of a kind that is too new for us
+                    _ => return Err(broken(error)),
+                },
+            }
+        }
+        Ok(Reading::More)
+    }
+
+    fn turn(&mut self, now: Time, cycle: &mut dyn Cycle) -> (Next, bool) {
+        let mut wire = wire::SeqWire {
+            seq: &self.seq,
+            ports: &self.synths,
+            hotplug: &self.hotplug,
+        };
+        let mut outlet = Outlet {
+            outboxes: &mut self.outboxes,
+            wire: &mut wire,
+        };
+        outlet.retry();
+        let next = cycle.run(now, &mut self.inbox, &mut outlet);
+        self.inbox.clear();
+        (next, outlet.is_waiting())
+    }
+}
+
+#[derive(PartialEq, Eq)]
+enum Reading {
+    Done,
+    More,
+}
+
+impl Backend for Alsa {
+    fn run(&mut self, cycle: &mut dyn Cycle) -> Result<(), Broken> {
+        let mut descriptors: Vec<pollfd> = (&self.seq, Some(Direction::Capture))
+            .get()
+            .map_err(broken)?;
+        descriptors.push(readable(self.bell.fd()));
+        let mut at_most = Some(Span::ZERO);
+        loop {
+            wait(&mut descriptors, at_most).map_err(|error| Broken {
+                wrong: format!("Waiting for MIDI failed ({error})"),
+                right: "start trued again".to_string(),
+            })?;
+            self.bell.hush();
+            let now = self.clock.now();
+            let reading = self.read(now)?;
+            if reading == Reading::Done {
+                self.hotplug.settle();
+            }
+            let (next, waiting) = self.turn(now, cycle);
+            let Next::Wait(deadline) = next else {
+                return Ok(());
+            };
+            let until = |time: Time| time.since(self.clock.now());
+            at_most = match reading {
+                Reading::More => Some(Span::ZERO),
+                Reading::Done => {
+                    let retry = waiting.then_some(RETRY);
+                    deadline.map(until).into_iter().chain(retry).min()
+                }
+            };
+        }
+    }
+}
+
+/// Sorts one event after another into the inbox.
+struct Reader<'a> {
+    now: Time,
+    client: i32,
+    keyboards: &'a [i32],
+    synths: &'a [i32],
+    hotplug: &'a mut Hotplug,
+    inbox: &'a mut Inbox,
+    tally: &'a Tally,
+}
+
+impl Reader<'_> {
+    fn take(&mut self, event: &Event<'_>) {
+        match event.get_type() {
+            EventType::PortSubscribed | EventType::PortUnsubscribed => {
+                if let Some(connection) = event.get_data::<Connect>() {
+                    self.connection(connection, event.get_type() == EventType::PortSubscribed);
+                }
+            }
+            EventType::PortExit | EventType::ClientExit => {
+                if let Some(gone) = event.get_data::<Addr>() {
+                    self.notice(match event.get_type() {
+                        EventType::PortExit => Notice::PortGone(address(gone)),
+                        _ => Notice::ClientGone(gone.client),
+                    });
+                }
+                self.tally.changes.fetch_add(1, Ordering::Relaxed);
+            }
+            EventType::PortStart | EventType::PortChange | EventType::ClientStart => {
+                self.tally.changes.fetch_add(1, Ordering::Relaxed);
+            }
+            _ => self.midi(event),
+        }
+    }
+
+    fn midi(&mut self, event: &Event<'_>) {
+        let port = event.get_dest().port;
+        let Some(keyboard) = self.keyboards.iter().position(|own| *own == port) else {
+            return;
+        };
+        let mut buffer = events::Buffer::default();
+        let bytes = events::to_bytes(event, &mut buffer);
+        if !bytes.is_empty() && !self.inbox.add_midi(self.now, keyboard, bytes) {
+            self.tally.too_long.fetch_add(1, Ordering::Relaxed);
+        }
+    }
+
+    fn connection(&mut self, connection: Connect, joined: bool) {
+        let Connect { sender, dest } = connection;
+        let place = |ports: &[i32], port: i32| ports.iter().position(|own| *own == port);
+        let keyboard = (dest.client == self.client)
+            .then(|| place(self.keyboards, dest.port))
+            .flatten()
+            .map(|index| (End::Keyboard(index), address(sender)));
+        let synth = (sender.client == self.client)
+            .then(|| place(self.synths, sender.port))
+            .flatten()
+            .map(|index| (End::Synth(index), address(dest)));
+        for (end, peer) in keyboard.into_iter().chain(synth) {
+            self.notice(if joined {
+                Notice::Joined(end, peer)
+            } else {
+                Notice::Left(end, peer)
+            });
+        }
+    }
+
+    fn notice(&mut self, notice: Notice) {
+        let (inbox, now) = (&mut *self.inbox, self.now);
+        self.hotplug.handle(notice, &mut |change| match change {
+            Change::KeyboardLost(keyboard) => inbox.add_keyboard_lost(now, keyboard),
+            Change::Synth(synth, link) => inbox.add_synth(now, synth, link),
+        });
+    }
+
+    /// The kernel has thrown away what we had not read: note-offs among it, perhaps. Every key is let go.
+    fn overrun(&mut self) {
+        self.tally.overruns.fetch_add(1, Ordering::Relaxed);
+        self.tally.changes.fetch_add(1, Ordering::Relaxed);
+        for keyboard in 0..self.keyboards.len() {
+            self.inbox.add_keyboard_lost(self.now, keyboard);
+        }
+    }
+}
+
+/// A port that hears what the system says about ports.
+fn hear_announcements(seq: &Seq, client: i32) -> Result<(), Broken> {
+    let can = PortCap::WRITE | PortCap::NO_EXPORT;
+    let port = seq
+        .create_simple_port(&text("announcements"), can, PortType::APPLICATION)
+        .map_err(broken)?;
+    let subscription = PortSubscribe::empty().map_err(broken)?;
+    subscription.set_sender(Addr::system_announce());
+    subscription.set_dest(Addr { client, port });
+    seq.subscribe_port(&subscription).map_err(broken)
+}
+
+fn address(addr: Addr) -> Address {
+    Address {
+        client: addr.client,
+        port: addr.port,
+    }
+}
+
+fn addr(address: Address) -> Addr {
+    Addr {
+        client: address.client,
+        port: address.port,
+    }
+}
+
+fn text(name: &str) -> CString {
+    CString::new(name.replace('\0', " ")).unwrap_or_default()
+}
+
+fn broken(error: alsa::Error) -> Broken {
+    Broken {
+        wrong: format!("The ALSA sequencer refused {} ({error})", error.func()),
+        right: "look with `aconnect -l` whether it is full, or start trued again".to_string(),
+    }
+}
+
+/// Opens a client, after a look at the device: the library would write to stderr by itself if it is not there.
+fn open_sequencer() -> Result<Seq, Broken> {
+    let device = std::fs::File::options()
+        .read(true)
+        .write(true)
+        .open("/dev/snd/seq");
+    match device.map_err(|error| error.kind()) {
+        Ok(_) => Seq::open(None, None, true).map_err(broken),
+        Err(std::io::ErrorKind::PermissionDenied) => Err(Broken {
+            wrong: "This user may not use the ALSA sequencer (/dev/snd/seq)".to_string(),
+            right: "add the user to the group audio (sudo adduser $USER audio) and log in again"
+                .to_string(),
+        }),
+        Err(_) => Err(Broken {
+            wrong: "There is no ALSA sequencer on this machine (/dev/snd/seq)".to_string(),
+            right:
+                "load it with: sudo modprobe snd-seq (a kernel for cloud machines may not have it)"
+                    .to_string(),
+        }),
+    }
+}

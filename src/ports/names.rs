@@ -1,0 +1,220 @@
+//! Which port a device of the stage file gets, by name.
+//!
+//! Numbers that the system deals out (client and port) change with every plugging and are never looked at.
+
+/// Where a port is now. Changes with every plugging.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord, Hash)]
+pub struct Address {
+    pub client: i32,
+    pub port: i32,
+}
+
+/// A port that is there.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub struct Port {
+    pub address: Address,
+    pub device: String,
+    pub name: String,
+    /// USB place such as `1-1.3`, for what hangs on one.
+    pub socket: Option<String>,
+    /// Sends to us: may be a keyboard.
+    pub sends: bool,
+    /// Hears us: may be a synth.
+    pub hears: bool,
+    /// One of trued's own.
+    pub ours: bool,
+}
+
+/// Which port a device wants.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub enum Wish {
+    Any,
+    /// A port of our own; others come to it.
+    Virtual,
+    Named {
+        globs: Vec<String>,
+        socket: Option<String>,
+    },
+}
+
+/// A device of the stage file and its wish.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub struct Wanted {
+    pub name: String,
+    pub wish: Wish,
+}
+
+/// Who is connected to what: one entry for each keyboard and each synth, in the order of the stage file.
+#[derive(Clone, Debug, Default, PartialEq, Eq)]
+pub struct Choice {
+    pub keyboards: Vec<Vec<Address>>,
+    pub synths: Vec<Option<Address>>,
+    /// What a player may want to know: a glob that fits several ports.
+    pub remarks: Vec<String>,
+}
+
+impl Port {
+    /// `Device: port`, or just one of them if they say the same.
+    pub fn full_name(&self) -> String {
+        let (device, name) = (self.device.trim(), self.name.trim());
+        if device.is_empty() || name.starts_with(device) {
+            name.to_string()
+        } else if name.is_empty() || device.starts_with(name) {
+            device.to_string()
+        } else {
+            format!("{device}: {name}")
+        }
+    }
+
+    /// The system's own loop from all to all.
+    pub fn is_through(&self) -> bool {
+        let through = |name: &str| name.to_lowercase().contains("midi through");
+        through(&self.device) || through(&self.name)
+    }
+
+    fn fits(&self, glob: &str, socket: &Option<String>) -> bool {
+        let places_agree = socket.is_none() || self.socket == *socket;
+        let through = !self.is_through() || glob.to_lowercase().contains("through");
+        let names = [&self.name, &self.device, &self.full_name()]
+            .iter()
+            .any(|name| matches(glob, name) || matches(glob, without_numbers(name)));
+        !self.ours && places_agree && through && names
+    }
+}
+
+/// A glob with nothing but stars: it means "whatever is there" and not a device by name.
+fn is_bare(glob: &str) -> bool {
+    glob.chars().all(|c| c == '*' || c == '?')
+}
+
+/// Cuts off what counts twins and ports: `Keys MIDI 1` and `Keys 24:0` are `Keys MIDI` and `Keys`.
+pub fn without_numbers(name: &str) -> &str {
+    let cut = name.trim_end_matches(|c: char| c.is_ascii_digit() || matches!(c, ':' | '-' | ' '));
+    if cut.is_empty() { name } else { cut }
+}
+
+/// Whether a glob fits a whole name, in any case: `*` is any run of letters, `?` any one.
+pub fn matches(glob: &str, name: &str) -> bool {
+    let glob: Vec<char> = glob.to_lowercase().chars().collect();
+    let name: Vec<char> = name.to_lowercase().chars().collect();
+    let (mut g, mut n) = (0, 0);
+    // Where to go on if what follows the last star does not fit: behind the star, and one letter further on.
+    let mut star: Option<(usize, usize)> = None;
+    while n < name.len() {
+        if g < glob.len() && glob[g] == '*' {
+            star = Some((g + 1, n));
+            g += 1;
+        } else if g < glob.len() && (glob[g] == '?' || glob[g] == name[n]) {
+            g += 1;
+            n += 1;
+        } else if let Some((after, from)) = star {
+            star = Some((after, from + 1));
+            g = after;
+            n = from + 1;
+        } else {
+            return false;
+        }
+    }
+    glob[g..].iter().all(|c| *c == '*')
+}
+
+/// Gives every device its port. What a device has already, it keeps while the port is there; so a better port that
+/// comes later takes nothing away from a player.
+pub fn choose(ports: &[Port], keyboards: &[Wanted], synths: &[Wanted], held: &Choice) -> Choice {
+    let mut choice = Choice {
+        keyboards: vec![Vec::new(); keyboards.len()],
+        synths: vec![None; synths.len()],
+        remarks: Vec::new(),
+    };
+    let is_there = |address: Address| ports.iter().any(|port| port.address == address);
+    for index in 0..synths.len() {
+        let held = held.synths.get(index).copied().flatten();
+        choice.synths[index] = held.filter(|address| is_there(*address));
+    }
+    // Those that say a name choose first.
+    for (index, wanted) in synths.iter().enumerate() {
+        if choice.synths[index].is_none() {
+            choice.synths[index] = named_synth(ports, wanted, &mut choice.remarks);
+        }
+    }
+    for (index, wanted) in synths.iter().enumerate() {
+        if choice.synths[index].is_none() && wanted.wish == Wish::Any {
+            choice.synths[index] = any_synth(ports, &choice.synths);
+        }
+    }
+    for (index, wanted) in keyboards.iter().enumerate() {
+        let held: Vec<Address> = held.keyboards.get(index).cloned().unwrap_or_default();
+        let kept = held.into_iter().find(|address| is_there(*address));
+        choice.keyboards[index] = match (&wanted.wish, kept) {
+            (Wish::Virtual, _) => Vec::new(),
+            (Wish::Any, _) => ports
+                .iter()
+                .filter(|port| port.sends && is_free(port, &choice.synths))
+                .map(|port| port.address)
+                .collect(),
+            (Wish::Named { .. }, Some(kept)) => vec![kept],
+            (Wish::Named { .. }, None) => {
+                let Choice {
+                    synths, remarks, ..
+                } = &mut choice;
+                let port = first_named(ports, wanted, remarks, |port, glob| {
+                    port.sends && (!is_bare(glob) || is_free(port, synths))
+                });
+                port.into_iter().collect()
+            }
+        };
+    }
+    choice
+}
+
+/// Neither ours, nor a through port, nor used as a synth.
+fn is_free(port: &Port, synths: &[Option<Address>]) -> bool {
+    !port.ours && !port.is_through() && !synths.contains(&Some(port.address))
+}
+
+fn named_synth(ports: &[Port], wanted: &Wanted, remarks: &mut Vec<String>) -> Option<Address> {
+    first_named(ports, wanted, remarks, |port, _| port.hears)
+}
+
+/// The first output port; one that cannot be a keyboard comes before one that can, so that a keyboard with a socket
+/// both ways stays a keyboard.
+fn any_synth(ports: &[Port], taken: &[Option<Address>]) -> Option<Address> {
+    ports
+        .iter()
+        .filter(|port| port.hears && is_free(port, taken))
+        .min_by_key(|port| port.sends)
+        .map(|port| port.address)
+}
+
+/// The first port that fits the first glob that any port fits.
+fn first_named(
+    ports: &[Port],
+    wanted: &Wanted,
+    remarks: &mut Vec<String>,
+    may: impl Fn(&Port, &str) -> bool,
+) -> Option<Address> {
+    let Wish::Named { globs, socket } = &wanted.wish else {
+        return None;
+    };
+    globs.iter().find_map(|glob| {
+        let mut fitting = ports
+            .iter()
+            .filter(|port| may(port, glob) && port.fits(glob, socket));
+        let first = fitting.next()?;
+        let others: Vec<String> = fitting
+            .map(|port| format!("\"{}\"", port.full_name()))
+            .collect();
+        if !others.is_empty() {
+            remarks.push(format!(
+                "{glob} for {} fits several ports: \"{}\" is taken, not {}",
+                wanted.name,
+                first.full_name(),
+                others.join(" or ")
+            ));
+        }
+        Some(first.address)
+    })
+}
+
+#[cfg(test)]
+mod tests;

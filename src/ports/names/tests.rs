@@ -1,0 +1,187 @@
+//! Names and wishes against made-up machines.
+
+use super::*;
+
+fn port(client: i32, device: &str, name: &str, ways: &str) -> Port {
+    Port {
+        address: Address { client, port: 0 },
+        device: device.to_string(),
+        name: name.to_string(),
+        socket: None,
+        sends: ways.contains('s'),
+        hears: ways.contains('h'),
+        ours: ways.contains('o'),
+    }
+}
+
+fn named(name: &str, globs: &[&str]) -> Wanted {
+    Wanted {
+        name: name.to_string(),
+        wish: Wish::Named {
+            globs: globs.iter().map(|glob| glob.to_string()).collect(),
+            socket: None,
+        },
+    }
+}
+
+fn any(name: &str) -> Wanted {
+    Wanted {
+        name: name.to_string(),
+        wish: Wish::Any,
+    }
+}
+
+fn chosen(ports: &[Port], keyboards: &[Wanted], synths: &[Wanted]) -> (Vec<Vec<i32>>, Vec<i32>) {
+    let choice = choose(ports, keyboards, synths, &Choice::default());
+    clients(&choice)
+}
+
+fn clients(choice: &Choice) -> (Vec<Vec<i32>>, Vec<i32>) {
+    let keyboards = choice.keyboards.iter();
+    (
+        keyboards
+            .map(|all| all.iter().map(|a| a.client).collect())
+            .collect(),
+        choice
+            .synths
+            .iter()
+            .map(|a| a.map_or(-1, |a| a.client))
+            .collect(),
+    )
+}
+
+#[test]
+fn globs() {
+    for (glob, name, fits) in [
+        ("*Keys*", "Stage keys mk2", true),
+        ("keys", "Keys", true),
+        ("keys", "Keys 2", false),
+        ("*", "", true),
+        ("a*b*c", "a-b-b-c", true),
+        ("a*b*c", "a-b-b-d", false),
+        ("?ey", "Key", true),
+        ("?ey", "ey", false),
+        ("*É*", "bébé", true),
+        ("[abc]", "a", false),
+    ] {
+        assert_eq!(matches(glob, name), fits, "{glob} on {name}");
+    }
+    assert_eq!(without_numbers("Keys MIDI 1"), "Keys MIDI");
+    assert_eq!(without_numbers("Keys 24:0"), "Keys");
+    assert_eq!(without_numbers("1234"), "1234");
+}
+
+#[test]
+fn a_star_takes_no_port_of_ours_no_through_port_and_no_synth() {
+    let ports = [
+        port(14, "Midi Through", "Midi Through Port-0", "sh"),
+        port(20, "Wharf Keys", "Wharf Keys MIDI 1", "sh"),
+        port(24, "Small Pads", "Small Pads MIDI 1", "s"),
+        port(28, "Loft Organ", "Loft Organ MIDI 1", "sh"),
+        port(128, "trued", "keys", "sho"),
+    ];
+    // The organ is named, so a star for keyboards leaves it alone.
+    assert_eq!(
+        chosen(&ports, &[any("all")], &[named("organ", &["*organ*"])]),
+        (vec![vec![20, 24]], vec![28])
+    );
+    assert_eq!(
+        chosen(
+            &ports,
+            &[named("one", &["*"])],
+            &[named("organ", &["*organ*"])]
+        ),
+        (vec![vec![20]], vec![28])
+    );
+    // Named outright, one device is both; a through port must be called by its name.
+    assert_eq!(
+        chosen(
+            &ports,
+            &[named("keys", &["*organ*"]), named("t", &["*through*"])],
+            &[named("organ", &["*organ*"])]
+        ),
+        (vec![vec![28], vec![14]], vec![28])
+    );
+    // Never one of our own, even by name.
+    assert_eq!(
+        chosen(&ports, &[named("k", &["trued"])], &[]),
+        (vec![vec![]], vec![])
+    );
+}
+
+#[test]
+fn any_synth_is_the_first_that_hears_and_rather_one_that_is_no_keyboard() {
+    let ports = [
+        port(14, "Midi Through", "Midi Through Port-0", "sh"),
+        port(20, "Wharf Keys", "Wharf Keys MIDI 1", "sh"),
+        port(130, "Loft Organ", "Loft Organ", "h"),
+    ];
+    assert_eq!(
+        chosen(&ports, &[any("all")], &[any("synth")]),
+        (vec![vec![20]], vec![130])
+    );
+    assert_eq!(
+        chosen(&ports[..2], &[], &[any("synth")]),
+        (vec![], vec![20])
+    );
+    assert_eq!(
+        chosen(&ports[..1], &[], &[any("synth")]),
+        (vec![], vec![-1])
+    );
+}
+
+#[test]
+fn globs_are_tried_in_order_and_twins_are_told() {
+    let ports = [
+        port(20, "Rental", "Rental MIDI 1", "s"),
+        port(24, "Wharf Keys", "Wharf Keys MIDI 1", "s"),
+        port(28, "Wharf Keys", "Wharf Keys MIDI 1", "s"),
+    ];
+    let keys = [named("keys", &["*Keys*", "*Rental*"])];
+    let choice = choose(&ports, &keys, &[], &Choice::default());
+    assert_eq!(clients(&choice).0, [[24]]);
+    assert_eq!(
+        choice.remarks,
+        [
+            "*Keys* for keys fits several ports: \"Wharf Keys MIDI 1\" is taken, not \"Wharf Keys MIDI 1\""
+        ]
+    );
+    assert_eq!(chosen(&ports[..1], &keys, &[]).0, [[20]]);
+
+    let mut twins = ports.to_vec();
+    twins[1].socket = Some("1-1.2".to_string());
+    twins[2].socket = Some("1-1.3".to_string());
+    let by_place = [Wanted {
+        name: "keys".to_string(),
+        wish: Wish::Named {
+            globs: vec!["*Keys*".to_string()],
+            socket: Some("1-1.3".to_string()),
+        },
+    }];
+    let choice = choose(&twins, &by_place, &[], &Choice::default());
+    assert_eq!(
+        (clients(&choice).0, choice.remarks.len()),
+        (vec![vec![28]], 0)
+    );
+}
+
+#[test]
+fn what_is_held_stays_until_it_goes() {
+    let rental = port(20, "Rental", "Rental MIDI 1", "s");
+    let wharf = port(24, "Wharf Keys", "Wharf Keys MIDI 1", "s");
+    let organ = port(30, "Loft Organ", "Loft Organ", "h");
+    let first_organ = port(29, "Other Organ", "Other Organ", "h");
+    let keys = [named("keys", &["*Keys*", "*Rental*"])];
+    let synths = [any("synth")];
+    let one = choose(
+        &[rental.clone(), organ.clone()],
+        &keys,
+        &synths,
+        &Choice::default(),
+    );
+    let all = [rental, wharf.clone(), first_organ, organ];
+    let two = choose(&all, &keys, &synths, &one);
+    assert_eq!(clients(&two), (vec![vec![20]], vec![30]));
+    let three = choose(&[wharf], &keys, &synths, &two);
+    assert_eq!(clients(&three), (vec![vec![24]], vec![-1]));
+}
