@@ -118,6 +118,11 @@ impl Complaints {
         });
     }
 
+    /// The line of a node, to point from one complaint to another place.
+    pub fn line_of(&self, trail: &Trail) -> usize {
+        super::locate::locate(&self.files[trail.file].1, &trail.steps).map_or(1, |(line, _)| line)
+    }
+
     pub fn is_empty(&self) -> bool {
         self.found.is_empty()
     }

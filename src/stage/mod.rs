@@ -7,17 +7,32 @@
 //! **Owns** serde_yaml. A [`Stage`] cannot be wrong.
 //! **Not here**: who reads the file again while playing (`daemon/`).
 
+mod advice;
+mod black_keys;
+mod compile;
 pub mod complaint;
+mod cues;
+mod cuts;
+pub mod defaults;
 pub mod expression;
+mod intonation;
+mod lamps;
 mod locate;
+mod naming;
 pub mod node;
-pub mod shipped;
+mod placing;
+mod pools;
+mod rig;
+mod shipped;
+mod slips;
+mod songs;
 pub mod tunings;
+mod values;
+pub mod words;
 
 use crate::engine::Plan;
-use crate::engine::plan::Dialect;
-use crate::tuning::{Key, Letter, Placement, Scale, Tuning};
-use complaint::Complaint;
+use crate::tuning::{Letter, Placement, Scale, Tuning};
+use complaint::{Complaint, Complaints};
 use std::path::{Path, PathBuf};
 use std::sync::Arc;
 
@@ -78,14 +93,22 @@ impl Stage {
     /// # Errors
     /// Every complaint at once, in reading order. A file that cannot be read is one complaint with line 0.
     pub fn read(path: &Path) -> Result<Stage, Vec<Complaint>> {
-        let _ = path;
-        todo!()
+        let unread = |wrong: String, right: &str| {
+            let mut complaints = Complaints::default();
+            complaints.add_unread(path, wrong, right);
+            complaints.into_sorted()
+        };
+        let bytes = std::fs::read(path).map_err(|error| {
+            unread(format!("cannot be read ({error})"), "give the path of a stage file")
+        })?;
+        let text = String::from_utf8(bytes)
+            .map_err(|_| unread(String::from("is not UTF-8 text"), "save it as UTF-8"))?;
+        Stage::parse(path, &text)
     }
 
     /// As `read`, for a text already in hand; `path` is where it is said to come from.
     pub fn parse(path: &Path, text: &str) -> Result<Stage, Vec<Complaint>> {
-        let _ = (path, text);
-        todo!()
+        compile::parse(path, text)
     }
 
     /// A plan for the live engine.
@@ -102,6 +125,3 @@ impl Stage {
         Box::new(plan)
     }
 }
-
-#[allow(unused_imports)]
-use {Dialect as _, Key as _};

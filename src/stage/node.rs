@@ -43,6 +43,11 @@ impl<'n> At<'n> {
         At { node, trail }
     }
 
+    /// Whether nothing is written here (`keys:` with nothing behind it).
+    pub fn is_nothing(&self) -> bool {
+        *self.node == Node::Nothing
+    }
+
     /// Text or number, as typed. Complains (`wanted`: "a tuning name") about anything else.
     pub fn text(&self, wanted: &str, complaints: &mut Complaints) -> Option<String> {
         match self.node {
@@ -157,6 +162,20 @@ pub struct Fields<'n> {
 }
 
 impl<'n> Fields<'n> {
+    /// No fields at all: what stands for a song that says nothing.
+    pub fn none(trail: Trail) -> Fields<'n> {
+        Fields {
+            trail,
+            left: Vec::new(),
+            asked: Vec::new(),
+        }
+    }
+
+    /// Whether nothing is left.
+    pub fn is_empty(&self) -> bool {
+        self.left.is_empty()
+    }
+
     /// The field of that name, if written. A field with nothing behind it counts as not written.
     pub fn take(&mut self, name: &'static str) -> Option<At<'n>> {
         self.asked.push(name);
@@ -169,6 +188,11 @@ impl<'n> Fields<'n> {
             node,
             self.trail.then(Segment::Key(written.to_string())),
         ))
+    }
+
+    /// Whether a field of that name is left.
+    pub fn has(&self, name: &str) -> bool {
+        self.left.iter().any(|(written, _)| *written == name)
     }
 
     /// Everything left, with names of the player's own choosing.
@@ -186,8 +210,12 @@ impl<'n> Fields<'n> {
 
     /// Complains about every field that was not taken, with the nearest known name.
     pub fn finish(self, complaints: &mut Complaints) {
-        for (name, _) in &self.left {
+        for (name, node) in &self.left {
             let trail = self.trail.then(Segment::Name(name.to_string()));
+            if let Some((wrong, right)) = super::slips::unknown_key(name, node, &self.asked) {
+                complaints.add(&trail, wrong, right);
+                continue;
+            }
             let right = match nearest(name, &self.asked) {
                 Some(known) => format!("did you mean `{known}`?"),
                 None => format!("known here: {}", self.asked.join(", ")),
@@ -259,6 +287,10 @@ impl<'de> Visitor<'de> for Tree {
     }
 
     fn visit_unit<E>(self) -> Result<Node, E> {
+        Ok(Node::Nothing)
+    }
+
+    fn visit_none<E>(self) -> Result<Node, E> {
         Ok(Node::Nothing)
     }
 

@@ -1,0 +1,189 @@
+//! A whole stage file: its sections in order, then the plan.
+
+use super::advice::Findings;
+use super::complaint::{Complaint, Trail};
+use super::naming::Scene;
+use super::node::{At, Fields, Node};
+use super::rig::{self, Rig, Sections};
+use super::songs::{self, Desk};
+use super::tunings::{Library, Reference};
+use super::values::choice;
+use super::{Stage, cues, defaults, lamps, placing, pools, slips};
+use crate::engine::Plan;
+use std::path::{Path, PathBuf};
+
+/// What the top of the file says for the whole evening.
+struct Evening {
+    name: String,
+    pitch: Option<Reference>,
+    programs_from: u8,
+    edits_at_once: bool,
+}
+
+/// Reads a text as a stage file.
+///
+/// # Errors
+/// Every complaint at once.
+pub fn parse(path: &Path, text: &str) -> Result<Stage, Vec<Complaint>> {
+    let mut found = Findings::default();
+    let file = found.complaints.add_file(path, text);
+    let stage = slips::read_tree(file, text, &mut found.complaints)
+        .and_then(|tree| read(path, &At::new(&tree, Trail::root(file)), &mut found));
+    match stage {
+        Some(stage) if found.complaints.is_empty() => Ok(stage),
+        _ => Err(found.complaints.into_sorted()),
+    }
+}
+
+fn read(path: &Path, top: &At<'_>, found: &mut Findings) -> Option<Stage> {
+    let wanted = "a map that begins with `stage: First light`";
+    let mut fields = top.fields(wanted, &mut found.complaints)?;
+    let mut files = vec![path.to_path_buf()];
+    let evening = evening(path, &mut fields, found);
+    let rig = read_rig(path, &mut fields, &mut files, found);
+    let mut library = Library::new(fields.take("tunings"), path, &mut found.complaints);
+    library.check_own(&mut found.complaints);
+    let (book, set) = (fields.take("songs"), fields.take("set"));
+    let mut desk = Desk {
+        rig: &rig,
+        tunings: &mut library,
+        pitch: evening.pitch,
+        programs_from: evening.programs_from,
+        found,
+        placed: Vec::new(),
+        used: Vec::new(),
+    };
+    let entries = songs::read(book.as_ref(), set.as_ref(), top, &mut desk);
+    let used = desk.used;
+    let scene = Scene {
+        rig: &rig,
+        set: &entries,
+        tunings: &used,
+        programs_from: evening.programs_from,
+    };
+    let cues = match fields.take("cues") {
+        Some(at) => cues::read(&at, &scene, found),
+        None => Vec::new(),
+    };
+    if let Some(at) = fields.take("lamps") {
+        lamps::check(&at, &scene, found);
+    }
+    fields.finish(&mut found.complaints);
+    let parts = pools::allot(&rig.parts, &rig, &mut found.complaints);
+    files.extend_from_slice(library.files());
+    let (set, songs) = entries.into_iter().map(|entry| (entry.song, entry.plan)).unzip();
+    let (keyboards, keyboard_plans) = rig.keyboards.into_iter().map(|k| (k.device, k.plan)).unzip();
+    let (synths, synth_plans) = rig.synths.into_iter().map(|s| (s.device, s.plan)).unzip();
+    Some(Stage {
+        name: evening.name,
+        keyboards,
+        synths,
+        set,
+        advice: std::mem::take(&mut found.advice),
+        files,
+        plan: Plan {
+            keyboards: keyboard_plans,
+            synths: synth_plans,
+            parts,
+            set: songs,
+            cues,
+            edits_at_once: evening.edits_at_once,
+        },
+    })
+}
+
+fn evening(path: &Path, fields: &mut Fields<'_>, found: &mut Findings) -> Evening {
+    let complaints = &mut found.complaints;
+    let from_file = || path.file_stem().map_or_else(String::new, |stem| stem.to_string_lossy().into());
+    let name = fields.take("stage").and_then(|at| at.text("a name for the evening", complaints));
+    let pitch = fields.take("pitch").and_then(|at| placing::pitch(&at, complaints));
+    let programs_from = fields
+        .take("programs_from")
+        .and_then(|at| at.whole("where programs begin", 0..=1, complaints));
+    const EDITS: [(&str, bool); 2] = [("at-next-song", false), ("at-once", true)];
+    let edits = fields.take("edits").and_then(|at| choice(&at, &EDITS, complaints));
+    Evening {
+        name: name.unwrap_or_else(from_file),
+        pitch,
+        programs_from: programs_from.map_or(defaults::PROGRAMS_FROM, |from| from as u8),
+        edits_at_once: edits.unwrap_or(false),
+    }
+}
+
+/// `keyboards`, `synths` and `parts`, here or in the file that `rig` names.
+fn read_rig(
+    path: &Path,
+    fields: &mut Fields<'_>,
+    files: &mut Vec<PathBuf>,
+    found: &mut Findings,
+) -> Rig {
+    let mut sections = take_sections(fields);
+    if let Some(at) = fields.take("leave") {
+        sections.leave = rig::leave(&at, &mut found.complaints).unwrap_or_default();
+    }
+    let Some(at) = fields.take("rig") else {
+        return rig::read(&sections, found);
+    };
+    let Some((tree, file)) = rig_file(path, &at, files, found) else {
+        return rig::read(&sections, found);
+    };
+    let there = At::new(&tree, Trail::root(file));
+    let wanted = "a map with keyboards, synths and parts";
+    let Some(mut fields) = there.fields(wanted, &mut found.complaints) else {
+        return rig::read(&sections, found);
+    };
+    let theirs = take_sections(&mut fields);
+    fields.finish(&mut found.complaints);
+    let pairs = [
+        (&mut sections.keyboards, theirs.keyboards),
+        (&mut sections.synths, theirs.synths),
+        (&mut sections.parts, theirs.parts),
+    ];
+    for (here, theirs) in pairs {
+        if let (Some(here), Some(_)) = (&here, &theirs) {
+            found.complaints.add(
+                &here.trail,
+                "this section stands in the rig file too",
+                "keep it in one of the two files",
+            );
+        }
+        *here = theirs.or(here.take());
+    }
+    rig::read(&sections, found)
+}
+
+fn take_sections<'n>(fields: &mut Fields<'n>) -> Sections<'n> {
+    Sections {
+        keyboards: fields.take("keyboards"),
+        synths: fields.take("synths"),
+        parts: fields.take("parts"),
+        ..Sections::default()
+    }
+}
+
+/// The tree of the rig file; its path goes from the stage file's folder.
+fn rig_file(
+    path: &Path,
+    at: &At<'_>,
+    files: &mut Vec<PathBuf>,
+    found: &mut Findings,
+) -> Option<(Node, usize)> {
+    let name = at.text("the path of a rig file", &mut found.complaints)?;
+    let file = path.parent().unwrap_or(Path::new("")).join(&name);
+    files.push(file.clone());
+    match std::fs::read_to_string(&file) {
+        Ok(text) => {
+            let number = found.complaints.add_file(&file, &text);
+            let tree = slips::read_tree(number, &text, &mut found.complaints)?;
+            Some((tree, number))
+        }
+        Err(error) => {
+            found.complaints.add(
+                &at.trail,
+                format!("the rig file {} cannot be read ({error})", file.display()),
+                "give its path from the folder of this stage file",
+            );
+            None
+        }
+    }
+}

@@ -1,0 +1,276 @@
+//! Cues: what a player does and what it makes happen.
+
+use super::advice::Findings;
+use super::complaint::{Complaints, Trail};
+use super::naming::Scene;
+use super::node::{At, Fields, Node};
+use super::rig;
+use super::values::{channels, choice, key};
+use super::words::Words;
+use crate::engine::Command;
+use crate::engine::plan::{Act, ChannelSet, CuePlan, Gesture, KeyboardId};
+use crate::limits::CUES_MAX;
+
+/// How a gesture is made.
+#[derive(Clone, Copy, Debug, PartialEq)]
+enum Press {
+    Down,
+    Up,
+    Either,
+    Long,
+}
+
+/// What stands after `when`.
+struct When {
+    trail: Trail,
+    from: Option<KeyboardId>,
+    channels: ChannelSet,
+    gesture: Gesture,
+    press: Press,
+}
+
+/// The cues this version plays; those it does not are advice.
+pub fn read(at: &At<'_>, scene: &Scene<'_>, found: &mut Findings) -> Vec<CuePlan> {
+    let items = at.items();
+    if let Some(first_too_many) = items.get(CUES_MAX) {
+        found.complaints.add(
+            &first_too_many.trail,
+            format!("this is cue number {}", CUES_MAX + 1),
+            format!("a stage file holds at most {CUES_MAX} cues"),
+        );
+    }
+    let mut seen: Vec<When> = Vec::new();
+    let mut plans = Vec::new();
+    for (index, item) in items.iter().take(CUES_MAX).enumerate() {
+        let Some((when, plan)) = cue(item, index + 1, scene, found) else {
+            continue;
+        };
+        if let Some(earlier) = seen.iter().find(|earlier| same_gesture(earlier, &when)) {
+            let line = found.complaints.line_of(&earlier.trail);
+            found.complaints.add(
+                &when.trail,
+                format!("this gesture has a cue already, on line {line}"),
+                "keep one of the two, or tell them apart by `from`, `channel` or `press`",
+            );
+        }
+        seen.push(when);
+        plans.extend(plan);
+    }
+    plans
+}
+
+/// Whether one thing a player does would fire both.
+fn same_gesture(one: &When, other: &When) -> bool {
+    let programs = |gesture| matches!(gesture, Gesture::AnyProgram | Gesture::Program(_));
+    let gesture = one.gesture == other.gesture
+        || programs(one.gesture)
+            && programs(other.gesture)
+            && (one.gesture == Gesture::AnyProgram || other.gesture == Gesture::AnyProgram);
+    let from = one.from == other.from || one.from.is_none() || other.from.is_none();
+    let channels = one.channels.0 & other.channels.0 != 0;
+    let press = match (one.press, other.press) {
+        (Press::Either, Press::Down | Press::Up) | (Press::Down | Press::Up, Press::Either) => true,
+        (one, other) => one == other,
+    };
+    gesture && from && channels && press
+}
+
+fn cue(
+    at: &At<'_>,
+    number: usize,
+    scene: &Scene<'_>,
+    found: &mut Findings,
+) -> Option<(When, Option<CuePlan>)> {
+    let wanted = "a map such as `{when: {controller: 82, from: keys}, do: next}`";
+    let mut fields = at.fields(wanted, &mut found.complaints)?;
+    let Some(when_at) = take_when(&mut fields, at, &mut found.complaints) else {
+        fields.take("do");
+        fields.take("at");
+        fields.take("while");
+        fields.take("pass");
+        fields.finish(&mut found.complaints);
+        return None;
+    };
+    let when = when(&when_at, scene, &mut found.complaints);
+    let by_program = when.as_ref().is_some_and(|when| when.gesture == Gesture::AnyProgram);
+    let words = match fields.take("do") {
+        Some(at) => words(&at, by_program, scene, &mut found.complaints),
+        None => {
+            let right = "add `do: next`, or other words of `tell`";
+            found.complaints.add(&at.trail, "this cue does nothing", right);
+            None
+        }
+    };
+    let quiet = fields.take("at").and_then(|at| {
+        choice(&at, &[("quiet", true), ("now", false)], &mut found.complaints)
+    });
+    let held = fields
+        .take("while")
+        .and_then(|at| choice(&at, &[("held", true)], &mut found.complaints));
+    let pass = fields.take("pass").and_then(|at| at.flag(&mut found.complaints));
+    fields.finish(&mut found.complaints);
+    let (when, words) = (when?, words?);
+    let mut unplayed = Vec::new();
+    if quiet == Some(true) {
+        unplayed.push("`at: quiet`");
+    }
+    if held == Some(true) {
+        unplayed.push("`while: held`");
+    }
+    match when.press {
+        Press::Down => {}
+        Press::Up => unplayed.push("`press: up`"),
+        Press::Either => unplayed.push("`press: either`"),
+        Press::Long => unplayed.push("`press: long`"),
+    }
+    let act = act(&words, scene);
+    if act.is_none() {
+        unplayed.push("what it does");
+    }
+    for what in &unplayed {
+        found.not_played(format!("cue {number}: {what}"));
+    }
+    let plan = act.filter(|_| unplayed.is_empty()).map(|act| CuePlan {
+        from: when.from,
+        channels: when.channels,
+        gesture: when.gesture,
+        act,
+        pass: pass.unwrap_or(false),
+    });
+    Some((when, plan))
+}
+
+/// `when`, with a word of its own for a cue that has none.
+fn take_when<'n>(
+    fields: &mut Fields<'n>,
+    cue: &At<'n>,
+    complaints: &mut Complaints,
+) -> Option<At<'n>> {
+    let when = fields.take("when");
+    if when.is_none() && !fields.has("on") {
+        complaints.add(
+            &cue.trail,
+            "this cue has no gesture",
+            "add `when: {controller: 82, from: keys}`",
+        );
+    }
+    when
+}
+
+fn when(at: &At<'_>, scene: &Scene<'_>, complaints: &mut Complaints) -> Option<When> {
+    let wanted = "a gesture such as `{controller: 82, from: keys}`, {program: any} or {note: D2}";
+    let mut fields = at.fields(wanted, complaints)?;
+    let from = match fields.take("from") {
+        Some(at) => Some(rig::keyboard_named(&at, scene.rig, complaints)),
+        None => None,
+    };
+    let channels = match fields.take("channel") {
+        Some(at) => channels(&at, complaints),
+        None => Some(ChannelSet::ALL),
+    };
+    let gesture = gesture(&mut fields, at, scene.programs_from, complaints);
+    let press_at = fields.take("press");
+    let presses = [
+        ("down", Press::Down),
+        ("up", Press::Up),
+        ("either", Press::Either),
+        ("long", Press::Long),
+    ];
+    let press = match &press_at {
+        Some(at) => choice(at, &presses, complaints).unwrap_or(Press::Down),
+        None => Press::Down,
+    };
+    if let (Some(at), Some(Gesture::AnyProgram | Gesture::Program(_))) = (&press_at, gesture) {
+        complaints.add(
+            &at.trail,
+            "a program change is neither pressed nor let go",
+            "leave `press` out",
+        );
+    }
+    if let Some(at) = fields.take("long_ms") {
+        let _ = at.whole("milliseconds", 100..=10_000, complaints);
+        if press != Press::Long {
+            complaints.add(&at.trail, "`long_ms` belongs to a long press", "add `press: long`");
+        }
+    }
+    fields.finish(complaints);
+    Some(When {
+        trail: at.trail.clone(),
+        from: match from {
+            Some(named) => Some(named?),
+            None => None,
+        },
+        channels: channels?,
+        gesture: gesture?,
+        press,
+    })
+}
+
+/// One of `program`, `controller` and `note`.
+fn gesture(
+    fields: &mut Fields<'_>,
+    when: &At<'_>,
+    programs_from: u8,
+    complaints: &mut Complaints,
+) -> Option<Gesture> {
+    let (program, controller, note) =
+        (fields.take("program"), fields.take("controller"), fields.take("note"));
+    let one = [&program, &controller, &note].iter().filter(|at| at.is_some()).count();
+    if one != 1 {
+        let wrong = if one == 0 { "no gesture is named here" } else { "two gestures are named here" };
+        complaints.add(
+            &when.trail,
+            wrong,
+            "write one of `program: any`, `program: 5`, `controller: 82` and `note: D2`",
+        );
+        return None;
+    }
+    if let Some(at) = program {
+        if matches!(at.node, Node::Text(text) if text == "any") {
+            return Some(Gesture::AnyProgram);
+        }
+        let from = i64::from(programs_from);
+        let number = at.whole("any, or a program", from..=127 + from, complaints)?;
+        return Some(Gesture::Program((number - from) as u8));
+    }
+    if let Some(at) = controller {
+        let number = at.whole("a controller", 0..=119, complaints)?;
+        return Some(Gesture::Controller(number as u8));
+    }
+    note.and_then(|at| key(&at, complaints)).map(Gesture::Note)
+}
+
+/// What stands after `do`, checked against songs, synths and tunings.
+fn words(
+    at: &At<'_>,
+    by_program: bool,
+    scene: &Scene<'_>,
+    complaints: &mut Complaints,
+) -> Option<Words> {
+    let text = at.text("words of `tell`, such as next", complaints)?;
+    let mistake = match Words::parse(&text) {
+        Ok(Words::Song(None)) if by_program => return Some(Words::Song(None)),
+        Ok(words) => match scene.missing(&words) {
+            None => return Some(words),
+            Some(mistake) => mistake,
+        },
+        Err(mistake) => mistake,
+    };
+    complaints.add(&at.trail, mistake.wrong, mistake.right);
+    None
+}
+
+/// What the engine does for these words, if it can.
+fn act(words: &Words, scene: &Scene<'_>) -> Option<Act> {
+    let command = match words {
+        Words::Song(None) => return Some(Act::SongByProgram),
+        Words::Song(Some(name)) => Command::Song(scene.song_named(name)? as u16),
+        Words::Next { from: None } => Command::Next,
+        Words::Back => Command::Back,
+        Words::Panic => Command::Panic,
+        Words::Resend(None) => Command::Resend(None),
+        Words::Resend(Some(name)) => Command::Resend(Some(scene.synth_named(name)?)),
+        _ => return None,
+    };
+    Some(Act::Command(command))
+}

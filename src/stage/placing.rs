@@ -1,0 +1,271 @@
+//! Where a song puts its tuning: reference pitch, tonic, black keys.
+
+use super::black_keys;
+use super::complaint::Complaints;
+use super::node::{At, Fields, Node};
+use super::songs::Desk;
+use super::tunings::{Reference, TuningText};
+use super::expression::{self, Mistake};
+use super::values::{self, choice, key, letter};
+use super::defaults;
+use crate::pitch::{Hertz, Log};
+use crate::tuning::{
+    ByLetter, FromTonic, Key, KeyMap, Letter, Pin, Placement, Scale, TuneError, Tuning,
+};
+use std::sync::Arc;
+
+/// `A4 = 415 Hz`.
+fn equation(text: &str) -> Option<(Key, Hertz)> {
+    let (key, hertz) = text.split_once('=')?;
+    Some((Key::parse(key.trim())?, expression::hertz(hertz.trim()).ok()?))
+}
+
+/// `A4 = 415 Hz`, or `{key: A4, hz: 415, pin: key}`.
+pub fn pitch(at: &At<'_>, complaints: &mut Complaints) -> Option<Reference> {
+    if let Node::Map(_) = at.node {
+        return pitch_map(at, complaints);
+    }
+    let text = at.text("a pitch such as A4 = 415 Hz", complaints)?;
+    if let Some((key, hertz)) = equation(&text) {
+        return Some((key, hertz, Pin::Key));
+    }
+    let Mistake { wrong, right } = bad_equation(&text);
+    complaints.add(&at.trail, wrong, right);
+    None
+}
+
+fn bad_equation(text: &str) -> Mistake {
+    let example = String::from("write a key, = and its frequency, as in A4 = 415 Hz");
+    let mistake = |wrong, right| Mistake { wrong, right };
+    let Some((key, hertz)) = text.split_once('=') else {
+        let right = match expression::hertz(text) {
+            Ok(hertz) => format!("say which key sounds it: A4 = {} Hz", hertz.hertz()),
+            Err(_) => example,
+        };
+        return mistake(format!("`{text}` is not a pitch"), right);
+    };
+    let key = key.trim();
+    if Key::parse(key).is_none() {
+        return mistake(format!("`{key}` in `{text}` is not a key"), values::key_remedy(key));
+    }
+    match expression::hertz(hertz.trim()) {
+        Ok(_) => mistake(format!("`{text}` is not a pitch"), example),
+        Err(mistake) => mistake,
+    }
+}
+
+fn pitch_map(at: &At<'_>, complaints: &mut Complaints) -> Option<Reference> {
+    let mut fields = at.fields("A4 = 415 Hz", complaints)?;
+    let usual = equation(defaults::REFERENCE);
+    let reference = match fields.take("key") {
+        Some(at) => key(&at, complaints),
+        None => usual.map(|(key, _)| key),
+    };
+    let hertz = match fields.take("hz") {
+        Some(at) => {
+            let text = at.text("a frequency such as 415", complaints)?;
+            match expression::hertz(&text) {
+                Ok(hertz) => Some(hertz),
+                Err(mistake) => {
+                    complaints.add(&at.trail, mistake.wrong, mistake.right);
+                    None
+                }
+            }
+        }
+        None => {
+            // 440 belongs to A4; another key needs a frequency of its own.
+            if reference.is_some_and(|key| usual.is_some_and(|(usual, _)| key != usual)) {
+                complaints.add(&at.trail, "this pitch has no frequency", "add `hz: 415`");
+            }
+            usual.map(|(_, hertz)| hertz)
+        }
+    };
+    let pin = match fields.take("pin") {
+        Some(at) => choice(&at, &[("key", Pin::Key), ("tonic", Pin::Tonic)], complaints),
+        None => Some(Pin::Key),
+    };
+    fields.finish(complaints);
+    Some((reference?, hertz?, pin?))
+}
+
+type Placed = (Scale, Placement, Arc<Tuning>, [Letter; 12]);
+
+/// Takes `pitch`, `tonic`, `turned_to`, `black_keys` and `by_chord`, and puts the tuning there.
+pub fn read(
+    fields: &mut Fields<'_>,
+    described: Option<&TuningText>,
+    song: &At<'_>,
+    desk: &mut Desk<'_, '_>,
+) -> Option<Placed> {
+    let pitch_at = fields.take("pitch");
+    let reference = match &pitch_at {
+        Some(at) => Some(pitch(at, &mut desk.found.complaints)),
+        None => desk.pitch.map(Some),
+    };
+    let tonic_at = fields.take("tonic");
+    let turned_at = fields.take("turned_to");
+    let black_at = fields.take("black_keys");
+    let by_chord = fields
+        .take("by_chord")
+        .and_then(|at| at.flag(&mut desk.found.complaints));
+    if by_chord == Some(true) {
+        desk.found.not_played("`by_chord: yes`");
+    }
+    let described = described?;
+    let mut scale = described.scale.clone();
+    let complaints = &mut desk.found.complaints;
+    let tonic = tonic(tonic_at.as_ref(), &scale, &described.name, complaints);
+    let turned_to = turned_to(turned_at.as_ref(), &scale, &described.name, complaints);
+    let mut names = names(&scale, turned_to);
+    if let Some(at) = &black_at {
+        black_keys::read(at, &mut scale, turned_to, &mut names, desk.found);
+    }
+    // Not written at all is one thing (the tuning may bring its own), written wrong is another.
+    let reference = match reference {
+        Some(written) => Some(written?),
+        None => None,
+    };
+    let placement = described.placement(tonic, turned_to, reference);
+    let place = pitch_at.as_ref().unwrap_or(song);
+    let tuning = put(&scale, &placement, &described.name, place, desk)?;
+    Some((scale, placement, tuning, names))
+}
+
+/// Puts a scale on the keys, or hands out what another song has put there already.
+fn put(
+    scale: &Scale,
+    placement: &Placement,
+    name: &str,
+    place: &At<'_>,
+    desk: &mut Desk<'_, '_>,
+) -> Option<Arc<Tuning>> {
+    let known = desk
+        .placed
+        .iter()
+        .find(|(other, at, _)| at == placement && other == scale);
+    if let Some((_, _, tuning)) = known {
+        return Some(Arc::clone(tuning));
+    }
+    match scale.tune(placement) {
+        Ok(tuning) => {
+            let tuning = Arc::new(tuning);
+            desk.placed.push((scale.clone(), *placement, Arc::clone(&tuning)));
+            Some(tuning)
+        }
+        Err(TuneError::SilentReference(key)) => {
+            desk.found.complaints.add(
+                &place.trail,
+                format!("the reference key {key} is silent in {name}"),
+                format!(
+                    "name a key that sounds, as in `pitch: D4 = 293.66 Hz`, or let the tonic stand where equal \
+                     temperament puts it: `pitch: {{key: {key}, hz: {}, pin: tonic}}`",
+                    placement.hertz.hertz()
+                ),
+            );
+            None
+        }
+        Err(TuneError::NothingSounds) => {
+            desk.found.complaints.add(
+                &place.trail,
+                format!("no key at all sounds in {name} here"),
+                "give at least one key a pitch, and a tonic within the keyboard",
+            );
+            None
+        }
+    }
+}
+
+/// The key with step 0. By letter there is none, and asking for one is a misunderstanding worth a word.
+fn tonic(
+    at: Option<&At<'_>>,
+    scale: &Scale,
+    name: &str,
+    complaints: &mut Complaints,
+) -> Option<Key> {
+    let Scale::FromTonic(_) = scale else {
+        let at = at?;
+        let typed = values::shown(at);
+        let letter = typed.trim_matches('`');
+        complaints.add(
+            &at.trail,
+            format!("{name} goes by letter: its keys keep their pitches whatever the tonic"),
+            format!(
+                "leave `tonic` out (`in: {letter}` says which key the piece is in), or turn the tuning on purpose \
+                 with `turned_to: {letter}`"
+            ),
+        );
+        return None;
+    };
+    let usual = || Key::parse(&format!("{}{}", defaults::TONIC, defaults::TONIC_OCTAVE));
+    let Some(at) = at else {
+        return usual();
+    };
+    let Some(text) = at.text("a key such as D, or D4", complaints) else {
+        return usual();
+    };
+    let key = match Letter::parse(&text) {
+        Some(letter) => Key::parse(&format!("{letter}{}", defaults::TONIC_OCTAVE)),
+        None => Key::parse(&text),
+    };
+    if key.is_none() {
+        complaints.add(
+            &at.trail,
+            format!("`{text}` is not a key"),
+            "write a letter, # or b if it has one, and an octave if you like: D, Eb, D4",
+        );
+    }
+    key.or_else(usual)
+}
+
+fn turned_to(
+    at: Option<&At<'_>>,
+    scale: &Scale,
+    name: &str,
+    complaints: &mut Complaints,
+) -> Option<Letter> {
+    let at = at?;
+    let letter = letter(at, complaints)?;
+    if let Scale::FromTonic(_) = scale {
+        complaints.add(
+            &at.trail,
+            format!("{name} goes from the tonic and is turned by it"),
+            format!("write `tonic: {letter}`"),
+        );
+        return None;
+    }
+    Some(letter)
+}
+
+/// Places on the line of fifths that a turned tuning moves by.
+pub fn turn(by_letter: &ByLetter, turned_to: Option<Letter>) -> i8 {
+    let home = by_letter.names[by_letter.home as usize % 12];
+    turned_to.map_or(0, |letter| letter.place() - home.place())
+}
+
+/// What the twelve keys are called in this song.
+fn names(scale: &Scale, turned_to: Option<Letter>) -> [Letter; 12] {
+    let mut names: [Letter; 12] = std::array::from_fn(|pitch_class| Letter::usual(pitch_class as u8));
+    if let Scale::ByLetter(by_letter) = scale {
+        let by = turn(by_letter, turned_to);
+        for name in by_letter.names {
+            if let Some(moved) = Letter::on_line(name.place() + by) {
+                names[moved.pitch_class() as usize] = moved;
+            }
+        }
+    }
+    names
+}
+
+/// Whether a scale repeats at the octave every twelve keys, as harmony needs it.
+pub fn twelve_to_the_octave(scale: &Scale) -> bool {
+    let FromTonic { steps, period, map, .. } = match scale {
+        Scale::ByLetter(_) => return true,
+        Scale::FromTonic(from_tonic) => from_tonic,
+    };
+    let keys = match map {
+        KeyMap::EachKey => steps.len(),
+        KeyMap::Letters { .. } => 12,
+        KeyMap::Keys { steps, .. } => steps.len(),
+    };
+    keys == 12 && *period == Log::OCTAVE
+}

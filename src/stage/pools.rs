@@ -1,0 +1,128 @@
+//! Which channels of a synth each part may call its own.
+
+use super::complaint::{Complaints, Trail};
+use super::rig::{Part, Rig};
+use super::values::spell_channels;
+use crate::engine::plan::{ChannelSet, Dialect, PartPlan, SynthId};
+
+/// Gives every part its channels: those it asks for, else an even share of what is left, in order.
+pub fn allot(parts: &[Part], rig: &Rig, complaints: &mut Complaints) -> Vec<PartPlan> {
+    let mut pools = vec![ChannelSet::NONE; parts.len()];
+    for (index, synth) in rig.synths.iter().enumerate() {
+        let here: Vec<usize> = (0..parts.len())
+            .filter(|part| parts[*part].to.index() == index)
+            .collect();
+        let mut free = synth.plan.members;
+        for part in &here {
+            if let Some((trail, asked)) = &parts[*part].channel {
+                let asked = asked_for(*asked, free, trail, &parts[*part], rig, complaints);
+                pools[*part] = asked;
+                free = free.without(asked);
+            }
+        }
+        let sharing: Vec<usize> = here
+            .iter()
+            .copied()
+            .filter(|part| parts[*part].channel.is_none())
+            .collect();
+        share(free, &sharing, parts, rig, &mut pools, complaints);
+    }
+    let plans = parts.iter().zip(pools);
+    plans
+        .map(|(part, pool)| PartPlan {
+            from: part.from,
+            hears: ChannelSet::ALL,
+            keys: part.keys,
+            to: part.to,
+            pool,
+            transpose_keys: part.transpose_keys,
+            offset: part.offset,
+            pass: part.pass,
+            tune: part.tune,
+            late_offs: shares_manager(part.to, parts, rig),
+        })
+        .collect()
+}
+
+/// Two parts in one MPE zone share its manager, where pedals are heard.
+fn shares_manager(to: SynthId, parts: &[Part], rig: &Rig) -> bool {
+    let mpe = matches!(rig.synths[to.index()].plan.dialect, Dialect::Mpe { .. });
+    mpe && parts.iter().filter(|part| part.to == to).count() > 1
+}
+
+/// What a part asks for by number, as far as it can have it.
+fn asked_for(
+    asked: ChannelSet,
+    free: ChannelSet,
+    trail: &Trail,
+    part: &Part,
+    rig: &Rig,
+    complaints: &mut Complaints,
+) -> ChannelSet {
+    let synth = &rig.synths[part.to.index()];
+    let name = &synth.device.name;
+    let members = synth.plan.members;
+    let outside = asked.without(members);
+    let taken = asked.without(free).without(outside);
+    let spelt = spell_channels(outside);
+    let drums = ChannelSet(outside.0 & synth.plan.drums.0);
+    if drums != ChannelSet::NONE {
+        complaints.add(
+            trail,
+            format!("channel {} is a drum channel of {name}", spell_channels(drums)),
+            "what is played on it goes through untouched without a part; to tune it, write `drums: []` at the synth",
+        );
+    } else if outside != ChannelSet::NONE {
+        let wrong = match synth.plan.dialect {
+            Dialect::Mpe { manager } if outside.has(manager) => {
+                format!("channel {} is the MPE manager of {name} and carries no notes", manager + 1)
+            }
+            _ => format!("{name} has no channel {spelt}"),
+        };
+        let right = format!("choose from its channels {}", spell_channels(members));
+        complaints.add(trail, wrong, right);
+    }
+    if taken != ChannelSet::NONE {
+        let right = match free == ChannelSet::NONE {
+            true => String::from("none is left: give the other parts fewer"),
+            false => format!("still free: {}", spell_channels(free)),
+        };
+        complaints.add(
+            trail,
+            format!("channel {} of {name} belongs to a part above", spell_channels(taken)),
+            right,
+        );
+    }
+    ChannelSet(asked.0 & free.0)
+}
+
+/// An even share each, in order; the first parts get what is over.
+fn share(
+    free: ChannelSet,
+    sharing: &[usize],
+    parts: &[Part],
+    rig: &Rig,
+    pools: &mut [ChannelSet],
+    complaints: &mut Complaints,
+) {
+    let mut channels = free.iter();
+    let count = free.count() as usize;
+    for (place, part) in sharing.iter().enumerate() {
+        let over = usize::from(place < count % sharing.len());
+        let wanted = count / sharing.len() + over;
+        pools[*part] = channels
+            .by_ref()
+            .take(wanted)
+            .fold(ChannelSet::NONE, ChannelSet::with);
+        if wanted == 0 {
+            complaints.add(
+                &parts[*part].trail,
+                format!(
+                    "no channel of {} is left for this part",
+                    rig.synths[parts[*part].to.index()].device.name
+                ),
+                "give the other parts fewer channels, or the synth more",
+            );
+        }
+    }
+}

@@ -1,0 +1,404 @@
+//! Songs: the book, and tonight's set.
+
+use super::advice::Findings;
+use super::complaint::{Complaints, Segment};
+use super::node::{At, Fields, Node, nearest};
+use super::placing;
+use super::rig::{self, Rig};
+use super::tunings::{Library, Reference, TuningText};
+use super::{Song, defaults, intonation};
+use crate::engine::plan::{SongPlan, SynthId};
+use crate::limits::SONGS_MAX;
+use crate::midi::status;
+use crate::tuning::{Letter, Placement, Scale, Tuning};
+use std::rc::Rc;
+use std::sync::Arc;
+
+/// A song for people and the same song for the engine.
+#[derive(Clone)]
+pub struct Entry {
+    pub song: Song,
+    pub plan: SongPlan,
+}
+
+/// What songs are read against: the rig, the tunings, and what the evening says for all of them.
+pub struct Desk<'d, 'n> {
+    pub rig: &'d Rig,
+    pub tunings: &'d mut Library<'n>,
+    pub pitch: Option<Reference>,
+    pub programs_from: u8,
+    pub found: &'d mut Findings,
+    /// Tunings already put somewhere, shared by the songs that put them there again.
+    pub placed: Vec<(Scale, Placement, Arc<Tuning>)>,
+    /// The tunings of all songs, each once.
+    pub used: Vec<Rc<TuningText>>,
+}
+
+/// Tonight's songs in their order.
+pub fn read(book: Option<&At<'_>>, set: Option<&At<'_>>, top: &At<'_>, desk: &mut Desk<'_, '_>) -> Vec<Entry> {
+    let mut entries: Vec<(String, Option<Entry>)> = Vec::new();
+    if let Some(at) = book {
+        let wanted = "songs by title, as in `Lantern hymn: {tuning: vallotti}`";
+        let songs = at.fields(wanted, &mut desk.found.complaints);
+        for (title, at) in songs.map(|mut songs| songs.take_all()).unwrap_or_default() {
+            let entry = book_song(&title, &at, desk);
+            entries.push((title, entry));
+        }
+    }
+    let Some(set) = set else {
+        if entries.is_empty() {
+            desk.found.complaints.add(
+                &top.trail,
+                "there is no song",
+                "write a set, as in `set: [{song: Lantern hymn, tuning: quarter-comma-meantone}]`",
+            );
+        }
+        return entries.into_iter().filter_map(|(_, entry)| entry).collect();
+    };
+    let items = set.items();
+    if items.is_empty() {
+        desk.found.complaints.add(
+            &set.trail,
+            "the set is empty",
+            "name at least one song, or leave `set` out to play the book in its order",
+        );
+    }
+    if let Some(first_too_many) = items.get(SONGS_MAX) {
+        desk.found.complaints.add(
+            &first_too_many.trail,
+            format!("this is song number {} of the set", SONGS_MAX + 1),
+            format!("a set holds at most {SONGS_MAX} songs"),
+        );
+    }
+    let mut tonight = Vec::new();
+    let mut whole: Vec<String> = Vec::new();
+    for (index, item) in items.iter().enumerate().take(SONGS_MAX) {
+        let entry = match item.node {
+            Node::Map(_) => set_song(item, &entries, &mut whole, desk),
+            _ => titled(item, &items, index, &entries, &mut desk.found.complaints),
+        };
+        tonight.extend(entry);
+    }
+    tonight
+}
+
+fn book_song(title: &str, at: &At<'_>, desk: &mut Desk<'_, '_>) -> Option<Entry> {
+    if at.is_nothing() {
+        return song(title, at, None, desk);
+    }
+    let wanted = "a map such as `{tuning: quarter-comma-meantone, in: D minor}`";
+    let fields = at.fields(wanted, &mut desk.found.complaints)?;
+    song(title, at, Some(fields), desk)
+}
+
+/// A song that stands whole in the set, or `{song: Title}` for one of the book.
+fn set_song(
+    at: &At<'_>,
+    book: &[(String, Option<Entry>)],
+    whole: &mut Vec<String>,
+    desk: &mut Desk<'_, '_>,
+) -> Option<Entry> {
+    let complaints = &mut desk.found.complaints;
+    if let Node::Map(entries) = at.node
+        && let [(start, Node::Text(end) | Node::Number(end))] = entries.as_slice()
+        && start != "song"
+    {
+        complaints.add(
+            &at.trail,
+            format!("the colon in this title makes it a key with a value: `{start}: {end}`"),
+            format!("put the title in quotes: \"{start}: {end}\""),
+        );
+        return None;
+    }
+    let mut fields = at.fields("a title, or a map such as `{song: Title, tuning: vallotti}`", complaints)?;
+    let Some(title_at) = fields.take("song") else {
+        complaints.add(
+            &at.trail,
+            "this song has no title",
+            "begin it with its title: {song: Lantern hymn, ...}",
+        );
+        song("", at, Some(fields), desk);
+        return None;
+    };
+    let title = title_at.text("a title", complaints)?;
+    let known = book.iter().find(|(known, _)| *known == title);
+    if let Some((_, entry)) = known {
+        if fields.is_empty() {
+            return entry.clone();
+        }
+        complaints.add(
+            &title_at.trail,
+            format!("`{title}` is in the book already"),
+            "write only its title here, or give this song another one",
+        );
+        return None;
+    }
+    if whole.contains(&title) {
+        complaints.add(
+            &title_at.trail,
+            format!("`{title}` stands in the set twice with settings of its own"),
+            "write it once under `songs:` and only its title here",
+        );
+        return None;
+    }
+    whole.push(title.clone());
+    song(&title, at, Some(fields), desk)
+}
+
+/// A title of the book.
+fn titled(
+    at: &At<'_>,
+    items: &[At<'_>],
+    index: usize,
+    book: &[(String, Option<Entry>)],
+    complaints: &mut Complaints,
+) -> Option<Entry> {
+    let title = at.text("a title, or a map such as `{song: Title, tuning: vallotti}`", complaints)?;
+    if let Some((_, entry)) = book.iter().find(|(known, _)| same_title(known, &title)) {
+        return entry.clone();
+    }
+    // A comma inside a title between brackets has made two of it.
+    let joined = |first: &At<'_>, second: &At<'_>| match (first.node, second.node) {
+        (Node::Text(first), Node::Text(second)) => Some(format!("{first}, {second}")),
+        _ => None,
+    };
+    let in_book = |title: &String| book.iter().any(|(known, _)| known == title);
+    if let Some(before) = index.checked_sub(1).and_then(|before| items.get(before))
+        && joined(before, at).as_ref().is_some_and(in_book)
+    {
+        return None; // complained about with the title before
+    }
+    let whole = items.get(index + 1).and_then(|next| joined(at, next)).filter(in_book);
+    if let Some(whole) = whole {
+        complaints.add(
+            &at.trail,
+            "a comma between brackets ends the title before it",
+            format!("put the title in quotes: \"{whole}\""),
+        );
+        return None;
+    }
+    let titles: Vec<&str> = book.iter().map(|(title, _)| title.as_str()).collect();
+    let right = match nearest(&title, &titles) {
+        Some(near) => format!("did you mean `{near}`?"),
+        None => format!("add it under `songs:`, or write it whole: {{song: {title}, tuning: ...}}"),
+    };
+    complaints.add(&at.trail, format!("no song is called `{title}`"), right);
+    None
+}
+
+/// The same title, also where YAML has shortened a number (`1.50`) in one of the two places.
+fn same_title(known: &str, title: &str) -> bool {
+    let number = |text: &str| text.parse::<f64>().ok();
+    known == title || number(known).is_some_and(|known| number(title) == Some(known))
+}
+
+/// Everything a song says. `fields` is `None` for a song that says nothing.
+fn song(title: &str, at: &At<'_>, fields: Option<Fields<'_>>, desk: &mut Desk<'_, '_>) -> Option<Entry> {
+    let mut fields = fields.unwrap_or_else(|| Fields::none(at.trail.clone()));
+    let described = tuning(&mut fields, at, desk);
+    let tuning_name = described.as_ref().map_or(String::new(), |d| d.name.clone());
+    let placed = placing::read(&mut fields, described.as_deref(), at, desk);
+    let in_keys = fields
+        .take("in")
+        .map(|at| in_keys(&at, &mut desk.found.complaints))
+        .unwrap_or_default();
+    let transpose_keys = fields
+        .take("transpose")
+        .map_or(0, |at| rig::transpose(&at, &mut desk.found.complaints));
+    let method = intonation::read(fields.take("intonation").as_ref(), described.as_deref(), desk.found);
+    places(&mut fields, title, described.as_deref(), desk.found);
+    let sends = match fields.take("send") {
+        Some(at) => sends(&at, desk),
+        None => Vec::new(),
+    };
+    if let Some(at) = fields.take("parts") {
+        let parts = rig::parts(&at, desk.rig, desk.found);
+        super::pools::allot(&parts, desk.rig, &mut desk.found.complaints);
+        desk.found.not_played(format!("`parts` of a song of its own ({title})"));
+    }
+    fields.finish(&mut desk.found.complaints);
+    let (scale, placement, tuning, names) = placed?;
+    Some(Entry {
+        plan: SongPlan {
+            title: title.into(),
+            tuning: Arc::clone(&tuning),
+            transpose_keys,
+            method,
+            sends,
+        },
+        song: Song {
+            title: title.to_string(),
+            tuning_name,
+            tuning_about: described.and_then(|d| d.about.clone()),
+            scale,
+            placement,
+            tuning,
+            in_keys,
+            names,
+        },
+    })
+}
+
+fn tuning(fields: &mut Fields<'_>, song: &At<'_>, desk: &mut Desk<'_, '_>) -> Option<Rc<TuningText>> {
+    let written = fields.take("tuning");
+    let at = written.as_ref().unwrap_or(song);
+    let name = match &written {
+        Some(at) => at.text("the name of a tuning", &mut desk.found.complaints)?,
+        None => String::from(defaults::TUNING),
+    };
+    let text = desk.tunings.find(&name, &at.trail, &mut desk.found.complaints)?;
+    if !desk.used.iter().any(|used| used.name == text.name) {
+        desk.used.push(Rc::clone(&text));
+    }
+    Some(text)
+}
+
+/// `D minor`, or a list of such: moves nothing, tells which chords matter.
+fn in_keys(at: &At<'_>, complaints: &mut Complaints) -> Vec<(Letter, String)> {
+    let mut keys = Vec::new();
+    for item in at.items() {
+        let Some(text) = item.text("a key such as D minor", complaints) else {
+            continue;
+        };
+        let (tonic, mode) = text.split_once(' ').unwrap_or((&text, ""));
+        match Letter::parse(tonic) {
+            Some(letter) => keys.push((letter, mode.trim().to_string())),
+            None => complaints.add(
+                &item.trail,
+                format!("`{text}` is not a key a piece is in"),
+                match tonic.chars().next().is_some_and(char::is_lowercase) {
+                    true => super::values::letter_remedy(tonic),
+                    false => String::from("write its tonic and its mode: D minor, E phrygian, G"),
+                },
+            ),
+        }
+    }
+    keys
+}
+
+/// Which place each key begins at and takes from the line: checked here, played later.
+fn places(
+    fields: &mut Fields<'_>,
+    title: &str,
+    described: Option<&TuningText>,
+    found: &mut Findings,
+) {
+    if let Some(at) = fields.take("begin_with") {
+        let wanted = "keys and their places, as in `{B: natural}`";
+        let entries = at.fields(wanted, &mut found.complaints);
+        for (name, place) in entries.map(|mut all| all.take_all()).unwrap_or_default() {
+            place_of(&name, &place, described, &mut found.complaints);
+        }
+        found.not_played(format!("`begin_with` ({title})"));
+    }
+    if let Some(at) = fields.take("by_line") {
+        let wanted = "keys and their places, as in `{E: {up: natural, down: home}}`";
+        let entries = at.fields(wanted, &mut found.complaints);
+        for (name, ways) in entries.map(|mut all| all.take_all()).unwrap_or_default() {
+            let wanted = "`{up: natural, down: home}`";
+            let Some(mut ways) = ways.fields(wanted, &mut found.complaints) else {
+                continue;
+            };
+            for way in ["up", "down"] {
+                if let Some(place) = ways.take(way) {
+                    place_of(&name, &place, described, &mut found.complaints);
+                }
+            }
+            ways.finish(&mut found.complaints);
+        }
+        found.not_played(format!("`by_line` ({title})"));
+    }
+}
+
+/// Checks that a key of the tuning has a place of that name.
+fn place_of(name: &str, place: &At<'_>, described: Option<&TuningText>, complaints: &mut Complaints) {
+    let mut key_trail = place.trail.clone();
+    while let Some(step) = key_trail.steps.last() {
+        if *step == Segment::Key(name.to_string()) {
+            break;
+        }
+        key_trail.steps.pop();
+    }
+    if let Some(last) = key_trail.steps.last_mut() {
+        *last = Segment::Name(name.to_string());
+    }
+    let Some(letter) = Letter::parse(name) else {
+        complaints.add(
+            &key_trail,
+            format!("`{name}` is not the name of a key"),
+            super::values::letter_remedy(name),
+        );
+        return;
+    };
+    let Some(word) = place.text("the name of a place, or home", complaints) else {
+        return;
+    };
+    let Some(described) = described else {
+        return;
+    };
+    let others: Vec<&str> = (described.also.iter())
+        .filter(|other| other.key == letter)
+        .map(|other| other.name.as_str())
+        .collect();
+    if word == "home" || others.contains(&word.as_str()) {
+        return;
+    }
+    let right = match others.is_empty() {
+        true => format!("name it in the tuning: `also: {{{letter}: {{{word}: 100 c}}}}`"),
+        false => format!("it has home, {}", others.join(", ")),
+    };
+    complaints.add(
+        &place.trail,
+        format!("{letter} has no place `{word}` in {}", described.name),
+        right,
+    );
+}
+
+/// Messages sent when the song begins.
+fn sends(at: &At<'_>, desk: &mut Desk<'_, '_>) -> Vec<(SynthId, Box<[u8]>)> {
+    let mut sends = Vec::new();
+    for item in at.items() {
+        let complaints = &mut desk.found.complaints;
+        let wanted = "a map such as `{program: 20, to: organ}`";
+        let Some(mut fields) = item.fields(wanted, complaints) else {
+            continue;
+        };
+        let to = match fields.take("to") {
+            Some(at) => rig::synth_named(&at, desk.rig, complaints),
+            None => SynthId::new(0),
+        };
+        let from = desk.programs_from as i64;
+        let program = fields
+            .take("program")
+            .map(|at| at.whole("a program", from..=127 + from, complaints));
+        let controller = fields
+            .take("controller")
+            .map(|at| at.whole("a controller", 0..=119, complaints));
+        let value = fields
+            .take("value")
+            .map(|at| at.whole("its value", 0..=127, complaints));
+        fields.finish(complaints);
+        let bytes: Box<[u8]> = match (program, controller, value) {
+            (Some(program), None, None) => match program {
+                Some(program) => Box::new([status::PROGRAM, (program - from) as u8]),
+                None => continue,
+            },
+            (None, Some(controller), Some(value)) => match (controller, value) {
+                (Some(number), Some(value)) => {
+                    Box::new([status::CONTROLLER, number as u8, value as u8])
+                }
+                _ => continue,
+            },
+            _ => {
+                complaints.add(
+                    &item.trail,
+                    "it is not clear what to send",
+                    "write {program: 20, to: organ} or {controller: 7, value: 100, to: organ}",
+                );
+                continue;
+            }
+        };
+        sends.extend(to.map(|to| (to, bytes)));
+    }
+    sends
+}

@@ -1,0 +1,319 @@
+//! The words of `tell`, which are also what stands after `do:`, as a closed list.
+//!
+//! Only the words: whether a song, a synth or a place of that name exists is asked by whoever knows them.
+
+use super::expression::{self, Expression, Mistake};
+use super::node::nearest;
+use super::values::{key_remedy, letter_remedy, one_of};
+use crate::pitch::{Hertz, Log};
+use crate::tuning::{Key, Letter};
+
+/// What can be told.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub enum Words {
+    /// `next`, `next from TITLE`.
+    Next { from: Option<String> },
+    Back,
+    /// A number or a title; `None` for the song with the number of the program, in cues only.
+    Song(Option<String>),
+    Pitch { to: PitchNudge, now: bool },
+    /// Keys up or down; `None` for home.
+    Transpose(Option<i8>),
+    Tonic { to: TonicMove, by: TonicBy },
+    TonicHome,
+    /// `inflect B half-flat`, with an octave for that key alone.
+    Inflect { key: Inflected, place: String },
+    InflectHome,
+    Turn(String),
+    BlackKey(Letter),
+    Root(Root),
+    /// Harmonic sevenths, or plain ones.
+    Sevenths { harmonic: bool },
+    Plain,
+    Home,
+    Resend(Option<String>),
+    Panic,
+    Fresh,
+    Keep,
+    Reload,
+    Stop,
+}
+
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum PitchNudge {
+    By(Log),
+    To(Hertz),
+    Home,
+}
+
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum TonicMove {
+    To(Letter),
+    NextKey,
+}
+
+/// How a tonic moves: where the reference puts it, held by a common key, or by equal steps.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub enum TonicBy {
+    #[default]
+    Absolute,
+    Pivot,
+    Equal,
+}
+
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Inflected {
+    Everywhere(Letter),
+    One(Key),
+}
+
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Root {
+    Hold,
+    Free,
+    NextKey,
+}
+
+/// First words, each with how the whole is written.
+const FORMS: [(&str, &str); 19] = [
+    ("next", "next, or next from TITLE"),
+    ("back", "back"),
+    ("song", "song 3, or song TITLE"),
+    ("pitch", "pitch +1 c, pitch 416 Hz or pitch home, and `now` behind it to move held notes too"),
+    ("transpose", "transpose +2, or transpose home"),
+    ("tonic", "tonic D, tonic next-key or tonic home; behind a key: absolute, pivot or equal"),
+    ("inflect", "inflect B half-flat, or inflect home"),
+    ("turn", "turn NAME, a name under `turns` in the tuning"),
+    ("black-key", "black-key Ab"),
+    ("root", "root hold, root free or root next-key"),
+    ("sevenths", "sevenths harmonic, or sevenths plain"),
+    ("plain", "plain"),
+    ("home", "home"),
+    ("resend", "resend, or resend SYNTH"),
+    ("panic", "panic"),
+    ("fresh", "fresh"),
+    ("keep", "keep"),
+    ("reload", "reload"),
+    ("stop", "stop"),
+];
+
+impl Words {
+    /// Reads what was told.
+    ///
+    /// # Errors
+    /// What is wrong with it, and how it is written.
+    pub fn parse(text: &str) -> Result<Words, Mistake> {
+        let text = text.trim();
+        let (first, rest) = text.split_once(char::is_whitespace).unwrap_or((text, ""));
+        let rest = rest.trim();
+        let Some((_, form)) = FORMS.iter().find(|(name, _)| *name == first) else {
+            let names = FORMS.map(|(name, _)| name);
+            let right = match nearest(first, &names) {
+                Some(near) => format!("did you mean `{near}`?"),
+                None => format!("the words are {}", one_of(&names)),
+            };
+            return Err(mistake(format!("`{first}` cannot be told"), right));
+        };
+        let words = match (first, rest) {
+            ("back", "") => Some(Words::Back),
+            ("plain", "") => Some(Words::Plain),
+            ("home", "") => Some(Words::Home),
+            ("panic", "") => Some(Words::Panic),
+            ("fresh", "") => Some(Words::Fresh),
+            ("keep", "") => Some(Words::Keep),
+            ("reload", "") => Some(Words::Reload),
+            ("stop", "") => Some(Words::Stop),
+            ("song", title) => Some(Words::Song(named(title))),
+            ("resend", synth) => Some(Words::Resend(named(synth))),
+            ("turn", name) => named(name).map(Words::Turn),
+            ("next", rest) => next(rest),
+            ("pitch", rest) => pitch(rest)?,
+            ("transpose", rest) => transpose(rest),
+            ("tonic", rest) => tonic(rest)?,
+            ("inflect", rest) => inflect(rest)?,
+            ("black-key", rest) => black_key(rest)?,
+            ("root", "hold") => Some(Words::Root(Root::Hold)),
+            ("root", "free") => Some(Words::Root(Root::Free)),
+            ("root", "next-key") => Some(Words::Root(Root::NextKey)),
+            ("sevenths", "harmonic") => Some(Words::Sevenths { harmonic: true }),
+            ("sevenths", "plain") => Some(Words::Sevenths { harmonic: false }),
+            _ => None,
+        };
+        words.ok_or_else(|| mistake(format!("`{text}` is not understood"), format!("write {form}")))
+    }
+}
+
+fn mistake(wrong: impl Into<String>, right: impl Into<String>) -> Mistake {
+    Mistake {
+        wrong: wrong.into(),
+        right: right.into(),
+    }
+}
+
+fn named(name: &str) -> Option<String> {
+    (!name.is_empty()).then(|| name.to_string())
+}
+
+fn next(rest: &str) -> Option<Words> {
+    match rest.split_once(' ') {
+        None if rest.is_empty() => Some(Words::Next { from: None }),
+        Some(("from", title)) => Some(Words::Next {
+            from: Some(named(title.trim())?),
+        }),
+        _ => None,
+    }
+}
+
+fn pitch(rest: &str) -> Result<Option<Words>, Mistake> {
+    let (rest, now) = match rest.strip_suffix(" now") {
+        Some(rest) => (rest.trim(), true),
+        None => (rest, false),
+    };
+    let to = match rest {
+        "" => return Ok(None),
+        "home" => PitchNudge::Home,
+        rest => match Expression::parse(rest)? {
+            Expression::Distance(log) => PitchNudge::By(log),
+            Expression::Absolute(..) => PitchNudge::To(expression::hertz(rest)?),
+        },
+    };
+    Ok(Some(Words::Pitch { to, now }))
+}
+
+fn transpose(rest: &str) -> Option<Words> {
+    if rest == "home" {
+        return Some(Words::Transpose(None));
+    }
+    let keys = rest.parse::<i8>().ok()?;
+    (-60..=60).contains(&keys).then_some(Words::Transpose(Some(keys)))
+}
+
+fn tonic(rest: &str) -> Result<Option<Words>, Mistake> {
+    let (to, by) = rest.split_once(' ').unwrap_or((rest, ""));
+    let by = match by.trim() {
+        "" | "absolute" => TonicBy::Absolute,
+        "pivot" => TonicBy::Pivot,
+        "equal" => TonicBy::Equal,
+        _ => return Ok(None),
+    };
+    let to = match to {
+        "" => return Ok(None),
+        "home" => return Ok(Some(Words::TonicHome)),
+        "next-key" => TonicMove::NextKey,
+        name => TonicMove::To(letter(name)?),
+    };
+    Ok(Some(Words::Tonic { to, by }))
+}
+
+fn letter(name: &str) -> Result<Letter, Mistake> {
+    Letter::parse(name)
+        .ok_or_else(|| mistake(format!("`{name}` is not the name of a key"), letter_remedy(name)))
+}
+
+fn inflect(rest: &str) -> Result<Option<Words>, Mistake> {
+    if rest == "home" {
+        return Ok(Some(Words::InflectHome));
+    }
+    let Some((name, place)) = rest.split_once(' ') else {
+        return Ok(None);
+    };
+    let key = match (Letter::parse(name), Key::parse(name)) {
+        (Some(letter), _) => Inflected::Everywhere(letter),
+        (None, Some(key)) => Inflected::One(key),
+        (None, None) => {
+            return Err(mistake(format!("`{name}` is not a key"), key_remedy(name)));
+        }
+    };
+    Ok(Some(Words::Inflect {
+        key,
+        place: place.trim().to_string(),
+    }))
+}
+
+fn black_key(rest: &str) -> Result<Option<Words>, Mistake> {
+    if rest.is_empty() {
+        return Ok(None);
+    }
+    let name = letter(rest)?;
+    if ![1, 3, 6, 8, 10].contains(&name.pitch_class()) {
+        return Err(mistake(
+            format!("{name} is a white key"),
+            "name a black key: C# or Db, D# or Eb, F# or Gb, G# or Ab, A# or Bb",
+        ));
+    }
+    Ok(Some(Words::BlackKey(name)))
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn every_form_of_the_language_is_understood() {
+        for text in [
+            "next",
+            "next from Lantern hymn",
+            "back",
+            "song 3",
+            "song Lantern hymn",
+            "song",
+            "pitch +1 c",
+            "pitch -1 c now",
+            "pitch 416 Hz",
+            "pitch home",
+            "pitch home now",
+            "transpose +2",
+            "transpose -12",
+            "transpose home",
+            "tonic D",
+            "tonic Eb pivot",
+            "tonic D equal",
+            "tonic next-key",
+            "tonic next-key absolute",
+            "tonic home",
+            "inflect B half-flat",
+            "inflect B4 half-flat",
+            "inflect home",
+            "turn saba",
+            "black-key Ab",
+            "root hold",
+            "root free",
+            "root next-key",
+            "sevenths harmonic",
+            "sevenths plain",
+            "plain",
+            "home",
+            "resend",
+            "resend organ",
+            "panic",
+            "fresh",
+            "keep",
+            "reload",
+            "stop",
+        ] {
+            assert!(Words::parse(text).is_ok(), "{text}: {:?}", Words::parse(text));
+        }
+        assert_eq!(
+            Words::parse("next from Two manuals"),
+            Ok(Words::Next {
+                from: Some(String::from("Two manuals"))
+            })
+        );
+    }
+
+    #[test]
+    fn what_is_not_understood_says_how_it_is_written() {
+        for (text, right) in [
+            ("nxt", "did you mean `next`?"),
+            ("next song", "write next, or next from TITLE"),
+            ("tonic d", "key names begin with a capital: D"),
+            ("transpose 2.5", "write transpose +2, or transpose home"),
+            ("black-key C", "name a black key: C# or Db, D# or Eb, F# or Gb, G# or Ab, A# or Bb"),
+            ("root", "write root hold, root free or root next-key"),
+        ] {
+            let error = Words::parse(text).expect_err(text);
+            assert_eq!(error.right, right, "{text}");
+        }
+        assert!(Words::parse("").is_err());
+    }
+}
