@@ -20,6 +20,8 @@ impl Findings {
 
     /// Something that is read and checked, but that nothing plays yet. Never silently dropped.
     pub fn not_played(&mut self, what: impl std::fmt::Display) {
-        self.advise(format!("{what} is understood but not played by this version"));
+        self.advise(format!(
+            "{what} is understood but not played by this version"
+        ));
     }
 }

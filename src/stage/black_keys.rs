@@ -50,9 +50,7 @@ fn names_of(item: &At<'_>, complaints: &mut Complaints) -> Option<(Letter, Optio
             format!("{letter} is a white key")
         }
         Some([first]) => return Some((*first, None)),
-        Some([first, second])
-            if first.pitch_class() == second.pitch_class() && first != second =>
-        {
+        Some([first, second]) if first.pitch_class() == second.pitch_class() && first != second => {
             return Some((*first, Some(*second)));
         }
         Some([first, second]) if first == second => format!("`{text}` says one name twice"),
@@ -91,7 +89,11 @@ fn on_chain(chain: &[(Letter, Log)], name: Letter) -> Option<Log> {
     };
     let low = chain.iter().map(|(letter, _)| letter.place()).min()?;
     let high = chain.iter().map(|(letter, _)| letter.place()).max()?;
-    let (end, before) = if name.place() > high { (high, high - 1) } else { (low, low + 1) };
+    let (end, before) = if name.place() > high {
+        (high, high - 1)
+    } else {
+        (low, low + 1)
+    };
     let step = at(end)? - at(before)?;
     Some(at(end)? + step.times(i64::from((name.place() - end).abs())))
 }

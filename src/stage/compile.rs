@@ -71,8 +71,15 @@ fn read(path: &Path, top: &At<'_>, found: &mut Findings) -> Option<Stage> {
     fields.finish(&mut found.complaints);
     let parts = pools::allot(&rig.parts, &rig, &mut found.complaints);
     files.extend_from_slice(library.files());
-    let (set, songs) = entries.into_iter().map(|entry| (entry.song, entry.plan)).unzip();
-    let (keyboards, keyboard_plans) = rig.keyboards.into_iter().map(|k| (k.device, k.plan)).unzip();
+    let (set, songs) = entries
+        .into_iter()
+        .map(|entry| (entry.song, entry.plan))
+        .unzip();
+    let (keyboards, keyboard_plans) = rig
+        .keyboards
+        .into_iter()
+        .map(|k| (k.device, k.plan))
+        .unzip();
     let (synths, synth_plans) = rig.synths.into_iter().map(|s| (s.device, s.plan)).unzip();
     Some(Stage {
         name: evening.name,
@@ -94,14 +101,23 @@ fn read(path: &Path, top: &At<'_>, found: &mut Findings) -> Option<Stage> {
 
 fn evening(path: &Path, fields: &mut Fields<'_>, found: &mut Findings) -> Evening {
     let complaints = &mut found.complaints;
-    let from_file = || path.file_stem().map_or_else(String::new, |stem| stem.to_string_lossy().into());
-    let name = fields.take("stage").and_then(|at| at.text("a name for the evening", complaints));
-    let pitch = fields.take("pitch").and_then(|at| placing::pitch(&at, complaints));
+    let from_file = || {
+        path.file_stem()
+            .map_or_else(String::new, |stem| stem.to_string_lossy().into())
+    };
+    let name = fields
+        .take("stage")
+        .and_then(|at| at.text("a name for the evening", complaints));
+    let pitch = fields
+        .take("pitch")
+        .and_then(|at| placing::pitch(&at, complaints));
     let programs_from = fields
         .take("programs_from")
         .and_then(|at| at.whole("where programs begin", 0..=1, complaints));
     const EDITS: [(&str, bool); 2] = [("at-next-song", false), ("at-once", true)];
-    let edits = fields.take("edits").and_then(|at| choice(&at, &EDITS, complaints));
+    let edits = fields
+        .take("edits")
+        .and_then(|at| choice(&at, &EDITS, complaints));
     Evening {
         name: name.unwrap_or_else(from_file),
         pitch,

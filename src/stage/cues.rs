@@ -92,22 +92,32 @@ fn cue(
         return None;
     };
     let when = when(&when_at, scene, &mut found.complaints);
-    let by_program = when.as_ref().is_some_and(|when| when.gesture == Gesture::AnyProgram);
+    let by_program = when
+        .as_ref()
+        .is_some_and(|when| when.gesture == Gesture::AnyProgram);
     let words = match fields.take("do") {
         Some(at) => words(&at, by_program, scene, &mut found.complaints),
         None => {
             let right = "add `do: next`, or other words of `tell`";
-            found.complaints.add(&at.trail, "this cue does nothing", right);
+            found
+                .complaints
+                .add(&at.trail, "this cue does nothing", right);
             None
         }
     };
     let quiet = fields.take("at").and_then(|at| {
-        choice(&at, &[("quiet", true), ("now", false)], &mut found.complaints)
+        choice(
+            &at,
+            &[("quiet", true), ("now", false)],
+            &mut found.complaints,
+        )
     });
     let held = fields
         .take("while")
         .and_then(|at| choice(&at, &[("held", true)], &mut found.complaints));
-    let pass = fields.take("pass").and_then(|at| at.flag(&mut found.complaints));
+    let pass = fields
+        .take("pass")
+        .and_then(|at| at.flag(&mut found.complaints));
     fields.finish(&mut found.complaints);
     let (when, words) = (when?, words?);
     let mut unplayed = Vec::new();
@@ -190,7 +200,11 @@ fn when(at: &At<'_>, scene: &Scene<'_>, complaints: &mut Complaints) -> Option<W
     if let Some(at) = fields.take("long_ms") {
         let _ = at.whole("milliseconds", 100..=10_000, complaints);
         if press != Press::Long {
-            complaints.add(&at.trail, "`long_ms` belongs to a long press", "add `press: long`");
+            complaints.add(
+                &at.trail,
+                "`long_ms` belongs to a long press",
+                "add `press: long`",
+            );
         }
     }
     fields.finish(complaints);
@@ -213,11 +227,21 @@ fn gesture(
     programs_from: u8,
     complaints: &mut Complaints,
 ) -> Option<Gesture> {
-    let (program, controller, note) =
-        (fields.take("program"), fields.take("controller"), fields.take("note"));
-    let one = [&program, &controller, &note].iter().filter(|at| at.is_some()).count();
+    let (program, controller, note) = (
+        fields.take("program"),
+        fields.take("controller"),
+        fields.take("note"),
+    );
+    let one = [&program, &controller, &note]
+        .iter()
+        .filter(|at| at.is_some())
+        .count();
     if one != 1 {
-        let wrong = if one == 0 { "no gesture is named here" } else { "two gestures are named here" };
+        let wrong = if one == 0 {
+            "no gesture is named here"
+        } else {
+            "two gestures are named here"
+        };
         complaints.add(
             &when.trail,
             wrong,

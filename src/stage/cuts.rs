@@ -41,7 +41,9 @@ pub fn cuts(text: &str) -> Vec<Cut> {
 
 fn begins_block(line: &str) -> bool {
     let end = line.trim_end().trim_end_matches(['-', '+']);
-    [": |", ": >", "- |", "- >"].iter().any(|mark| end.ends_with(mark))
+    [": |", ": >", "- |", "- >"]
+        .iter()
+        .any(|mark| end.ends_with(mark))
 }
 
 /// Where the comment of a line begins, if it has one. `quote` carries an open quote from line to line.
@@ -62,7 +64,9 @@ fn comment(chars: &[char], quote: &mut Option<char>) -> Option<usize> {
             (None, '#') if after_space => return Some(at),
             (None, '"' | '\'') if fresh => *quote = Some(*c),
             (None, '[' | '{' | ',') => fresh = true,
-            (None, ':' | '-') if chars.get(at + 1).is_none_or(|c| c.is_whitespace()) => fresh = true,
+            (None, ':' | '-') if chars.get(at + 1).is_none_or(|c| c.is_whitespace()) => {
+                fresh = true
+            }
             (None, c) if c.is_whitespace() => {}
             (None, _) => fresh = false,
         }

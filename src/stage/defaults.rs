@@ -50,14 +50,54 @@ pub fn table() -> Vec<Default> {
         meaning,
     };
     let mut table = vec![
-        line("", "pitch", &REFERENCE, "the reference pitch of the evening"),
-        line("", "programs_from", &PROGRAMS_FROM, "how people count programs: from 1 or from 0"),
-        line("", "edits", &EDITS, "when an edit of the song now playing takes effect"),
-        line("", "set", &"the songs in their order", "what is played tonight"),
-        line("keyboards", "port", &"every input port that is not ours, not a through port and not a synth's", ""),
-        line("keyboards", "channel", &"1-16", "where the keyboard is heard"),
-        line("keyboards", "wheel", &WHEEL, "semitones of a full push of its wheel"),
-        line("keyboards", "local_sound", &"yes", "no: its keys no longer play its own sound"),
+        line(
+            "",
+            "pitch",
+            &REFERENCE,
+            "the reference pitch of the evening",
+        ),
+        line(
+            "",
+            "programs_from",
+            &PROGRAMS_FROM,
+            "how people count programs: from 1 or from 0",
+        ),
+        line(
+            "",
+            "edits",
+            &EDITS,
+            "when an edit of the song now playing takes effect",
+        ),
+        line(
+            "",
+            "set",
+            &"the songs in their order",
+            "what is played tonight",
+        ),
+        line(
+            "keyboards",
+            "port",
+            &"every input port that is not ours, not a through port and not a synth's",
+            "",
+        ),
+        line(
+            "keyboards",
+            "channel",
+            &"1-16",
+            "where the keyboard is heard",
+        ),
+        line(
+            "keyboards",
+            "wheel",
+            &WHEEL,
+            "semitones of a full push of its wheel",
+        ),
+        line(
+            "keyboards",
+            "local_sound",
+            &"yes",
+            "no: its keys no longer play its own sound",
+        ),
     ];
     table.extend(synths(&line));
     table.extend(parts(&line));
@@ -72,14 +112,49 @@ fn synths(line: Line<'_>) -> Vec<Default> {
         format!("{} (mpe: {})", plain.to_string(), mpe.to_string())
     };
     vec![
-        line("synths", "port", &"the first output port that is not ours and not a through port", ""),
-        line("synths", "dialect", &DIALECT, "how pitch is spelt on the wire"),
+        line(
+            "synths",
+            "port",
+            &"the first output port that is not ours and not a through port",
+            "",
+        ),
+        line(
+            "synths",
+            "dialect",
+            &DIALECT,
+            "how pitch is spelt on the wire",
+        ),
         line("synths", "channels", &"1-16", "the channels it listens on"),
-        line("synths", "bend_range", &mpe(&BEND_RANGE, &BEND_RANGE_MPE), "semitones of a full bend; it is told"),
-        line("synths", "tail_ms", &TAIL_MS, "how long a sound rings after its key is up"),
-        line("synths", "drums", &mpe(&"[10]", &"[]"), "channels never touched"),
-        line("synths", "share", &"yes", "keys of equal bend may sound on one channel"),
-        line("synths", "steal", &STEAL, "which held note gives way when no channel is left"),
+        line(
+            "synths",
+            "bend_range",
+            &mpe(&BEND_RANGE, &BEND_RANGE_MPE),
+            "semitones of a full bend; it is told",
+        ),
+        line(
+            "synths",
+            "tail_ms",
+            &TAIL_MS,
+            "how long a sound rings after its key is up",
+        ),
+        line(
+            "synths",
+            "drums",
+            &mpe(&"[10]", &"[]"),
+            "channels never touched",
+        ),
+        line(
+            "synths",
+            "share",
+            &"yes",
+            "keys of equal bend may sound on one channel",
+        ),
+        line(
+            "synths",
+            "steal",
+            &STEAL,
+            "which held note gives way when no channel is left",
+        ),
         line("synths", "leave", &LEAVE, "how it is left when trued stops"),
     ]
 }
@@ -89,20 +164,40 @@ fn parts(line: Line<'_>) -> Vec<Default> {
         line("parts", "from", &"every keyboard", ""),
         line("parts", "to", &"the first synth", ""),
         line("parts", "keys", &"all", ""),
-        line("parts", "channel", &"an even share of the synth's channels", ""),
+        line(
+            "parts",
+            "channel",
+            &"an even share of the synth's channels",
+            "",
+        ),
         line("parts", "transpose", &0, "keys up or down"),
         line("parts", "offset", &"0 c", "added to every pitch"),
-        line("parts", "pass", &"[wheel, pedals, pressure, controllers, programs]", "what goes through"),
+        line(
+            "parts",
+            "pass",
+            &"[wheel, pedals, pressure, controllers, programs]",
+            "what goes through",
+        ),
         line("parts", "tune", &"yes", "no: plays untuned"),
         line("parts", "follow", &"yes", "no: not counted in the harmony"),
-        line("parts", "mono", &"no", "yes: one channel, the bend moves with the note"),
+        line(
+            "parts",
+            "mono",
+            &"no",
+            "yes: one channel, the bend moves with the note",
+        ),
     ]
 }
 
 fn songs(line: Line<'_>) -> Vec<Default> {
     vec![
         line("songs", "tuning", &TUNING, ""),
-        line("songs", "tonic", &TONIC, "only for tunings from the tonic; octave 4 unless said"),
+        line(
+            "songs",
+            "tonic",
+            &TONIC,
+            "only for tunings from the tonic; octave 4 unless said",
+        ),
         line("songs", "pitch", &"the evening's", ""),
         line("songs", "transpose", &0, "keys up or down"),
         line("songs", "intonation", &INTONATION, ""),

@@ -33,13 +33,19 @@ pub fn read(at: Option<&At<'_>>, described: Option<&TuningText>, found: &mut Fin
     let Some(way) = way.filter(|way| *way != Way::Fixed) else {
         return Method::Fixed;
     };
-    let name = METHODS.iter().find(|(_, other)| *other == way).map_or("", |(name, _)| name);
+    let name = METHODS
+        .iter()
+        .find(|(_, other)| *other == way)
+        .map_or("", |(name, _)| name);
     if let Some(described) = described
         && !twelve_to_the_octave(&described.scale)
     {
         found.complaints.add(
             &at.trail,
-            format!("{name} needs twelve keys to the octave, and {} has not", described.name),
+            format!(
+                "{name} needs twelve keys to the octave, and {} has not",
+                described.name
+            ),
             "write `intonation: fixed`, or choose another tuning",
         );
     }
@@ -48,7 +54,10 @@ pub fn read(at: Option<&At<'_>>, described: Option<&TuningText>, found: &mut Fin
 }
 
 fn settings(at: &At<'_>, complaints: &mut Complaints) -> Option<Way> {
-    let mut fields = at.fields("a method, or a map such as `{method: chord-root}`", complaints)?;
+    let mut fields = at.fields(
+        "a method, or a map such as `{method: chord-root}`",
+        complaints,
+    )?;
     let way = match fields.take("method") {
         Some(at) => choice(&at, &METHODS, complaints),
         None => {

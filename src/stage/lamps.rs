@@ -18,7 +18,11 @@ pub fn check(at: &At<'_>, scene: &Scene<'_>, found: &mut Findings) {
         };
         match fields.take("show") {
             Some(at) => shows(&at, scene, complaints),
-            None => complaints.add(&item.trail, "this lamp shows nothing", "add `show: turn saba`"),
+            None => complaints.add(
+                &item.trail,
+                "this lamp shows nothing",
+                "add `show: turn saba`",
+            ),
         }
         match fields.take("send") {
             Some(at) => send(&at, scene, complaints),
@@ -105,7 +109,11 @@ fn send(at: &At<'_>, scene: &Scene<'_>, complaints: &mut Complaints) {
         Some(at) => {
             rig::keyboard_named(&at, scene.rig, complaints);
         }
-        None => complaints.add(&at.trail, "this lamp has no place", "add `to:` and a keyboard"),
+        None => complaints.add(
+            &at.trail,
+            "this lamp has no place",
+            "add `to:` and a keyboard",
+        ),
     }
     fields.finish(complaints);
 }

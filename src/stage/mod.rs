@@ -23,7 +23,7 @@ pub mod node;
 mod placing;
 mod pools;
 mod rig;
-mod shipped;
+pub mod shipped;
 mod slips;
 mod songs;
 pub mod tunings;
@@ -99,7 +99,10 @@ impl Stage {
             complaints.into_sorted()
         };
         let bytes = std::fs::read(path).map_err(|error| {
-            unread(format!("cannot be read ({error})"), "give the path of a stage file")
+            unread(
+                format!("cannot be read ({error})"),
+                "give the path of a stage file",
+            )
         })?;
         let text = String::from_utf8(bytes)
             .map_err(|_| unread(String::from("is not UTF-8 text"), "save it as UTF-8"))?;

@@ -71,7 +71,11 @@ impl Scene<'_> {
                 format!("the songs of the set are 1 to {}", self.set.len()),
             );
         }
-        let titles: Vec<&str> = self.set.iter().map(|entry| entry.song.title.as_str()).collect();
+        let titles: Vec<&str> = self
+            .set
+            .iter()
+            .map(|entry| entry.song.title.as_str())
+            .collect();
         let right = match nearest(name, &titles) {
             Some(near) => format!("did you mean `{near}`?"),
             None => String::from("write a title of the set, or its number, from 1"),
@@ -115,7 +119,10 @@ impl Scene<'_> {
             true => format!("name it in a tuning, as in `also: {{{letter}: {{{place}: 150 c}}}}`"),
             false => format!("it has {}", one_of(&names)),
         };
-        Some(mistake(format!("no tuning has a place `{place}` for {key}"), right))
+        Some(mistake(
+            format!("no tuning has a place `{place}` for {key}"),
+            right,
+        ))
     }
 }
 

@@ -2,12 +2,12 @@
 
 use super::black_keys;
 use super::complaint::Complaints;
+use super::defaults;
+use super::expression::{self, Mistake};
 use super::node::{At, Fields, Node};
 use super::songs::Desk;
 use super::tunings::{Reference, TuningText};
-use super::expression::{self, Mistake};
 use super::values::{self, choice, key, letter};
-use super::defaults;
 use crate::pitch::{Hertz, Log};
 use crate::tuning::{
     ByLetter, FromTonic, Key, KeyMap, Letter, Pin, Placement, Scale, TuneError, Tuning,
@@ -17,7 +17,10 @@ use std::sync::Arc;
 /// `A4 = 415 Hz`.
 fn equation(text: &str) -> Option<(Key, Hertz)> {
     let (key, hertz) = text.split_once('=')?;
-    Some((Key::parse(key.trim())?, expression::hertz(hertz.trim()).ok()?))
+    Some((
+        Key::parse(key.trim())?,
+        expression::hertz(hertz.trim()).ok()?,
+    ))
 }
 
 /// `A4 = 415 Hz`, or `{key: A4, hz: 415, pin: key}`.
@@ -46,7 +49,10 @@ fn bad_equation(text: &str) -> Mistake {
     };
     let key = key.trim();
     if Key::parse(key).is_none() {
-        return mistake(format!("`{key}` in `{text}` is not a key"), values::key_remedy(key));
+        return mistake(
+            format!("`{key}` in `{text}` is not a key"),
+            values::key_remedy(key),
+        );
     }
     match expression::hertz(hertz.trim()) {
         Ok(_) => mistake(format!("`{text}` is not a pitch"), example),
@@ -149,7 +155,8 @@ fn put(
     match scale.tune(placement) {
         Ok(tuning) => {
             let tuning = Arc::new(tuning);
-            desk.placed.push((scale.clone(), *placement, Arc::clone(&tuning)));
+            desk.placed
+                .push((scale.clone(), *placement, Arc::clone(&tuning)));
             Some(tuning)
         }
         Err(TuneError::SilentReference(key)) => {
@@ -244,7 +251,8 @@ pub fn turn(by_letter: &ByLetter, turned_to: Option<Letter>) -> i8 {
 
 /// What the twelve keys are called in this song.
 fn names(scale: &Scale, turned_to: Option<Letter>) -> [Letter; 12] {
-    let mut names: [Letter; 12] = std::array::from_fn(|pitch_class| Letter::usual(pitch_class as u8));
+    let mut names: [Letter; 12] =
+        std::array::from_fn(|pitch_class| Letter::usual(pitch_class as u8));
     if let Scale::ByLetter(by_letter) = scale {
         let by = turn(by_letter, turned_to);
         for name in by_letter.names {
@@ -258,7 +266,9 @@ fn names(scale: &Scale, turned_to: Option<Letter>) -> [Letter; 12] {
 
 /// Whether a scale repeats at the octave every twelve keys, as harmony needs it.
 pub fn twelve_to_the_octave(scale: &Scale) -> bool {
-    let FromTonic { steps, period, map, .. } = match scale {
+    let FromTonic {
+        steps, period, map, ..
+    } = match scale {
         Scale::ByLetter(_) => return true,
         Scale::FromTonic(from_tonic) => from_tonic,
     };

@@ -75,7 +75,10 @@ fn asked_for(
     } else if outside != ChannelSet::NONE {
         let wrong = match synth.plan.dialect {
             Dialect::Mpe { manager } if outside.has(manager) => {
-                format!("channel {} is the MPE manager of {name} and carries no notes", manager + 1)
+                format!(
+                    "channel {} is the MPE manager of {name} and carries no notes",
+                    manager + 1
+                )
             }
             _ => format!("{name} has no channel {spelt}"),
         };
@@ -89,7 +92,10 @@ fn asked_for(
         };
         complaints.add(
             trail,
-            format!("channel {} of {name} belongs to a part above", spell_channels(taken)),
+            format!(
+                "channel {} of {name} belongs to a part above",
+                spell_channels(taken)
+            ),
             right,
         );
     }

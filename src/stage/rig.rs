@@ -183,7 +183,11 @@ fn port(fields: &mut Fields<'_>, complaints: &mut Complaints) -> Wish {
         let wanted = "a port's name, with * for the rest, or virtual";
         match item.text(wanted, complaints) {
             Some(text) if text.trim().is_empty() => {
-                complaints.add(&item.trail, "this port has no name", format!("write {wanted}"));
+                complaints.add(
+                    &item.trail,
+                    "this port has no name",
+                    format!("write {wanted}"),
+                );
             }
             Some(text) => globs.push(text),
             None => {}
@@ -226,12 +230,19 @@ fn synth(name: String, at: &At<'_>, left: Leave, found: &mut Findings) -> Option
     if at.is_nothing() {
         return Some(any_synth(&name, left));
     }
-    let mut fields = at.fields("a map such as `{port: \"*Organ*\", dialect: mpe}`", complaints)?;
+    let mut fields = at.fields(
+        "a map such as `{port: \"*Organ*\", dialect: mpe}`",
+        complaints,
+    )?;
     let mut synth = any_synth(&name, left);
     synth.device.port = port(&mut fields, complaints);
     let mpe = dialect(&mut fields, complaints) == Spelling::Mpe;
     members(&mut synth.plan, mpe, at, &mut fields, complaints);
-    let mut bend_range = if mpe { defaults::BEND_RANGE_MPE } else { defaults::BEND_RANGE };
+    let mut bend_range = if mpe {
+        defaults::BEND_RANGE_MPE
+    } else {
+        defaults::BEND_RANGE
+    };
     if let Some(at) = fields.take("bend_range") {
         let range = 1..=BEND_RANGE_MAX as i64;
         let semitones = at.whole("semitones of a full bend", range, complaints);
@@ -294,7 +305,11 @@ fn members(
     let all = written
         .and_then(|at| channels(&at, complaints))
         .unwrap_or(defaults::CHANNELS);
-    let drums_default = if mpe { defaults::DRUMS_MPE } else { defaults::DRUMS };
+    let drums_default = if mpe {
+        defaults::DRUMS_MPE
+    } else {
+        defaults::DRUMS
+    };
     plan.drums = match fields.take("drums") {
         Some(at) => channels(&at, complaints).unwrap_or(drums_default),
         None => drums_default,
@@ -425,7 +440,10 @@ pub fn parts(at: &At<'_>, rig: &Rig, found: &mut Findings) -> Vec<Part> {
 
 fn part(at: &At<'_>, rig: &Rig, found: &mut Findings) -> Option<Part> {
     let complaints = &mut found.complaints;
-    let mut fields = at.fields("a map such as `{from: keys, keys: C2..B3, to: organ}`", complaints)?;
+    let mut fields = at.fields(
+        "a map such as `{from: keys, keys: C2..B3, to: organ}`",
+        complaints,
+    )?;
     let mut part = whole_keyboard();
     part.trail = at.trail.clone();
     if let Some(at) = fields.take("from") {
@@ -466,7 +484,8 @@ fn part(at: &At<'_>, rig: &Rig, found: &mut Findings) -> Option<Part> {
 
 /// Keys up or down: at most five octaves.
 pub fn transpose(at: &At<'_>, complaints: &mut Complaints) -> i8 {
-    at.whole("keys up or down", -60..=60, complaints).unwrap_or(0) as i8
+    at.whole("keys up or down", -60..=60, complaints)
+        .unwrap_or(0) as i8
 }
 
 fn pass(at: &At<'_>, complaints: &mut Complaints) -> Pass {
@@ -499,7 +518,11 @@ fn pass(at: &At<'_>, complaints: &mut Complaints) -> Pass {
 
 /// A keyboard by name.
 pub fn keyboard_named(at: &At<'_>, rig: &Rig, complaints: &mut Complaints) -> Option<KeyboardId> {
-    let names: Vec<&str> = rig.keyboards.iter().map(|k| k.device.name.as_str()).collect();
+    let names: Vec<&str> = rig
+        .keyboards
+        .iter()
+        .map(|k| k.device.name.as_str())
+        .collect();
     device_named(at, "keyboard", &names, complaints).and_then(KeyboardId::new)
 }
 

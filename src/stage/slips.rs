@@ -13,7 +13,10 @@ pub fn read_tree(file: usize, text: &str, complaints: &mut Complaints) -> Option
     for cut in &cuts {
         let (wrong, right) = match cut.note {
             true => (
-                format!("the space before # cuts this note: only `{}` is read", cut.read),
+                format!(
+                    "the space before # cuts this note: only `{}` is read",
+                    cut.read
+                ),
                 format!("write `{}` without the space", cut.meant),
             ),
             false => (
@@ -83,7 +86,11 @@ fn rejoin(key: &str, value: &Node, rest: &(String, Node)) -> Option<(String, Str
     if digit(start.chars().next_back()) && digit(end.chars().next()) {
         let joined = format!("{start}.{end}");
         let right = format!("write the decimals after a point: {key}: {joined}");
-        return Some((joined, String::from("a comma ends the number before it"), right));
+        return Some((
+            joined,
+            String::from("a comma ends the number before it"),
+            right,
+        ));
     }
     // Keys of the language are small letters in one word, so this is part of a title.
     let part_of_title = end.contains(' ') || end.chars().any(|c| c.is_uppercase());
@@ -142,7 +149,9 @@ pub fn decimal_comma(text: &str) -> Option<String> {
 /// What a YAML error means, and where.
 fn explain(text: &str, error: &serde_yaml::Error) -> (Place, String, String) {
     let message = error.to_string();
-    let place = error.location().map_or((1, 1), |at| (at.line(), at.column()));
+    let place = error
+        .location()
+        .map_or((1, 1), |at| (at.line(), at.column()));
     let context = context_place(&message);
     let lines: Vec<&str> = text.lines().collect();
     let told = quotes(&message, &lines, place, context)
@@ -195,7 +204,11 @@ fn start_of<'t>(lines: &[&'t str], place: Place) -> &'t str {
 /// The value that begins at a place, as far as it was meant to go.
 fn value_at<'t>(rest: &'t str, flow: bool) -> &'t str {
     let rest = rest.split(" #").next().unwrap_or(rest);
-    let end = if flow { rest.find([',', ']', '}']).unwrap_or(rest.len()) } else { rest.len() };
+    let end = if flow {
+        rest.find([',', ']', '}']).unwrap_or(rest.len())
+    } else {
+        rest.len()
+    };
     rest[..end].trim()
 }
 
@@ -230,7 +243,10 @@ fn quotes(message: &str, lines: &[&str], place: Place, context: Option<Place>) -
         }
     }
     let before = start_of(lines, place).trim_end();
-    let closed = before.chars().next_back().filter(|c| *c == '"' || *c == '\'');
+    let closed = before
+        .chars()
+        .next_back()
+        .filter(|c| *c == '"' || *c == '\'');
     if let Some(mark) = closed
         && message.contains("did not find expected")
     {
@@ -238,7 +254,9 @@ fn quotes(message: &str, lines: &[&str], place: Place, context: Option<Place>) -
         return told(
             place,
             format!("the text goes on after its closing {mark}"),
-            format!("put the whole text in quotes; if it has a {mark} in it, use {other}...{other}"),
+            format!(
+                "put the whole text in quotes; if it has a {mark} in it, use {other}...{other}"
+            ),
         );
     }
     None
@@ -295,9 +313,14 @@ fn colons(message: &str, lines: &[&str], place: Place, context: Option<Place>) -
                 format!("write \"{}\"", whole.replace('"', "'")),
             );
         }
-        let above = lines.get(place.0.wrapping_sub(2)).map_or("", |line| line.trim());
+        let above = lines
+            .get(place.0.wrapping_sub(2))
+            .map_or("", |line| line.trim());
         return told(
-            (place.0, before.chars().take_while(|c| *c == ' ').count() + 1),
+            (
+                place.0,
+                before.chars().take_while(|c| *c == ' ').count() + 1,
+            ),
             format!("`{}:` does not fit under `{above}`", before.trim()),
             "keys of one map begin in the same column, and each has a colon and a space behind it",
         );
@@ -306,7 +329,10 @@ fn colons(message: &str, lines: &[&str], place: Place, context: Option<Place>) -
         let place = context.unwrap_or(place);
         return told(
             place,
-            format!("`{}` has no colon behind it", value_at(rest_of(lines, place), false)),
+            format!(
+                "`{}` has no colon behind it",
+                value_at(rest_of(lines, place), false)
+            ),
             "write a key, a colon, a space and the value, as in `tuning: vallotti`",
         );
     }
@@ -323,7 +349,10 @@ fn brackets(message: &str, lines: &[&str], place: Place, context: Option<Place>)
         };
         return told(
             open,
-            format!("the {mark} opened here is not closed before line {}", place.0),
+            format!(
+                "the {mark} opened here is not closed before line {}",
+                place.0
+            ),
             format!("write {close} where it ends, and a comma between its entries"),
         );
     }
@@ -371,11 +400,21 @@ fn layout(message: &str, text: &str, place: Place) -> Told {
             "a stage file needs few levels",
         );
     }
-    if let Some((_, position)) = message.split_once("control characters are not allowed at position ") {
-        let position = position.trim().parse::<usize>().unwrap_or(0).min(text.len());
+    if let Some((_, position)) =
+        message.split_once("control characters are not allowed at position ")
+    {
+        let position = position
+            .trim()
+            .parse::<usize>()
+            .unwrap_or(0)
+            .min(text.len());
         let before: String = String::from_utf8_lossy(&text.as_bytes()[..position]).into_owned();
         let line = before.matches('\n').count() + 1;
-        let column = before.rsplit('\n').next().map_or(0, |last| last.chars().count()) + 1;
+        let column = before
+            .rsplit('\n')
+            .next()
+            .map_or(0, |last| last.chars().count())
+            + 1;
         return told(
             (line, column),
             "a control character stands here",

@@ -35,7 +35,12 @@ pub struct Desk<'d, 'n> {
 }
 
 /// Tonight's songs in their order.
-pub fn read(book: Option<&At<'_>>, set: Option<&At<'_>>, top: &At<'_>, desk: &mut Desk<'_, '_>) -> Vec<Entry> {
+pub fn read(
+    book: Option<&At<'_>>,
+    set: Option<&At<'_>>,
+    top: &At<'_>,
+    desk: &mut Desk<'_, '_>,
+) -> Vec<Entry> {
     let mut entries: Vec<(String, Option<Entry>)> = Vec::new();
     if let Some(at) = book {
         let wanted = "songs by title, as in `Lantern hymn: {tuning: vallotti}`";
@@ -110,7 +115,10 @@ fn set_song(
         );
         return None;
     }
-    let mut fields = at.fields("a title, or a map such as `{song: Title, tuning: vallotti}`", complaints)?;
+    let mut fields = at.fields(
+        "a title, or a map such as `{song: Title, tuning: vallotti}`",
+        complaints,
+    )?;
     let Some(title_at) = fields.take("song") else {
         complaints.add(
             &at.trail,
@@ -153,7 +161,10 @@ fn titled(
     book: &[(String, Option<Entry>)],
     complaints: &mut Complaints,
 ) -> Option<Entry> {
-    let title = at.text("a title, or a map such as `{song: Title, tuning: vallotti}`", complaints)?;
+    let title = at.text(
+        "a title, or a map such as `{song: Title, tuning: vallotti}`",
+        complaints,
+    )?;
     if let Some((_, entry)) = book.iter().find(|(known, _)| same_title(known, &title)) {
         return entry.clone();
     }
@@ -168,7 +179,10 @@ fn titled(
     {
         return None; // complained about with the title before
     }
-    let whole = items.get(index + 1).and_then(|next| joined(at, next)).filter(in_book);
+    let whole = items
+        .get(index + 1)
+        .and_then(|next| joined(at, next))
+        .filter(in_book);
     if let Some(whole) = whole {
         complaints.add(
             &at.trail,
@@ -193,7 +207,12 @@ fn same_title(known: &str, title: &str) -> bool {
 }
 
 /// Everything a song says. `fields` is `None` for a song that says nothing.
-fn song(title: &str, at: &At<'_>, fields: Option<Fields<'_>>, desk: &mut Desk<'_, '_>) -> Option<Entry> {
+fn song(
+    title: &str,
+    at: &At<'_>,
+    fields: Option<Fields<'_>>,
+    desk: &mut Desk<'_, '_>,
+) -> Option<Entry> {
     let mut fields = fields.unwrap_or_else(|| Fields::none(at.trail.clone()));
     let described = tuning(&mut fields, at, desk);
     let tuning_name = described.as_ref().map_or(String::new(), |d| d.name.clone());
@@ -205,7 +224,11 @@ fn song(title: &str, at: &At<'_>, fields: Option<Fields<'_>>, desk: &mut Desk<'_
     let transpose_keys = fields
         .take("transpose")
         .map_or(0, |at| rig::transpose(&at, &mut desk.found.complaints));
-    let method = intonation::read(fields.take("intonation").as_ref(), described.as_deref(), desk.found);
+    let method = intonation::read(
+        fields.take("intonation").as_ref(),
+        described.as_deref(),
+        desk.found,
+    );
     places(&mut fields, title, described.as_deref(), desk.found);
     let sends = match fields.take("send") {
         Some(at) => sends(&at, desk),
@@ -214,7 +237,8 @@ fn song(title: &str, at: &At<'_>, fields: Option<Fields<'_>>, desk: &mut Desk<'_
     if let Some(at) = fields.take("parts") {
         let parts = rig::parts(&at, desk.rig, desk.found);
         super::pools::allot(&parts, desk.rig, &mut desk.found.complaints);
-        desk.found.not_played(format!("`parts` of a song of its own ({title})"));
+        desk.found
+            .not_played(format!("`parts` of a song of its own ({title})"));
     }
     fields.finish(&mut desk.found.complaints);
     let (scale, placement, tuning, names) = placed?;
@@ -239,14 +263,20 @@ fn song(title: &str, at: &At<'_>, fields: Option<Fields<'_>>, desk: &mut Desk<'_
     })
 }
 
-fn tuning(fields: &mut Fields<'_>, song: &At<'_>, desk: &mut Desk<'_, '_>) -> Option<Rc<TuningText>> {
+fn tuning(
+    fields: &mut Fields<'_>,
+    song: &At<'_>,
+    desk: &mut Desk<'_, '_>,
+) -> Option<Rc<TuningText>> {
     let written = fields.take("tuning");
     let at = written.as_ref().unwrap_or(song);
     let name = match &written {
         Some(at) => at.text("the name of a tuning", &mut desk.found.complaints)?,
         None => String::from(defaults::TUNING),
     };
-    let text = desk.tunings.find(&name, &at.trail, &mut desk.found.complaints)?;
+    let text = desk
+        .tunings
+        .find(&name, &at.trail, &mut desk.found.complaints)?;
     if !desk.used.iter().any(|used| used.name == text.name) {
         desk.used.push(Rc::clone(&text));
     }
@@ -311,7 +341,12 @@ fn places(
 }
 
 /// Checks that a key of the tuning has a place of that name.
-fn place_of(name: &str, place: &At<'_>, described: Option<&TuningText>, complaints: &mut Complaints) {
+fn place_of(
+    name: &str,
+    place: &At<'_>,
+    described: Option<&TuningText>,
+    complaints: &mut Complaints,
+) {
     let mut key_trail = place.trail.clone();
     while let Some(step) = key_trail.steps.last() {
         if *step == Segment::Key(name.to_string()) {

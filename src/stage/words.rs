@@ -12,23 +12,36 @@ use crate::tuning::{Key, Letter};
 #[derive(Clone, Debug, PartialEq, Eq)]
 pub enum Words {
     /// `next`, `next from TITLE`.
-    Next { from: Option<String> },
+    Next {
+        from: Option<String>,
+    },
     Back,
     /// A number or a title; `None` for the song with the number of the program, in cues only.
     Song(Option<String>),
-    Pitch { to: PitchNudge, now: bool },
+    Pitch {
+        to: PitchNudge,
+        now: bool,
+    },
     /// Keys up or down; `None` for home.
     Transpose(Option<i8>),
-    Tonic { to: TonicMove, by: TonicBy },
+    Tonic {
+        to: TonicMove,
+        by: TonicBy,
+    },
     TonicHome,
     /// `inflect B half-flat`, with an octave for that key alone.
-    Inflect { key: Inflected, place: String },
+    Inflect {
+        key: Inflected,
+        place: String,
+    },
     InflectHome,
     Turn(String),
     BlackKey(Letter),
     Root(Root),
     /// Harmonic sevenths, or plain ones.
-    Sevenths { harmonic: bool },
+    Sevenths {
+        harmonic: bool,
+    },
     Plain,
     Home,
     Resend(Option<String>),
@@ -79,9 +92,15 @@ const FORMS: [(&str, &str); 19] = [
     ("next", "next, or next from TITLE"),
     ("back", "back"),
     ("song", "song 3, or song TITLE"),
-    ("pitch", "pitch +1 c, pitch 416 Hz or pitch home, and `now` behind it to move held notes too"),
+    (
+        "pitch",
+        "pitch +1 c, pitch 416 Hz or pitch home, and `now` behind it to move held notes too",
+    ),
     ("transpose", "transpose +2, or transpose home"),
-    ("tonic", "tonic D, tonic next-key or tonic home; behind a key: absolute, pivot or equal"),
+    (
+        "tonic",
+        "tonic D, tonic next-key or tonic home; behind a key: absolute, pivot or equal",
+    ),
     ("inflect", "inflect B half-flat, or inflect home"),
     ("turn", "turn NAME, a name under `turns` in the tuning"),
     ("black-key", "black-key Ab"),
@@ -139,7 +158,12 @@ impl Words {
             ("sevenths", "plain") => Some(Words::Sevenths { harmonic: false }),
             _ => None,
         };
-        words.ok_or_else(|| mistake(format!("`{text}` is not understood"), format!("write {form}")))
+        words.ok_or_else(|| {
+            mistake(
+                format!("`{text}` is not understood"),
+                format!("write {form}"),
+            )
+        })
     }
 }
 
@@ -185,7 +209,9 @@ fn transpose(rest: &str) -> Option<Words> {
         return Some(Words::Transpose(None));
     }
     let keys = rest.parse::<i8>().ok()?;
-    (-60..=60).contains(&keys).then_some(Words::Transpose(Some(keys)))
+    (-60..=60)
+        .contains(&keys)
+        .then_some(Words::Transpose(Some(keys)))
 }
 
 fn tonic(rest: &str) -> Result<Option<Words>, Mistake> {
@@ -206,8 +232,12 @@ fn tonic(rest: &str) -> Result<Option<Words>, Mistake> {
 }
 
 fn letter(name: &str) -> Result<Letter, Mistake> {
-    Letter::parse(name)
-        .ok_or_else(|| mistake(format!("`{name}` is not the name of a key"), letter_remedy(name)))
+    Letter::parse(name).ok_or_else(|| {
+        mistake(
+            format!("`{name}` is not the name of a key"),
+            letter_remedy(name),
+        )
+    })
 }
 
 fn inflect(rest: &str) -> Result<Option<Words>, Mistake> {
@@ -291,7 +321,11 @@ mod tests {
             "reload",
             "stop",
         ] {
-            assert!(Words::parse(text).is_ok(), "{text}: {:?}", Words::parse(text));
+            assert!(
+                Words::parse(text).is_ok(),
+                "{text}: {:?}",
+                Words::parse(text)
+            );
         }
         assert_eq!(
             Words::parse("next from Two manuals"),
@@ -308,7 +342,10 @@ mod tests {
             ("next song", "write next, or next from TITLE"),
             ("tonic d", "key names begin with a capital: D"),
             ("transpose 2.5", "write transpose +2, or transpose home"),
-            ("black-key C", "name a black key: C# or Db, D# or Eb, F# or Gb, G# or Ab, A# or Bb"),
+            (
+                "black-key C",
+                "name a black key: C# or Db, D# or Eb, F# or Gb, G# or Ab, A# or Bb",
+            ),
             ("root", "write root hold, root free or root next-key"),
         ] {
             let error = Words::parse(text).expect_err(text);
