@@ -7,9 +7,13 @@
 //! **May know** `stage/`, `engine/`, `tuning/`, `pitch/`, `midi/`, `time`, `limits`.
 //! **Owns** midly, hound, rustysynth. The same score and stage file give the same bytes every time.
 //! **Not here**: ports and clocks (`ports/`), what is said to people about it (`cli/`).
+pub mod demo;
 pub mod font;
 pub mod listen;
 pub mod measure;
+pub mod moments;
+pub mod notes_file;
+pub mod picture;
 pub mod receiver;
 pub mod retune;
 pub mod score_clock;
