@@ -1,10 +1,88 @@
-//! To be written.
+//! `trued run`: the daemon in the foreground.
 
 use super::Failure;
+use std::path::PathBuf;
 
 #[derive(clap::Args)]
-pub struct Args {}
+pub struct Args {
+    /// The stage file of the evening
+    stage: PathBuf,
+    /// Start as the stage file says (this version remembers nothing from the last time, so it always does)
+    #[arg(long)]
+    fresh: bool,
+    /// Which sound system carries the MIDI
+    #[arg(long, value_enum, default_value = "auto")]
+    backend: Choice,
+    /// What the client is called among the machine's ports
+    #[arg(long, default_value = "trued")]
+    name: String,
+}
 
-pub fn run(_args: Args) -> Result<(), Failure> {
-    todo!()
+#[derive(Clone, Copy, Debug, PartialEq, Eq, clap::ValueEnum)]
+enum Choice {
+    /// What is there
+    Auto,
+    /// The Linux sequencer
+    Alsa,
+    /// Not in this version
+    Jack,
+    /// Not in this version
+    Midir,
+}
+
+pub fn run(args: Args) -> Result<(), Failure> {
+    let Args {
+        stage,
+        fresh: _,
+        backend,
+        name,
+    } = args;
+    if matches!(backend, Choice::Jack | Choice::Midir) {
+        let backend = format!("{backend:?}").to_lowercase();
+        return Err(Failure::new(
+            Failure::UNAVAILABLE,
+            format!(
+                "--backend {backend} is not in this version; leave it out, or use --backend alsa"
+            ),
+        ));
+    }
+    let stage = super::read_stage(&stage)?;
+    start_log();
+    play(&stage, &name)
+}
+
+#[cfg(target_os = "linux")]
+fn play(stage: &crate::stage::Stage, name: &str) -> Result<(), Failure> {
+    use crate::daemon::run::{Trouble, play};
+    play(stage, name).map_err(|trouble| match trouble {
+        Trouble::Ports(broken) => Failure::new(Failure::UNAVAILABLE, broken.to_string()),
+        Trouble::System(error) => {
+            Failure::new(Failure::UNAVAILABLE, format!("The system refused: {error}"))
+        }
+        Trouble::Bug => Failure::new(
+            Failure::BUG,
+            "trued failed: this is a bug in trued, not a mistake of yours. Every synth was told to be silent",
+        ),
+    })
+}
+
+#[cfg(not(target_os = "linux"))]
+fn play(_: &crate::stage::Stage, _: &str) -> Result<(), Failure> {
+    Err(Failure::new(
+        Failure::UNAVAILABLE,
+        "this version plays on Linux only; check, chart, retune and rehearse work here",
+    ))
+}
+
+/// The log goes to stderr, coloured only for a terminal that wants it.
+fn start_log() {
+    use std::io::IsTerminal;
+    let wants = std::env::var_os("NO_COLOR").is_none_or(|value| value.is_empty());
+    let colour = wants && std::io::stderr().is_terminal();
+    // A log that was started already is as good.
+    let _ = tracing_subscriber::fmt()
+        .with_writer(std::io::stderr)
+        .with_ansi(colour)
+        .with_target(false)
+        .try_init();
 }

@@ -1,1 +1,18 @@
-//! placeholder
+//! The daemon: what runs while people play.
+//!
+//! **What this room is**: two threads. The score thread runs a backend's loop, and in it one [`Player`] cycle after
+//! another: keyboards in, engine, synths out. The desk thread does all else: signals, connecting ports, the log.
+//! **Start reading at** [`run::play`], then `score.rs`.
+//! **May know** `ports/`, `stage/`, `engine/`, `time`, `limits`.
+//! **Owns** signal-hook and rtrb. The score thread never allocates, logs, locks, parses or waits for the desk; between
+//! the two there are only queues that neither can hold up.
+//! **Not here**: how bytes get in and out (`ports/`), what is made of them (`engine/`).
+
+#[cfg(target_os = "linux")]
+mod desk;
+pub mod rig;
+#[cfg(target_os = "linux")]
+pub mod run;
+mod score;
+
+pub use score::{Ending, News, Player, Score, Slot};

@@ -56,7 +56,7 @@ impl Inbox {
     /// Whether one more packet of any legal length and one more change surely fit. A backend stops reading when not.
     pub fn has_room(&self) -> bool {
         self.bytes.len() + SYSEX_BYTES_MAX <= INBOX_BYTES
-            && self.arrivals.len() + crate::limits::KEYBOARDS_MAX + 1 <= INBOX_ARRIVALS
+            && self.arrivals.len() + crate::limits::KEYBOARDS_MAX < INBOX_ARRIVALS
     }
 
     pub fn is_empty(&self) -> bool {
@@ -172,7 +172,7 @@ mod tests {
             packets += 1;
         }
         assert!(packets > 100);
-        assert!(inbox.add_midi(Time::START, 0, &vec![0; 3]));
+        assert!(inbox.add_midi(Time::START, 0, &[0; 3]));
         assert_eq!(inbox.sorted().count(), packets + 1);
     }
 }

@@ -41,7 +41,7 @@ pub fn replaceable(bytes: &[u8]) -> Option<(u8, u8)> {
             0 | 6 | 32 | 38 | 64..=69 | 84 | 88 | 96..=101 | 120..=127 => None,
             number => Some((status, number)),
         },
-        status @ (0xD0..=0xDF | 0xE0..=0xEF) => Some((status, 0)),
+        status @ 0xD0..=0xEF => Some((status, 0)),
         _ => None,
     }
 }

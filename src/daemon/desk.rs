@@ -1,0 +1,150 @@
+//! The desk thread: signals, connecting what is plugged in, the log.
+
+use super::rig::RigWanted;
+use super::score::News;
+use crate::engine::Command;
+use crate::ports::alsa::{Tally, desk::Desk as Sequencer};
+use crate::ports::names::{Address, Choice, Port, choose};
+use crate::ports::{Broken, Link, system::Bell};
+use rtrb::{Consumer, Producer};
+use signal_hook::iterator::Signals;
+use std::sync::Arc;
+use std::sync::atomic::{AtomicBool, Ordering};
+use std::time::Duration;
+use tracing::{error, info, warn};
+
+/// How often the desk looks up. Nothing that sounds waits for it.
+const LOOK: Duration = Duration::from_millis(50);
+
+pub struct Desk {
+    pub rig: RigWanted,
+    pub patch: Patch,
+    /// Titles in the order of the set.
+    pub titles: Vec<String>,
+    pub signals: Signals,
+    pub commands: Producer<Command>,
+    pub news: Consumer<News>,
+    pub bell: Bell,
+    pub tally: Arc<Tally>,
+    /// The score thread has left.
+    pub done: Arc<AtomicBool>,
+}
+
+impl Desk {
+    pub fn run(mut self) {
+        // What changed while the first connections were made is looked at once more.
+        let mut changes = 0;
+        let mut overruns = 0;
+        while !self.done.load(Ordering::Acquire) {
+            for _ in self.signals.pending() {
+                self.stop();
+            }
+            self.log_news();
+            let now = self.tally.changes.load(Ordering::Relaxed);
+            if now != changes {
+                changes = now;
+                self.reconnect();
+            }
+            let now = self.tally.overruns.load(Ordering::Relaxed);
+            if now != overruns {
+                overruns = now;
+                error!("MIDI came faster than it could be read and was lost; every key was let go");
+            }
+            std::thread::sleep(LOOK);
+        }
+        self.log_news();
+    }
+
+    fn stop(&mut self) {
+        info!("stopping: notes off, then tails die away");
+        // A full queue holds a stop already.
+        let _ = self.commands.push(Command::Stop);
+        self.bell.ring();
+    }
+
+    fn reconnect(&mut self) {
+        let before = self.patch.choice.clone();
+        let ports = self.patch.connect(&self.rig);
+        if (&before.keyboards, &before.synths)
+            != (&self.patch.choice.keyboards, &self.patch.choice.synths)
+        {
+            let rig = self.rig.describe(&self.patch.choice, &ports);
+            info!("ports have changed: {}", rig.join("; "));
+        }
+    }
+
+    fn log_news(&mut self) {
+        let synth_name = |rig: &RigWanted, index: usize| rig.synths[index].name.clone();
+        while let Ok(news) = self.news.pop() {
+            match news {
+                News::Song(place) => {
+                    let title = self.titles.get(usize::from(place));
+                    let title = title.map_or("", String::as_str);
+                    info!("song {}: {title}", place + 1);
+                }
+                News::Synth { synth, link } => {
+                    let name = synth_name(&self.rig, synth);
+                    match link {
+                        Link::Up | Link::Back => info!("{name} is set up"),
+                        Link::Down => warn!("{name} has gone"),
+                    }
+                }
+                News::KeyboardLost { keyboard } => {
+                    let name = &self.rig.keyboards[keyboard].name;
+                    warn!("keyboard {name} has gone; all it held is let go");
+                }
+                News::Choked { synth } => {
+                    let name = synth_name(&self.rig, synth);
+                    error!("{name} takes nothing any more; it is tried again every second");
+                }
+            }
+        }
+    }
+}
+
+/// Who is connected to whom, and the sequencer to change it.
+pub struct Patch {
+    pub sequencer: Sequencer,
+    pub choice: Choice,
+    /// Our own ports, in the order of the stage file.
+    pub keyboards: Vec<Address>,
+    pub synths: Vec<Address>,
+    /// Said once each.
+    pub said: Vec<String>,
+}
+
+impl Patch {
+    /// Connects every device to what it wants and is there; gives what is there.
+    pub fn connect(&mut self, rig: &RigWanted) -> Vec<Port> {
+        let ports = self.sequencer.ports();
+        self.choice = choose(&ports, &rig.keyboards, &rig.synths, &self.choice);
+        for remark in std::mem::take(&mut self.choice.remarks) {
+            self.say(remark);
+        }
+        let keyboards = self.choice.keyboards.iter().zip(&self.keyboards);
+        let synths = self.choice.synths.iter().zip(&self.synths);
+        let ways: Vec<(Address, Address)> = keyboards
+            .flat_map(|(from, own)| from.iter().map(move |from| (*from, *own)))
+            .chain(synths.filter_map(|(to, own)| Some((*own, (*to)?))))
+            .collect();
+        for (from, to) in ways {
+            // Also what we take for connected: it may have gone and come back between two looks.
+            if let Err(Broken { wrong, .. }) = self.sequencer.connect(from, to) {
+                let (from, to) = (shown(from), shown(to));
+                self.say(format!("{from} cannot be connected to {to}: {wrong}"));
+            }
+        }
+        ports
+    }
+
+    fn say(&mut self, text: String) {
+        if !self.said.contains(&text) {
+            warn!("{text}");
+            self.said.push(text);
+        }
+    }
+}
+
+fn shown(address: Address) -> String {
+    format!("{}:{}", address.client, address.port)
+}

@@ -1,0 +1,325 @@
+//! The score: an engine and its queues, and what is done with them in one cycle.
+
+use crate::engine::{self, Command, Engine, Input, KeyboardId, Output, Report, SynthId};
+use crate::limits::SYNTHS_MAX;
+use crate::ports::{self, Cycle, Inbox, Next, Outlet, Room, What};
+use crate::time::{Span, Time};
+use rtrb::{Consumer, Producer};
+use std::panic::{AssertUnwindSafe, catch_unwind};
+use std::sync::{Arc, Mutex, TryLockError};
+
+/// What the score thread tells the desk, for the log.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum News {
+    /// The song now playing, by place in the set.
+    Song(u16),
+    Synth {
+        synth: usize,
+        link: ports::Link,
+    },
+    KeyboardLost {
+        keyboard: usize,
+    },
+    /// A synth's port takes nothing any more; it is tried again from time to time.
+    Choked {
+        synth: usize,
+    },
+}
+
+/// Why a score came to its end.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Ending {
+    /// Everything has been said.
+    Stopped,
+    /// Told to stop, but tails or a full port took too long.
+    GaveUp,
+    /// A bug of ours; all synths have been told to be silent.
+    Panicked,
+}
+
+/// Inputs of one instant that go into the engine before its output is asked for. Few enough for the engine's room.
+const TOGETHER: usize = 32;
+/// Packets longer than any short message are handled one by one.
+const SHORT_BYTES: usize = 12;
+/// Deadlines run at one time before the loop goes on; only an engine that stands still comes near.
+const DEADLINES_MAX: usize = 10_000;
+/// How long after a stop the last tail is waited for.
+const STOP: Span = Span::from_millis(4_000);
+/// How long a port that took nothing any more is left alone.
+const CHOKED: Span = Span::from_millis(1_000);
+
+/// The engine with its queues. Lives in a [`Slot`], so that no backend that dies takes it along.
+pub struct Score {
+    engine: Engine,
+    synths: usize,
+    commands: Consumer<Command>,
+    news: Producer<News>,
+    song: u16,
+    /// When a choked port is tried again.
+    reopen_at: [Option<Time>; SYNTHS_MAX],
+    give_up_at: Option<Time>,
+    ending: Option<Ending>,
+}
+
+impl Score {
+    pub fn new(
+        engine: Engine,
+        synths: usize,
+        commands: Consumer<Command>,
+        news: Producer<News>,
+    ) -> Score {
+        Score {
+            song: engine.report().song,
+            engine,
+            synths: synths.min(SYNTHS_MAX),
+            commands,
+            news,
+            reopen_at: [None; SYNTHS_MAX],
+            give_up_at: None,
+            ending: None,
+        }
+    }
+
+    pub fn report(&self) -> Report {
+        self.engine.report()
+    }
+
+    /// `None` as long as the loop should go on.
+    pub fn ending(&self) -> Option<Ending> {
+        self.ending
+    }
+
+    /// Takes in everything up to `to`, each thing at its own time, and sends what comes of it.
+    fn cycle(&mut self, to: Time, inbox: &mut Inbox, outlet: &mut Outlet<'_>) -> Next {
+        let (mut instant, mut together) = (None, 0);
+        for (time, what) in inbox.sorted() {
+            let long = matches!(what, What::Midi { bytes, .. } if bytes.len() > SHORT_BYTES);
+            if instant != Some(time) || together == TOGETHER || long {
+                self.drain(instant.unwrap_or(time), outlet);
+                self.run_due(time, outlet);
+                (instant, together) = (Some(time), 0);
+            }
+            self.take_in(time, what, outlet);
+            together += if long { TOGETHER } else { 1 };
+        }
+        self.drain(instant.unwrap_or(to), outlet);
+        self.run_due(to, outlet);
+        while let Ok(command) = self.commands.pop() {
+            self.obey(to, command, outlet);
+        }
+        self.reopen(to, outlet);
+        self.tell_song();
+        self.next(to, outlet)
+    }
+
+    fn take_in(&mut self, time: Time, what: What<'_>, outlet: &mut Outlet<'_>) {
+        match what {
+            What::Midi { keyboard, bytes } => {
+                if let Some(keyboard) = KeyboardId::new(keyboard) {
+                    let input = Input::Midi { keyboard, bytes };
+                    self.engine.handle_input(time, input);
+                }
+            }
+            What::KeyboardLost { keyboard } => {
+                if let Some(id) = KeyboardId::new(keyboard) {
+                    self.engine.handle_input(time, Input::KeyboardLost(id));
+                }
+                self.tell(News::KeyboardLost { keyboard });
+            }
+            What::Synth { synth, link } => {
+                let lost = link == ports::Link::Down;
+                // What waits for a port that has gone, or had choked, is of no use to the one that comes.
+                if lost || self.reopen_at[synth].take().is_some() {
+                    outlet.forget(synth);
+                }
+                self.link(time, synth, link.into());
+                self.tell(News::Synth { synth, link });
+            }
+        }
+    }
+
+    fn obey(&mut self, now: Time, command: Command, outlet: &mut Outlet<'_>) {
+        if command == Command::Stop {
+            self.give_up_at.get_or_insert(now + STOP);
+        }
+        self.engine.handle_input(now, Input::Command(command));
+        self.drain(now, outlet);
+    }
+
+    /// Every deadline of the engine up to a time, each at its own time: lateness is not passed on.
+    fn run_due(&mut self, until: Time, outlet: &mut Outlet<'_>) {
+        for _ in 0..DEADLINES_MAX {
+            let Some(due) = self.engine.poll_timeout().filter(|due| *due <= until) else {
+                return;
+            };
+            self.engine.handle_timeout(due);
+            self.drain(due, outlet);
+        }
+    }
+
+    /// Sends all that the engine has to say, and tells it when a port runs short.
+    fn drain(&mut self, now: Time, outlet: &mut Outlet<'_>) {
+        loop {
+            while let Some(output) = self.engine.poll_output() {
+                if let Output::Send {
+                    synth,
+                    weight,
+                    bytes,
+                } = output
+                {
+                    outlet.send(synth.index(), weight.into(), bytes);
+                }
+            }
+            let news = (0..self.synths).find_map(|s| Some((s, outlet.room_news(s)?)));
+            let Some((synth, room)) = news else {
+                return;
+            };
+            let link = match room {
+                Room::Easy => engine::Link::Easy,
+                Room::Tight => engine::Link::Tight,
+                Room::None => {
+                    self.reopen_at[synth] = Some(now + CHOKED);
+                    self.tell(News::Choked { synth });
+                    engine::Link::Down
+                }
+            };
+            self.link(now, synth, link);
+        }
+    }
+
+    /// Tries choked ports again, as if they had just come back.
+    fn reopen(&mut self, now: Time, outlet: &mut Outlet<'_>) {
+        for synth in 0..self.synths {
+            if self.reopen_at[synth].is_some_and(|at| at <= now) {
+                self.reopen_at[synth] = None;
+                outlet.forget(synth);
+                self.link(now, synth, engine::Link::Back);
+                self.drain(now, outlet);
+            }
+        }
+    }
+
+    fn link(&mut self, now: Time, synth: usize, link: engine::Link) {
+        if let Some(synth) = SynthId::new(synth) {
+            self.engine.handle_input(now, Input::Synth { synth, link });
+        }
+    }
+
+    fn tell_song(&mut self) {
+        let song = self.engine.report().song;
+        if song != self.song {
+            self.song = song;
+            self.tell(News::Song(song));
+        }
+    }
+
+    /// A desk that does not listen misses a line in its log; nothing waits for it.
+    fn tell(&mut self, news: News) {
+        let _ = self.news.push(news);
+    }
+
+    fn next(&mut self, to: Time, outlet: &Outlet<'_>) -> Next {
+        if self.engine.report().stopped && !outlet.is_waiting() {
+            self.ending = Some(Ending::Stopped);
+        } else if self.give_up_at.is_some_and(|at| at <= to) {
+            self.ending = Some(Ending::GaveUp);
+        }
+        if self.ending.is_some() {
+            return Next::Leave;
+        }
+        let own = self.reopen_at.iter().copied().flatten();
+        let deadlines = own.chain(self.give_up_at).chain(self.engine.poll_timeout());
+        Next::Wait(deadlines.min())
+    }
+
+    /// After a panic: what the engine still knows to be open, then silence for every channel whatever it knows.
+    fn silence(&mut self, now: Time, outlet: &mut Outlet<'_>) {
+        self.ending = Some(Ending::Panicked);
+        let _ = catch_unwind(AssertUnwindSafe(|| self.obey(now, Command::Stop, outlet)));
+        for synth in 0..self.synths {
+            for channel in 0..16u8 {
+                let status = crate::midi::status::CONTROLLER | channel;
+                for number in [
+                    crate::midi::controller::DAMPER,
+                    crate::midi::controller::ALL_NOTES_OFF,
+                    crate::midi::controller::ALL_SOUND_OFF,
+                ] {
+                    outlet.send(synth, ports::Weight::Owed, &[status, number, 0]);
+                }
+            }
+        }
+    }
+}
+
+/// Where the score lies between two cycles. A cycle takes it and puts it back; who finds it here when the loop has
+/// ended, has the engine with all it knows.
+#[derive(Default)]
+pub struct Slot(Mutex<Option<Box<Score>>>);
+
+impl Slot {
+    pub fn new(score: Score) -> Arc<Slot> {
+        Arc::new(Slot(Mutex::new(Some(Box::new(score)))))
+    }
+
+    /// Never waits: nobody else reaches in while a loop runs, and if somebody does, there is no score for this cycle.
+    pub fn take(&self) -> Option<Box<Score>> {
+        match self.0.try_lock() {
+            Ok(mut place) => place.take(),
+            Err(TryLockError::Poisoned(poisoned)) => poisoned.into_inner().take(),
+            Err(TryLockError::WouldBlock) => None,
+        }
+    }
+
+    fn put(&self, score: Box<Score>) {
+        if let Ok(mut place) = self.0.try_lock() {
+            *place = Some(score);
+        }
+    }
+}
+
+/// What a backend's loop runs.
+pub struct Player {
+    slot: Arc<Slot>,
+}
+
+impl Player {
+    pub fn new(slot: Arc<Slot>) -> Player {
+        Player { slot }
+    }
+}
+
+impl Cycle for Player {
+    fn run(&mut self, to: Time, inbox: &mut Inbox, outlet: &mut Outlet<'_>) -> Next {
+        let Some(mut score) = self.slot.take() else {
+            return Next::Leave;
+        };
+        let cycle = AssertUnwindSafe(|| score.cycle(to, inbox, outlet));
+        let next = catch_unwind(cycle).unwrap_or_else(|_| {
+            score.silence(to, outlet);
+            Next::Leave
+        });
+        self.slot.put(score);
+        next
+    }
+}
+
+impl From<engine::Weight> for ports::Weight {
+    fn from(weight: engine::Weight) -> ports::Weight {
+        match weight {
+            engine::Weight::Owed => ports::Weight::Owed,
+            engine::Weight::Note => ports::Weight::Note,
+            engine::Weight::Control => ports::Weight::Control,
+            engine::Weight::Through => ports::Weight::Through,
+        }
+    }
+}
+
+impl From<ports::Link> for engine::Link {
+    fn from(link: ports::Link) -> engine::Link {
+        match link {
+            ports::Link::Up => engine::Link::Up,
+            ports::Link::Back => engine::Link::Back,
+            ports::Link::Down => engine::Link::Down,
+        }
+    }
+}
