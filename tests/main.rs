@@ -11,3 +11,6 @@ mod no_alloc;
 
 /// Arrows between rooms, banned words in the core, file length.
 mod tidy;
+
+/// The daemon's score between simulated ports: order, deadlines, stop, full and lost ports, a panic.
+mod score;
