@@ -136,10 +136,9 @@ impl Synth {
         } else {
             None
         };
-        [self.piece_at, self.again_at, silence]
-            .into_iter()
-            .flatten()
-            .min()
+        // To a synth that is away nothing can be said; it is set up anew when it comes.
+        let said = [self.piece_at, self.again_at].map(|at| at.filter(|_| self.up));
+        said.into_iter().flatten().chain(silence).min()
     }
 
     /// Sends a bend unless the channel already has it; tells whether it did.
