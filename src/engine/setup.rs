@@ -41,6 +41,9 @@ impl Engine {
 
     /// Begins to say everything again. A zone is only declared in silence, so while something sounds it waits.
     pub(super) fn set_up(&mut self, now: Time, id: SynthId) {
+        if !self.synths[id.index()].up {
+            return; // it is set up when it comes
+        }
         self.fit_manager_range(id);
         let synth = &mut self.synths[id.index()];
         let silent = synth.is_silent(now);
