@@ -13,6 +13,7 @@ mod dialect;
 mod keyboard;
 mod notes;
 mod outbox;
+mod parameters;
 mod part;
 pub mod plan;
 mod setup;

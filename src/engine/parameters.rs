@@ -1,0 +1,199 @@
+//! Programs and parameters: what a player sets once, and what the engine answers to instead of passing on.
+
+use super::channel::{Program, RESET_VALUES, UNSAID};
+use super::dialect::{gesture_channels, members, on_members};
+use super::keyboard::Select;
+use super::plan::{ChannelSet, PartPlan};
+use super::synth::PEDALS;
+use super::traffic::Weight;
+use super::{Engine, Hand};
+use crate::limits::{BEND_RANGE_MAX, SYNTHS_MAX};
+use crate::midi::{controller, parameter, status};
+use crate::pitch::Interval;
+use crate::pitch::word::Bend;
+use crate::time::Time;
+
+/// Registered parameters that are trued's own business on a synth: bend range, tuning program and bank, MPE zone.
+const OURS: [[u8; 2]; 4] = [[0, 0], [0, 3], [0, 4], [0, 6]];
+/// The parameter that data entry cannot change (GM2 3.4.5).
+const NULL: [u8; 2] = [0x7F; 2];
+
+impl Engine {
+    pub(super) fn program_in(&mut self, now: Time, hand: Hand, number: u8) {
+        let [bank_msb, bank_lsb] = self.source(hand).bank;
+        let program = Program {
+            bank_msb,
+            bank_lsb,
+            program: number,
+        };
+        self.for_parts(hand, |engine, index, part| {
+            if part.pass.programs {
+                engine.set_program(now, index, program);
+            }
+        });
+    }
+
+    /// Gives a program to a part. Some synths reset their bend range with it, so that is said again.
+    pub(super) fn set_program(&mut self, now: Time, index: usize, program: Program) {
+        self.parts[index].program = program;
+        let part = self.plan.parts[index];
+        let synth = &mut self.synths[part.to.index()];
+        let mut told = ChannelSet::NONE;
+        for channel in gesture_channels(&synth.rig, &part).iter() {
+            if synth.program(channel, program, &mut self.out) {
+                told = told.with(channel);
+            }
+        }
+        if synth.rig.manager().is_some() && told.count() > 0 {
+            told = synth.rig.channels();
+        }
+        for channel in told.iter() {
+            synth.range_due(channel, now);
+        }
+        self.say_pieces(now, part.to);
+    }
+
+    /// Data entry. RPN 0 says what the wheel means and goes no further; what is trued's own is not passed on.
+    pub(super) fn set_parameter(&mut self, now: Time, hand: Hand, msb: u8, lsb: u8) {
+        let source = self.source(hand);
+        let sequence: fn(u8, [u8; 2], [u8; 2]) -> [u8; parameter::PARAMETER_BYTES] = match source
+            .select
+        {
+            Select::Registered([0, 0]) => {
+                source.wheel_range =
+                    Interval::from_cents(msb.min(BEND_RANGE_MAX) as i64 * 100 + lsb.min(99) as i64);
+                self.widen_managers(now, hand);
+                self.wheel_moved(now, hand);
+                return;
+            }
+            Select::Registered(number) if OURS.contains(&number) || number == NULL => {
+                return;
+            }
+            Select::Nothing => return,
+            Select::Registered(_) => parameter::registered,
+            Select::NonRegistered(_) => parameter::non_registered,
+        };
+        let (Select::Registered(number) | Select::NonRegistered(number)) = source.select else {
+            return;
+        };
+        self.to_gesture_channels(hand, |channel| {
+            (
+                sequence(channel, number, [msb, lsb]),
+                parameter::PARAMETER_BYTES,
+            )
+        });
+    }
+
+    /// Data increment and decrement, passed on with the selection they belong to.
+    pub(super) fn step_parameter(&mut self, hand: Hand, step: u8, value: u8) {
+        let (number, select) = match self.source(hand).select {
+            Select::Registered(number) if !OURS.contains(&number) && number != NULL => {
+                (number, [controller::RPN_MSB, controller::RPN_LSB])
+            }
+            Select::NonRegistered(number) => (number, [controller::NRPN_MSB, controller::NRPN_LSB]),
+            _ => return,
+        };
+        self.to_gesture_channels(hand, |channel| {
+            let s = status::CONTROLLER | channel;
+            let null = [controller::RPN_MSB, controller::RPN_LSB];
+            #[rustfmt::skip]
+            let bytes = [
+                s, select[0], number[0], s, select[1], number[1], s, step, value,
+                s, null[0], 0x7F, s, null[1], 0x7F,
+            ];
+            (bytes, bytes.len())
+        });
+    }
+
+    /// Sends bytes to every channel that hears the controllers of the parts that a hand plays, once each.
+    pub(super) fn to_gesture_channels<const N: usize>(
+        &mut self,
+        hand: Hand,
+        bytes: impl Fn(u8) -> ([u8; N], usize),
+    ) {
+        let mut channels = [ChannelSet::NONE; SYNTHS_MAX];
+        for index in 0..self.plan.parts.len() {
+            let part = self.plan.parts[index];
+            if part.pass.controllers && self.feeds(&part, hand) {
+                let to = part.to.index();
+                channels[to].0 |= gesture_channels(&self.synths[to].rig, &part).0;
+            }
+        }
+        for (synth, channels) in self.synths.iter().zip(channels) {
+            for channel in channels.iter() {
+                let (bytes, length) = bytes(channel);
+                synth.send(Weight::Owed, &bytes[..length], &mut self.out);
+            }
+        }
+    }
+
+    /// Reset All Controllers: passed on, and since a receiver centres its bend then, the tuning is said again.
+    pub(super) fn reset_all(&mut self, now: Time, hand: Hand) {
+        let source = self.source(hand);
+        source.wheel = Bend::CENTRE;
+        source.pedals = [0; PEDALS.len()];
+        source.select = Select::Nothing;
+        self.to_gesture_channels(hand, |channel| {
+            ([status::CONTROLLER | channel, controller::RESET_ALL, 0], 3)
+        });
+        self.for_parts(hand, |engine, index, part| {
+            if part.pass.controllers {
+                engine.after_reset(now, index, part);
+            }
+        });
+    }
+
+    fn after_reset(&mut self, now: Time, index: usize, part: &PartPlan) {
+        let settings = &mut self.parts[index];
+        settings.wheel = Interval::ZERO;
+        settings.pressure = 0;
+        for (number, value) in RESET_VALUES {
+            if settings.controllers[number as usize] != UNSAID {
+                settings.controllers[number as usize] = value;
+            }
+        }
+        settings.version += 1;
+        for (which, pedal) in PEDALS.iter().enumerate() {
+            let deepest = self.deepest(part, which);
+            if self.parts[index].controllers[*pedal as usize] != UNSAID {
+                self.parts[index].controllers[*pedal as usize] = deepest;
+            }
+        }
+        let synth = &mut self.synths[part.to.index()];
+        for number in gesture_channels(&synth.rig, part).iter() {
+            synth.channel(number).reset_controllers();
+        }
+        for number in members(&synth.rig, part).iter() {
+            let mpe = synth.rig.keeps_pitch();
+            let channel = synth.channel(number);
+            if channel.damper || channel.sostenuto {
+                channel.released_at = Some(now);
+            }
+            channel.damper = false;
+            channel.sostenuto = false;
+            channel.pressure = 0;
+            if mpe {
+                channel.bend = None; // whether members follow a reset of their manager, receivers disagree
+            }
+        }
+        for voice in self.voices.iter_mut().filter(|v| v.part.index() == index) {
+            voice.latched &= part.late_offs;
+        }
+        self.say_again_what_sounds(now, index, part);
+        self.release_waiting(now, index);
+    }
+
+    fn say_again_what_sounds(&mut self, now: Time, index: usize, part: &PartPlan) {
+        let wheel_here = on_members(&self.synths[part.to.index()].rig, part);
+        for number in members(&self.synths[part.to.index()].rig, part).iter() {
+            let synth = &self.synths[part.to.index()];
+            if synth.channels[number as usize].rings(now, synth.rig.tail) {
+                self.say_bend(part.to, number);
+                self.catch_up(part.to, number);
+            }
+        }
+        if !wheel_here {
+            self.play_wheel(now, index, Weight::Owed);
+        }
+    }
+}
