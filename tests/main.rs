@@ -9,6 +9,9 @@ mod midi_stream;
 /// A counting allocator: the engine takes nothing from the heap once it is made.
 mod no_alloc;
 
+/// Ten thousand random notes, through both dialects, three bend ranges and five tunings, heard from outside.
+mod random_play;
+
 /// Arrows between rooms, banned words in the core, file length.
 mod tidy;
 

@@ -4,6 +4,8 @@
 pub mod dice;
 /// Plans put together by hand, for tests that need no stage file.
 pub mod plans;
+/// Tunings by the literature.
+pub mod published;
 /// Hears what was sent and says what sounded; knows nothing of trued.
 pub mod receiver;
 /// Engine, scripted clock and receivers; scripts in, transcripts out.
