@@ -155,7 +155,7 @@ impl Engine {
 
     /// A new plan takes over between two messages. The old one comes back, to be dropped off the hot path.
     ///
-    /// Nothing that sounds is disturbed. The song is found again by title and keeps its own settings until it is begun
+    /// Nothing that sounds is disturbed, but for notes of a part or synth that is no more. The song is found again by title and keeps its own settings until it is begun
     /// again, unless the plan says that edits count at once. A synth whose rig changed takes it on once silent.
     pub fn handle_plan(&mut self, now: Time, plan: Box<Plan>) -> Box<Plan> {
         self.swap_plan(now, plan)
@@ -224,14 +224,20 @@ impl Engine {
             Message::RealTime(0xFF) => return self.let_go(now, id), // System Reset: obeyed, never echoed
             Message::RealTime(byte) => return self.pass_on(id, &[byte]),
         };
-        if !self.plan.keyboards[id.index()].channels.has(channel) {
-            return;
-        }
         let hand = Hand {
             keyboard: id,
             channel,
         };
-        self.gesture_in(now, hand, message);
+        if let Message::NoteOff { key, velocity, .. } = message
+            && self.is_open(hand, key)
+        {
+            // Whatever a new plan says of this key or channel, a note that was started is ended.
+            let key = Key::new(key).expect("MIDI keys are 0-127");
+            return self.key_up(now, hand, key, velocity);
+        }
+        if self.plan.keyboards[id.index()].channels.has(channel) {
+            self.gesture_in(now, hand, message);
+        }
     }
 
     fn gesture_in(&mut self, now: Time, hand: Hand, message: Message<'_>) {
@@ -259,6 +265,12 @@ impl Engine {
             Message::PitchBend { bend, .. } => self.wheel_in(now, hand, bend),
             Message::Sysex(_) | Message::Common(_) | Message::RealTime(_) => {}
         }
+    }
+
+    fn is_open(&self, hand: Hand, key: u8) -> bool {
+        self.voices
+            .iter()
+            .any(|v| v.down && v.key.number() == key && hand.is_of(v))
     }
 
     /// The gesture in a message, if it can be one.

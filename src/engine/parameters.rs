@@ -50,6 +50,13 @@ impl Engine {
         for channel in told.iter() {
             synth.range_due(channel, now);
         }
+        for channel in told.iter() {
+            let synth = &self.synths[part.to.index()];
+            let member = synth.rig.manager() != Some(channel);
+            if member && synth.channels[channel as usize].rings(now, synth.rig.tail) {
+                self.say_channel(now, part.to, channel); // what sounds cannot wait its turn
+            }
+        }
         self.say_pieces(now, part.to);
     }
 

@@ -33,6 +33,7 @@ impl Engine {
                     synth.again_at = Some(now + Span::from_millis(SETTLE_MS));
                 }
                 self.set_up(now, id);
+                self.sends_due = !self.plan.set[self.song].sends.is_empty();
             }
             Link::Tight => synth.tight = true,
             Link::Easy => synth.tight = false,

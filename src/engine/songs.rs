@@ -1,9 +1,9 @@
 //! Songs, cues and commands.
 
-use super::channel::Program;
+use super::channel::{Program, UNSAID};
 use super::plan::{Act, Gesture, Plan, SynthId};
-use super::synth::Rig;
-use super::traffic::{Command, Weight};
+use super::synth::{PEDALS, Rig};
+use super::traffic::{Command, Link, Weight};
 use super::{Engine, Hand, Playing};
 use crate::midi::{Message, controller, status};
 use crate::time::{Span, Time};
@@ -157,8 +157,8 @@ impl Engine {
 
     fn lift_all_pedals(&mut self, now: Time) {
         for part in &mut self.parts {
-            for pedal in super::synth::PEDALS {
-                if part.controllers[pedal as usize] != super::channel::UNSAID {
+            for pedal in PEDALS {
+                if part.controllers[pedal as usize] != UNSAID {
                     part.set(pedal, 0);
                 }
             }
@@ -216,8 +216,45 @@ impl Engine {
             let synth = &mut self.synths[index];
             synth.next_rig = (rig != synth.rig).then_some(rig);
         }
+        if self.plan.parts != old.parts {
+            self.fit_parts(now);
+        }
+        for index in self.plan.synths.len()..old.synths.len() {
+            let id = self.synths[index].id;
+            self.link_changed(now, id, Link::Down);
+        }
         self.when_silent(now);
         old
+    }
+
+    /// After an edit of the parts: each takes the pedals and the wheel of the hands that play it now, and what rings
+    /// under a pedal that nobody holds any more is let go.
+    fn fit_parts(&mut self, now: Time) {
+        for index in 0..self.plan.parts.len() {
+            let part = self.plan.parts[index];
+            for (which, pedal) in PEDALS.into_iter().enumerate() {
+                let value = self.deepest(&part, which);
+                if value > 0 || self.parts[index].controllers[pedal as usize] != UNSAID {
+                    self.parts[index].set(pedal, value);
+                }
+            }
+            self.release_waiting(now, index);
+        }
+        let gone = self.plan.parts.len();
+        self.release(now, 64, None, |v| !v.drum && v.part.index() >= gone);
+        for synth in 0..self.plan.synths.len() {
+            for number in 0..crate::limits::CHANNELS as u8 {
+                let owner = self.part_of(self.synths[synth].id, number);
+                let held = owner.is_some_and(|(id, _)| self.parts[id.index()].damper_down());
+                let channel = self.synths[synth].channel(number);
+                if (channel.damper || channel.sostenuto) && !held {
+                    channel.damper = false;
+                    channel.sostenuto = false;
+                    channel.released_at = Some(now);
+                    self.synths[synth].lift_pedals(number, &mut self.out);
+                }
+            }
+        }
     }
 }
 
