@@ -17,3 +17,5 @@ mod tidy;
 
 /// The daemon's score between simulated ports: order, deadlines, stop, full and lost ports, a panic.
 mod score;
+/// Stage files: every form loads, every mistake is told exactly.
+mod stage;

@@ -194,9 +194,13 @@ fn rig_file(
             Some((tree, number))
         }
         Err(error) => {
+            let why = match error.kind() {
+                std::io::ErrorKind::NotFound => String::from("is not there"),
+                _ => format!("cannot be read ({error})"),
+            };
             found.complaints.add(
                 &at.trail,
-                format!("the rig file {} cannot be read ({error})", file.display()),
+                format!("the rig file {name} {why}"),
                 "give its path from the folder of this stage file",
             );
             None

@@ -12,6 +12,8 @@ pub enum Segment {
     Item(usize),
     /// The key itself.
     Name(String),
+    /// The key itself, where it stands for the second time.
+    Again(String),
 }
 
 /// The way to a node: a file (by place in [`Complaints::files`]) and steps into it.
@@ -66,6 +68,8 @@ impl fmt::Display for Complaint {
 pub struct Complaints {
     files: Vec<(PathBuf, String)>,
     found: Vec<Complaint>,
+    /// Lines, with their file, that are known not to be read as they were meant.
+    settled: Vec<(usize, usize)>,
 }
 
 impl Complaints {
@@ -79,6 +83,9 @@ impl Complaints {
     pub fn add(&mut self, trail: &Trail, wrong: impl Into<String>, right: impl Into<String>) {
         let (file, text) = &self.files[trail.file];
         let (line, column) = super::locate::locate(text, &trail.steps).unwrap_or((1, 1));
+        if self.settled.contains(&(trail.file, line)) {
+            return;
+        }
         self.found.push(Complaint {
             file: file.clone(),
             line,
@@ -116,6 +123,16 @@ impl Complaints {
             wrong,
             right,
         });
+    }
+
+    /// Says that a line has had its complaint: what else is found there only follows from it.
+    pub fn settle(&mut self, file: usize, line: usize) {
+        self.settled.push((file, line));
+    }
+
+    /// How many there are so far.
+    pub fn count(&self) -> usize {
+        self.found.len()
     }
 
     /// The line of a node, to point from one complaint to another place.

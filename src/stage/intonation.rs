@@ -103,7 +103,7 @@ fn limit(at: &At<'_>, name: &str, unit: &str, most: i64, complaints: &mut Compla
         let none = if free { ", or none" } else { "" };
         complaints.add(
             &at.trail,
-            format!("{} does not fit here", super::values::shown(at)),
+            format!("{} does not fit here", at.node.shown()),
             format!("write {unit} from 0 to {most}{none}"),
         );
     }

@@ -67,13 +67,16 @@ impl<'de> Visitor<'de> for Walk<'_> {
         let (key, rest) = match self.0 {
             [] => return Err(de::Error::custom(HERE)),
             [Segment::Key(key), rest @ ..] => (key, Some(rest)),
-            [Segment::Name(key), ..] => (key, None),
+            [Segment::Name(key) | Segment::Again(key), ..] => (key, None),
             [Segment::Item(_), ..] => return Ok(()),
         };
+        // How often the key is passed before it is the one.
+        let mut passed = usize::from(matches!(self.0, [Segment::Again(_), ..]));
         while let Some(hit) = map.next_key_seed(KeySeed {
             key,
-            stop: rest.is_none(),
+            stop: rest.is_none() && passed == 0,
         })? {
+            passed = passed.saturating_sub(usize::from(hit));
             match rest {
                 Some(rest) if hit => return map.next_value_seed(Walk(rest)),
                 _ => map.next_value::<IgnoredAny>()?,
@@ -113,5 +116,83 @@ impl<'de> Visitor<'de> for Walk<'_> {
     }
     fn visit_unit<E: de::Error>(self) -> Result<(), E> {
         Err(E::custom(HERE))
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    const TEXT: &str = "# top
+ports:
+  input: \"USB\"   # c
+  output: wharf
+channels: [2, 3,
+  99]
+tuning:
+  C: 0
+  'F#': -13.7
+  1812: &d 3
+rules:
+  - {kind: fixed, cents: 1}
+  - kind: ratio
+    num: 5
+    kind: pure
+last: no newline";
+
+    fn at(steps: &[Segment]) -> Option<(usize, usize)> {
+        locate(TEXT, steps)
+    }
+
+    fn key(name: &str) -> Segment {
+        Segment::Key(name.to_string())
+    }
+
+    fn name(name: &str) -> Segment {
+        Segment::Name(name.to_string())
+    }
+
+    #[test]
+    fn values_are_found() {
+        assert_eq!(at(&[key("ports"), key("input")]), Some((3, 10)));
+        assert_eq!(at(&[key("ports"), key("output")]), Some((4, 11)));
+        assert_eq!(at(&[key("tuning"), key("F#")]), Some((9, 9)));
+        assert_eq!(at(&[key("tuning"), key("1812")]), Some((10, 9)));
+        assert_eq!(at(&[]), Some((2, 1)));
+    }
+
+    #[test]
+    fn keys_are_found() {
+        assert_eq!(at(&[name("tuning")]), Some((7, 1)));
+        assert_eq!(at(&[key("tuning"), name("F#")]), Some((9, 3)));
+        assert_eq!(at(&[key("tuning"), name("1812")]), Some((10, 3)));
+        assert_eq!(at(&[key("tuning"), name("G")]), None);
+    }
+
+    #[test]
+    fn items_are_found_in_flow_style_over_lines_too() {
+        let items = |index| at(&[key("channels"), Segment::Item(index)]);
+        assert_eq!(items(0), Some((5, 12)));
+        assert_eq!(items(2), Some((6, 3)));
+        assert_eq!(items(3), None);
+        let rule = |index, step| at(&[key("rules"), Segment::Item(index), step]);
+        assert_eq!(rule(0, key("cents")), Some((12, 26)));
+        assert_eq!(rule(0, name("cents")), Some((12, 19)));
+        assert_eq!(rule(1, key("num")), Some((14, 10)));
+    }
+
+    #[test]
+    fn a_key_is_found_where_it_stands_again() {
+        let rule = [key("rules"), Segment::Item(1)];
+        let with = |step| at(&[rule[0].clone(), rule[1].clone(), step]);
+        assert_eq!(with(name("kind")), Some((13, 5)));
+        assert_eq!(with(Segment::Again("kind".to_string())), Some((15, 5)));
+        assert_eq!(with(Segment::Again("num".to_string())), None);
+    }
+
+    #[test]
+    fn the_last_line_counts_without_an_end_too() {
+        assert_eq!(at(&[key("last")]), Some((16, 7)));
+        assert_eq!(at(&[key("nowhere"), key("else")]), None);
     }
 }

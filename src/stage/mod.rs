@@ -99,10 +99,11 @@ impl Stage {
             complaints.into_sorted()
         };
         let bytes = std::fs::read(path).map_err(|error| {
-            unread(
-                format!("cannot be read ({error})"),
-                "give the path of a stage file",
-            )
+            let wrong = match error.kind() {
+                std::io::ErrorKind::NotFound => String::from("there is no such file"),
+                _ => format!("cannot be read ({error})"),
+            };
+            unread(wrong, "give the path of a stage file")
         })?;
         let text = String::from_utf8(bytes)
             .map_err(|_| unread(String::from("is not UTF-8 text"), "save it as UTF-8"))?;

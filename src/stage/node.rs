@@ -18,15 +18,14 @@ pub enum Node {
 }
 
 impl Node {
-    /// For complaints: what stands here, in words.
-    pub fn kind(&self) -> &'static str {
+    /// For complaints: what stands here, as typed where it is short.
+    pub fn shown(&self) -> String {
         match self {
-            Node::Nothing => "nothing",
-            Node::Flag(_) => "true or false",
-            Node::Number(_) => "a number",
-            Node::Text(_) => "a text",
-            Node::List(_) => "a list",
-            Node::Map(_) => "a map",
+            Node::Nothing => String::from("nothing"),
+            Node::Flag(flag) => format!("`{flag}`"),
+            Node::Number(text) | Node::Text(text) => format!("`{text}`"),
+            Node::List(_) => String::from("a list"),
+            Node::Map(_) => String::from("a map"),
         }
     }
 }
@@ -56,7 +55,7 @@ impl<'n> At<'n> {
             other => {
                 complaints.add(
                     &self.trail,
-                    format!("{} stands here", other.kind()),
+                    format!("{} stands here", other.shown()),
                     format!("write {wanted}"),
                 );
                 None
@@ -78,16 +77,19 @@ impl<'n> At<'n> {
         match number {
             Some(number) if range.contains(&number) => Some(number),
             _ => {
-                let shown = match self.node {
-                    Node::Number(text) | Node::Text(text) => format!("`{text}`"),
-                    other => other.kind().to_string(),
+                let shown = self.node.shown();
+                let bounds = format!("a whole number from {} to {}", range.start(), range.end());
+                let (wrong, right) = match self.node {
+                    Node::Text(text) if is_padded(text) => (
+                        format!("{shown} begins with a nought, so it is no number to YAML"),
+                        format!("write {}", text.trim_start_matches('0')),
+                    ),
+                    _ => (
+                        format!("{shown} does not fit here"),
+                        format!("write {wanted}: {bounds}"),
+                    ),
                 };
-                let right = format!(
-                    "write {wanted}, a whole number from {} to {}",
-                    range.start(),
-                    range.end()
-                );
-                complaints.add(&self.trail, format!("{shown} does not fit here"), right);
+                complaints.add(&self.trail, wrong, right);
                 None
             }
         }
@@ -102,7 +104,7 @@ impl<'n> At<'n> {
             other => {
                 complaints.add(
                     &self.trail,
-                    format!("{} stands here", other.kind()),
+                    format!("{} stands here", other.shown()),
                     "write yes or no",
                 );
                 None
@@ -128,7 +130,7 @@ impl<'n> At<'n> {
         let Node::Map(entries) = self.node else {
             complaints.add(
                 &self.trail,
-                format!("{} stands here", self.node.kind()),
+                format!("{} stands here", self.node.shown()),
                 format!("write {wanted}"),
             );
             return None;
@@ -136,7 +138,7 @@ impl<'n> At<'n> {
         let mut left: Vec<(&'n str, &'n Node)> = Vec::with_capacity(entries.len());
         for (name, node) in entries {
             if left.iter().any(|(earlier, _)| *earlier == name) {
-                let trail = self.trail.then(Segment::Name(name.clone()));
+                let trail = self.trail.then(Segment::Again(name.clone()));
                 complaints.add(
                     &trail,
                     format!("`{name}` is written twice"),
@@ -223,6 +225,12 @@ impl<'n> Fields<'n> {
             complaints.add(&trail, format!("`{name}` is not known here"), right);
         }
     }
+}
+
+/// `08`: digits with a nought before them.
+fn is_padded(text: &str) -> bool {
+    let digits = text.bytes().all(|b| b.is_ascii_digit());
+    digits && text.starts_with('0') && text.trim_start_matches('0') != ""
 }
 
 /// The known word most like `word`, if it is like any: at most a third of its letters differ.

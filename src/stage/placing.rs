@@ -9,9 +9,7 @@ use super::songs::Desk;
 use super::tunings::{Reference, TuningText};
 use super::values::{self, choice, key, letter};
 use crate::pitch::{Hertz, Log};
-use crate::tuning::{
-    ByLetter, FromTonic, Key, KeyMap, Letter, Pin, Placement, Scale, TuneError, Tuning,
-};
+use crate::tuning::{Key, Letter, Pin, Placement, Scale, TuneError, Tuning};
 use std::sync::Arc;
 
 /// `A4 = 415 Hz`.
@@ -122,9 +120,8 @@ pub fn read(
     let complaints = &mut desk.found.complaints;
     let tonic = tonic(tonic_at.as_ref(), &scale, &described.name, complaints);
     let turned_to = turned_to(turned_at.as_ref(), &scale, &described.name, complaints);
-    let mut names = names(&scale, turned_to);
     if let Some(at) = &black_at {
-        black_keys::read(at, &mut scale, turned_to, &mut names, desk.found);
+        black_keys::read(at, &mut scale, turned_to, desk.found);
     }
     // Not written at all is one thing (the tuning may bring its own), written wrong is another.
     let reference = match reference {
@@ -132,6 +129,10 @@ pub fn read(
         None => None,
     };
     let placement = described.placement(tonic, turned_to, reference);
+    let mut names = names(&scale, &placement);
+    if let (Scale::FromTonic(_), Some(at)) = (&scale, &black_at) {
+        black_keys::call(at, &mut names);
+    }
     let place = pitch_at.as_ref().unwrap_or(song);
     let tuning = put(&scale, &placement, &described.name, place, desk)?;
     Some((scale, placement, tuning, names))
@@ -163,11 +164,7 @@ fn put(
             desk.found.complaints.add(
                 &place.trail,
                 format!("the reference key {key} is silent in {name}"),
-                format!(
-                    "name a key that sounds, as in `pitch: D4 = 293.66 Hz`, or let the tonic stand where equal \
-                     temperament puts it: `pitch: {{key: {key}, hz: {}, pin: tonic}}`",
-                    placement.hertz.hertz()
-                ),
+                sounding_reference(scale, placement),
             );
             None
         }
@@ -182,6 +179,32 @@ fn put(
     }
 }
 
+/// Both remedies for a silent reference key: the nearest one that sounds, and the tonic.
+fn sounding_reference(scale: &Scale, placement: &Placement) -> String {
+    let silent = placement.reference;
+    let hertz = placement.hertz.hertz();
+    let by_tonic = Placement {
+        pin: Pin::Tonic,
+        ..*placement
+    };
+    let pin = format!(
+        "let the tonic stand where equal temperament puts it, `pitch: {{key: {silent}, hz: {hertz}, pin: tonic}}`"
+    );
+    let distance = |key: &Key| key.number().abs_diff(silent.number());
+    let nearest = scale.tune(&by_tonic).ok().and_then(|tuning| {
+        let sounding = Key::all().filter(|key| tuning.pitch(*key).is_some());
+        sounding.min_by_key(distance)
+    });
+    match nearest {
+        Some(key) => {
+            let semitones = f64::from(key.number()) - f64::from(silent.number());
+            let equal = hertz * 2f64.powf(semitones / 12.0);
+            format!("name a key that sounds, `pitch: {key} = {equal:.2} Hz`, or {pin}")
+        }
+        None => pin,
+    }
+}
+
 /// The key with step 0. By letter there is none, and asking for one is a misunderstanding worth a word.
 fn tonic(
     at: Option<&At<'_>>,
@@ -191,7 +214,7 @@ fn tonic(
 ) -> Option<Key> {
     let Scale::FromTonic(_) = scale else {
         let at = at?;
-        let typed = values::shown(at);
+        let typed = at.node.shown();
         let letter = typed.trim_matches('`');
         complaints.add(
             &at.trail,
@@ -203,15 +226,10 @@ fn tonic(
         );
         return None;
     };
-    let usual = || Key::parse(&format!("{}{}", defaults::TONIC, defaults::TONIC_OCTAVE));
-    let Some(at) = at else {
-        return usual();
-    };
-    let Some(text) = at.text("a key such as D, or D4", complaints) else {
-        return usual();
-    };
+    let at = at?;
+    let text = at.text("a key such as D, or D4", complaints)?;
     let key = match Letter::parse(&text) {
-        Some(letter) => Key::parse(&format!("{letter}{}", defaults::TONIC_OCTAVE)),
+        Some(letter) => Some(Scale::tonic_key(letter)),
         None => Key::parse(&text),
     };
     if key.is_none() {
@@ -221,7 +239,7 @@ fn tonic(
             "write a letter, # or b if it has one, and an octave if you like: D, Eb, D4",
         );
     }
-    key.or_else(usual)
+    key
 }
 
 fn turned_to(
@@ -243,39 +261,18 @@ fn turned_to(
     Some(letter)
 }
 
-/// Places on the line of fifths that a turned tuning moves by.
-pub fn turn(by_letter: &ByLetter, turned_to: Option<Letter>) -> i8 {
-    let home = by_letter.names[by_letter.home as usize % 12];
-    turned_to.map_or(0, |letter| letter.place() - home.place())
-}
-
-/// What the twelve keys are called in this song.
-fn names(scale: &Scale, turned_to: Option<Letter>) -> [Letter; 12] {
-    let mut names: [Letter; 12] =
-        std::array::from_fn(|pitch_class| Letter::usual(pitch_class as u8));
-    if let Scale::ByLetter(by_letter) = scale {
-        let by = turn(by_letter, turned_to);
-        for name in by_letter.names {
-            if let Some(moved) = Letter::on_line(name.place() + by) {
-                names[moved.pitch_class() as usize] = moved;
-            }
-        }
+fn names(scale: &Scale, placement: &Placement) -> [Letter; 12] {
+    match (scale, placement.turned_to) {
+        (Scale::ByLetter(scale), Some(letter)) => scale.turned(letter).names,
+        (Scale::ByLetter(scale), None) => scale.names,
+        (Scale::FromTonic(_), _) => std::array::from_fn(|key| Letter::usual(key as u8)),
     }
-    names
 }
 
 /// Whether a scale repeats at the octave every twelve keys, as harmony needs it.
 pub fn twelve_to_the_octave(scale: &Scale) -> bool {
-    let FromTonic {
-        steps, period, map, ..
-    } = match scale {
-        Scale::ByLetter(_) => return true,
-        Scale::FromTonic(from_tonic) => from_tonic,
-    };
-    let keys = match map {
-        KeyMap::EachKey => steps.len(),
-        KeyMap::Letters { .. } => 12,
-        KeyMap::Keys { steps, .. } => steps.len(),
-    };
-    keys == 12 && *period == Log::OCTAVE
+    match scale {
+        Scale::ByLetter(_) => true,
+        Scale::FromTonic(scale) => scale.keys_to_period() == 12 && scale.period == Log::OCTAVE,
+    }
 }

@@ -111,6 +111,12 @@ fn share(
     pools: &mut [ChannelSet],
     complaints: &mut Complaints,
 ) {
+    if sharing
+        .iter()
+        .any(|part| rig.synths[parts[*part].to.index()].plan.members == ChannelSet::NONE)
+    {
+        return; // the synth has had its complaint
+    }
     let mut channels = free.iter();
     let count = free.count() as usize;
     for (place, part) in sharing.iter().enumerate() {

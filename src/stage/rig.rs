@@ -3,7 +3,7 @@
 use super::advice::Findings;
 use super::complaint::{Complaints, Trail};
 use super::node::{At, Fields, nearest};
-use super::values::{channels, choice, key_range, one_of, shown, spell_channels};
+use super::values::{channels, choice, key_range, one_of, spell_channels};
 use super::{Device, Wish, defaults};
 use crate::engine::plan::{
     ChannelSet, Dialect, KeyboardId, KeyboardPlan, Leave, Pass, Steal, SynthId, SynthPlan,
@@ -103,7 +103,8 @@ fn named<'n>(
     let Some(at) = section else {
         return Vec::new();
     };
-    let wanted = format!("a name for each {what}, as in `{what}: {{port: \"*Name*\"}}`");
+    let wanted =
+        format!("each {what} under a name, as in `{what}s: {{mine: {{port: \"*Name*\"}}}}`");
     let Some(mut fields) = at.fields(&wanted, &mut found.complaints) else {
         return Vec::new();
     };
@@ -285,7 +286,7 @@ fn dialect(fields: &mut Fields<'_>, complaints: &mut Complaints) -> Spelling {
     if spelling == Some(Spelling::NotYet) {
         complaints.add(
             &at.trail,
-            format!("{} is not played by this version", shown(&at)),
+            format!("{} is not played by this version", at.node.shown()),
             "use mpe or channel-bend",
         );
     }
@@ -320,8 +321,8 @@ fn members(
         if plan.members == ChannelSet::NONE {
             complaints.add(
                 &place,
-                format!("of the channels {spelt} none is left beside the drums"),
-                "give it a channel that is not in `drums`",
+                "no channel is left beside the drums",
+                "give it a channel that is not in `drums`, or write `drums: []`",
             );
         }
         return;
@@ -329,7 +330,7 @@ fn members(
     let Some(manager) = zone_manager(all) else {
         complaints.add(
             &place,
-            format!("channels {spelt} are no MPE zone"),
+            format!("{spelt} makes no MPE zone"),
             "a lower zone begins at 1, as in 1-8 (manager 1), an upper one ends at 16, as in 9-16 (manager 16)",
         );
         return;
@@ -342,7 +343,7 @@ fn members(
                 "the drum channel {} lies inside the MPE zone {spelt}",
                 spell_channels(drummed)
             ),
-            "an MPE zone has no gaps: end it below the drums, as in `channels: 1-9`, or write `drums: []`",
+            "a zone has no gaps: end it below the drums, as in `channels: 1-9`, or write `drums: []`",
         );
     }
     plan.dialect = Dialect::Mpe { manager };

@@ -25,6 +25,7 @@ pub fn read_tree(file: usize, text: &str, complaints: &mut Complaints) -> Option
             ),
         };
         complaints.add_place(file, (cut.line, cut.column), wrong, right);
+        complaints.settle(file, cut.line);
     }
     match serde_yaml::from_str::<Node>(text) {
         Ok(Node::Nothing) => {
@@ -137,15 +138,6 @@ pub fn unknown_key(name: &str, value: &Node, known: &[&str]) -> Option<(String, 
     None
 }
 
-/// `701,955` for `701.955`: the number as it should be written.
-pub fn decimal_comma(text: &str) -> Option<String> {
-    let (before, after) = text.split_once(',')?;
-    let digits = before.chars().next_back()?.is_ascii_digit()
-        && after.chars().next()?.is_ascii_digit()
-        && !after.contains(',');
-    digits.then(|| format!("{before}.{after}"))
-}
-
 /// What a YAML error means, and where.
 fn explain(text: &str, error: &serde_yaml::Error) -> (Place, String, String) {
     let message = error.to_string();
@@ -255,7 +247,7 @@ fn quotes(message: &str, lines: &[&str], place: Place, context: Option<Place>) -
             place,
             format!("the text goes on after its closing {mark}"),
             format!(
-                "put the whole text in quotes; if it has a {mark} in it, use {other}...{other}"
+                "put the whole text in quotes, and if it has a {mark} in it, use {other}...{other}"
             ),
         );
     }
@@ -313,9 +305,24 @@ fn colons(message: &str, lines: &[&str], place: Place, context: Option<Place>) -
                 format!("write \"{}\"", whole.replace('"', "'")),
             );
         }
+        if let Some(open) = open_bracket(lines, place.0) {
+            return unclosed(lines, open, place.0);
+        }
         let above = lines
             .get(place.0.wrapping_sub(2))
             .map_or("", |line| line.trim());
+        if let Some((key, value)) = above.split_once(':')
+            && !above.contains(": ")
+            && !value.is_empty()
+        {
+            let line = place.0 - 1;
+            let indent = lines[line - 1].chars().take_while(|c| *c == ' ').count();
+            return told(
+                (line, indent + 1),
+                format!("`{above}` has no space after its colon, so it is one word"),
+                format!("write `{key}: {value}`"),
+            );
+        }
         return told(
             (
                 place.0,
@@ -342,19 +349,7 @@ fn colons(message: &str, lines: &[&str], place: Place, context: Option<Place>) -
 fn brackets(message: &str, lines: &[&str], place: Place, context: Option<Place>) -> Told {
     let next = rest_of(lines, place).chars().next();
     if message.contains("did not find expected ','") {
-        let open = context.unwrap_or(place);
-        let (mark, close) = match rest_of(lines, open).starts_with('[') {
-            true => ('[', ']'),
-            false => ('{', '}'),
-        };
-        return told(
-            open,
-            format!(
-                "the {mark} opened here is not closed before line {}",
-                place.0
-            ),
-            format!("write {close} where it ends, and a comma between its entries"),
-        );
+        return unclosed(lines, context.unwrap_or(place), place.0);
     }
     if let Some(mark @ (']' | '}')) = next {
         return told(
@@ -364,6 +359,33 @@ fn brackets(message: &str, lines: &[&str], place: Place, context: Option<Place>)
         );
     }
     None
+}
+
+fn unclosed(lines: &[&str], open: Place, before: usize) -> Told {
+    let (mark, close) = match rest_of(lines, open).starts_with('[') {
+        true => ('[', ']'),
+        false => ('{', '}'),
+    };
+    told(
+        open,
+        format!("the {mark} opened here is not closed before line {before}"),
+        format!("write {close} where it ends, and a comma between its entries"),
+    )
+}
+
+/// The last bracket that is still open where a line begins, quotes left aside.
+fn open_bracket(lines: &[&str], line: usize) -> Option<Place> {
+    let mut open = Vec::new();
+    for (index, text) in lines.iter().take(line - 1).enumerate() {
+        for (column, sign) in text.chars().enumerate() {
+            match sign {
+                '[' | '{' => open.push((index + 1, column + 1)),
+                ']' | '}' => drop(open.pop()),
+                _ => {}
+            }
+        }
+    }
+    open.pop()
 }
 
 fn layout(message: &str, text: &str, place: Place) -> Told {
@@ -418,7 +440,7 @@ fn layout(message: &str, text: &str, place: Place) -> Told {
         return told(
             (line, column),
             "a control character stands here",
-            "take it away; a stage file is plain text",
+            "take it away: a stage file is plain text",
         );
     }
     None

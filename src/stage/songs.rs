@@ -106,7 +106,7 @@ fn set_song(
     let complaints = &mut desk.found.complaints;
     if let Node::Map(entries) = at.node
         && let [(start, Node::Text(end) | Node::Number(end))] = entries.as_slice()
-        && start != "song"
+        && !SONG_KEYS.contains(&start.as_str())
     {
         complaints.add(
             &at.trail,
@@ -120,11 +120,13 @@ fn set_song(
         complaints,
     )?;
     let Some(title_at) = fields.take("song") else {
-        complaints.add(
-            &at.trail,
-            "this song has no title",
-            "begin it with its title: {song: Lantern hymn, ...}",
-        );
+        if !fields.has("title") {
+            complaints.add(
+                &at.trail,
+                "this song has no title",
+                "begin it with its title: {song: Lantern hymn, ...}",
+            );
+        }
         song("", at, Some(fields), desk);
         return None;
     };
@@ -206,6 +208,22 @@ fn same_title(known: &str, title: &str) -> bool {
     known == title || number(known).is_some_and(|known| number(title) == Some(known))
 }
 
+const SONG_KEYS: [&str; 13] = [
+    "song",
+    "title",
+    "tuning",
+    "in",
+    "pitch",
+    "tonic",
+    "turned_to",
+    "black_keys",
+    "transpose",
+    "intonation",
+    "begin_with",
+    "by_line",
+    "send",
+];
+
 /// Everything a song says. `fields` is `None` for a song that says nothing.
 fn song(
     title: &str,
@@ -274,9 +292,18 @@ fn tuning(
         Some(at) => at.text("the name of a tuning", &mut desk.found.complaints)?,
         None => String::from(defaults::TUNING),
     };
+    let before = desk.found.complaints.count();
     let text = desk
         .tunings
-        .find(&name, &at.trail, &mut desk.found.complaints)?;
+        .find(&name, &at.trail, &mut desk.found.complaints);
+    let silent = text.is_none() && desk.found.complaints.count() == before;
+    if silent && !desk.tunings.names().contains(&name) {
+        // Complained about where it was asked for first; this song needs the same remedy.
+        let wrong = format!("there is no tuning `{name}`");
+        let right = "as above: `trued chart --list` lists those there are";
+        desk.found.complaints.add(&at.trail, wrong, right);
+    }
+    let text = text?;
     if !desk.used.iter().any(|used| used.name == text.name) {
         desk.used.push(Rc::clone(&text));
     }
@@ -296,9 +323,9 @@ fn in_keys(at: &At<'_>, complaints: &mut Complaints) -> Vec<(Letter, String)> {
             None => complaints.add(
                 &item.trail,
                 format!("`{text}` is not a key a piece is in"),
-                match tonic.chars().next().is_some_and(char::is_lowercase) {
-                    true => super::values::letter_remedy(tonic),
-                    false => String::from("write its tonic and its mode: D minor, E phrygian, G"),
+                match Letter::parse(&tonic.to_uppercase()) {
+                    Some(_) => super::values::letter_remedy(tonic),
+                    None => String::from("write its tonic and its mode: D minor, E phrygian, G"),
                 },
             ),
         }

@@ -439,7 +439,7 @@ fn bad_tunings_say_what_would_be_right() {
             "t: {like: vallotti, turns: {s: {G: flat}}}",
             "G has no place called `flat`",
         ),
-        ("t: 12", "a number stands here"),
+        ("t: 12", "`12` stands here"),
     ] {
         let (_, complaints) = read(text);
         let said: Vec<String> = complaints.iter().map(Complaint::to_string).collect();

@@ -4,29 +4,15 @@
 
 use super::complaint::Complaints;
 use super::expression::Expression;
-use super::node::{At, Node, nearest};
+use super::node::{At, nearest};
 use crate::engine::plan::ChannelSet;
 use crate::pitch::Interval;
 use crate::tuning::{Key, Letter};
 
-/// What stands at a node, quoted, for a complaint.
-pub fn shown(at: &At<'_>) -> String {
-    match at.node {
-        Node::Text(text) | Node::Number(text) => format!("`{text}`"),
-        Node::Flag(flag) => format!("`{flag}`"),
-        other => other.kind().to_string(),
-    }
-}
-
 /// One word of a closed list.
 pub fn choice<T: Copy>(at: &At<'_>, words: &[(&str, T)], complaints: &mut Complaints) -> Option<T> {
     let names: Vec<&str> = words.iter().map(|(name, _)| *name).collect();
-    let typed = match at.node {
-        Node::Text(text) | Node::Number(text) => text.clone(),
-        // `true` for `yes`: YAML has taken it for a flag.
-        Node::Flag(flag) => String::from(if *flag { "yes" } else { "no" }),
-        _ => at.text(&one_of(&names), complaints)?,
-    };
+    let typed = at.text(&one_of(&names), complaints)?;
     let found = words.iter().find(|(name, _)| *name == typed);
     if found.is_none() {
         let right = match nearest(&typed, &names) {

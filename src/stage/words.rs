@@ -265,7 +265,7 @@ fn black_key(rest: &str) -> Result<Option<Words>, Mistake> {
         return Ok(None);
     }
     let name = letter(rest)?;
-    if ![1, 3, 6, 8, 10].contains(&name.pitch_class()) {
+    if !super::black_keys::is_black(name) {
         return Err(mistake(
             format!("{name} is a white key"),
             "name a black key: C# or Db, D# or Eb, F# or Gb, G# or Ab, A# or Bb",
