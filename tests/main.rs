@@ -19,3 +19,6 @@ mod tidy;
 mod score;
 /// Stage files: every form loads, every mistake is told exactly.
 mod stage;
+
+/// Against what we did not write: a real synth, published tables, a real sequencer.
+mod outside;

@@ -2,6 +2,10 @@
 
 /// A small seeded generator, so that a failure can be played again.
 pub mod dice;
+/// The pitch of a partial in a sound.
+pub mod estimator;
+/// Messages as a MIDI file.
+pub mod midi_file;
 /// Plans put together by hand, for tests that need no stage file.
 pub mod plans;
 /// Tunings by the literature.
@@ -10,6 +14,8 @@ pub mod published;
 pub mod receiver;
 /// Engine, scripted clock and receivers; scripts in, transcripts out.
 pub mod rig;
+/// A SoundFont that plays a bare sine.
+pub mod sine_font;
 
 /// Bytes written as in the standards: `90 3C 64`.
 pub fn hex(text: &str) -> Vec<u8> {
