@@ -7,6 +7,7 @@ mod term;
 mod token;
 
 use crate::pitch::{Hertz, Interval, Log};
+use crate::tuning::Key;
 use term::{Term, term};
 use token::{Token, tokens};
 
@@ -122,10 +123,27 @@ pub fn hertz(text: &str) -> Result<Hertz, Mistake> {
     }
 }
 
+/// Reads a reference: `A4 = 415 Hz`, `C4 = 256`, or a frequency alone, which is of A4.
+///
+/// # Errors
+/// What is wrong with it.
+pub fn reference(text: &str) -> Result<(Key, Hertz), Mistake> {
+    let Some((key, frequency)) = text.split_once('=') else {
+        return Ok((Key::A4, hertz(text)?));
+    };
+    let key = Key::parse(key.trim()).ok_or_else(|| {
+        Mistake::new(
+            format!("`{}` is not a key with its octave", key.trim()),
+            "write it as `A4 = 415 Hz`",
+        )
+    })?;
+    Ok((key, hertz(frequency)?))
+}
+
 /// How far a fifth (or any interval) is from pure, as one would type it: `pure`, `narrow 1/4 syntonic`, `wide 35.7 c`.
 pub fn narrow_or_wide(from_pure: Interval) -> String {
     let direction = match from_pure.microcents() {
-        0 => return "pure".to_string(),
+        -2..=2 => return "pure".to_string(), // each end may be a microcent off
         negative if negative < 0 => "narrow",
         _ => "wide",
     };

@@ -64,6 +64,18 @@ fn frequencies_are_absolute() {
 }
 
 #[test]
+fn references_name_a_key_or_mean_a4() {
+    let hz = |micro| Hertz::from_micro(micro).expect("not zero");
+    let c4 = Key::C4;
+    assert_eq!(reference("A4 = 415 Hz"), Ok((Key::A4, hz(415_000_000))));
+    assert_eq!(reference("C4=256"), Ok((c4, hz(256_000_000))));
+    assert_eq!(reference("442 Hz"), Ok((Key::A4, hz(442_000_000))));
+    for text in ["A = 440 Hz", "a4 = 440 Hz", "A4 = 440 c", "A4 =", ""] {
+        assert!(reference(text).is_err(), "{text}");
+    }
+}
+
+#[test]
 fn bad_expressions_say_what_would_be_right() {
     for (text, wrong, right) in [
         ("", "no pitch is written here", "a pitch is written 3/2"),

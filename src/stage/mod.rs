@@ -9,6 +9,7 @@
 
 mod advice;
 mod black_keys;
+pub mod circle;
 mod compile;
 pub mod complaint;
 mod cues;
@@ -17,6 +18,7 @@ pub mod defaults;
 pub mod expression;
 mod intonation;
 mod lamps;
+pub mod landing;
 mod locate;
 mod naming;
 pub mod node;

@@ -82,18 +82,36 @@ impl Scale {
     /// # Errors
     /// Where the pinned key is silent, or nothing sounds.
     pub fn tune(&self, placement: &Placement) -> Result<Tuning, TuneError> {
+        let tonic = self.tonic_of(placement);
         match (self, placement.turned_to) {
             (Scale::ByLetter(scale), Some(letter)) => {
                 let turned = scale.turned(letter);
-                put(placement, turned.home_key(), |key| turned.place_of_key(key))
+                put(placement, tonic, |key| turned.place_of_key(key))
             }
-            (Scale::ByLetter(scale), None) => {
-                put(placement, scale.home_key(), |key| scale.place_of_key(key))
-            }
+            (Scale::ByLetter(scale), None) => put(placement, tonic, |key| scale.place_of_key(key)),
             (Scale::FromTonic(scale), _) => {
-                let tonic = placement.tonic.unwrap_or(scale.default_tonic());
                 put(placement, tonic, |key| scale.place_of_key(key, tonic))
             }
+        }
+    }
+
+    /// The key that `pin: tonic` holds: home in the octave from middle C, or the key with step 0.
+    pub fn tonic_of(&self, placement: &Placement) -> Key {
+        match self {
+            Scale::ByLetter(scale) => match placement.turned_to {
+                Some(letter) => Scale::tonic_key(letter),
+                None => scale.home_key(),
+            },
+            Scale::FromTonic(scale) => placement.tonic.unwrap_or(scale.default_tonic()),
+        }
+    }
+
+    /// What the twelve keys are called there; beyond tunings by letter they go by their usual names.
+    pub fn names(&self, placement: &Placement) -> [Letter; 12] {
+        match (self, placement.turned_to) {
+            (Scale::ByLetter(scale), Some(letter)) => scale.turned(letter).names,
+            (Scale::ByLetter(scale), None) => scale.names,
+            (Scale::FromTonic(_), _) => std::array::from_fn(|key| Letter::usual(key as u8)),
         }
     }
 
