@@ -22,3 +22,9 @@ mod stage;
 
 /// Against what we did not write: a real synth, published tables, a real sequencer.
 mod outside;
+
+/// The built-in rehearsal, measured from its sound.
+mod rehearse;
+
+/// MIDI files through the engine.
+mod retune;

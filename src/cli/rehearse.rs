@@ -1,6 +1,6 @@
 //! `trued rehearse`: a score through the real engine into the listening synth, and what there is to hear.
 
-use super::retune::{Kind, first_keyboard, notices, read, read_score, write};
+use super::retune::{Kind, read, read_score, write};
 use super::{Failure, print, read_stage};
 use crate::offline::demo::{self, Scene};
 use crate::offline::measure::Sound;
@@ -49,7 +49,7 @@ pub fn run(args: Args) -> Result<(), Failure> {
         score_path.display(),
         stage_path.display()
     ))?;
-    let recording = retune::play(stage.plan_offline(), &score, 0, first_keyboard());
+    let recording = retune::play(stage.plan_offline(), &score, 0, 0);
     for (ending, kind) in Kind::ALL {
         let path = output(&args.out, ending);
         write(&path, &kind.make(&recording, &score, &stage)?)?;
@@ -66,7 +66,7 @@ pub fn run(args: Args) -> Result<(), Failure> {
     } else {
         print(&chord_lines(&recording, &stage, &sound))?;
     }
-    for notice in notices(&recording.counters) {
+    for notice in recording.notices() {
         eprintln!("{notice}");
     }
     print(&closing(&args.out, &stage_path))
@@ -124,7 +124,7 @@ fn scene_line(
         .map(|finding| finding.to_string())
         .collect();
     let listen = match as_written {
-        true => format!(" Listen: {}.", scene.listen),
+        true => format!(": {}", scene.listen),
         false => String::new(),
     };
     let measured = match found.is_empty() {
@@ -132,7 +132,7 @@ fn scene_line(
         false => found.join("; "),
     };
     format!(
-        "{:>5}  {}, {song}.{listen} Measured: {measured}.\n",
+        "{:>5}  {} ({song}){listen}. Measured: {measured}.\n",
         clock(scene.from_s),
         scene.what
     )
@@ -160,14 +160,14 @@ fn chord_lines(recording: &Recording, stage: &Stage, sound: &Sound) -> String {
             };
             let song = song_name(stage, chord.song);
             let keys = keys.join(" ");
-            format!("{:>5}  {keys}, {song}.{measured}\n", clock(chord.from_s))
+            format!("{:>5}  {keys} ({song}).{measured}\n", clock(chord.from_s))
         })
         .collect()
 }
 
 fn song_name(stage: &Stage, song: u16) -> String {
     match stage.set.get(song as usize) {
-        Some(song) => format!("song {} ({})", song.title, song.tuning_name),
+        Some(song) => format!("{}, {}", song.title, song.tuning_name),
         None => String::new(),
     }
 }

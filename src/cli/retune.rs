@@ -1,7 +1,6 @@
 //! `trued retune`: a MIDI file through the engine into files.
 
 use super::{Failure, read_stage};
-use crate::engine::{Counters, KeyboardId};
 use crate::offline::retune::{self, Recording};
 use crate::offline::score_file::Score;
 use crate::offline::{listen, notes_file, picture};
@@ -42,13 +41,13 @@ pub fn run(args: Args) -> Result<(), Failure> {
     };
     let keyboard = match &args.from {
         Some(name) => find_keyboard(&stage, name)?,
-        None => first_keyboard(),
+        None => 0,
     };
     let recording = retune::play(stage.plan_offline(), &score, song, keyboard);
     for (path, kind) in args.out.iter().zip(kinds) {
         write(path, &kind.make(&recording, &score, &stage)?)?;
     }
-    for notice in notices(&recording.counters) {
+    for notice in recording.notices() {
         eprintln!("{notice}");
     }
     Ok(())
@@ -115,11 +114,6 @@ impl Kind {
     }
 }
 
-/// Without `--from`, everything is played as if on the first keyboard.
-pub(super) fn first_keyboard() -> KeyboardId {
-    KeyboardId::new(0).expect("0 is below every limit")
-}
-
 pub(super) fn read(path: &Path) -> Result<Vec<u8>, Failure> {
     std::fs::read(path).map_err(|error| Failure::unread(path, &error))
 }
@@ -147,10 +141,10 @@ fn find_song(stage: &Stage, title: &str) -> Result<u16, Failure> {
     })
 }
 
-fn find_keyboard(stage: &Stage, name: &str) -> Result<KeyboardId, Failure> {
+fn find_keyboard(stage: &Stage, name: &str) -> Result<usize, Failure> {
     let names = || stage.keyboards.iter().map(|device| device.name.as_str());
     let place = names().position(|known| known == name);
-    place.and_then(KeyboardId::new).ok_or_else(|| {
+    place.ok_or_else(|| {
         Failure::new(
             Failure::USAGE,
             format!(
@@ -159,46 +153,4 @@ fn find_keyboard(stage: &Stage, name: &str) -> Result<KeyboardId, Failure> {
             ),
         )
     })
-}
-
-/// What could not be done as asked, in plain words.
-pub(super) fn notices(counters: &Counters) -> Vec<String> {
-    [
-        (
-            counters.silent,
-            "keys stayed silent: the tuning has no pitch for them, or it is out of reach",
-        ),
-        (
-            counters.refused,
-            "notes were refused: too many sounded at once",
-        ),
-        (
-            counters.stolen,
-            "notes were ended early: the synth has too few channels for so many pitches at once",
-        ),
-        (
-            counters.tails_cut,
-            "notes were bent while they died away: the synth has too few channels",
-        ),
-        (
-            counters.clipped,
-            "bends stopped at the end of the synth's range: give it a wider bend_range",
-        ),
-        (
-            counters.ignored,
-            "song changes were ignored: the set has no such song",
-        ),
-        (
-            counters.bad_bytes,
-            "bytes of the file made no MIDI message and were left out",
-        ),
-        (
-            counters.sysex_lost,
-            "system exclusive messages were too long or cut off, and left out",
-        ),
-    ]
-    .into_iter()
-    .filter(|(count, _)| *count > 0)
-    .map(|(count, words)| format!("{count} {words}"))
-    .collect()
 }

@@ -113,7 +113,7 @@ pub struct Chord {
 /// A chord shorter than this is not listed.
 const CHORD_S_MIN: f64 = 0.8;
 /// So many different chords are listed of each stretch of one song.
-const CHORDS_PER_SONG: usize = 3;
+const CHORDS_PER_SONG: usize = 6;
 /// Frequencies as near to each other as this cannot be told apart, or disturb each other's beats.
 const APART_HZ: f64 = 4.0;
 const BEATS_APART_HZ: f64 = 70.0;

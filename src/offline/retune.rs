@@ -47,8 +47,13 @@ pub struct Sounded {
 /// So many events of one tick go in before the engine's outbox is emptied.
 const TOGETHER: usize = 128;
 
-/// Plays `score` as if on `keyboard`, beginning with a song of the set.
-pub fn play(plan: Box<Plan>, score: &Score<'_>, song: u16, keyboard: KeyboardId) -> Recording {
+/// Plays `score` as if on a keyboard of the plan, beginning with a song of its set; both by place, from 0.
+///
+/// # Panics
+/// If the plan has no such keyboard.
+pub fn play(plan: Box<Plan>, score: &Score<'_>, song: u16, keyboard: usize) -> Recording {
+    assert!(keyboard < plan.keyboards.len(), "a keyboard of the plan");
+    let keyboard = KeyboardId::new(keyboard).expect("a plan keeps within the limits");
     let synths: Vec<Synth> = plan
         .synths
         .iter()
@@ -199,5 +204,48 @@ impl Recording {
             })
             .collect();
         score.write(&tracks)
+    }
+
+    /// What could not be done as asked, in plain words.
+    pub fn notices(&self) -> Vec<String> {
+        let counters = &self.counters;
+        [
+        (
+            counters.silent,
+            "keys stayed silent: the tuning has no pitch for them, or it is out of reach",
+        ),
+        (
+            counters.refused,
+            "notes were refused: too many sounded at once",
+        ),
+        (
+            counters.stolen,
+            "notes were ended early: the synth has too few channels for so many pitches at once",
+        ),
+        (
+            counters.tails_cut,
+            "notes were bent while they died away: the synth has too few channels",
+        ),
+        (
+            counters.clipped,
+            "bends stopped at the end of the synth's range: give it a wider bend_range",
+        ),
+        (
+            counters.ignored,
+            "song changes were ignored: the set has no such song",
+        ),
+        (
+            counters.bad_bytes,
+            "bytes of the file made no MIDI message and were left out",
+        ),
+        (
+            counters.sysex_lost,
+            "system exclusive messages were too long or cut off, and left out",
+        ),
+    ]
+    .into_iter()
+    .filter(|(count, _)| *count > 0)
+    .map(|(count, words)| format!("{count} {words}"))
+    .collect()
     }
 }

@@ -1,3 +1,5 @@
+//! What the listening synth makes of bytes: pitch, pedals, zones, level.
+
 use super::*;
 use crate::engine::SynthId;
 use crate::engine::plan::ChannelSet;

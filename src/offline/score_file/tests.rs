@@ -1,3 +1,5 @@
+//! MIDI files as the standard describes them, whole and broken.
+
 use super::*;
 
 fn file(format: u8, tracks: &[&[u8]], division: [u8; 2]) -> Vec<u8> {
