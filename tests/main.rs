@@ -17,6 +17,7 @@ mod tidy;
 
 /// The daemon's score between simulated ports: order, deadlines, stop, full and lost ports, a panic.
 mod score;
+
 /// Stage files: every form loads, every mistake is told exactly.
 mod stage;
 

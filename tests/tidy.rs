@@ -56,7 +56,7 @@ const ARROWS: &[(&str, &[&str])] = &[
     (
         "cli",
         &[
-            "stage", "offline", "daemon", "ports", "tuning", "pitch", "time",
+            "stage", "offline", "daemon", "ports", "midi", "tuning", "pitch", "time", "limits",
         ],
     ),
 ];

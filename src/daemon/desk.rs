@@ -68,7 +68,7 @@ impl Desk {
         if (&before.keyboards, &before.synths)
             != (&self.patch.choice.keyboards, &self.patch.choice.synths)
         {
-            let rig = self.rig.describe(&self.patch.choice, &ports);
+            let rig = self.rig.describe("is", &self.patch.choice, &ports);
             info!("ports have changed: {}", rig.join("; "));
         }
     }

@@ -18,15 +18,15 @@ impl RigWanted {
         }
     }
 
-    /// One clause for each device: what it is connected to, or what it waits for.
-    pub fn describe(&self, choice: &Choice, ports: &[Port]) -> Vec<String> {
+    /// One clause for each device: what it `is` (or `would be`) connected to, or what it waits for.
+    pub fn describe(&self, is: &str, choice: &Choice, ports: &[Port]) -> Vec<String> {
         let keyboards = self.keyboards.iter().enumerate().map(|(index, wanted)| {
             let connected = choice.keyboards.get(index).map_or(&[][..], Vec::as_slice);
-            format!("keyboard {}", describe(wanted, connected, ports))
+            format!("keyboard {}", describe(wanted, is, connected, ports))
         });
         let synths = self.synths.iter().enumerate().map(|(index, wanted)| {
             let connected = choice.synths.get(index).copied().flatten();
-            describe(wanted, connected.as_slice(), ports)
+            describe(wanted, is, connected.as_slice(), ports)
         });
         keyboards.chain(synths).collect()
     }
@@ -46,7 +46,7 @@ fn wanted(device: &Device) -> Wanted {
     }
 }
 
-fn describe(wanted: &Wanted, connected: &[Address], ports: &[Port]) -> String {
+fn describe(wanted: &Wanted, is: &str, connected: &[Address], ports: &[Port]) -> String {
     let name = &wanted.name;
     let names: Vec<String> = ports
         .iter()
@@ -54,7 +54,7 @@ fn describe(wanted: &Wanted, connected: &[Address], ports: &[Port]) -> String {
         .map(Port::full_name)
         .collect();
     if !names.is_empty() {
-        return format!("{name} is connected to {}", names.join(" and "));
+        return format!("{name} {is} connected to {}", names.join(" and "));
     }
     match &wanted.wish {
         Wish::Virtual => format!("{name} is a port for others to connect to"),
@@ -109,7 +109,7 @@ mod tests {
             ..Choice::default()
         };
         assert_eq!(
-            rig.describe(&choice, &ports).join("; "),
+            rig.describe("is", &choice, &ports).join("; "),
             "keyboard keys waits for *Keys* or *Rental*; \
              keyboard pads is a port for others to connect to; \
              organ is connected to Loft Organ MIDI 1"

@@ -45,7 +45,7 @@ pub fn play(stage: &Stage, client_name: &str) -> Result<(), Trouble> {
     let engine = Engine::new(stage.plan());
     let slot = Slot::new(Score::new(engine, rig.synths.len(), commands_out, news_in));
     let done = Arc::new(AtomicBool::new(false));
-    let clauses = rig.describe(&patch.choice, &ports).join("; ");
+    let clauses = rig.describe("is", &patch.choice, &ports).join("; ");
     let desk = Desk {
         rig,
         patch,
@@ -83,7 +83,7 @@ fn open(rig: &RigWanted, client_name: &str) -> Result<Alsa, Broken> {
 }
 
 fn patch(alsa: &Alsa, rig: &RigWanted, client_name: &str) -> Result<Patch, Broken> {
-    let mut sequencer = Sequencer::open(&format!("{client_name} desk"))?;
+    let mut sequencer = Sequencer::open(client_name)?;
     sequencer.add_ours(alsa.client());
     let keyboards = (0..rig.keyboards.len()).map(|index| alsa.keyboard_address(index));
     let synths = (0..rig.synths.len()).map(|index| alsa.synth_address(index));

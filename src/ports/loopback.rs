@@ -135,8 +135,8 @@ impl Wire for Recorder {
 
 #[cfg(test)]
 mod tests {
-    use super::super::{Weight, What};
     use super::*;
+    use crate::ports::{Weight, What};
 
     /// Sends what it hears back out, and a clock tick every 10 ms.
     struct Echo {

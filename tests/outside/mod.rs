@@ -2,3 +2,6 @@
 
 /// A real synth, and the pitch of what it plays.
 mod fluidsynth;
+
+/// A real sequencer, in a virtual machine.
+mod alsa;

@@ -1,32 +1,33 @@
 //! The desk's view of the sequencer: what is there, and connecting it. Through a client of its own without ports,
 //! because the score thread's may not be shared.
 
-use super::{broken, open_sequencer};
+use super::{broken, open_sequencer, text};
 use crate::ports::Broken;
 use crate::ports::names::{Address, Port};
 use alsa::Seq;
 use alsa::seq::{ClientInfo, ClientIter, PortCap, PortInfo, PortIter, PortSubscribe};
-use std::ffi::CString;
 use std::path::{Path, PathBuf};
 
 /// A look at all ports of the machine.
 #[derive(Debug)]
 pub struct Desk {
     seq: Seq,
-    /// Clients whose ports are our own.
+    /// Clients of this name are trued's as well: another one that runs.
+    family: String,
     ours: Vec<i32>,
 }
 
 impl Desk {
     /// # Errors
     /// There is no sequencer, or it may not be used.
-    pub fn open(name: &str) -> Result<Desk, Broken> {
+    pub fn open(family: &str) -> Result<Desk, Broken> {
         let seq = open_sequencer()?;
-        let name = CString::new(name.replace('\0', " ")).unwrap_or_default();
-        seq.set_client_name(&name).map_err(broken)?;
+        seq.set_client_name(&text(&format!("{family} desk")))
+            .map_err(broken)?;
         let own = seq.client_id().map_err(broken)?;
         Ok(Desk {
             seq,
+            family: family.to_string(),
             ours: vec![own],
         })
     }
@@ -55,17 +56,18 @@ impl Desk {
         }
         let sends = can.contains(PortCap::READ | PortCap::SUBS_READ);
         let hears = can.contains(PortCap::WRITE | PortCap::SUBS_WRITE);
+        let device = client.get_name().unwrap_or_default().to_string();
         (sends || hears).then(|| Port {
             address: Address {
                 client: port.get_client(),
                 port: port.get_port(),
             },
-            device: client.get_name().unwrap_or_default().to_string(),
             name: port.get_name().unwrap_or_default().to_string(),
             socket: client.get_card().ok().and_then(socket),
             sends,
             hears,
-            ours: self.ours.contains(&port.get_client()),
+            ours: device == self.family || self.ours.contains(&port.get_client()),
+            device,
         })
     }
 
