@@ -352,7 +352,7 @@ fn ports_by_name_pulled_out_and_put_in_again(guest: &Guest) {
         .windows(3)
         .position(|w| w[0] & 0xF0 == 0x90 && w[1..] == [64, 100]);
     assert!(onset.is_some(), "the first note came through: {first:02x?}");
-    // The second time all of the set-up may be heard, and the note is in tune whatever came before.
+    // The second time the set-up is heard, at the latest when it is said once more after 2 s.
     let second = hear(&guest.bytes("second.bin"));
     assert_eq!(second.notes.len(), 1, "{:02x?}", guest.bytes("second.bin"));
     let note = &second.notes[0];

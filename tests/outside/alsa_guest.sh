@@ -45,7 +45,7 @@ for _ in $(seq 50); do [ -e $organ ] && break; sleep 0.1; done
 cat $organ > /out/second.bin &
 ear=$!
 for _ in $(seq 100); do [ "$(grep -c "organ is set up" /out/plugged.log)" = 2 ] && break; sleep 0.1; done
-sleep 0.5
+sleep 2.6 # what has just come back is set up once more after 2 s
 printf '\220\100\144' > $keys
 sleep 0.7
 kill -INT $trued
