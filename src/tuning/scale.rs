@@ -115,6 +115,14 @@ impl Scale {
         }
     }
 
+    /// After how many keys it repeats.
+    pub fn keys_to_period(&self) -> usize {
+        match self {
+            Scale::ByLetter(_) => 12,
+            Scale::FromTonic(scale) => scale.keys_to_period(),
+        }
+    }
+
     /// Whether a song may name a tonic for this tuning, and how.
     pub fn tonic_wanted(&self) -> TonicWanted {
         match self {
