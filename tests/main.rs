@@ -29,3 +29,6 @@ mod rehearse;
 
 /// MIDI files through the engine.
 mod retune;
+
+/// The binary as players type it: files, words and exit codes.
+mod command_line;
