@@ -70,6 +70,11 @@ fn read(path: &Path, top: &At<'_>, found: &mut Findings) -> Option<Stage> {
     }
     fields.finish(&mut found.complaints);
     let parts = pools::allot(&rig.parts, &rig, &mut found.complaints);
+    for entry in &entries {
+        for line in entry.song.advice() {
+            found.advise(line);
+        }
+    }
     files.extend_from_slice(library.files());
     let (set, songs) = entries
         .into_iter()

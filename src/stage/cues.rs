@@ -170,10 +170,9 @@ fn take_when<'n>(
 fn when(at: &At<'_>, scene: &Scene<'_>, complaints: &mut Complaints) -> Option<When> {
     let wanted = "a gesture such as `{controller: 82, from: keys}`, {program: any} or {note: D2}";
     let mut fields = at.fields(wanted, complaints)?;
-    let from = match fields.take("from") {
-        Some(at) => Some(rig::keyboard_named(&at, scene.rig, complaints)),
-        None => None,
-    };
+    let from = fields
+        .take("from")
+        .map(|at| rig::keyboard_named(&at, scene.rig, complaints));
     let channels = match fields.take("channel") {
         Some(at) => channels(&at, complaints),
         None => Some(ChannelSet::ALL),

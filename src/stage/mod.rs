@@ -16,21 +16,28 @@ mod cues;
 mod cuts;
 pub mod defaults;
 pub mod expression;
+mod inflections;
 mod intonation;
 mod lamps;
 pub mod landing;
 mod locate;
 mod naming;
 pub mod node;
+pub mod outlook;
+mod parts;
 mod placing;
 mod pools;
 mod rig;
 pub mod shipped;
 mod slips;
 mod songs;
+mod synth;
 pub mod tunings;
 mod values;
 pub mod words;
+mod yaml_errors;
+
+pub use values::spell_channels;
 
 use crate::engine::Plan;
 use crate::tuning::{Letter, Placement, Scale, Tuning};

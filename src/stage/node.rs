@@ -230,7 +230,7 @@ impl<'n> Fields<'n> {
 /// `08`: digits with a nought before them.
 fn is_padded(text: &str) -> bool {
     let digits = text.bytes().all(|b| b.is_ascii_digit());
-    digits && text.starts_with('0') && text.trim_start_matches('0') != ""
+    digits && text.starts_with('0') && !text.trim_start_matches('0').is_empty()
 }
 
 /// The known word most like `word`, if it is like any: at most a third of its letters differ.

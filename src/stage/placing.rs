@@ -129,7 +129,7 @@ pub fn read(
         None => None,
     };
     let placement = described.placement(tonic, turned_to, reference);
-    let mut names = names(&scale, &placement);
+    let mut names = scale.names(&placement);
     if let (Scale::FromTonic(_), Some(at)) = (&scale, &black_at) {
         black_keys::call(at, &mut names);
     }
@@ -259,14 +259,6 @@ fn turned_to(
         return None;
     }
     Some(letter)
-}
-
-fn names(scale: &Scale, placement: &Placement) -> [Letter; 12] {
-    match (scale, placement.turned_to) {
-        (Scale::ByLetter(scale), Some(letter)) => scale.turned(letter).names,
-        (Scale::ByLetter(scale), None) => scale.names,
-        (Scale::FromTonic(_), _) => std::array::from_fn(|key| Letter::usual(key as u8)),
-    }
 }
 
 /// Whether a scale repeats at the octave every twelve keys, as harmony needs it.

@@ -1,7 +1,8 @@
 //! Which channels of a synth each part may call its own.
 
 use super::complaint::{Complaints, Trail};
-use super::rig::{Part, Rig};
+use super::parts::Part;
+use super::rig::Rig;
 use super::values::spell_channels;
 use crate::engine::plan::{ChannelSet, Dialect, PartPlan, SynthId};
 

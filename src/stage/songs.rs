@@ -1,12 +1,13 @@
 //! Songs: the book, and tonight's set.
 
 use super::advice::Findings;
-use super::complaint::{Complaints, Segment};
+use super::complaint::Complaints;
 use super::node::{At, Fields, Node, nearest};
 use super::placing;
 use super::rig::{self, Rig};
 use super::tunings::{Library, Reference, TuningText};
 use super::{Song, defaults, intonation};
+use super::{inflections, parts};
 use crate::engine::plan::{SongPlan, SynthId};
 use crate::limits::SONGS_MAX;
 use crate::midi::status;
@@ -241,19 +242,19 @@ fn song(
         .unwrap_or_default();
     let transpose_keys = fields
         .take("transpose")
-        .map_or(0, |at| rig::transpose(&at, &mut desk.found.complaints));
+        .map_or(0, |at| parts::transpose(&at, &mut desk.found.complaints));
     let method = intonation::read(
         fields.take("intonation").as_ref(),
         described.as_deref(),
         desk.found,
     );
-    places(&mut fields, title, described.as_deref(), desk.found);
+    inflections::check(&mut fields, title, described.as_deref(), desk.found);
     let sends = match fields.take("send") {
         Some(at) => sends(&at, desk),
         None => Vec::new(),
     };
     if let Some(at) = fields.take("parts") {
-        let parts = rig::parts(&at, desk.rig, desk.found);
+        let parts = parts::parts(&at, desk.rig, desk.found);
         super::pools::allot(&parts, desk.rig, &mut desk.found.complaints);
         desk.found
             .not_played(format!("`parts` of a song of its own ({title})"));
@@ -331,89 +332,6 @@ fn in_keys(at: &At<'_>, complaints: &mut Complaints) -> Vec<(Letter, String)> {
         }
     }
     keys
-}
-
-/// Which place each key begins at and takes from the line: checked here, played later.
-fn places(
-    fields: &mut Fields<'_>,
-    title: &str,
-    described: Option<&TuningText>,
-    found: &mut Findings,
-) {
-    if let Some(at) = fields.take("begin_with") {
-        let wanted = "keys and their places, as in `{B: natural}`";
-        let entries = at.fields(wanted, &mut found.complaints);
-        for (name, place) in entries.map(|mut all| all.take_all()).unwrap_or_default() {
-            place_of(&name, &place, described, &mut found.complaints);
-        }
-        found.not_played(format!("`begin_with` ({title})"));
-    }
-    if let Some(at) = fields.take("by_line") {
-        let wanted = "keys and their places, as in `{E: {up: natural, down: home}}`";
-        let entries = at.fields(wanted, &mut found.complaints);
-        for (name, ways) in entries.map(|mut all| all.take_all()).unwrap_or_default() {
-            let wanted = "`{up: natural, down: home}`";
-            let Some(mut ways) = ways.fields(wanted, &mut found.complaints) else {
-                continue;
-            };
-            for way in ["up", "down"] {
-                if let Some(place) = ways.take(way) {
-                    place_of(&name, &place, described, &mut found.complaints);
-                }
-            }
-            ways.finish(&mut found.complaints);
-        }
-        found.not_played(format!("`by_line` ({title})"));
-    }
-}
-
-/// Checks that a key of the tuning has a place of that name.
-fn place_of(
-    name: &str,
-    place: &At<'_>,
-    described: Option<&TuningText>,
-    complaints: &mut Complaints,
-) {
-    let mut key_trail = place.trail.clone();
-    while let Some(step) = key_trail.steps.last() {
-        if *step == Segment::Key(name.to_string()) {
-            break;
-        }
-        key_trail.steps.pop();
-    }
-    if let Some(last) = key_trail.steps.last_mut() {
-        *last = Segment::Name(name.to_string());
-    }
-    let Some(letter) = Letter::parse(name) else {
-        complaints.add(
-            &key_trail,
-            format!("`{name}` is not the name of a key"),
-            super::values::letter_remedy(name),
-        );
-        return;
-    };
-    let Some(word) = place.text("the name of a place, or home", complaints) else {
-        return;
-    };
-    let Some(described) = described else {
-        return;
-    };
-    let others: Vec<&str> = (described.also.iter())
-        .filter(|other| other.key == letter)
-        .map(|other| other.name.as_str())
-        .collect();
-    if word == "home" || others.contains(&word.as_str()) {
-        return;
-    }
-    let right = match others.is_empty() {
-        true => format!("name it in the tuning: `also: {{{letter}: {{{word}: 100 c}}}}`"),
-        false => format!("it has home, {}", others.join(", ")),
-    };
-    complaints.add(
-        &place.trail,
-        format!("{letter} has no place `{word}` in {}", described.name),
-        right,
-    );
 }
 
 /// Messages sent when the song begins.
