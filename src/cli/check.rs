@@ -155,19 +155,10 @@ fn synth_text(text: &mut String, synth: &Device, outlook: &SynthOutlook) {
             wish(synth, false),
             outlook.dialect,
             outlook.bend_range,
-            runs(&outlook.channels),
+            outlook.channels_spelt,
             outlook.worst_rounding.cents(),
         ),
     );
-}
-
-/// `1-9, 11-16`.
-fn runs(channels: &[u8]) -> String {
-    let set = channels.iter().fold(
-        Default::default(),
-        |set: crate::engine::plan::ChannelSet, channel| set.with(channel - 1),
-    );
-    crate::stage::spell_channels(set)
 }
 
 fn wish(device: &Device, keyboard: bool) -> String {

@@ -5,11 +5,12 @@ use super::complaint::{Complaint, Trail};
 use super::naming::Scene;
 use super::node::{At, Fields, Node};
 use super::rig::{self, Rig, Sections};
-use super::songs::{self, Desk};
+use super::songs::{self, Desk, Entry};
 use super::tunings::{Library, Reference};
 use super::values::choice;
 use super::{Stage, cues, defaults, lamps, placing, pools, slips};
 use crate::engine::Plan;
+use crate::engine::plan::{CuePlan, PartPlan};
 use std::path::{Path, PathBuf};
 
 /// What the top of the file says for the whole evening.
@@ -18,6 +19,15 @@ struct Evening {
     pitch: Option<Reference>,
     programs_from: u8,
     edits_at_once: bool,
+}
+
+/// What is read after the rig.
+struct Rest {
+    entries: Vec<Entry>,
+    parts: Vec<PartPlan>,
+    cues: Vec<CuePlan>,
+    advice: Vec<String>,
+    files: Vec<PathBuf>,
 }
 
 /// Reads a text as a stage file.
@@ -52,12 +62,13 @@ fn read(path: &Path, top: &At<'_>, found: &mut Findings) -> Option<Stage> {
         found,
         placed: Vec::new(),
         used: Vec::new(),
+        titles: Vec::new(),
     };
     let entries = songs::read(book.as_ref(), set.as_ref(), top, &mut desk);
-    let used = desk.used;
+    let (used, titles) = (desk.used, desk.titles);
     let scene = Scene {
         rig: &rig,
-        set: &entries,
+        titles: &titles,
         tunings: &used,
         programs_from: evening.programs_from,
     };
@@ -76,32 +87,42 @@ fn read(path: &Path, top: &At<'_>, found: &mut Findings) -> Option<Stage> {
         }
     }
     files.extend_from_slice(library.files());
-    let (set, songs) = entries
-        .into_iter()
+    let rest = Rest {
+        entries,
+        parts,
+        cues,
+        advice: std::mem::take(&mut found.advice),
+        files,
+    };
+    Some(assemble(evening, rig, rest))
+}
+
+fn assemble(evening: Evening, rig: Rig, rest: Rest) -> Stage {
+    let (set, songs) = (rest.entries.into_iter())
         .map(|entry| (entry.song, entry.plan))
         .unzip();
-    let (keyboards, keyboard_plans) = rig
-        .keyboards
-        .into_iter()
-        .map(|k| (k.device, k.plan))
+    let (keyboards, keyboard_plans) = (rig.keyboards.into_iter())
+        .map(|keyboard| (keyboard.device, keyboard.plan))
         .unzip();
-    let (synths, synth_plans) = rig.synths.into_iter().map(|s| (s.device, s.plan)).unzip();
-    Some(Stage {
+    let (synths, synth_plans) = (rig.synths.into_iter())
+        .map(|synth| (synth.device, synth.plan))
+        .unzip();
+    Stage {
         name: evening.name,
         keyboards,
         synths,
         set,
-        advice: std::mem::take(&mut found.advice),
-        files,
+        advice: rest.advice,
+        files: rest.files,
         plan: Plan {
             keyboards: keyboard_plans,
             synths: synth_plans,
-            parts,
+            parts: rest.parts,
             set: songs,
-            cues,
+            cues: rest.cues,
             edits_at_once: evening.edits_at_once,
         },
-    })
+    }
 }
 
 fn evening(path: &Path, fields: &mut Fields<'_>, found: &mut Findings) -> Evening {

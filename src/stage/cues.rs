@@ -5,7 +5,7 @@ use super::complaint::{Complaints, Trail};
 use super::naming::Scene;
 use super::node::{At, Fields, Node};
 use super::rig;
-use super::values::{channels, choice, key};
+use super::values::{channels, choice, key, spell_channels};
 use super::words::Words;
 use crate::engine::Command;
 use crate::engine::plan::{Act, ChannelSet, CuePlan, Gesture, KeyboardId};
@@ -18,6 +18,18 @@ enum Press {
     Up,
     Either,
     Long,
+}
+
+impl Press {
+    /// What of it no engine plays yet.
+    fn unplayed(self) -> Option<&'static str> {
+        match self {
+            Press::Down => None,
+            Press::Up => Some("`press: up`"),
+            Press::Either => Some("`press: either`"),
+            Press::Long => Some("`press: long`"),
+        }
+    }
 }
 
 /// What stands after `when`.
@@ -75,6 +87,9 @@ fn same_gesture(one: &When, other: &When) -> bool {
     gesture && from && channels && press
 }
 
+/// When a cue takes effect; true is armed until all keys and pedals are up.
+const AT: [(&str, bool); 2] = [("quiet", true), ("now", false)];
+
 fn cue(
     at: &At<'_>,
     number: usize,
@@ -83,35 +98,25 @@ fn cue(
 ) -> Option<(When, Option<CuePlan>)> {
     let wanted = "a map such as `{when: {controller: 82, from: keys}, do: next}`";
     let mut fields = at.fields(wanted, &mut found.complaints)?;
-    let Some(when_at) = take_when(&mut fields, at, &mut found.complaints) else {
-        fields.take("do");
-        fields.take("at");
-        fields.take("while");
-        fields.take("pass");
-        fields.finish(&mut found.complaints);
-        return None;
-    };
-    let when = when(&when_at, scene, &mut found.complaints);
+    let when_at = take_when(&mut fields, at, &mut found.complaints);
+    let when = when_at
+        .as_ref()
+        .and_then(|at| when(at, scene, &mut found.complaints));
+    // A gesture that is not understood may be any; its words are not blamed for that.
     let by_program = when
         .as_ref()
-        .is_some_and(|when| when.gesture == Gesture::AnyProgram);
+        .is_none_or(|when| when.gesture == Gesture::AnyProgram);
     let words = match fields.take("do") {
         Some(at) => words(&at, by_program, scene, &mut found.complaints),
         None => {
-            let right = "add `do: next`, or other words of `tell`";
-            found
-                .complaints
-                .add(&at.trail, "this cue does nothing", right);
+            let (wrong, right) = ("this cue does nothing", "add `do: next`, or other words");
+            found.complaints.add(&at.trail, wrong, right);
             None
         }
     };
-    let quiet = fields.take("at").and_then(|at| {
-        choice(
-            &at,
-            &[("quiet", true), ("now", false)],
-            &mut found.complaints,
-        )
-    });
+    let quiet = fields
+        .take("at")
+        .and_then(|at| choice(&at, &AT, &mut found.complaints));
     let held = fields
         .take("while")
         .and_then(|at| choice(&at, &[("held", true)], &mut found.complaints));
@@ -121,24 +126,16 @@ fn cue(
     fields.finish(&mut found.complaints);
     let (when, words) = (when?, words?);
     let mut unplayed = Vec::new();
-    if quiet == Some(true) {
-        unplayed.push("`at: quiet`");
-    }
-    if held == Some(true) {
-        unplayed.push("`while: held`");
-    }
-    match when.press {
-        Press::Down => {}
-        Press::Up => unplayed.push("`press: up`"),
-        Press::Either => unplayed.push("`press: either`"),
-        Press::Long => unplayed.push("`press: long`"),
-    }
+    unplayed.extend(quiet.filter(|quiet| *quiet).map(|_| "`at: quiet`"));
+    unplayed.extend(held.map(|_| "`while: held`"));
+    unplayed.extend(when.press.unplayed());
     let act = act(&words, scene);
-    if act.is_none() {
-        unplayed.push("what it does");
-    }
+    unplayed.extend(act.is_none().then_some("what it does"));
     for what in &unplayed {
         found.not_played(format!("cue {number}: {what}"));
+    }
+    if let Some(line) = unheard(&when, number, scene) {
+        found.advise(line);
     }
     let plan = act.filter(|_| unplayed.is_empty()).map(|act| CuePlan {
         from: when.from,
@@ -148,6 +145,23 @@ fn cue(
         pass: pass.unwrap_or(false),
     });
     Some((when, plan))
+}
+
+/// A gesture on channels where no keyboard of the cue is listened to.
+fn unheard(when: &When, number: usize, scene: &Scene<'_>) -> Option<String> {
+    let keyboards = scene.rig.keyboards.iter().enumerate();
+    let heard = keyboards
+        .filter(|(index, _)| when.from.is_none_or(|from| from.index() == *index))
+        .fold(ChannelSet::NONE, |all, (_, keyboard)| {
+            ChannelSet(all.0 | keyboard.plan.channels.0)
+        });
+    (heard.0 & when.channels.0 == 0).then(|| {
+        format!(
+            "cue {number} waits on channel {}, and its keyboard is only heard on {}",
+            spell_channels(when.channels),
+            spell_channels(heard)
+        )
+    })
 }
 
 /// `when`, with a word of its own for a cue that has none.

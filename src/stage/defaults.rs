@@ -49,7 +49,20 @@ pub fn table() -> Vec<Default> {
         value: value.to_string(),
         meaning,
     };
-    let mut table = vec![
+    let sections = [
+        top(&line),
+        keyboards(&line),
+        synths(&line),
+        parts(&line),
+        songs(&line),
+    ];
+    sections.into_iter().flatten().collect()
+}
+
+type Line<'l> = &'l dyn Fn(&'static str, &'static str, &dyn ToString, &'static str) -> Default;
+
+fn top(line: Line<'_>) -> Vec<Default> {
+    vec![
         line(
             "",
             "pitch",
@@ -74,6 +87,11 @@ pub fn table() -> Vec<Default> {
             &"the songs in their order",
             "what is played tonight",
         ),
+    ]
+}
+
+fn keyboards(line: Line<'_>) -> Vec<Default> {
+    vec![
         line(
             "keyboards",
             "port",
@@ -98,14 +116,8 @@ pub fn table() -> Vec<Default> {
             &"yes",
             "no: its keys no longer play its own sound",
         ),
-    ];
-    table.extend(synths(&line));
-    table.extend(parts(&line));
-    table.extend(songs(&line));
-    table
+    ]
 }
-
-type Line<'l> = &'l dyn Fn(&'static str, &'static str, &dyn ToString, &'static str) -> Default;
 
 fn synths(line: Line<'_>) -> Vec<Default> {
     let mpe = |plain: &dyn ToString, mpe: &dyn ToString| {

@@ -37,8 +37,6 @@ mod values;
 pub mod words;
 mod yaml_errors;
 
-pub use values::spell_channels;
-
 use crate::engine::Plan;
 use crate::tuning::{Letter, Placement, Scale, Tuning};
 use complaint::{Complaint, Complaints};

@@ -3,7 +3,6 @@
 use super::expression::Mistake;
 use super::node::nearest;
 use super::rig::Rig;
-use super::songs::Entry;
 use super::tunings::TuningText;
 use super::values::one_of;
 use super::words::{Inflected, Words};
@@ -13,7 +12,8 @@ use std::rc::Rc;
 /// What cues and lamps are read against.
 pub struct Scene<'s> {
     pub rig: &'s Rig,
-    pub set: &'s [Entry],
+    /// The titles of the set in their order, also of songs that are written wrong.
+    pub titles: &'s [String],
     /// The tunings of the songs, for the names of turns and places.
     pub tunings: &'s [Rc<TuningText>],
     pub programs_from: u8,
@@ -47,11 +47,11 @@ impl Scene<'_> {
     pub fn song_named(&self, name: &str) -> Option<usize> {
         let number = || name.parse::<usize>().ok().and_then(|n| n.checked_sub(1));
         self.titled(name)
-            .or_else(|| number().filter(|place| *place < self.set.len()))
+            .or_else(|| number().filter(|place| *place < self.titles.len()))
     }
 
     fn titled(&self, title: &str) -> Option<usize> {
-        self.set.iter().position(|entry| entry.song.title == title)
+        self.titles.iter().position(|known| known == title)
     }
 
     pub fn synth_named(&self, name: &str) -> Option<SynthId> {
@@ -68,14 +68,10 @@ impl Scene<'_> {
         if name.bytes().all(|b| b.is_ascii_digit()) {
             return mistake(
                 format!("there is no song {name}"),
-                format!("the songs of the set are 1 to {}", self.set.len()),
+                format!("the songs of the set are 1 to {}", self.titles.len()),
             );
         }
-        let titles: Vec<&str> = self
-            .set
-            .iter()
-            .map(|entry| entry.song.title.as_str())
-            .collect();
+        let titles: Vec<&str> = self.titles.iter().map(String::as_str).collect();
         let right = match nearest(name, &titles) {
             Some(near) => format!("did you mean `{near}`?"),
             None => String::from("write a title of the set, or its number, from 1"),

@@ -3,6 +3,7 @@
 use super::Song;
 use super::circle::Circle;
 use super::landing::where_c4_lands;
+use super::values::spell_channels;
 use crate::engine::Plan;
 use crate::engine::plan::{Dialect, PartPlan, SynthPlan};
 use crate::pitch::word::Bend;
@@ -36,6 +37,8 @@ pub struct SynthOutlook {
     pub dialect: &'static str,
     /// From 1.
     pub channels: Vec<u8>,
+    /// The same as people write them: `1-9, 11-16`.
+    pub channels_spelt: String,
     pub bend_range: u8,
     /// The furthest any key of tonight's songs sounds from where it is wanted.
     pub worst_rounding: Interval,
@@ -195,6 +198,7 @@ pub fn synths(plan: &Plan) -> Vec<SynthOutlook> {
                     Dialect::ChannelBend => "channel-bend",
                 },
                 channels: synth.members.iter().map(|channel| channel + 1).collect(),
+                channels_spelt: spell_channels(synth.members),
                 bend_range: synth.bend_range.semitones(),
                 worst_rounding: worst_rounding(synth, parts, &tunings),
             }

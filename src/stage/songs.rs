@@ -1,7 +1,7 @@
 //! Songs: the book, and tonight's set.
 
 use super::advice::Findings;
-use super::complaint::Complaints;
+use super::complaint::{Complaints, Trail};
 use super::node::{At, Fields, Node, nearest};
 use super::placing;
 use super::rig::{self, Rig};
@@ -33,6 +33,8 @@ pub struct Desk<'d, 'n> {
     pub placed: Vec<(Scale, Placement, Arc<Tuning>)>,
     /// The tunings of all songs, each once.
     pub used: Vec<Rc<TuningText>>,
+    /// The titles of the set in their order, also of songs that are written wrong.
+    pub titles: Vec<String>,
 }
 
 /// Tonight's songs in their order.
@@ -59,8 +61,16 @@ pub fn read(
                 "write a set, as in `set: [{song: Lantern hymn, tuning: quarter-comma-meantone}]`",
             );
         }
+        let place = book.map_or(&top.trail, |at| &at.trail);
+        too_many(entries.len(), place, desk);
+        desk.titles = entries.iter().map(|(title, _)| title.clone()).collect();
         return entries.into_iter().filter_map(|(_, entry)| entry).collect();
     };
+    tonight(set, &entries, desk)
+}
+
+/// The songs of the set in their order.
+fn tonight(set: &At<'_>, book: &[(String, Option<Entry>)], desk: &mut Desk<'_, '_>) -> Vec<Entry> {
     let items = set.items();
     if items.is_empty() {
         desk.found.complaints.add(
@@ -70,22 +80,28 @@ pub fn read(
         );
     }
     if let Some(first_too_many) = items.get(SONGS_MAX) {
-        desk.found.complaints.add(
-            &first_too_many.trail,
-            format!("this is song number {} of the set", SONGS_MAX + 1),
-            format!("a set holds at most {SONGS_MAX} songs"),
-        );
+        too_many(items.len(), &first_too_many.trail, desk);
     }
     let mut tonight = Vec::new();
     let mut whole: Vec<String> = Vec::new();
     for (index, item) in items.iter().enumerate().take(SONGS_MAX) {
         let entry = match item.node {
-            Node::Map(_) => set_song(item, &entries, &mut whole, desk),
-            _ => titled(item, &items, index, &entries, &mut desk.found.complaints),
+            Node::Map(_) => set_song(item, book, &mut whole, desk),
+            _ => titled(item, &items, index, book, desk),
         };
         tonight.extend(entry);
     }
     tonight
+}
+
+fn too_many(count: usize, place: &Trail, desk: &mut Desk<'_, '_>) {
+    if count > SONGS_MAX {
+        desk.found.complaints.add(
+            place,
+            format!("there are {count} songs tonight"),
+            format!("a set holds at most {SONGS_MAX}"),
+        );
+    }
 }
 
 fn book_song(title: &str, at: &At<'_>, desk: &mut Desk<'_, '_>) -> Option<Entry> {
@@ -132,6 +148,7 @@ fn set_song(
         return None;
     };
     let title = title_at.text("a title", complaints)?;
+    desk.titles.push(title.clone());
     let known = book.iter().find(|(known, _)| *known == title);
     if let Some((_, entry)) = known {
         if fields.is_empty() {
@@ -162,12 +179,14 @@ fn titled(
     items: &[At<'_>],
     index: usize,
     book: &[(String, Option<Entry>)],
-    complaints: &mut Complaints,
+    desk: &mut Desk<'_, '_>,
 ) -> Option<Entry> {
+    let complaints = &mut desk.found.complaints;
     let title = at.text(
         "a title, or a map such as `{song: Title, tuning: vallotti}`",
         complaints,
     )?;
+    desk.titles.push(title.clone());
     if let Some((_, entry)) = book.iter().find(|(known, _)| same_title(known, &title)) {
         return entry.clone();
     }
