@@ -6,6 +6,9 @@ mod support;
 /// Bytes to messages, and parameter sequences, against printed examples.
 mod midi_stream;
 
+/// Random play while songs, plans, ports and parts change under it.
+mod changes;
+
 /// A counting allocator: the engine takes nothing from the heap once it is made.
 mod no_alloc;
 

@@ -20,7 +20,7 @@ impl Engine {
             controller::RESET_ALL => self.reset_all(now, hand),
             controller::LOCAL => {
                 self.to_gesture_channels(hand, |channel| {
-                    ([status::CONTROLLER | channel, number, value], 3)
+                    [status::CONTROLLER | channel, number, value]
                 });
             }
             controller::VELOCITY_LOW => source.velocity_low = Some(value),

@@ -4,10 +4,11 @@ use super::channel::{Due, UNSAID};
 use super::choose::{Choice, Cost, Want, choose};
 use super::dialect::{self, on_members};
 use super::outbox::Bundle;
-use super::plan::{KeyboardId, PartId, PartPlan, SynthId};
-use super::synth::bend_message;
+use super::part::owner_of;
+use super::plan::{ChannelSet, KeyboardId, PartId, PartPlan, SynthId};
+use super::synth::{Synth, bend_message};
 use super::traffic::{Onset, Weight};
-use super::voices::Voice;
+use super::voices::{Voice, Voices};
 use super::{Engine, Hand};
 use crate::midi::{controller, status};
 use crate::pitch::word::Bend;
@@ -314,13 +315,14 @@ impl Engine {
 
     /// Sends the one note-off of a voice that has been taken out, and notes what keeps ringing.
     pub(super) fn end(&mut self, now: Time, voice: &Voice, velocity: u8, luggage: Option<u8>) {
-        let part_id = voice.part;
-        let part = self.plan.parts.get(part_id.index()).copied();
-        let pedals_held = |parts: &[super::part::Part], number| {
-            part.is_some_and(|p| !p.late_offs) && parts[part_id.index()].pedal_down(number)
+        let owner = self.part_of(voice.synth, voice.channel);
+        let pedal_held = |number| {
+            owner.is_some_and(|(id, part)| {
+                !part.late_offs && self.parts[id.index()].pedal_down(number)
+            })
         };
-        let damper = pedals_held(&self.parts, controller::DAMPER);
-        let sostenuto = voice.latched && pedals_held(&self.parts, controller::SOSTENUTO);
+        let damper = pedal_held(controller::DAMPER);
+        let sostenuto = voice.latched && pedal_held(controller::SOSTENUTO);
         let synth = &mut self.synths[voice.synth.index()];
         let mut bundle = Bundle::new();
         if let Some(low) = luggage {
@@ -341,9 +343,9 @@ impl Engine {
         channel.damper |= damper;
         channel.sostenuto |= sostenuto;
         if voice.pressure > 0
-            && let Some(part) = part
+            && let Some((id, part)) = owner
         {
-            let pressure = self.pressure_for(&part, voice.synth, voice.channel, part_id);
+            let pressure = self.pressure_for(&part, voice.synth, voice.channel, id);
             let synth = &mut self.synths[voice.synth.index()];
             if synth.channels[voice.channel as usize].held > 0 {
                 synth.pressure(voice.channel, pressure, Weight::Control, &mut self.out);
@@ -365,6 +367,14 @@ impl Engine {
             return;
         }
         synth.channels[number as usize].version = settings.version;
+        if settings.pedal_down(controller::SOSTENUTO) {
+            latch(
+                synth,
+                number,
+                ChannelSet::NONE.with(number),
+                &mut self.voices,
+            );
+        }
         for (cc, value) in settings.controllers.iter().enumerate() {
             if *value != UNSAID {
                 synth.controller(number, cc as u8, *value, Weight::Owed, &mut self.out);
@@ -374,16 +384,23 @@ impl Engine {
 
     /// The part whose own channel this is.
     pub(super) fn part_of(&self, id: SynthId, number: u8) -> Option<(PartId, PartPlan)> {
-        let index = self
-            .plan
-            .parts
-            .iter()
-            .position(|part| part.to == id && part.pool.has(number))?;
-        Some((PartId::new(index)?, self.plan.parts[index]))
+        let owner = owner_of(&self.plan.parts, id, number)?;
+        Some((owner, self.plan.parts[owner.index()]))
     }
 
     /// Ends everything a keyboard holds.
     pub(super) fn release_keyboard(&mut self, now: Time, keyboard: KeyboardId) {
         self.release(now, 64, None, |v| v.keyboard == keyboard && v.down);
+    }
+}
+
+/// To be asked before a channel is told that the sostenuto pedal is down: if the receiver sees it go down only now, it
+/// latches what is held on `governed` now, whenever the player pressed it.
+pub(super) fn latch(synth: &Synth, channel: u8, governed: ChannelSet, voices: &mut Voices) {
+    let told = synth.channels[channel as usize].controllers[controller::SOSTENUTO as usize];
+    if told == UNSAID || told < 64 {
+        for voice in voices.iter_mut() {
+            voice.latched |= voice.synth == synth.id && governed.has(voice.channel);
+        }
     }
 }

@@ -3,8 +3,9 @@
 use super::channel::{Program, RESET_VALUES, UNSAID};
 use super::dialect::{gesture_channels, members, on_members};
 use super::keyboard::Select;
+use super::outbox::{Bundle, Outbox};
 use super::plan::{ChannelSet, PartPlan};
-use super::synth::PEDALS;
+use super::synth::{PEDALS, Synth, bend_message};
 use super::traffic::Weight;
 use super::{Engine, Hand};
 use crate::limits::{BEND_RANGE_MAX, SYNTHS_MAX};
@@ -83,12 +84,7 @@ impl Engine {
         let (Select::Registered(number) | Select::NonRegistered(number)) = source.select else {
             return;
         };
-        self.to_gesture_channels(hand, |channel| {
-            (
-                sequence(channel, number, [msb, lsb]),
-                parameter::PARAMETER_BYTES,
-            )
-        });
+        self.to_gesture_channels(hand, |channel| sequence(channel, number, [msb, lsb]));
     }
 
     /// Data increment and decrement, passed on with the selection they belong to.
@@ -108,28 +104,32 @@ impl Engine {
                 s, select[0], number[0], s, select[1], number[1], s, step, value,
                 s, null[0], 0x7F, s, null[1], 0x7F,
             ];
-            (bytes, bytes.len())
+            bytes
         });
     }
 
-    /// Sends bytes to every channel that hears the controllers of the parts that a hand plays, once each.
+    /// Every channel that hears the controllers of the parts that a hand plays, by synth.
+    fn gesture_channels_of(&self, hand: Hand) -> [ChannelSet; SYNTHS_MAX] {
+        let mut channels = [ChannelSet::NONE; SYNTHS_MAX];
+        for part in &self.plan.parts {
+            if part.pass.controllers && self.feeds(part, hand) {
+                let to = part.to.index();
+                channels[to].0 |= gesture_channels(&self.synths[to].rig, part).0;
+            }
+        }
+        channels
+    }
+
+    /// Sends bytes to each of those channels, once.
     pub(super) fn to_gesture_channels<const N: usize>(
         &mut self,
         hand: Hand,
-        bytes: impl Fn(u8) -> ([u8; N], usize),
+        bytes: impl Fn(u8) -> [u8; N],
     ) {
-        let mut channels = [ChannelSet::NONE; SYNTHS_MAX];
-        for index in 0..self.plan.parts.len() {
-            let part = self.plan.parts[index];
-            if part.pass.controllers && self.feeds(&part, hand) {
-                let to = part.to.index();
-                channels[to].0 |= gesture_channels(&self.synths[to].rig, &part).0;
-            }
-        }
+        let channels = self.gesture_channels_of(hand);
         for (synth, channels) in self.synths.iter().zip(channels) {
             for channel in channels.iter() {
-                let (bytes, length) = bytes(channel);
-                synth.send(Weight::Owed, &bytes[..length], &mut self.out);
+                synth.send(Weight::Owed, &bytes(channel), &mut self.out);
             }
         }
     }
@@ -138,19 +138,32 @@ impl Engine {
     pub(super) fn reset_all(&mut self, now: Time, hand: Hand) {
         let source = self.source(hand);
         source.wheel = Bend::CENTRE;
+        source.pressure = 0;
         source.pedals = [0; PEDALS.len()];
         source.select = Select::Nothing;
-        self.to_gesture_channels(hand, |channel| {
-            ([status::CONTROLLER | channel, controller::RESET_ALL, 0], 3)
-        });
         self.for_parts(hand, |engine, index, part| {
             if part.pass.controllers {
-                engine.after_reset(now, index, part);
+                engine.reset_part(index, part);
             }
         });
+        let channels = self.gesture_channels_of(hand);
+        for (synth, channels) in self.synths.iter_mut().zip(channels) {
+            for channel in channels.iter() {
+                pass_reset(now, synth, channel, &mut self.out);
+            }
+        }
+        for (index, channels) in channels.into_iter().enumerate() {
+            if channels != ChannelSet::NONE {
+                self.say_again_what_sounds(now, index, channels);
+            }
+        }
+        for index in 0..self.plan.parts.len() {
+            self.release_waiting(now, index);
+        }
     }
 
-    fn after_reset(&mut self, now: Time, index: usize, part: &PartPlan) {
+    /// What the player of a part has set goes where a reset puts it; a pedal that another hand holds stays down.
+    fn reset_part(&mut self, index: usize, part: &PartPlan) {
         let settings = &mut self.parts[index];
         settings.wheel = Interval::ZERO;
         settings.pressure = 0;
@@ -160,47 +173,69 @@ impl Engine {
             }
         }
         settings.version += 1;
-        for (which, pedal) in PEDALS.iter().enumerate() {
-            let deepest = self.deepest(part, which);
-            if self.parts[index].controllers[*pedal as usize] != UNSAID {
-                self.parts[index].controllers[*pedal as usize] = deepest;
+        for (which, pedal) in PEDALS.into_iter().enumerate() {
+            if self.parts[index].controllers[pedal as usize] != UNSAID {
+                self.parts[index].controllers[pedal as usize] = self.deepest(part, which);
             }
         }
-        let synth = &mut self.synths[part.to.index()];
-        for number in gesture_channels(&synth.rig, part).iter() {
-            synth.channel(number).reset_controllers();
-        }
-        for number in members(&synth.rig, part).iter() {
-            let mpe = synth.rig.keeps_pitch();
-            let channel = synth.channel(number);
-            if channel.damper || channel.sostenuto {
-                channel.released_at = Some(now);
-            }
-            channel.damper = false;
-            channel.sostenuto = false;
-            channel.pressure = 0;
-            if mpe {
-                channel.bend = None; // whether members follow a reset of their manager, receivers disagree
-            }
-        }
+        let sostenuto = self.parts[index].pedal_down(controller::SOSTENUTO);
         for voice in self.voices.iter_mut().filter(|v| v.part.index() == index) {
-            voice.latched &= part.late_offs;
+            voice.latched &= part.late_offs && sostenuto;
         }
-        self.say_again_what_sounds(now, index, part);
-        self.release_waiting(now, index);
     }
 
-    fn say_again_what_sounds(&mut self, now: Time, index: usize, part: &PartPlan) {
-        let wheel_here = on_members(&self.synths[part.to.index()].rig, part);
-        for number in members(&self.synths[part.to.index()].rig, part).iter() {
-            let synth = &self.synths[part.to.index()];
-            if synth.channels[number as usize].rings(now, synth.rig.tail) {
-                self.say_bend(part.to, number);
-                self.catch_up(part.to, number);
+    /// After a reset of some channels: bends and controllers that must stand all the same.
+    fn say_again_what_sounds(&mut self, now: Time, index: usize, reset: ChannelSet) {
+        let synth = &self.synths[index];
+        let (id, tail, members) = (synth.id, synth.rig.tail, synth.rig.members);
+        let by_manager = synth.rig.manager().is_some();
+        for number in members.iter() {
+            if !by_manager && !reset.has(number) {
+                continue;
+            }
+            if self.synths[index].channels[number as usize].rings(now, tail) {
+                self.say_bend(id, number);
+                self.catch_up(id, number);
             }
         }
-        if !wheel_here {
-            self.play_wheel(now, index, Weight::Owed);
+        for part in 0..self.plan.parts.len() {
+            if by_manager && self.plan.parts[part].to == id {
+                self.play_wheel(now, part, Weight::Owed);
+                self.say_gestures(id, reset.iter().next().unwrap_or(0), part);
+            }
+        }
+    }
+}
+
+/// Passes Reset All Controllers to a channel, and in the same breath the bend that a note sounding there must keep.
+fn pass_reset(now: Time, synth: &mut Synth, number: u8, out: &mut Outbox) {
+    let (range, tail) = (synth.rig.bend_range, synth.rig.tail);
+    let manager = synth.rig.manager() == Some(number);
+    let channel = synth.channel(number);
+    channel.reset_controllers();
+    let mut bundle = Bundle::new();
+    bundle.add(&[status::CONTROLLER | number, controller::RESET_ALL, 0]);
+    let bend = Bend::encode(channel.offset, range).0;
+    if !manager && channel.rings(now, tail) && bend != Bend::CENTRE {
+        channel.bend = Some(bend);
+        bundle.add(&bend_message(number, bend));
+    }
+    synth.send(Weight::Owed, bundle.bytes(), out);
+    let lifted = if manager {
+        synth.rig.members
+    } else {
+        ChannelSet::NONE.with(number)
+    };
+    for member in lifted.iter() {
+        let channel = synth.channel(member);
+        if channel.damper || channel.sostenuto {
+            channel.released_at = Some(now);
+        }
+        channel.damper = false;
+        channel.sostenuto = false;
+        if manager {
+            channel.bend = None; // whether members follow a reset of their manager, receivers disagree
+            channel.pressure = 0;
         }
     }
 }

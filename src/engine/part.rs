@@ -1,6 +1,7 @@
 //! What the player of a part has set: wheel, pressure, controllers, program.
 
 use super::channel::{Program, UNSAID};
+use super::plan::{PartId, PartPlan, SynthId};
 use crate::midi::controller;
 use crate::pitch::Interval;
 
@@ -37,4 +38,10 @@ impl Part {
         let value = self.controllers[number as usize];
         value != UNSAID && value >= 64
     }
+}
+
+/// The part whose own channel this is.
+pub(super) fn owner_of(parts: &[PartPlan], synth: SynthId, channel: u8) -> Option<PartId> {
+    let owns = |part: &PartPlan| part.to == synth && part.pool.has(channel);
+    parts.iter().position(owns).and_then(PartId::new)
 }

@@ -2,6 +2,7 @@
 
 use super::channel::{Channel, Due, UNSAID};
 use super::dialect::{mpe, on_members};
+use super::notes::latch;
 use super::plan::{Dialect, Leave, SynthId};
 use super::traffic::{Link, Weight};
 use super::{Engine, Hand};
@@ -147,11 +148,14 @@ impl Engine {
     }
 
     /// A part's program, controllers and pressure, on a channel that speaks for it.
-    fn say_gestures(&mut self, id: SynthId, number: u8, index: usize) {
+    pub(super) fn say_gestures(&mut self, id: SynthId, number: u8, index: usize) {
         let settings = self.parts[index];
         let part = self.plan.parts[index];
         let synth = &mut self.synths[id.index()];
         synth.program(number, settings.program, &mut self.out);
+        if settings.pedal_down(controller::SOSTENUTO) && !part.late_offs {
+            latch(synth, number, synth.rig.members, &mut self.voices);
+        }
         for (cc, value) in settings.controllers.iter().enumerate() {
             let by_late_offs =
                 part.late_offs && matches!(cc as u8, controller::DAMPER | controller::SOSTENUTO);

@@ -1,9 +1,11 @@
 //! Songs, cues and commands.
 
 use super::channel::{Program, UNSAID};
+use super::part::owner_of;
 use super::plan::{Act, Gesture, Plan, SynthId};
 use super::synth::{PEDALS, Rig};
 use super::traffic::{Command, Link, Weight};
+use super::voices::Voice;
 use super::{Engine, Hand, Playing};
 use crate::midi::{Message, controller, status};
 use crate::time::{Span, Time};
@@ -230,6 +232,7 @@ impl Engine {
     /// After an edit of the parts: each takes the pedals and the wheel of the hands that play it now, and what rings
     /// under a pedal that nobody holds any more is let go.
     fn fit_parts(&mut self, now: Time) {
+        self.rehome_voices(now);
         for index in 0..self.plan.parts.len() {
             let part = self.plan.parts[index];
             for (which, pedal) in PEDALS.into_iter().enumerate() {
@@ -240,19 +243,68 @@ impl Engine {
             }
             self.release_waiting(now, index);
         }
-        let gone = self.plan.parts.len();
-        self.release(now, 64, None, |v| !v.drum && v.part.index() >= gone);
-        for synth in 0..self.plan.synths.len() {
-            for number in 0..crate::limits::CHANNELS as u8 {
-                let owner = self.part_of(self.synths[synth].id, number);
-                let held = owner.is_some_and(|(id, _)| self.parts[id.index()].damper_down());
-                let channel = self.synths[synth].channel(number);
-                if (channel.damper || channel.sostenuto) && !held {
-                    channel.damper = false;
-                    channel.sostenuto = false;
-                    channel.released_at = Some(now);
-                    self.synths[synth].lift_pedals(number, &mut self.out);
-                }
+        for index in 0..self.plan.synths.len() {
+            self.fit_channels(now, index);
+        }
+        // Where pedals are the synth's own now, nothing has to wait for them here.
+        loop {
+            let parts = &self.plan.parts;
+            let waits = |v: &Voice| !v.drum && !v.down && !parts[v.part.index()].late_offs;
+            match self.voices.take(waits) {
+                Some(voice) => self.end(now, &voice, 64, None),
+                None => return,
+            }
+        }
+    }
+
+    /// An open note belongs to the part that has its channel now; where none has, it is ended.
+    fn rehome_voices(&mut self, now: Time) {
+        for voice in self.voices.iter_mut().filter(|v| !v.drum) {
+            let owner = owner_of(&self.plan.parts, voice.synth, voice.channel);
+            voice.part = owner.unwrap_or(voice.part);
+        }
+        loop {
+            let parts = &self.plan.parts;
+            let homeless = |v: &Voice| !v.drum && owner_of(parts, v.synth, v.channel).is_none();
+            match self.voices.take(homeless) {
+                Some(voice) => self.end(now, &voice, 64, None),
+                None => return,
+            }
+        }
+    }
+
+    /// Brings a synth's channels in line with the parts that own them now.
+    fn fit_channels(&mut self, now: Time, index: usize) {
+        let (id, rig) = (self.synths[index].id, self.synths[index].rig);
+        let late = self.plan.parts.iter().any(|p| p.to == id && p.late_offs);
+        for number in rig.channels().iter() {
+            let owner = self.part_of(id, number);
+            let pedal_down = |engine: &Engine, pedal| {
+                owner.is_some_and(|(id, _)| engine.parts[id.index()].pedal_down(pedal))
+            };
+            let damper = pedal_down(self, controller::DAMPER);
+            let sostenuto = pedal_down(self, controller::SOSTENUTO);
+            let manager = rig.manager() == Some(number);
+            if (manager && late) || (!manager && !damper && !sostenuto) {
+                self.synths[index].lift_pedals(number, &mut self.out);
+            }
+            let channel = self.synths[index].channel(number);
+            channel.version = 0;
+            if (channel.damper && !damper) || (channel.sostenuto && !sostenuto) {
+                channel.damper &= damper;
+                channel.sostenuto &= sostenuto;
+                channel.released_at = Some(now);
+            }
+            if channel.rings(now, rig.tail) {
+                self.catch_up(id, number);
+            }
+        }
+        for part in 0..self.plan.parts.len() {
+            if let Some(manager) = rig.manager()
+                && self.plan.parts[part].to == id
+                && self.synths[index].up
+            {
+                self.say_gestures(id, manager, part);
             }
         }
     }

@@ -125,8 +125,10 @@ impl Synth {
 
     /// Whether something can only be done once nothing sounds.
     pub fn waits_for_silence(&self, stopping: bool) -> bool {
-        (stopping && !self.left)
-            || (self.up && (self.repeat_when_silent || self.next_rig.is_some()))
+        if stopping {
+            return !self.left;
+        }
+        self.up && (self.repeat_when_silent || self.next_rig.is_some())
     }
 
     /// When the engine has to come back for this synth.
