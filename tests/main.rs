@@ -15,6 +15,9 @@ mod no_alloc;
 /// Ten thousand random notes, through both dialects, three bend ranges and five tunings, heard from outside.
 mod random_play;
 
+/// Script in, transcript out: what the engine promises, one story each.
+mod scenes;
+
 /// Arrows between rooms, banned words in the core, file length.
 mod tidy;
 

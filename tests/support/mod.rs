@@ -14,6 +14,8 @@ pub mod published;
 pub mod receiver;
 /// Engine, scripted clock and receivers; scripts in, transcripts out.
 pub mod rig;
+/// A small language for scripts and transcripts.
+pub mod script;
 /// A SoundFont that plays a bare sine.
 pub mod sine_font;
 

@@ -1,6 +1,6 @@
 //! The engine on a scripted clock, with an independent receiver on every synth port.
 
-use super::receiver::{Kind, Receiver};
+use super::receiver::{Kind, Receiver, Stream};
 use std::fmt::Write;
 use std::time::Duration;
 use trued::engine::plan::Dialect;
@@ -108,6 +108,20 @@ impl Rig {
         let old = self.engine.handle_plan(self.now, Box::new(plan.clone()));
         drop(old);
         self.drain();
+    }
+
+    /// Messages from the `mark`-th output on, each whole, spelt in hexadecimal.
+    pub fn sent_since(&self, mark: usize) -> Vec<String> {
+        let spelt = |m: Vec<u8>| {
+            let bytes: Vec<String> = m.iter().map(|b| format!("{b:02X}")).collect();
+            bytes.join(" ")
+        };
+        let whole = |sent: &Sent| Stream::default().cut(&sent.bytes);
+        self.sent[mark..]
+            .iter()
+            .flat_map(whole)
+            .map(spelt)
+            .collect()
     }
 
     /// The receiver of the first synth.

@@ -1,0 +1,53 @@
+//! What the engine promises, as small stories: a script in, a transcript out.
+
+/// Two runs of one script; a stream in portions.
+mod determinism;
+/// Keyboards and synths that go and come back, panic, a short outbox.
+mod lost;
+/// Mode messages, Reset All Controllers.
+mod modes;
+/// Damper, sostenuto, keys struck again.
+mod pedals;
+/// Poly pressure, CC88 and CC84.
+mod prefixes;
+/// A new song under a ringing chord; one that waits for silence.
+mod songs;
+/// Too many pitches for the channels there are.
+mod stealing;
+/// The end of a file, and how synths are left.
+mod stopping;
+/// Drums, system exclusive, real-time, Active Sensing, System Reset.
+mod through;
+/// The player's wheel and what it means.
+mod wheel;
+
+use crate::support::plans;
+use trued::engine::Plan;
+use trued::engine::plan::{ChannelSet, Dialect};
+
+/// C 10 cents up, E 14 down, G 2 up, the rest equal; then equal.
+fn two_songs(dialect: Dialect, range: u8) -> Plan {
+    let mut crooked = [0.0; 12];
+    (crooked[0], crooked[4], crooked[7]) = (10.0, -14.0, 2.0);
+    let songs = vec![
+        plans::song("Crooked", plans::offsets(crooked)),
+        plans::song("Equal", plans::equal()),
+    ];
+    plans::plan(plans::synth("synth", dialect, range), songs)
+}
+
+fn plain() -> Plan {
+    two_songs(Dialect::ChannelBend, 2)
+}
+
+fn mpe() -> Plan {
+    two_songs(Dialect::Mpe { manager: 0 }, 48)
+}
+
+/// A plain synth with only so many channels, from channel 1 up.
+fn few_channels(count: u32) -> Plan {
+    let mut plan = plain();
+    plan.synths[0].members = ChannelSet((1 << count) - 1);
+    plan.parts[0].pool = plan.synths[0].members;
+    plan
+}
