@@ -48,7 +48,7 @@ unsafe impl GlobalAlloc for Counting {
 static HEAP: Counting = Counting;
 
 /// Calls to the heap while `work` runs.
-fn heap_calls(work: impl FnOnce()) -> u64 {
+pub fn heap_calls(work: impl FnOnce()) -> u64 {
     let before = HEAP_CALLS.get();
     work();
     HEAP_CALLS.get() - before

@@ -1,5 +1,7 @@
 //! The daemon's score on simulated time and ports in memory: deadlines, stop, full ports, lost ports, a panic.
 
+use crate::no_alloc::heap_calls;
+use crate::support::dice::Dice;
 use crate::support::plans;
 use std::sync::Arc;
 use trued::daemon::{Ending, News, Player, Score, Slot};
@@ -258,4 +260,63 @@ fn a_panic_inside_a_cycle_silences_every_channel_and_keeps_the_engine() {
     }
     let score = stand.slot.take().expect("the engine has survived");
     assert_eq!(score.ending(), Some(Ending::Panicked));
+}
+
+/// A wire that is full now and then, and keeps nothing.
+struct Narrow {
+    takes: usize,
+    bytes: u64,
+}
+
+impl Wire for Narrow {
+    fn write(&mut self, _synth: usize, bytes: &[u8]) -> usize {
+        if self.takes == 0 {
+            return 0;
+        }
+        self.takes -= 1;
+        self.bytes += bytes.len() as u64;
+        bytes.len()
+    }
+}
+
+#[test]
+fn the_score_thread_takes_nothing_from_the_heap() {
+    let stand = stand();
+    let mut player = Player::new(stand.slot.clone());
+    let mut wire = Narrow { takes: 0, bytes: 0 };
+    let mut outboxes = outbox::outboxes(1);
+    let mut inbox = Inbox::new();
+    let mut dice = Dice::new(3);
+    let sysex = [&[0xF0][..], &[1; 3000], &[0xF7]].concat();
+    let calls = heap_calls(|| {
+        inbox.add_synth(at(1), 0, Link::Up);
+        for cycle in 2..30_000 {
+            for _ in 0..dice.below(4) {
+                let key = dice.below(128) as u8;
+                let keyboard = dice.below(2) as usize;
+                match dice.below(100) {
+                    0 => inbox.add_keyboard_lost(at(cycle), keyboard),
+                    1 => inbox.add_synth(at(cycle), 0, Link::Down),
+                    2 => inbox.add_synth(at(cycle), 0, Link::Back),
+                    3 => assert!(inbox.add_midi(at(cycle), keyboard, &sysex)),
+                    4..30 => assert!(inbox.add_midi(at(cycle), keyboard, &[0xB0, key, 90])),
+                    30..65 => assert!(inbox.add_midi(at(cycle), keyboard, &[0x90, key, 90])),
+                    _ => assert!(inbox.add_midi(at(cycle), keyboard, &[0x80, key, 64])),
+                }
+            }
+            wire.takes = if dice.percent(30) { 0 } else { 40 };
+            let mut outlet = Outlet {
+                outboxes: &mut outboxes,
+                wire: &mut wire,
+            };
+            outlet.retry();
+            assert!(matches!(
+                player.run(at(cycle), &mut inbox, &mut outlet),
+                Next::Wait(_)
+            ));
+            inbox.clear();
+        }
+    });
+    assert!(wire.bytes > 100_000, "{} bytes went out", wire.bytes);
+    assert_eq!(calls, 0, "calls to the heap");
 }

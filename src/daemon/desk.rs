@@ -93,6 +93,12 @@ impl Desk {
                     let name = &self.rig.keyboards[keyboard].name;
                     warn!("keyboard {name} has gone; all it held is let go");
                 }
+                News::Emptied { synth } => {
+                    let name = synth_name(&self.rig, synth);
+                    error!(
+                        "{name} did not read for a while and has lost notes; it was silenced and set up again"
+                    );
+                }
                 News::Choked { synth } => {
                     let name = synth_name(&self.rig, synth);
                     error!("{name} takes nothing any more; it is tried again every second");

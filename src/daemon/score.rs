@@ -1,7 +1,9 @@
 //! The score: an engine and its queues, and what is done with them in one cycle.
 
 use crate::engine::{self, Command, Engine, Input, KeyboardId, Output, Report, SynthId};
-use crate::limits::SYNTHS_MAX;
+use crate::limits::{CHANNELS, SYNTHS_MAX};
+use crate::midi::controller::{ALL_NOTES_OFF, ALL_SOUND_OFF, DAMPER};
+use crate::midi::status;
 use crate::ports::{self, Cycle, Inbox, Next, Outlet, Room, What};
 use crate::time::{Span, Time};
 use rtrb::{Consumer, Producer};
@@ -22,6 +24,10 @@ pub enum News {
     },
     /// A synth's port takes nothing any more; it is tried again from time to time.
     Choked {
+        synth: usize,
+    },
+    /// A synth's port did not read for a while and has lost messages; it was silenced and set up again.
+    Emptied {
         synth: usize,
     },
 }
@@ -174,17 +180,28 @@ impl Score {
             let Some((synth, room)) = news else {
                 return;
             };
-            let link = match room {
-                Room::Easy => engine::Link::Easy,
-                Room::Tight => engine::Link::Tight,
+            match room {
+                Room::Easy => self.link(now, synth, engine::Link::Easy),
+                Room::Tight => self.link(now, synth, engine::Link::Tight),
                 Room::None => {
                     self.reopen_at[synth] = Some(now + CHOKED);
                     self.tell(News::Choked { synth });
-                    engine::Link::Down
+                    self.link(now, synth, engine::Link::Down);
                 }
-            };
-            self.link(now, synth, link);
+                Room::Emptied => {
+                    self.tell(News::Emptied { synth });
+                    self.link(now, synth, engine::Link::Down);
+                    self.begin_anew(now, synth, outlet);
+                }
+            }
         }
+    }
+
+    /// A port that has lost messages, or perhaps has: what hangs there is let go, then it is set up.
+    fn begin_anew(&mut self, now: Time, synth: usize, outlet: &mut Outlet<'_>) {
+        outlet.forget(synth);
+        hush(outlet, synth, &[DAMPER, ALL_NOTES_OFF]);
+        self.link(now, synth, engine::Link::Back);
     }
 
     /// Tries choked ports again, as if they had just come back.
@@ -192,8 +209,7 @@ impl Score {
         for synth in 0..self.synths {
             if self.reopen_at[synth].is_some_and(|at| at <= now) {
                 self.reopen_at[synth] = None;
-                outlet.forget(synth);
-                self.link(now, synth, engine::Link::Back);
+                self.begin_anew(now, synth, outlet);
                 self.drain(now, outlet);
             }
         }
@@ -237,16 +253,17 @@ impl Score {
         self.ending = Some(Ending::Panicked);
         let _ = catch_unwind(AssertUnwindSafe(|| self.obey(now, Command::Stop, outlet)));
         for synth in 0..self.synths {
-            for channel in 0..16u8 {
-                let status = crate::midi::status::CONTROLLER | channel;
-                for number in [
-                    crate::midi::controller::DAMPER,
-                    crate::midi::controller::ALL_NOTES_OFF,
-                    crate::midi::controller::ALL_SOUND_OFF,
-                ] {
-                    outlet.send(synth, ports::Weight::Owed, &[status, number, 0]);
-                }
-            }
+            hush(outlet, synth, &[DAMPER, ALL_NOTES_OFF, ALL_SOUND_OFF]);
+        }
+    }
+}
+
+/// Sets controllers to zero on every channel, whatever anybody knows to be sounding.
+fn hush(outlet: &mut Outlet<'_>, synth: usize, numbers: &[u8]) {
+    for channel in 0..CHANNELS as u8 {
+        for number in numbers {
+            let message = [status::CONTROLLER | channel, *number, 0];
+            outlet.send(synth, ports::Weight::Owed, &message);
         }
     }
 }

@@ -30,8 +30,17 @@ pub enum Room {
     Easy,
     /// What is left is kept for what is owed.
     Tight,
-    /// Not even what is owed found room: the port must be taken for dead, and has been emptied.
+    /// Not even what is owed found room: the port must be taken for dead. Nothing more is kept for it.
     None,
+    /// It was full, takes messages again, but has thrown away all it had not read: what it sounds and what it knows is
+    /// uncertain. Nothing more is kept for it until it is forgotten and begins anew.
+    Emptied,
+}
+
+impl Room {
+    fn is_closed(self) -> bool {
+        matches!(self, Room::None | Room::Emptied)
+    }
 }
 
 /// Where bytes leave the house.
@@ -39,6 +48,11 @@ pub trait Wire {
     /// Writes as much as is taken at once and in order, and says how many bytes that was. A short message is taken
     /// whole or not at all; fewer bytes than given means that the port is full.
     fn write(&mut self, synth: usize, bytes: &[u8]) -> usize;
+
+    /// Whether a port that was full has lost messages that it had taken.
+    fn loses_when_full(&self) -> bool {
+        false
+    }
 }
 
 /// All outboxes, and the wire behind them: what a cycle sends into.
@@ -58,7 +72,11 @@ impl Outlet<'_> {
     /// Tries once more to send what waits. To be called before anything new is sent.
     pub fn retry(&mut self) {
         for (synth, outbox) in self.outboxes.iter_mut().enumerate() {
+            let before = outbox.live_bytes;
             outbox.flush(&mut |bytes| self.wire.write(synth, bytes));
+            if outbox.live_bytes < before && self.wire.loses_when_full() {
+                outbox.close(Room::Emptied);
+            }
         }
     }
 
@@ -152,7 +170,7 @@ impl Outbox {
 
     /// Writes a message or bundle, or lets it wait.
     pub fn push(&mut self, weight: Weight, bytes: &[u8], write: &mut dyn FnMut(&[u8]) -> usize) {
-        if self.room == Room::None {
+        if self.room.is_closed() {
             self.dropped += 1;
             return;
         }
@@ -256,9 +274,7 @@ impl Outbox {
         if !fits {
             self.dropped += 1;
             if owed {
-                self.dropped += self.live_items as u64;
-                self.clear();
-                self.room = Room::None;
+                self.close(Room::None);
             }
             return false;
         }
@@ -298,6 +314,13 @@ impl Outbox {
             end += length;
         }
         self.bytes.truncate(end);
+    }
+
+    /// Drops what waits, and what comes, until it is forgotten.
+    fn close(&mut self, room: Room) {
+        self.dropped += self.live_items as u64;
+        self.clear();
+        self.room = room;
     }
 
     fn clear(&mut self) {

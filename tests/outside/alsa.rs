@@ -39,6 +39,25 @@ set:
   - {song: Lantern hymn, tuning: quarter-comma-meantone}
 "#;
 
+const LAYER: &str = r#"
+stage: One synth too slow
+keyboards:
+  keys: {port: virtual}
+synths:
+  organ: {port: virtual, tail_ms: 300}
+  bells: {port: virtual, tail_ms: 300}
+parts:
+  - {to: organ}
+  - {to: bells}
+set:
+  - {song: Lantern hymn, tuning: quarter-comma-meantone}
+"#;
+
+/// Notes while one synth does not read: more messages than its queue in the kernel holds (200 events by default).
+const RUN: usize = 600;
+/// Notes after it reads again.
+const FEW: usize = 20;
+
 /// Keys that are down when the stop comes.
 const HELD: [u8; 4] = [48, 52, 55, 61];
 
@@ -185,6 +204,17 @@ fn write_held(path: &Path) {
     track.save(path);
 }
 
+/// Notes one after another.
+fn write_run(path: &Path, notes: usize) {
+    let mut track = Track::default();
+    for n in 0..notes {
+        let key = 48 + (n * 7 % 36) as u8;
+        track.add(2, 0, on(key, 1 + (n % 127) as u8));
+        track.add(2, 0, off(key));
+    }
+    track.save(path);
+}
+
 /// One line of aseqdump as bytes.
 fn bytes_of(line: &str) -> Option<Vec<u8>> {
     let numbers = |text: &str| -> Vec<i32> {
@@ -234,7 +264,15 @@ impl Guest {
         }
         let here = Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/outside");
         let out = folder.join("out");
-        let files = ["stage.yaml", "plugged.yaml", "evening.mid", "held.mid"];
+        let files = [
+            "stage.yaml",
+            "plugged.yaml",
+            "layer.yaml",
+            "evening.mid",
+            "held.mid",
+            "run.mid",
+            "few.mid",
+        ];
         let done = Command::new(here.join("alsa_vm.sh"))
             .arg(here.join("alsa_guest.sh"))
             .arg(&out)
@@ -279,6 +317,9 @@ fn on_a_real_sequencer() {
     std::fs::create_dir_all(&folder).unwrap();
     std::fs::write(folder.join("stage.yaml"), STAGE).unwrap();
     std::fs::write(folder.join("plugged.yaml"), PLUGGED).unwrap();
+    std::fs::write(folder.join("layer.yaml"), LAYER).unwrap();
+    write_run(&folder.join("run.mid"), RUN);
+    write_run(&folder.join("few.mid"), FEW);
     let played = write_evening(&folder.join("evening.mid"));
     write_held(&folder.join("held.mid"));
     let guest = Guest::run(folder);
@@ -290,6 +331,7 @@ fn on_a_real_sequencer() {
     );
     two_thousand_notes_in_two_tunings_and_a_clean_stop(&guest, &played);
     ports_by_name_pulled_out_and_put_in_again(&guest);
+    a_synth_that_does_not_read_holds_nobody_up(&guest);
     what_ports_says(&guest);
 }
 
@@ -321,9 +363,14 @@ fn two_thousand_notes_in_two_tunings_and_a_clean_stop(guest: &Guest, played: &[P
     assert_plain(&receiver);
 }
 
-/// Nothing sounds, pedals are up, bends centred, ranges 2.
+/// Every note has had its note-off, and the synth is left plain.
 fn assert_plain(receiver: &Receiver) {
     assert!(receiver.stuck().is_empty(), "{:?}", receiver.stuck());
+    assert_left_plain(receiver);
+}
+
+/// Nothing sounds, pedals are up, bends centred, ranges 2.
+fn assert_left_plain(receiver: &Receiver) {
     assert!(receiver.sounding().is_empty(), "{:?}", receiver.sounding());
     for channel in 0..16u8 {
         let pedal = receiver.controller(channel, 64).unwrap_or(0);
@@ -365,6 +412,42 @@ fn ports_by_name_pulled_out_and_put_in_again(guest: &Guest) {
     );
     assert_eq!(guest.text("plugged.exit").trim(), "0", "{log}");
     assert_plain(&second);
+}
+
+fn a_synth_that_does_not_read_holds_nobody_up(guest: &Guest) {
+    let log = guest.text("layer.log");
+    let hear = |file: &str| {
+        let mut receiver = Receiver::new(Kind::Plain, Duration::ZERO, 7);
+        for message in guest.text(file).lines().filter_map(bytes_of) {
+            receiver.hear(Duration::ZERO, &message);
+        }
+        receiver
+    };
+    let free = hear("free.txt");
+    assert_eq!(
+        free.notes.len(),
+        RUN + FEW,
+        "the other synth hears every note"
+    );
+    assert_plain(&free);
+    // The kernel throws a full queue away, so what was lost is lost; but nothing hangs, and all that comes after is in
+    // tune again.
+    let stuck = hear("stuck.txt");
+    println!(
+        "{} of {} notes at the synth that did not read\n{log}",
+        stuck.notes.len(),
+        RUN + FEW
+    );
+    assert!(stuck.notes.len() >= FEW && stuck.notes.len() < RUN + FEW);
+    let last = &stuck.notes[stuck.notes.len() - FEW..];
+    let wanted = &free.notes[RUN..];
+    for (note, wanted) in last.iter().zip(wanted) {
+        assert_eq!(note.velocity, wanted.velocity);
+        assert!((note.onset_cents() - wanted.onset_cents()).abs() < 1e-6);
+    }
+    assert_left_plain(&stuck);
+    assert!(log.contains("organ did not read for a while"), "{log}");
+    assert_eq!(guest.text("layer.exit").trim(), "0", "{log}");
 }
 
 fn what_ports_says(guest: &Guest) {

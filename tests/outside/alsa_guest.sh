@@ -53,7 +53,31 @@ wait $trued
 echo $? > /out/plugged.exit
 kill $ear
 
-# Third: gestures, from the same raw port.
+# Third: one of two synths stops reading in the middle of a run of notes, then reads again.
+/guest/trued run /guest/layer.yaml 2> /out/layer.log &
+trued=$!
+ready ready: /out/layer.log
+aseqdump -p trued:1 > /out/stuck.txt &
+stuck=$!
+aseqdump -p trued:2 > /out/free.txt &
+free=$!
+ready "organ is set up" /out/layer.log
+ready "bells is set up" /out/layer.log
+sleep 0.5
+kill -STOP $stuck
+aplaymidi -p trued:0 -d 0 /guest/run.mid
+kill -CONT $stuck
+ready "organ did not read" /out/layer.log
+sleep 1
+aplaymidi -p trued:0 -d 0 /guest/few.mid
+sleep 0.5
+kill -TERM $trued
+wait $trued
+echo $? > /out/layer.exit
+sleep 0.3
+kill $stuck $free
+
+# Fourth: gestures, from the same raw port.
 /guest/trued ports --watch /guest/plugged.yaml > /out/watch.txt 2> /out/watch.log &
 watch=$!
 ready "press a pedal" /out/watch.log

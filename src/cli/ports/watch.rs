@@ -9,6 +9,7 @@ use crate::ports::alsa::{Alsa, desk::Desk};
 use crate::ports::names::Port;
 use crate::ports::{Backend, Broken, Cycle, Inbox, Next, Outlet, What};
 use crate::time::Time;
+use std::io::Write;
 
 /// Prints each gesture; ends with Ctrl-C, or when the reader of stdout has gone.
 pub fn watch(desk: Desk, ports: &[Port], rig: Option<&RigWanted>) -> Result<(), Broken> {
@@ -61,7 +62,12 @@ impl Cycle for Watch {
                 continue;
             };
             for line in self.gestures[keyboard].lines(bytes) {
-                if super::print(&format!("{line}\n")).is_err() {
+                // A reader that has gone has seen enough.
+                let mut stdout = std::io::stdout().lock();
+                if writeln!(stdout, "{line}")
+                    .and_then(|()| stdout.flush())
+                    .is_err()
+                {
                     return Next::Leave;
                 }
             }

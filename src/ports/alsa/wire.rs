@@ -32,6 +32,12 @@ impl Wire for SeqWire<'_> {
         }
         written
     }
+
+    /// A program's queue in the kernel that runs over is thrown away whole (sound/core/seq/seq_clientmgr.c,
+    /// snd_seq_read). Hardware never looks full: what its driver cannot hold, it drops without a word.
+    fn loses_when_full(&self) -> bool {
+        true
+    }
 }
 
 impl SeqWire<'_> {

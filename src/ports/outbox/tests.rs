@@ -244,3 +244,47 @@ fn long_trouble_loses_no_owed_message_and_no_order() {
     }
     assert_eq!(sent, heard);
 }
+
+/// A port that throws away what it has not read when it runs over, as a sequencer's queue does.
+impl Wire for Port {
+    fn write(&mut self, _synth: usize, bytes: &[u8]) -> usize {
+        Port::write(self, bytes)
+    }
+
+    fn loses_when_full(&self) -> bool {
+        true
+    }
+}
+
+#[test]
+fn a_port_that_loses_when_full_begins_anew() {
+    let mut outboxes = outboxes(1);
+    let mut port = Port::full();
+    let mut outlet = Outlet {
+        outboxes: &mut outboxes,
+        wire: &mut port,
+    };
+    outlet.send(0, Weight::Note, &note_1());
+    outlet.send(0, Weight::Owed, &OFF_2);
+    outlet.retry();
+    assert!(outlet.is_waiting());
+    assert_eq!(outlet.room_news(0), None, "still full: nobody knows yet");
+
+    port.takes = 1;
+    let mut outlet = Outlet {
+        outboxes: &mut outboxes,
+        wire: &mut port,
+    };
+    outlet.retry();
+    assert_eq!(outlet.room_news(0), Some(Room::Emptied));
+    assert!(!outlet.is_waiting(), "what waited is of no use any more");
+    outlet.forget(0);
+    port.takes = 9;
+    port.heard.clear();
+    let mut outlet = Outlet {
+        outboxes: &mut outboxes,
+        wire: &mut port,
+    };
+    outlet.send(0, Weight::Note, &note_1());
+    assert_eq!(port.heard, [BEND_1, ON_1]);
+}
