@@ -5,3 +5,6 @@ mod fluidsynth;
 
 /// A real sequencer, in a virtual machine.
 mod alsa;
+
+/// Tunings, beats and words on the wire, against published tables.
+mod tables;
