@@ -3,7 +3,7 @@
 use super::support::plans;
 use std::sync::Arc;
 use trued::engine::Plan;
-use trued::engine::plan::Dialect;
+use trued::engine::plan::{Act, ChannelSet, CuePlan, Dialect, Gesture};
 use trued::offline::retune::{self, Recording};
 use trued::offline::score_file::Score;
 use trued::offline::{notes_file, picture};
@@ -130,6 +130,34 @@ fn the_starting_song_is_the_one_asked_for() {
         assert_eq!(recording.notes[0].onset.target.cents(), cents);
         assert_eq!(recording.notes[0].song, song);
     }
+}
+
+#[test]
+fn a_song_change_between_two_notes_of_one_tick_divides_them() {
+    let mut plan = plan(Dialect::ChannelBend);
+    plan.cues.push(CuePlan {
+        from: None,
+        channels: ChannelSet::NONE.with(15),
+        gesture: Gesture::AnyProgram,
+        act: Act::SongByProgram,
+        pass: false,
+    });
+    let bytes = file(
+        TICKS_96,
+        &[&[
+            (0, &[0x90, 64, 90]),
+            (0, &[0xCF, 1]),
+            (0, &[0x90, 69, 90]),
+            (9, &[0x80, 64, 0]),
+        ]],
+    );
+    let (recording, _) = play(plan, &bytes, 0);
+    let seen: Vec<_> = recording
+        .notes
+        .iter()
+        .map(|note| (note.song, note.onset.target.cents()))
+        .collect();
+    assert_eq!(seen, [(0, 6386.0), (1, 6900.0)]);
 }
 
 #[test]

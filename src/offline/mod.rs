@@ -7,6 +7,7 @@
 //! **May know** `stage/`, `engine/`, `tuning/`, `pitch/`, `midi/`, `time`, `limits`.
 //! **Owns** midly, hound, rustysynth. The same score and stage file give the same bytes every time.
 //! **Not here**: ports and clocks (`ports/`), what is said to people about it (`cli/`).
+
 pub mod beats;
 pub mod chart;
 pub mod chart_text;

@@ -46,6 +46,7 @@ pub struct Sounded {
 
 /// So many events of one tick go in before the engine's outbox is emptied.
 const TOGETHER: usize = 128;
+const LONG_BYTES: usize = 256;
 
 /// Plays `score` as if on a keyboard of the plan, beginning with a song of its set; both by place, from 0.
 ///
@@ -65,6 +66,7 @@ pub fn play(plan: Box<Plan>, score: &Score<'_>, song: u16, keyboard: usize) -> R
     let mut player = Player {
         engine: Engine::new(plan),
         score,
+        song: 0,
         sent: Vec::new(),
         notes: Vec::new(),
         open: Vec::new(),
@@ -79,6 +81,10 @@ pub fn play(plan: Box<Plan>, score: &Score<'_>, song: u16, keyboard: usize) -> R
                 player
                     .engine
                     .handle_input(time, Input::Midi { keyboard, bytes });
+                // What came before a song change belongs to the song before it; a long sysex wants the outbox alone.
+                if player.engine.report().song != player.song || bytes.len() > LONG_BYTES {
+                    player.drain(tick, time);
+                }
             }
             player.drain(tick, time);
         }
@@ -104,6 +110,8 @@ pub fn play(plan: Box<Plan>, score: &Score<'_>, song: u16, keyboard: usize) -> R
 struct Player<'a> {
     engine: Engine,
     score: &'a Score<'a>,
+    /// Of the notes being struck, by place in the set.
+    song: u16,
     sent: Vec<Sent>,
     notes: Vec<Sounded>,
     /// Notes whose note-off is still to come, oldest first.
@@ -138,8 +146,9 @@ impl Player<'_> {
         }
     }
 
+    /// Takes everything the engine has to say, and then notes the song it is in.
     fn drain(&mut self, tick: u64, time: Time) {
-        let song = self.engine.report().song;
+        let song = self.song;
         while let Some(output) = self.engine.poll_output() {
             match output {
                 Output::Send { synth, bytes, .. } => {
@@ -162,6 +171,7 @@ impl Player<'_> {
                 }
             }
         }
+        self.song = self.engine.report().song;
     }
 }
 

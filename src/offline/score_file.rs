@@ -44,6 +44,13 @@ impl<'a> Score<'a> {
     /// # Errors
     /// What is wrong and what would be right, for people.
     pub fn read(file: &'a [u8]) -> Result<Score<'a>, String> {
+        // midly turns this frame rate, which none has, about its sign and overflows.
+        if file
+            .windows(13)
+            .any(|at| at.starts_with(b"MThd") && at[12] == 0x80)
+        {
+            return Err(NO_DIVISION.into());
+        }
         let (header, tracks) = midly::parse(file).map_err(|_| {
             "this is no MIDI file; give a standard MIDI file of format 0 or 1".to_string()
         })?;
@@ -220,6 +227,9 @@ fn make_clock(timing: Timing, meta: &[(u64, MetaMessage<'_>)]) -> Result<Clock, 
     })
 }
 
+const NO_DIVISION: &str = "this MIDI file does not say how it divides time into ticks; \
+                           export it again with 480 ticks a quarter";
+
 fn damaged(track: usize) -> String {
     format!(
         "track {} of this MIDI file is damaged or breaks off; export the file again from the program that made it",
@@ -233,10 +243,7 @@ fn check_division(timing: Timing) -> Result<(), String> {
         Timing::Timecode(_, ticks) => ticks == 0,
     };
     if none {
-        return Err(
-            "this MIDI file divides time into 0 ticks; export it again with 480 ticks a quarter"
-                .into(),
-        );
+        return Err(NO_DIVISION.into());
     }
     Ok(())
 }

@@ -165,3 +165,37 @@ fn sysex_is_written_with_its_length_and_real_time_as_an_escape() {
     assert!(holds(&[0, 0xF0, 5, 0x43, 0x12, 0, 7, 0xF7]));
     assert!(holds(&[0, 0xF7, 1, 0xFA]));
 }
+
+#[test]
+fn no_damage_makes_it_panic_and_what_is_read_can_be_written() {
+    let whole = crate::offline::demo::score();
+    let mut seed = 0x2545_F491_4F6C_DD1D_u64;
+    let mut roll = |below: usize| {
+        seed ^= seed << 13;
+        seed ^= seed >> 7;
+        seed ^= seed << 17;
+        (seed >> 16) as usize % below
+    };
+    let mut good = 0;
+    for _ in 0..20_000 {
+        let mut bytes = whole.clone();
+        for _ in 0..1 + roll(4) {
+            let at = if roll(3) == 0 {
+                roll(30)
+            } else {
+                roll(bytes.len())
+            };
+            bytes[at] = roll(256) as u8;
+        }
+        if roll(4) == 0 {
+            bytes.truncate(roll(bytes.len()));
+        }
+        if let Ok(score) = Score::read(&bytes) {
+            good += 1;
+            let end = score.clock.time(score.end_tick);
+            assert!(score.clock.tick_not_before(end) <= score.end_tick);
+            assert!(score.write(&[]).is_ok());
+        }
+    }
+    assert!(good > 1000, "only {good} were read at all");
+}
