@@ -1,8 +1,10 @@
 //! Stage files: `bad/*.yaml` beside `bad/*.txt` with the exact complaints, and everything that must load.
 
 mod bad;
+mod check;
 mod config;
 mod forms;
+mod mangled;
 mod plans;
 
 use std::path::{Path, PathBuf};
