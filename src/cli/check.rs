@@ -99,8 +99,16 @@ fn stage_text(stage: &Stage) -> String {
     let mut text = String::new();
     line(&mut text, format_args!("{}: no mistakes", stage.name));
     text.push_str("\nsongs\n");
+    let plan = stage.plan();
     for (index, song) in stage.set.iter().enumerate() {
-        song_text(&mut text, index, song, &stage.set[..index]);
+        let before = &stage.set[..index];
+        match before.iter().position(|other| other.title == song.title) {
+            Some(first) => line(
+                &mut text,
+                format_args!("  {}  {} (as {})", index + 1, song.title, first + 1),
+            ),
+            None => song_text(&mut text, index + 1, song, outlook::crowding(&plan, index)),
+        }
     }
     text.push_str("\nkeyboards\n");
     for keyboard in &stage.keyboards {
@@ -110,7 +118,7 @@ fn stage_text(stage: &Stage) -> String {
         );
     }
     text.push_str("\nsynths\n");
-    for (synth, outlook) in stage.synths.iter().zip(outlook::synths(&stage.plan())) {
+    for (synth, outlook) in stage.synths.iter().zip(outlook::synths(&plan)) {
         synth_text(&mut text, synth, &outlook);
     }
     if !stage.advice.is_empty() {
@@ -122,15 +130,7 @@ fn stage_text(stage: &Stage) -> String {
     text
 }
 
-fn song_text(text: &mut String, index: usize, song: &Song, before: &[Song]) {
-    let number = index + 1;
-    if let Some(first) = before.iter().position(|other| other.title == song.title) {
-        line(
-            text,
-            format_args!("  {number}  {} (as {})", song.title, first + 1),
-        );
-        return;
-    }
+fn song_text(text: &mut String, number: usize, song: &Song, crowding: Option<String>) {
     let about = song.tuning_about.as_deref();
     let about = about.map_or(String::new(), |about| format!(": {about}"));
     line(text, format_args!("  {number}  {}", song.title));
@@ -143,6 +143,9 @@ fn song_text(text: &mut String, index: usize, song: &Song, before: &[Song]) {
         for pair in pairs {
             line(text, format_args!("     in {named}: {pair}"));
         }
+    }
+    if let Some(crowding) = crowding {
+        line(text, format_args!("     {crowding}"));
     }
 }
 
@@ -176,8 +179,12 @@ fn wish(device: &Device, keyboard: bool) -> String {
 }
 
 fn stage_json(stage: &Stage) -> Value {
-    let songs: Vec<Value> = stage.set.iter().map(song_json).collect();
-    let synths = stage.synths.iter().zip(outlook::synths(&stage.plan()));
+    let plan = stage.plan();
+    let songs = stage.set.iter().enumerate();
+    let songs: Vec<Value> = songs
+        .map(|(index, song)| song_json(song, outlook::crowding(&plan, index)))
+        .collect();
+    let synths = stage.synths.iter().zip(outlook::synths(&plan));
     let synths: Vec<Value> = synths
         .map(|(synth, outlook)| synth_json(synth, &outlook))
         .collect();
@@ -196,7 +203,7 @@ fn stage_json(stage: &Stage) -> Value {
     })
 }
 
-fn song_json(song: &Song) -> Value {
+fn song_json(song: &Song, crowding: Option<String>) -> Value {
     let pairs = song.pairs().into_iter().flat_map(|(key, pairs)| {
         pairs.into_iter().map(move |pair| {
             json!({
@@ -214,6 +221,7 @@ fn song_json(song: &Song) -> Value {
         "about": song.tuning_about,
         "c4": song.c4(),
         "circle": song.circle(),
+        "crowding": crowding,
         "pairs": pairs.collect::<Vec<Value>>(),
     })
 }

@@ -33,8 +33,9 @@ impl Fifth {
 
     /// `35.7 c wide`, or `pure`.
     fn size(&self) -> String {
+        // Pitches are rounded to the microcent, so a pure fifth may miss by one.
         match narrow_or_wide(self.from_pure).as_str() {
-            "pure" => "pure".to_string(),
+            _ if self.from_pure.abs().microcents() <= 2 => "pure".to_string(),
             typed => {
                 let direction = if typed.starts_with("wide") {
                     "wide"

@@ -1,8 +1,9 @@
 //! The paper side: a stage file in, a plan out.
 //!
-//! **What this room is**: YAML to a tree with paths (`node`), the tree to checked types with every complaint at once
-//! (`complaint`, `locate`, `slips`), checked types to a [`Plan`](crate::engine::Plan).
-//! **Start reading at** [`Stage`].
+//! **What this room is**: YAML to a tree (`node`), where it stumbles in words of our own (`slips`, `cuts`, `yaml_errors`);
+//! the tree, section by section, to checked types with every complaint at once (`rig`, `songs`, `tunings`, `cues`;
+//! `complaint`, `locate`); those to a [`Plan`](crate::engine::Plan) (`compile`, `pools`); what to expect of it (`outlook`).
+//! **Start reading at** [`Stage`], then `compile.rs`.
 //! **May know** `engine/` (its plan), `tuning/`, `pitch/`, `intonation/`, `limits`.
 //! **Owns** serde_yaml. A [`Stage`] cannot be wrong.
 //! **Not here**: who reads the file again while playing (`daemon/`).

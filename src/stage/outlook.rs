@@ -125,6 +125,37 @@ impl Song {
     }
 }
 
+/// Where a song has more different bends within five octaves than a part has channels: what then gives way.
+pub fn crowding(plan: &Plan, song: usize) -> Option<String> {
+    let tuning = &plan.set.get(song)?.tuning;
+    let parts = plan.parts.iter().filter(|part| part.tune);
+    let crowded = parts.filter_map(|part| {
+        let (low, high) = part.keys;
+        let synth = &plan.synths[part.to.index()];
+        let mut bends: Vec<u16> = Key::all()
+            .filter(|key| EVERY_KEYBOARD.contains(&key.number()) && (low..=high).contains(key))
+            .filter_map(|key| tuning.pitch(key))
+            .filter_map(|pitch| {
+                let wanted = pitch + part.offset;
+                let bend = wanted - Pitch::of_key(wanted.nearest_key()?);
+                Some(Bend::encode(bend, synth.bend_range).0.value())
+            })
+            .collect();
+        bends.sort_unstable();
+        bends.dedup();
+        let channels = part.pool.count() as usize;
+        (bends.len() > channels).then(|| {
+            format!(
+                "{} different bends and {channels} channels on {}: with more than {channels} of them held at \
+                 once, one gives way",
+                bends.len(),
+                synth.name
+            )
+        })
+    });
+    crowded.into_iter().next()
+}
+
 /// Keys that every keyboard has and that stand outside of what MIDI can say.
 fn out_of_reach(tuning: &Tuning) -> Option<String> {
     let lost: Vec<Key> = Key::all()

@@ -53,6 +53,15 @@ fn the_chords_of_the_key_are_measured() {
 }
 
 #[test]
+fn more_bends_than_channels_is_said() {
+    let (code, out, _) = check(&["config/more-than-twelve.yaml"]);
+    assert_eq!(code, 0);
+    // Nineteen keys to the octave repeat after an octave; an MPE zone of sixteen has fifteen members.
+    let crowded = "19 different bends and 15 channels on glass";
+    assert_eq!(out.matches(crowded).count(), 1, "{out}");
+}
+
+#[test]
 fn a_bad_file_is_told_on_stderr() {
     let (code, out, err) = check(&["tests/stage/bad/key-twice.yaml"]);
     assert_eq!((code, out.as_str()), (65, ""));

@@ -78,6 +78,28 @@ fn texts_made_to_hurt_are_refused_soon() {
 }
 
 #[test]
+fn a_set_has_its_limit() {
+    let set: String = (0..513).map(|_| "  - A song\n").collect();
+    let text = format!("songs: {{A song: }}\nset:\n{set}");
+    let told = Stage::parse(&file("tests/stage/here.yaml"), &text)
+        .err()
+        .expect("too many");
+    assert_eq!(told.len(), 1);
+    assert_eq!(
+        (told[0].line, told[0].wrong.as_str()),
+        (515, "there are 513 songs tonight")
+    );
+    let book: String = (0..513)
+        .map(|number| format!("  Song {number}: {{}}\n"))
+        .collect();
+    let text = format!("songs:\n{book}");
+    let told = Stage::parse(&file("tests/stage/here.yaml"), &text)
+        .err()
+        .expect("too many");
+    assert_eq!(told[0].right, "a set holds at most 512");
+}
+
+#[test]
 fn a_file_that_is_not_text_says_so() {
     let folder = std::env::temp_dir().join(format!("trued-not-text-{}", std::process::id()));
     fs::create_dir_all(&folder).expect("can be made");
