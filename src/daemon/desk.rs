@@ -34,7 +34,7 @@ impl Desk {
     pub fn run(mut self) {
         // What changed while the first connections were made is looked at once more.
         let mut changes = 0;
-        let mut overruns = 0;
+        let mut losses = (0, 0);
         while !self.done.load(Ordering::Acquire) {
             for _ in self.signals.pending() {
                 self.stop();
@@ -45,14 +45,23 @@ impl Desk {
                 changes = now;
                 self.reconnect();
             }
-            let now = self.tally.overruns.load(Ordering::Relaxed);
-            if now != overruns {
-                overruns = now;
-                error!("MIDI came faster than it could be read and was lost; every key was let go");
-            }
+            losses = self.log_losses(losses);
             std::thread::sleep(LOOK);
         }
         self.log_news();
+    }
+
+    /// Input that was lost since `before`; gives the counts for the next look.
+    fn log_losses(&self, before: (u64, u64)) -> (u64, u64) {
+        let overruns = self.tally.overruns.load(Ordering::Relaxed);
+        let too_long = self.tally.too_long.load(Ordering::Relaxed);
+        if overruns != before.0 {
+            error!("MIDI came faster than it could be read and was lost; every key was let go");
+        }
+        if too_long != before.1 {
+            warn!("a message from a keyboard was too long and was left out");
+        }
+        (overruns, too_long)
     }
 
     fn stop(&mut self) {

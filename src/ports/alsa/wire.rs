@@ -33,8 +33,8 @@ impl Wire for SeqWire<'_> {
         written
     }
 
-    /// A program's queue in the kernel that runs over is thrown away whole (sound/core/seq/seq_clientmgr.c,
-    /// snd_seq_read). Hardware never looks full: what its driver cannot hold, it drops without a word.
+    /// A program's queue in the kernel that runs over is thrown away whole (seen in tests/outside/alsa.rs). Hardware
+    /// never looks full: what its driver cannot hold, it drops without a word (from memory of the kernel's seq_midi).
     fn loses_when_full(&self) -> bool {
         true
     }
