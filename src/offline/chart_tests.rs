@@ -1,7 +1,7 @@
 //! What charts say, as fields and as a sheet.
 
-use super::super::chart_text::sheet;
 use super::*;
+use crate::offline::chart_text::sheet;
 use crate::pitch::Hertz;
 use crate::stage::complaint::{Complaints, Trail};
 use crate::stage::tunings::Library;

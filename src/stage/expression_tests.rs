@@ -75,82 +75,85 @@ fn references_name_a_key_or_mean_a4() {
     }
 }
 
+/// Expression, what is wrong, what would be right.
+const BAD: &[(&str, &str, &str)] = &[
+    ("", "no pitch is written here", "a pitch is written 3/2"),
+    (
+        "701,955 c",
+        "`701,955` has a comma in it",
+        "decimals take a point: `701.955`",
+    ),
+    (
+        "145",
+        "`145` has no unit",
+        "cents are written `145 c`, a ratio `145/1`",
+    ),
+    (
+        "1.5",
+        "`1.5` has no unit",
+        "cents are written `1.5 c`, a ratio such as 3/2",
+    ),
+    ("3/0", "`3/0` has a zero in it", "whole numbers from 1"),
+    ("0/2", "`0/2` has a zero in it", "whole numbers from 1"),
+    (
+        "1.5/1",
+        "`1.5/1` is not of whole numbers",
+        "a ratio such as 3/2",
+    ),
+    (
+        "narrow 1/4 sintonic",
+        "`sintonic` is neither",
+        "did you mean `syntonic`?",
+    ),
+    (
+        "narrow 1/4 Pythagorean",
+        "`Pythagorean` is neither",
+        "did you mean `pythagorean`?",
+    ),
+    (
+        "1/4 narrow",
+        "the wrong way round",
+        "write `narrow 1/4 syntonic`",
+    ),
+    (
+        "narow 1/4 syntonic",
+        "`narow` is not known",
+        "did you mean `narrow`?",
+    ),
+    (
+        "narrow syntonic",
+        "has no part before it",
+        "`narrow 1/4 syntonic`",
+    ),
+    ("narrow 1/0 syntonic", "divided by zero", "1/4"),
+    ("701 cents", "`cents` is not how", "write `701 c`"),
+    ("2^7/12", "no brackets", "2^(7/12)"),
+    ("2^", "breaks off", "2^(7/12)"),
+    ("2^(7/0)", "zero below", "2^(7/12)"),
+    ("0^(1/2)", "has a zero in it", "whole numbers"),
+    ("3/2 5/4", "`5` follows without + or -", "join terms"),
+    ("3/2 +", "breaks off after a sign", "a pitch is written"),
+    (
+        "3:2",
+        "`:` has no place in a pitch",
+        "a pitch is written 3/2",
+    ),
+    ("440 Hz + 440 Hz", "two frequencies", "keep one"),
+    ("1/1 - 440 Hz", "taken away", "frequency first"),
+    ("0 Hz", "cannot be a frequency", "above 0"),
+    ("30000 c", "further than 20 octaves", "check the numbers"),
+    ("2^9999", "further than 20 octaves", "check the numbers"),
+    (
+        "12345678901234567/2",
+        "more than 15 digits",
+        "a power such as 3^53",
+    ),
+    ("1.2.3 c", "is not a number", "a pitch is written"),
+];
+
 #[test]
 fn bad_expressions_say_what_would_be_right() {
-    for (text, wrong, right) in [
-        ("", "no pitch is written here", "a pitch is written 3/2"),
-        (
-            "701,955 c",
-            "`701,955` has a comma in it",
-            "decimals take a point: `701.955`",
-        ),
-        (
-            "145",
-            "`145` has no unit",
-            "cents are written `145 c`, a ratio `145/1`",
-        ),
-        (
-            "1.5",
-            "`1.5` has no unit",
-            "cents are written `1.5 c`, a ratio such as 3/2",
-        ),
-        ("3/0", "`3/0` has a zero in it", "whole numbers from 1"),
-        ("0/2", "`0/2` has a zero in it", "whole numbers from 1"),
-        (
-            "1.5/1",
-            "`1.5/1` is not of whole numbers",
-            "a ratio such as 3/2",
-        ),
-        (
-            "narrow 1/4 sintonic",
-            "`sintonic` is neither",
-            "did you mean `syntonic`?",
-        ),
-        (
-            "narrow 1/4 Pythagorean",
-            "`Pythagorean` is neither",
-            "did you mean `pythagorean`?",
-        ),
-        (
-            "1/4 narrow",
-            "the wrong way round",
-            "write `narrow 1/4 syntonic`",
-        ),
-        (
-            "narow 1/4 syntonic",
-            "`narow` is not known",
-            "did you mean `narrow`?",
-        ),
-        (
-            "narrow syntonic",
-            "has no part before it",
-            "`narrow 1/4 syntonic`",
-        ),
-        ("narrow 1/0 syntonic", "divided by zero", "1/4"),
-        ("701 cents", "`cents` is not how", "write `701 c`"),
-        ("2^7/12", "no brackets", "2^(7/12)"),
-        ("2^", "breaks off", "2^(7/12)"),
-        ("2^(7/0)", "zero below", "2^(7/12)"),
-        ("0^(1/2)", "has a zero in it", "whole numbers"),
-        ("3/2 5/4", "`5` follows without + or -", "join terms"),
-        ("3/2 +", "breaks off after a sign", "a pitch is written"),
-        (
-            "3:2",
-            "`:` has no place in a pitch",
-            "a pitch is written 3/2",
-        ),
-        ("440 Hz + 440 Hz", "two frequencies", "keep one"),
-        ("1/1 - 440 Hz", "taken away", "frequency first"),
-        ("0 Hz", "cannot be a frequency", "above 0"),
-        ("30000 c", "further than 20 octaves", "check the numbers"),
-        ("2^9999", "further than 20 octaves", "check the numbers"),
-        (
-            "12345678901234567/2",
-            "more than 15 digits",
-            "a power such as 3^53",
-        ),
-        ("1.2.3 c", "is not a number", "a pitch is written"),
-    ] {
+    for (text, wrong, right) in BAD {
         let mistake = Expression::parse(text).expect_err(text);
         assert!(mistake.wrong.contains(wrong), "{text}: {}", mistake.wrong);
         assert!(mistake.right.contains(right), "{text}: {}", mistake.right);

@@ -251,3 +251,7 @@ fn filed_names(folder: &Path) -> Vec<String> {
 #[cfg(test)]
 #[path = "tunings_tests.rs"]
 mod tests;
+
+#[cfg(test)]
+#[path = "tunings_bad_tests.rs"]
+mod bad_tests;

@@ -55,8 +55,28 @@ pub(super) fn pitches(
             return None;
         }
     };
+    let steps = above_first(&pitches, heard_at, complaints)?;
+    if let (Some(last), Some((_, item))) = (steps.last(), pitches.last())
+        && last.interval() == period.interval()
+    {
+        complaints.add(
+            &item.trail,
+            "this is the period, where the scale begins again",
+            "leave it out",
+        );
+        return None;
+    }
+    Some((from_steps(steps, period), heard_at))
+}
+
+/// The pitches as distances from the first.
+fn above_first(
+    pitches: &[(Expression, &At<'_>)],
+    heard_at: Option<Hertz>,
+    complaints: &mut Complaints,
+) -> Option<Vec<Log>> {
     let mut steps = Vec::with_capacity(pitches.len());
-    for (pitch, item) in &pitches {
+    for (pitch, item) in pitches {
         steps.push(match (pitch, heard_at) {
             (Expression::Distance(above), _) => *above,
             (Expression::Absolute(hertz, more), Some(tonic)) => {
@@ -72,17 +92,7 @@ pub(super) fn pitches(
             }
         });
     }
-    if let (Some(last), Some((_, item))) = (steps.last(), pitches.last())
-        && last.interval() == period.interval()
-    {
-        complaints.add(
-            &item.trail,
-            "this is the period, where the scale begins again",
-            "leave it out",
-        );
-        return None;
-    }
-    Some((from_steps(steps, period), heard_at))
+    Some(steps)
 }
 
 /// A distance upwards.
