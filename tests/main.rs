@@ -38,3 +38,6 @@ mod retune;
 
 /// The binary as players type it: files, words and exit codes.
 mod command_line;
+
+/// The chart on the command line.
+mod chart;

@@ -77,6 +77,7 @@ fn references_name_a_key_or_mean_a4() {
 
 /// Expression, what is wrong, what would be right.
 const BAD: &[(&str, &str, &str)] = &[
+    ("3/2 c", "is a ratio with a unit", "leave out `c`"),
     ("", "no pitch is written here", "a pitch is written 3/2"),
     (
         "701,955 c",
@@ -181,4 +182,15 @@ fn distances_from_pure_print_as_they_are_typed() {
         narrow_or_wide(Interval::from_microcents(35_682_000)),
         "wide 35.7 c"
     );
+}
+
+proptest::proptest! {
+    /// Whatever is typed, there is an answer: no overflow, no division by zero.
+    #[test]
+    fn nothing_typed_can_break_it(text in "[0-9 ./^()+,-]{0,24}|([0-9]{1,16}[./^( )+-]{0,2}|narrow |wide | syntonic| schisma| c| Hz){0,8}") {
+        if let Ok(Expression::Distance(log)) = Expression::parse(&text) {
+            proptest::prop_assert!(log.interval().abs() <= Interval::OCTAVE * OCTAVES_MAX);
+        }
+        let _ = hertz(&text);
+    }
 }

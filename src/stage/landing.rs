@@ -49,8 +49,10 @@ pub fn where_c4_lands(scale: &Scale, placement: &Placement, tuning: &Tuning) -> 
         .ok()
         .and_then(|tuning| tuning.pitch(Key::C4))
     {
-        Some(pitch) => format!("; pin: tonic would put C4 at {:.2} Hz", pitch.hertz()),
-        None => String::new(),
+        Some(pitch) if (pitch - c4).abs() >= SAME => {
+            format!("; pin: tonic would put C4 at {:.2} Hz", pitch.hertz())
+        }
+        _ => String::new(),
     };
     format!("{sounds}, {off} {at}{because}{other}")
 }

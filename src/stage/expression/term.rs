@@ -88,7 +88,7 @@ fn ratio(over: &Decimal, under: &Decimal) -> Result<Log, Mistake> {
     }
 }
 
-/// `1/4 syntonic`: a part of a comma; `3/2 c` is a slip.
+/// `1/4 syntonic`: a part of a comma. `3/2 c` and `1/4 narrow` are slips.
 fn part(over: &Decimal, under: &Decimal, word: &str) -> Result<Log, Mistake> {
     if word == "narrow" || word == "wide" {
         return Err(Mistake::new(
@@ -97,6 +97,15 @@ fn part(over: &Decimal, under: &Decimal, word: &str) -> Result<Log, Mistake> {
                 over.typed, under.typed
             ),
             format!("write `{word} {}/{} syntonic`", over.typed, under.typed),
+        ));
+    }
+    if word == "c" || word.eq_ignore_ascii_case("hz") {
+        return Err(Mistake::new(
+            format!(
+                "`{}/{} {word}` is a ratio with a unit",
+                over.typed, under.typed
+            ),
+            format!("leave out `{word}`, or write a number before it in place of the ratio"),
         ));
     }
     let Some((_, above, below)) = COMMAS.iter().find(|(name, ..)| *name == word) else {
