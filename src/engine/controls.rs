@@ -19,7 +19,7 @@ impl Engine {
             }
             controller::RESET_ALL => self.reset_all(now, hand),
             controller::LOCAL => {
-                self.to_gesture_channels(hand, |channel| {
+                self.tell_gesture_channels(hand, |channel| {
                     [status::CONTROLLER | channel, number, value]
                 });
             }
@@ -215,9 +215,9 @@ impl Engine {
         let source = self.source(hand);
         let (wheel, pressure) = (source.wheel, source.pressure);
         source.pedals = [0; PEDALS.len()];
-        for which in 0..PEDALS.len() {
+        for (which, pedal) in PEDALS.iter().enumerate() {
             self.for_parts(hand, |engine, index, part| {
-                let known = engine.parts[index].controllers[PEDALS[which] as usize] != UNSAID;
+                let known = engine.parts[index].controllers[*pedal as usize] != UNSAID;
                 if part.pass.pedals && known {
                     engine.set_pedal(now, index, which);
                 }

@@ -1,7 +1,7 @@
 //! Programs and parameters: what a player sets once, and what the engine answers to instead of passing on.
 
 use super::channel::{Program, RESET_VALUES, UNSAID};
-use super::dialect::{gesture_channels, members, on_members};
+use super::dialect::gesture_channels;
 use super::keyboard::Select;
 use super::outbox::{Bundle, Outbox};
 use super::plan::{ChannelSet, PartPlan};
@@ -84,7 +84,7 @@ impl Engine {
         let (Select::Registered(number) | Select::NonRegistered(number)) = source.select else {
             return;
         };
-        self.to_gesture_channels(hand, |channel| sequence(channel, number, [msb, lsb]));
+        self.tell_gesture_channels(hand, |channel| sequence(channel, number, [msb, lsb]));
     }
 
     /// Data increment and decrement, passed on with the selection they belong to.
@@ -96,7 +96,7 @@ impl Engine {
             Select::NonRegistered(number) => (number, [controller::NRPN_MSB, controller::NRPN_LSB]),
             _ => return,
         };
-        self.to_gesture_channels(hand, |channel| {
+        self.tell_gesture_channels(hand, |channel| {
             let s = status::CONTROLLER | channel;
             let null = [controller::RPN_MSB, controller::RPN_LSB];
             #[rustfmt::skip]
@@ -121,7 +121,7 @@ impl Engine {
     }
 
     /// Sends bytes to each of those channels, once.
-    pub(super) fn to_gesture_channels<const N: usize>(
+    pub(super) fn tell_gesture_channels<const N: usize>(
         &mut self,
         hand: Hand,
         bytes: impl Fn(u8) -> [u8; N],
