@@ -123,6 +123,14 @@ impl Channel {
         Some(self.released_at.map_or(Time::START, |at| at + tail))
     }
 
+    /// A note of a key has started on it.
+    pub fn take(&mut self, now: Time, key: Key) {
+        self.last_key = Some(key);
+        self.struck_at = now;
+        self.released_at.get_or_insert(now);
+        self.held = self.held.saturating_add(1);
+    }
+
     /// Forgets what the receiver was told, because it may have forgotten too.
     pub fn unsay(&mut self) {
         self.bend = None;

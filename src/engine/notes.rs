@@ -1,14 +1,13 @@
 //! Notes: started at the right pitch, ended where they were started.
 
-use super::channel::{Due, UNSAID};
+use super::beforehand::bend_for;
 use super::choose::{Choice, Cost, Want, choose};
 use super::dialect::{self, on_members};
 use super::outbox::Bundle;
 use super::part::owner_of;
-use super::plan::{ChannelSet, KeyboardId, PartId, PartPlan, SynthId};
-use super::synth::{Synth, bend_message};
+use super::plan::{KeyboardId, PartId, PartPlan, SynthId};
 use super::traffic::{Onset, Weight};
-use super::voices::{Voice, Voices};
+use super::voices::Voice;
 use super::{Engine, Hand};
 use crate::midi::{controller, status};
 use crate::pitch::word::Bend;
@@ -21,6 +20,22 @@ use crate::tuning::Key;
 struct Luggage {
     velocity_low: Option<u8>,
     portamento_from: Option<u8>,
+}
+
+impl Luggage {
+    /// A bundle that begins with it, on the channel that the note takes.
+    fn bundle(self, channel: u8) -> Bundle {
+        let mut bundle = Bundle::new();
+        for (number, value) in [
+            (controller::PORTAMENTO_FROM, self.portamento_from),
+            (controller::VELOCITY_LOW, self.velocity_low),
+        ] {
+            if let Some(value) = value {
+                bundle.add(&[status::CONTROLLER | channel, number, value]);
+            }
+        }
+        bundle
+    }
 }
 
 /// A key press on its way to a part.
@@ -54,7 +69,7 @@ impl Engine {
             }
         }
         for synth in self.drum_synths(hand).iter() {
-            self.start_drum(now, synth, &press);
+            self.start_drum(synth, &press);
         }
     }
 
@@ -126,50 +141,26 @@ impl Engine {
 
     /// Tells a chosen channel all that must be in force, then starts the note on it.
     fn sound(&mut self, now: Time, part: &PartPlan, press: &Press, want: &Want, number: u8) {
-        let index = part.to.index();
         self.say_what_a_note_needs(now, part.to, number);
-        let portamento = press
+        let portamento_from = press
             .luggage
             .portamento_from
             .and_then(|from| self.target(part, Key::new(from)?)?.nearest_key());
+        let luggage = Luggage {
+            portamento_from,
+            ..press.luggage
+        };
         let pressure = self.pressure_for(part, part.to, number, want.part);
-        let out = &mut self.out;
-        let synth = &mut self.synths[index];
+        let synth = &mut self.synths[part.to.index()];
         let range = synth.rig.bend_range;
         let word = Bend::encode(want.offset, range).0;
-        let channel = &mut synth.channels[number as usize];
-        if channel.held == 0 || channel.word != word {
-            channel.offset = want.offset;
-        }
-        let (bend, clipped) = Bend::encode(channel.offset + want.wheel, range);
-        out.counters.clipped += clipped as u64;
-        let mut bundle = Bundle::new();
-        for (cc, value) in [
-            (controller::PORTAMENTO_FROM, portamento),
-            (controller::VELOCITY_LOW, press.luggage.velocity_low),
-        ] {
-            if let Some(value) = value {
-                bundle.add(&[status::CONTROLLER | number, cc, value]);
-            }
-        }
-        if channel.pressure != pressure {
-            channel.pressure = pressure;
-            bundle.add(&[status::PRESSURE | number, pressure]);
-        }
-        if channel.bend != Some(bend) {
-            out.counters.bends += (channel.word != word || channel.bend.is_none()) as u64;
-            channel.bend = Some(bend);
-            bundle.add(&bend_message(number, bend));
-        }
-        channel.word = word;
-        channel.last_key = Some(want.key);
-        channel.struck_at = now;
-        channel.released_at.get_or_insert(now);
-        channel.held = channel.held.saturating_add(1);
+        let mut bundle = luggage.bundle(number);
+        bend_for(synth, want, number, pressure, &mut bundle, &mut self.out);
         bundle.add(&[status::NOTE_ON | number, want.number, press.velocity]);
-        synth.send(Weight::Note, bundle.bytes(), out);
-        out.counters.notes += 1;
-        out.onset(Onset {
+        synth.send(Weight::Note, bundle.bytes(), &mut self.out);
+        synth.channel(number).take(now, want.key);
+        self.out.counters.notes += 1;
+        self.out.onset(Onset {
             part: want.part,
             keyboard: press.hand.keyboard,
             key: press.key,
@@ -180,11 +171,20 @@ impl Engine {
             target: want.target(),
             sent: Pitch::of_key(want.number) + word.decode(range),
         });
+        let voice = self.voice(press, part.to, number, want.number);
         self.voices.add(Voice {
             part: want.part,
-            synth: part.to,
-            channel: number,
-            number: want.number,
+            ..voice
+        });
+    }
+
+    /// A voice for a press that has just been started.
+    fn voice(&self, press: &Press, synth: SynthId, channel: u8, number: u8) -> Voice {
+        Voice {
+            part: PartId::new(0).expect("there is a part"),
+            synth,
+            channel,
+            number,
             velocity: press.velocity,
             pressure: 0,
             keyboard: press.hand.keyboard,
@@ -194,79 +194,29 @@ impl Engine {
             down: true,
             latched: false,
             drum: false,
-        });
-    }
-
-    /// Set-up that is still due on a channel, then the controllers it has missed while it was silent.
-    fn say_what_a_note_needs(&mut self, now: Time, id: SynthId, number: u8) {
-        if self.synths[id.index()].zone_due || self.manager_due(id) {
-            self.say_manager(now, id);
         }
-        if self.synths[id.index()].channels[number as usize].due != Due::Nothing {
-            self.say_channel(now, id, number);
-        }
-        self.catch_up(id, number);
     }
 
-    /// The pressure a channel should have while a new note starts on it: nothing of the old notes may colour it.
-    pub(super) fn pressure_for(
-        &self,
-        part: &PartPlan,
-        id: SynthId,
-        number: u8,
-        part_id: PartId,
-    ) -> u8 {
-        let rig = &self.synths[id.index()].rig;
-        let of_part = if on_members(rig, part) {
-            self.parts[part_id.index()].pressure
-        } else {
-            0
-        };
-        let of_keys = if rig.keeps_pitch() {
-            self.voices
-                .iter()
-                .filter(|v| v.synth == id && v.channel == number)
-                .map(|v| v.pressure)
-                .max()
-                .unwrap_or(0)
-        } else {
-            0
-        };
-        of_part.max(of_keys)
-    }
-
-    fn start_drum(&mut self, _now: Time, id: SynthId, press: &Press) {
+    fn start_drum(&mut self, id: SynthId, press: &Press) {
         let synth = &self.synths[id.index()];
         if !synth.up || synth.tight || self.stopping || self.voices.full() {
             self.out.counters.refused += 1;
             return;
         }
         let channel = press.hand.channel;
-        let mut bundle = Bundle::new();
-        if let Some(low) = press.luggage.velocity_low {
-            bundle.add(&[status::CONTROLLER | channel, controller::VELOCITY_LOW, low]);
-        }
-        bundle.add(&[
-            status::NOTE_ON | channel,
-            press.key.number(),
-            press.velocity,
-        ]);
+        let luggage = Luggage {
+            portamento_from: None,
+            ..press.luggage
+        };
+        let mut bundle = luggage.bundle(channel);
+        let key = press.key.number();
+        bundle.add(&[status::NOTE_ON | channel, key, press.velocity]);
         synth.send(Weight::Note, bundle.bytes(), &mut self.out);
         self.out.counters.notes += 1;
+        let voice = self.voice(press, id, channel, key);
         self.voices.add(Voice {
-            part: PartId::new(0).expect("there is a part"),
-            synth: id,
-            channel,
-            number: press.key.number(),
-            velocity: press.velocity,
-            pressure: 0,
-            keyboard: press.hand.keyboard,
-            heard_on: channel,
-            key: press.key,
-            strike: self.strikes,
-            down: true,
-            latched: false,
             drum: true,
+            ..voice
         });
     }
 
@@ -324,14 +274,11 @@ impl Engine {
         let damper = pedal_held(controller::DAMPER);
         let sostenuto = voice.latched && pedal_held(controller::SOSTENUTO);
         let synth = &mut self.synths[voice.synth.index()];
-        let mut bundle = Bundle::new();
-        if let Some(low) = luggage {
-            bundle.add(&[
-                status::CONTROLLER | voice.channel,
-                controller::VELOCITY_LOW,
-                low,
-            ]);
-        }
+        let luggage = Luggage {
+            velocity_low: luggage,
+            portamento_from: None,
+        };
+        let mut bundle = luggage.bundle(voice.channel);
         bundle.add(&[status::NOTE_OFF | voice.channel, voice.number, velocity]);
         synth.send(Weight::Owed, bundle.bytes(), &mut self.out);
         if voice.drum {
@@ -353,35 +300,6 @@ impl Engine {
         }
     }
 
-    /// Tells a channel every controller of its part that it has not heard yet.
-    pub(super) fn catch_up(&mut self, id: SynthId, number: u8) {
-        let Some((part_id, _)) = self.part_of(id, number) else {
-            return;
-        };
-        let synth = &mut self.synths[id.index()];
-        if synth.rig.manager().is_some() {
-            return; // under MPE the manager hears every controller at once
-        }
-        let settings = &self.parts[part_id.index()];
-        if synth.channels[number as usize].version == settings.version {
-            return;
-        }
-        synth.channels[number as usize].version = settings.version;
-        if settings.pedal_down(controller::SOSTENUTO) {
-            latch(
-                synth,
-                number,
-                ChannelSet::NONE.with(number),
-                &mut self.voices,
-            );
-        }
-        for (cc, value) in settings.controllers.iter().enumerate() {
-            if *value != UNSAID {
-                synth.controller(number, cc as u8, *value, Weight::Owed, &mut self.out);
-            }
-        }
-    }
-
     /// The part whose own channel this is.
     pub(super) fn part_of(&self, id: SynthId, number: u8) -> Option<(PartId, PartPlan)> {
         let owner = owner_of(&self.plan.parts, id, number)?;
@@ -391,16 +309,5 @@ impl Engine {
     /// Ends everything a keyboard holds.
     pub(super) fn release_keyboard(&mut self, now: Time, keyboard: KeyboardId) {
         self.release(now, 64, None, |v| v.keyboard == keyboard && v.down);
-    }
-}
-
-/// To be asked before a channel is told that the sostenuto pedal is down: if the receiver sees it go down only now, it
-/// latches what is held on `governed` now, whenever the player pressed it.
-pub(super) fn latch(synth: &Synth, channel: u8, governed: ChannelSet, voices: &mut Voices) {
-    let told = synth.channels[channel as usize].controllers[controller::SOSTENUTO as usize];
-    if told == UNSAID || told < 64 {
-        for voice in voices.iter_mut() {
-            voice.latched |= voice.synth == synth.id && governed.has(voice.channel);
-        }
     }
 }

@@ -1,8 +1,8 @@
 //! Set-up: what a synth is told before it can obey, said in pieces that yield to a key; and how it is left.
 
+use super::beforehand::latch;
 use super::channel::{Channel, Due, UNSAID};
 use super::dialect::{mpe, on_members};
-use super::notes::latch;
 use super::plan::{Dialect, Leave, SynthId};
 use super::traffic::{Link, Weight};
 use super::{Engine, Hand};

@@ -1,0 +1,180 @@
+//! From bytes to gestures: who hears what, what is taken by a cue, what is passed on as it came.
+
+use super::plan::{Gesture, KeyboardId};
+use super::songs::{Heard, is_reset};
+use super::synth::bend_message;
+use super::traffic::Weight;
+use super::{Engine, Hand, wheel_semitones};
+use crate::limits::RESET_MS;
+use crate::midi::{Message, Splitter, controller, status};
+use crate::time::{Span, Time};
+use crate::tuning::Key;
+
+impl Engine {
+    pub(super) fn bytes_in(&mut self, now: Time, id: KeyboardId, bytes: &[u8]) {
+        if id.index() >= self.plan.keyboards.len() {
+            self.out.counters.bad_bytes += bytes.len() as u64;
+            return;
+        }
+        // The splitter lends out messages while the rest of the engine acts on them.
+        let keyboard = &mut self.keyboards[id.index()];
+        if keyboard.sensed_at.is_some() {
+            keyboard.sensed_at = Some(now);
+        }
+        let mut splitter = std::mem::replace(&mut keyboard.splitter, Splitter::lent());
+        for byte in bytes {
+            if let Some(message) = splitter.push(*byte) {
+                self.message_in(now, id, message);
+            }
+        }
+        self.out.counters.bad_bytes += splitter.take_bad_bytes();
+        self.out.counters.sysex_lost += splitter.take_sysex_lost();
+        self.keyboards[id.index()].splitter = splitter;
+    }
+
+    fn message_in(&mut self, now: Time, id: KeyboardId, message: Message<'_>) {
+        let channel = match message {
+            Message::NoteOn { channel, .. }
+            | Message::NoteOff { channel, .. }
+            | Message::PolyPressure { channel, .. }
+            | Message::Controller { channel, .. }
+            | Message::Program { channel, .. }
+            | Message::Pressure { channel, .. }
+            | Message::PitchBend { channel, .. } => channel,
+            Message::Sysex(bytes) => return self.sysex_in(now, id, bytes),
+            Message::Common(bytes) => return self.pass_on(id, bytes),
+            Message::RealTime(0xFE) => {
+                self.keyboards[id.index()].sensed_at = Some(now);
+                return;
+            }
+            Message::RealTime(0xFF) => return self.let_go(now, id), // System Reset: obeyed, never echoed
+            Message::RealTime(byte) => return self.pass_on(id, &[byte]),
+        };
+        let hand = Hand {
+            keyboard: id,
+            channel,
+        };
+        if let Message::NoteOff { key, velocity, .. } = message
+            && self.is_open(hand, key)
+        {
+            // Whatever a new plan says of this key or channel, a note that was started is ended.
+            let key = Key::new(key).expect("MIDI keys are 0-127");
+            return self.key_up(now, hand, key, velocity);
+        }
+        if self.plan.keyboards[id.index()].channels.has(channel) {
+            self.gesture_in(now, hand, message);
+        }
+    }
+
+    fn gesture_in(&mut self, now: Time, hand: Hand, message: Message<'_>) {
+        let heard = self.heard(hand, message);
+        if heard.is_some_and(|heard| self.cue(now, hand, heard)) {
+            return;
+        }
+        self.pass_drums(hand, message);
+        let key = |key| Key::new(key).expect("MIDI keys are 0-127");
+        match message {
+            Message::NoteOn {
+                key: k, velocity, ..
+            } => self.key_down(now, hand, key(k), velocity),
+            Message::NoteOff {
+                key: k, velocity, ..
+            } => self.key_up(now, hand, key(k), velocity),
+            Message::PolyPressure { key: k, value, .. } => {
+                self.poly_pressure_in(hand, key(k), value);
+            }
+            Message::Controller { number, value, .. } => {
+                self.controller_in(now, hand, number, value);
+            }
+            Message::Program { number, .. } => self.program_in(now, hand, number),
+            Message::Pressure { value, .. } => self.pressure_in(now, hand, value),
+            Message::PitchBend { bend, .. } => self.wheel_in(now, hand, bend),
+            Message::Sysex(_) | Message::Common(_) | Message::RealTime(_) => {}
+        }
+    }
+
+    fn is_open(&self, hand: Hand, key: u8) -> bool {
+        self.voices
+            .iter()
+            .any(|v| v.down && v.key.number() == key && hand.is_of(v))
+    }
+
+    /// The gesture in a message, if it can be one.
+    fn heard(&mut self, hand: Hand, message: Message<'_>) -> Option<Heard> {
+        match message {
+            Message::Program { number, .. } => Some(Heard::Program(number)),
+            Message::Controller { number, value, .. } => {
+                let latest = &mut self.source(hand).latest[number as usize];
+                let rises = *latest < 64 && value >= 64;
+                *latest = value;
+                Some(if rises {
+                    Heard::Rise(number)
+                } else {
+                    Heard::Idle(Gesture::Controller(number))
+                })
+            }
+            Message::NoteOn { key, .. } => Key::new(key).map(Heard::NoteOn),
+            Message::NoteOff { key, .. } => {
+                Key::new(key).map(|key| Heard::Idle(Gesture::Note(key)))
+            }
+            _ => None,
+        }
+    }
+
+    /// Whatever is on a synth's drum channel goes through as it came. Notes go by their own way, so that they can be
+    /// ended when a keyboard is lost.
+    fn pass_drums(&mut self, hand: Hand, message: Message<'_>) {
+        let channel = hand.channel;
+        let (bytes, length) = match message {
+            Message::PolyPressure { key, value, .. } => {
+                ([status::POLY_PRESSURE | channel, key, value], 3)
+            }
+            Message::Controller { number, value, .. }
+                if number != controller::VELOCITY_LOW && number < controller::ALL_SOUND_OFF =>
+            {
+                ([status::CONTROLLER | channel, number, value], 3)
+            }
+            Message::Program { number, .. } => ([status::PROGRAM | channel, number, 0], 2),
+            Message::Pressure { value, .. } => ([status::PRESSURE | channel, value, 0], 2),
+            Message::PitchBend { bend, .. } => (bend_message(channel, bend), 3),
+            _ => return,
+        };
+        for id in self.drum_synths(hand).iter() {
+            self.synths[id.index()].send(Weight::Through, &bytes[..length], &mut self.out);
+        }
+    }
+
+    fn sysex_in(&mut self, now: Time, id: KeyboardId, bytes: &[u8]) {
+        self.pass_on(id, bytes);
+        if is_reset(bytes) {
+            for synth in self.synths_of(id).iter() {
+                self.synths[synth.index()].again_at = Some(now + Span::from_millis(RESET_MS));
+            }
+        }
+    }
+
+    /// Not ours: to every synth that the keyboard plays, once.
+    fn pass_on(&mut self, id: KeyboardId, bytes: &[u8]) {
+        for synth in self.synths_of(id).iter() {
+            self.synths[synth.index()].send(Weight::Through, bytes, &mut self.out);
+        }
+    }
+
+    /// A keyboard has gone, or wants everything reset: what it held is let go.
+    pub(super) fn let_go(&mut self, now: Time, id: KeyboardId) {
+        let index = id.index();
+        if index >= self.plan.keyboards.len() {
+            return;
+        }
+        self.keyboards[index].splitter.reset();
+        self.release_keyboard(now, id);
+        for channel in 0..16 {
+            let hand = Hand {
+                keyboard: id,
+                channel,
+            };
+            self.hand_off(now, hand);
+        }
+        self.keyboards[index].let_go(wheel_semitones(&self.plan, index));
+    }
+}
