@@ -137,7 +137,7 @@ fn figures_keep_to_their_definitions() {
     near(above(&QUARTER_COMMA_MEANTONE, 8), cents(25.0 / 16.0));
     near(
         above(&WERCKMEISTER_3, 9),
-        cents(3.0) * 3.0 - 3600.0 - 0.75 * cents(531441.0 / 524288.0),
+        cents(3.0) * 3.0 - 4800.0 - 0.75 * cents(531441.0 / 524288.0),
     );
     near(above(&EQUAL_19, 19), 1200.0);
 }
