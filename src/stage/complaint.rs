@@ -16,7 +16,7 @@ pub enum Segment {
     Again(String),
 }
 
-/// The way to a node: a file (by place in [`Complaints::files`]) and steps into it.
+/// The way to a node: a file (by place in `Complaints::files`) and steps into it.
 #[derive(Clone, Debug, Default, PartialEq, Eq)]
 pub struct Trail {
     pub file: usize,

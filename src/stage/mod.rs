@@ -2,7 +2,7 @@
 //!
 //! **What this room is**: YAML to a tree (`node`), where it stumbles in words of our own (`slips`, `cuts`, `yaml_errors`);
 //! the tree, section by section, to checked types with every complaint at once (`rig`, `songs`, `tunings`, `cues`;
-//! `complaint`, `locate`); those to a [`Plan`](crate::engine::Plan) (`compile`, `pools`); what to expect of it (`outlook`).
+//! `complaint`, `locate`); those to a [`Plan`] (`compile`, `pools`); what to expect of it (`outlook`).
 //! **Start reading at** [`Stage`], then `compile.rs`.
 //! **May know** `engine/` (its plan), `tuning/`, `pitch/`, `intonation/`, `limits`.
 //! **Owns** serde_yaml. A [`Stage`] cannot be wrong.
