@@ -36,7 +36,7 @@ pub fn run(_: Args) -> Result<(), Failure> {
 
 #[cfg(target_os = "linux")]
 pub fn run(args: Args) -> Result<(), Failure> {
-    use crate::ports::alsa::desk::Desk;
+    use crate::ports::{Patchbay, alsa::desk::Desk};
     let rig = match &args.file {
         Some(path) => Some(RigWanted::of(&super::read_stage(path)?)),
         None => None,
@@ -143,6 +143,7 @@ mod tests {
             address: Address { client, port: 0 },
             device: device.to_string(),
             name: name.to_string(),
+            aliases: Vec::new(),
             socket: None,
             sends: ways.contains('s'),
             hears: ways.contains('h'),

@@ -3,9 +3,8 @@
 use super::rig::RigWanted;
 use super::score::News;
 use crate::engine::Command;
-use crate::ports::alsa::{Tally, desk::Desk as Sequencer};
 use crate::ports::names::{Address, Choice, Port, choose};
-use crate::ports::{Broken, Link, system::Bell};
+use crate::ports::{Broken, Link, Patchbay, Tally, system::Bell};
 use rtrb::{Consumer, Producer};
 use signal_hook::iterator::Signals;
 use std::sync::Arc;
@@ -117,9 +116,9 @@ impl Desk {
     }
 }
 
-/// Who is connected to whom, and the sequencer to change it.
+/// Who is connected to whom, and the means to change it.
 pub struct Patch {
-    pub sequencer: Sequencer,
+    pub patchbay: Box<dyn Patchbay>,
     pub choice: Choice,
     /// Our own ports, in the order of the stage file.
     pub keyboards: Vec<Address>,
@@ -131,7 +130,7 @@ pub struct Patch {
 impl Patch {
     /// Connects every device to what it wants and is there; gives what is there.
     pub fn connect(&mut self, rig: &RigWanted) -> Vec<Port> {
-        let ports = self.sequencer.ports();
+        let ports = self.patchbay.ports();
         self.choice = choose(&ports, &rig.keyboards, &rig.synths, &self.choice);
         for remark in std::mem::take(&mut self.choice.remarks) {
             self.say(remark);
@@ -144,7 +143,7 @@ impl Patch {
             .collect();
         for (from, to) in ways {
             // Also what we take for connected: it may have gone and come back between two looks.
-            if let Err(Broken { wrong, .. }) = self.sequencer.connect(from, to) {
+            if let Err(Broken { wrong, .. }) = self.patchbay.connect(from, to) {
                 let (from, to) = (shown(from), shown(to));
                 self.say(format!("{from} cannot be connected to {to}: {wrong}"));
             }

@@ -10,6 +10,8 @@
 
 #[cfg(target_os = "linux")]
 mod desk;
+#[cfg(target_os = "linux")]
+mod open;
 pub mod rig;
 #[cfg(target_os = "linux")]
 pub mod run;

@@ -99,6 +99,7 @@ mod tests {
             address,
             device: "Loft Organ".to_string(),
             name: "Loft Organ MIDI 1".to_string(),
+            aliases: Vec::new(),
             socket: None,
             sends: false,
             hears: true,

@@ -1,12 +1,11 @@
 //! From a stage file to an evening: opens the ports, starts the threads, plays until it is told to stop.
 
-use super::desk::{Desk, Patch};
+use super::desk::Desk;
+use super::open::Ports;
 use super::rig::RigWanted;
-use super::score::{Ending, Player, Score, Slot};
+use super::score::{Ending, Score, Slot};
 use crate::engine::{Engine, Report};
-use crate::ports::alsa::{Alsa, desk::Desk as Sequencer};
-use crate::ports::names::Choice;
-use crate::ports::{Backend, Broken, system};
+use crate::ports::Broken;
 use crate::stage::Stage;
 use signal_hook::consts::{SIGINT, SIGTERM};
 use signal_hook::iterator::Signals;
@@ -36,16 +35,15 @@ pub enum Trouble {
 pub fn play(stage: &Stage, client_name: &str) -> Result<(), Trouble> {
     let signals = Signals::new([SIGTERM, SIGINT]).map_err(Trouble::System)?;
     let rig = RigWanted::of(stage);
-    let mut alsa = open(&rig, client_name).map_err(Trouble::Ports)?;
-    let mut patch = patch(&alsa, &rig, client_name).map_err(Trouble::Ports)?;
-    let ports = patch.connect(&rig);
+    let (mut ports, mut patch) = Ports::open(&rig, client_name).map_err(Trouble::Ports)?;
+    let there = patch.connect(&rig);
 
     let (commands_in, commands_out) = rtrb::RingBuffer::new(QUEUE);
     let (news_in, news_out) = rtrb::RingBuffer::new(QUEUE);
     let engine = Engine::new(stage.plan());
     let slot = Slot::new(Score::new(engine, rig.synths.len(), commands_out, news_in));
     let done = Arc::new(AtomicBool::new(false));
-    let clauses = rig.describe("is", &patch.choice, &ports).join("; ");
+    let clauses = rig.describe("is", &patch.choice, &there).join("; ");
     let desk = Desk {
         rig,
         patch,
@@ -53,47 +51,22 @@ pub fn play(stage: &Stage, client_name: &str) -> Result<(), Trouble> {
         signals,
         commands: commands_in,
         news: news_out,
-        bell: alsa.bell(),
-        tally: alsa.tally(),
+        bell: ports.bell(),
+        tally: ports.tally(),
         done: done.clone(),
     };
     let desk = std::thread::Builder::new()
         .name("desk".to_string())
         .spawn(|| desk.run())
         .map_err(Trouble::System)?;
-    if let Err(error) = system::hurry() {
-        info!("no real-time priority ({error}): notes may be late on a busy machine");
-    }
     info!("ready: {clauses}");
 
-    let mut player = Player::new(slot.clone());
-    let ran = catch_unwind(AssertUnwindSafe(|| alsa.run(&mut player)));
+    let ran = catch_unwind(AssertUnwindSafe(|| ports.play(&slot)));
     done.store(true, Ordering::Release);
     if desk.join().is_err() {
         error!("the desk had failed before the end");
     }
     finish(ran, &slot)
-}
-
-fn open(rig: &RigWanted, client_name: &str) -> Result<Alsa, Broken> {
-    let names = |wanted: &[crate::ports::names::Wanted]| -> Vec<String> {
-        wanted.iter().map(|device| device.name.clone()).collect()
-    };
-    Alsa::open(client_name, &names(&rig.keyboards), &names(&rig.synths))
-}
-
-fn patch(alsa: &Alsa, rig: &RigWanted, client_name: &str) -> Result<Patch, Broken> {
-    let mut sequencer = Sequencer::open(client_name)?;
-    sequencer.add_ours(alsa.client());
-    let keyboards = (0..rig.keyboards.len()).map(|index| alsa.keyboard_address(index));
-    let synths = (0..rig.synths.len()).map(|index| alsa.synth_address(index));
-    Ok(Patch {
-        sequencer,
-        choice: Choice::default(),
-        keyboards: keyboards.collect(),
-        synths: synths.collect(),
-        said: Vec::new(),
-    })
 }
 
 fn finish(ran: std::thread::Result<Result<(), Broken>>, slot: &Slot) -> Result<(), Trouble> {

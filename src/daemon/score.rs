@@ -165,6 +165,7 @@ impl Score {
 
     /// Sends all that the engine has to say, and tells it when a port runs short.
     fn drain(&mut self, now: Time, outlet: &mut Outlet<'_>) {
+        outlet.at(now);
         loop {
             while let Some(output) = self.engine.poll_output() {
                 if let Output::Send {
@@ -199,6 +200,7 @@ impl Score {
 
     /// A port that has lost messages, or perhaps has: what hangs there is let go, then it is set up.
     fn begin_anew(&mut self, now: Time, synth: usize, outlet: &mut Outlet<'_>) {
+        outlet.at(now);
         outlet.forget(synth);
         hush(outlet, synth, &[DAMPER, ALL_NOTES_OFF]);
         self.link(now, synth, engine::Link::Back);

@@ -9,7 +9,7 @@ use super::hotplug::{Change, End, Hotplug, Notice};
 use super::names::Address;
 use super::outbox::{Outbox, RETRY, outboxes};
 use super::system::{Bell, readable, wait};
-use super::{Backend, Broken, Cycle, Inbox, Next, Outlet};
+use super::{Backend, Broken, Cycle, Inbox, Next, Outlet, Tally};
 use crate::limits::{KEYBOARDS_MAX, SYNTHS_MAX, SYSEX_BYTES_MAX};
 use crate::time::{Span, Time};
 use alsa::poll::{Descriptors, pollfd};
@@ -17,7 +17,7 @@ use alsa::seq::{Addr, Connect, Event, EventType, PortCap, PortSubscribe, PortTyp
 use alsa::{Direction, Seq};
 use std::ffi::CString;
 use std::sync::Arc;
-use std::sync::atomic::{AtomicU64, Ordering};
+use std::sync::atomic::Ordering;
 
 /// Events that may wait for us in the kernel: its largest allowed pool. When it runs over, the kernel throws all away.
 const INPUT_POOL: u32 = 2000;
@@ -35,17 +35,6 @@ pub struct Alsa {
     clock: Clock,
     bell: Bell,
     tally: Arc<Tally>,
-}
-
-/// Counts that the desk reads while the loop runs.
-#[derive(Debug, Default)]
-pub struct Tally {
-    /// Ports that came, went or changed: time to look for devices again.
-    pub changes: AtomicU64,
-    /// Times that the kernel threw our input away because we were too slow.
-    pub overruns: AtomicU64,
-    /// Packets too long for us.
-    pub too_long: AtomicU64,
 }
 
 impl Alsa {

@@ -23,9 +23,11 @@ pub mod outbox;
 pub mod system;
 
 pub use inbox::{Inbox, What};
+use names::{Address, Port};
 pub use outbox::{Outlet, Room, Weight, Wire};
 
 use crate::time::Time;
+use std::sync::atomic::AtomicU64;
 
 /// One unit of the score thread's work. Must not block, allocate, lock or log.
 pub trait Cycle {
@@ -72,4 +74,27 @@ pub enum Link {
     /// Connected later: it may have been lost before, or still be waking.
     Back,
     Down,
+}
+
+/// Counts that the desk reads while a loop runs.
+#[derive(Debug, Default)]
+pub struct Tally {
+    /// Ports that came, went or changed: time to look for devices again.
+    pub changes: AtomicU64,
+    /// Times that the system threw our input away because we were too slow.
+    pub overruns: AtomicU64,
+    /// Packets too long for us, or for the port they were to leave by.
+    pub too_long: AtomicU64,
+}
+
+/// The desk's view of a backend's ports, and its hand to connect them.
+pub trait Patchbay: Send {
+    /// Every port that others may connect to.
+    fn ports(&self) -> Vec<Port>;
+
+    /// Connects two ports. Connected already is as good.
+    ///
+    /// # Errors
+    /// One of them is gone or does not want it.
+    fn connect(&self, from: Address, to: Address) -> Result<(), Broken>;
 }

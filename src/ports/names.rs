@@ -15,6 +15,8 @@ pub struct Port {
     pub address: Address,
     pub device: String,
     pub name: String,
+    /// Other names that it goes by.
+    pub aliases: Vec<String>,
     /// USB place such as `1-1.3`, for what hangs on one.
     pub socket: Option<String>,
     /// Sends to us: may be a keyboard.
@@ -68,15 +70,20 @@ impl Port {
 
     /// The system's own loop from all to all.
     pub fn is_through(&self) -> bool {
-        let through = |name: &str| name.to_lowercase().contains("midi through");
-        through(&self.device) || through(&self.name)
+        let through = |name: &str| {
+            name.to_lowercase()
+                .replace('-', " ")
+                .contains("midi through")
+        };
+        through(&self.device) || through(&self.name) || self.aliases.iter().any(|a| through(a))
     }
 
     fn fits(&self, glob: &str, socket: &Option<String>) -> bool {
         let places_agree = socket.is_none() || self.socket == *socket;
         let through = !self.is_through() || glob.to_lowercase().contains("through");
         let names = [&self.name, &self.device, &self.full_name()]
-            .iter()
+            .into_iter()
+            .chain(&self.aliases)
             .any(|name| matches(glob, name) || matches(glob, without_numbers(name)));
         !self.ours && places_agree && through && names
     }

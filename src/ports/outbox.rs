@@ -6,7 +6,7 @@
 
 use super::message::{channels, cut, replaceable};
 use crate::limits::{OWED_BYTES, OWED_ITEMS, SYNTHS_MAX, WAITING_BYTES, WAITING_ITEMS};
-use crate::time::Span;
+use crate::time::{Span, Time};
 
 /// How long a full port is left alone before it is tried again.
 pub const RETRY: Span = Span::from_millis(2);
@@ -49,6 +49,10 @@ pub trait Wire {
     /// whole or not at all; fewer bytes than given means that the port is full.
     fn write(&mut self, synth: usize, bytes: &[u8]) -> usize;
 
+    /// What is written from now on belongs to this time, never earlier than what was written before. Only a wire that
+    /// carries times needs to know.
+    fn at(&mut self, _time: Time) {}
+
     /// Whether a port that was full has lost messages that it had taken.
     fn loses_when_full(&self) -> bool {
         false
@@ -62,6 +66,11 @@ pub struct Outlet<'a> {
 }
 
 impl Outlet<'_> {
+    /// What is sent from now on belongs to this time.
+    pub fn at(&mut self, time: Time) {
+        self.wire.at(time);
+    }
+
     /// Sends one message or one bundle.
     pub fn send(&mut self, synth: usize, weight: Weight, bytes: &[u8]) {
         if let Some(outbox) = self.outboxes.get_mut(synth) {

@@ -7,7 +7,7 @@ use crate::daemon::rig::RigWanted;
 use crate::limits::KEYBOARDS_MAX;
 use crate::ports::alsa::{Alsa, desk::Desk};
 use crate::ports::names::Port;
-use crate::ports::{Backend, Broken, Cycle, Inbox, Next, Outlet, What};
+use crate::ports::{Backend, Broken, Cycle, Inbox, Next, Outlet, Patchbay, What};
 use crate::time::Time;
 use std::io::Write;
 

@@ -2,8 +2,8 @@
 //! because the score thread's may not be shared.
 
 use super::{broken, open_sequencer, text};
-use crate::ports::Broken;
 use crate::ports::names::{Address, Port};
+use crate::ports::{Broken, Patchbay};
 use alsa::Seq;
 use alsa::seq::{ClientInfo, ClientIter, PortCap, PortInfo, PortIter, PortSubscribe};
 use std::path::{Path, PathBuf};
@@ -37,18 +37,6 @@ impl Desk {
         self.ours.push(client);
     }
 
-    /// Every port that others may connect to, by client and port number; those of the system itself left out.
-    pub fn ports(&self) -> Vec<Port> {
-        ClientIter::new(&self.seq)
-            .filter(|client| client.get_client() != alsa::seq::Addr::system_timer().client)
-            .flat_map(|client| {
-                PortIter::new(&self.seq, client.get_client())
-                    .filter_map(|port| self.port(&client, &port))
-                    .collect::<Vec<Port>>()
-            })
-            .collect()
-    }
-
     fn port(&self, client: &ClientInfo, port: &PortInfo) -> Option<Port> {
         let can = port.get_capability();
         if can.contains(PortCap::NO_EXPORT) {
@@ -64,18 +52,29 @@ impl Desk {
             },
             name: port.get_name().unwrap_or_default().to_string(),
             socket: client.get_card().ok().and_then(socket),
+            aliases: Vec::new(),
             sends,
             hears,
             ours: device == self.family || self.ours.contains(&port.get_client()),
             device,
         })
     }
+}
 
-    /// Connects two ports. Connected already is as good.
-    ///
-    /// # Errors
-    /// One of them is gone or does not want it.
-    pub fn connect(&self, from: Address, to: Address) -> Result<(), Broken> {
+impl Patchbay for Desk {
+    /// By client and port number; those of the system itself left out.
+    fn ports(&self) -> Vec<Port> {
+        ClientIter::new(&self.seq)
+            .filter(|client| client.get_client() != alsa::seq::Addr::system_timer().client)
+            .flat_map(|client| {
+                PortIter::new(&self.seq, client.get_client())
+                    .filter_map(|port| self.port(&client, &port))
+                    .collect::<Vec<Port>>()
+            })
+            .collect()
+    }
+
+    fn connect(&self, from: Address, to: Address) -> Result<(), Broken> {
         let subscription = PortSubscribe::empty().map_err(broken)?;
         subscription.set_sender(super::addr(from));
         subscription.set_dest(super::addr(to));

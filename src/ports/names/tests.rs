@@ -7,6 +7,7 @@ fn port(client: i32, device: &str, name: &str, ways: &str) -> Port {
         address: Address { client, port: 0 },
         device: device.to_string(),
         name: name.to_string(),
+        aliases: Vec::new(),
         socket: None,
         sends: ways.contains('s'),
         hears: ways.contains('h'),

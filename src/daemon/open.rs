@@ -1,0 +1,68 @@
+//! Which ports an evening is played on: opens the backend that was asked for, or the one that is there.
+
+use super::desk::Patch;
+use super::rig::RigWanted;
+use super::score::{Player, Slot};
+use crate::ports::alsa::{Alsa, desk::Desk as Sequencer};
+use crate::ports::names::{Choice, Wanted};
+use crate::ports::system::{self, Bell};
+use crate::ports::{Backend, Broken, Tally};
+use std::sync::Arc;
+use tracing::info;
+
+/// What carries the MIDI.
+pub enum Ports {
+    Alsa(Alsa),
+}
+
+impl Ports {
+    /// # Errors
+    /// They cannot be had, or there is no room for us.
+    pub fn open(rig: &RigWanted, client_name: &str) -> Result<(Ports, Patch), Broken> {
+        let names = |wanted: &[Wanted]| -> Vec<String> {
+            wanted.iter().map(|device| device.name.clone()).collect()
+        };
+        let (keyboards, synths) = (names(&rig.keyboards), names(&rig.synths));
+        let alsa = Alsa::open(client_name, &keyboards, &synths)?;
+        let mut sequencer = Sequencer::open(client_name)?;
+        sequencer.add_ours(alsa.client());
+        let patch = Patch {
+            patchbay: Box::new(sequencer),
+            choice: Choice::default(),
+            keyboards: (0..keyboards.len())
+                .map(|n| alsa.keyboard_address(n))
+                .collect(),
+            synths: (0..synths.len()).map(|n| alsa.synth_address(n)).collect(),
+            said: Vec::new(),
+        };
+        Ok((Ports::Alsa(alsa), patch))
+    }
+
+    /// Ends a wait early, so that the desk's commands are looked at.
+    pub fn bell(&self) -> Bell {
+        match self {
+            Ports::Alsa(alsa) => alsa.bell(),
+        }
+    }
+
+    pub fn tally(&self) -> Arc<Tally> {
+        match self {
+            Ports::Alsa(alsa) => alsa.tally(),
+        }
+    }
+
+    /// Plays the score until it leaves. The calling thread becomes the score thread where the backend has none.
+    ///
+    /// # Errors
+    /// The ports are gone for good.
+    pub fn play(&mut self, slot: &Arc<Slot>) -> Result<(), Broken> {
+        match self {
+            Ports::Alsa(alsa) => {
+                if let Err(error) = system::hurry() {
+                    info!("no real-time priority ({error}): notes may be late on a busy machine");
+                }
+                alsa.run(&mut Player::new(slot.clone()))
+            }
+        }
+    }
+}
