@@ -2,7 +2,7 @@
 
 use super::rig::RigWanted;
 use super::score::News;
-use crate::engine::Command;
+use crate::engine::{Ask, Command};
 use crate::ports::names::{Address, Choice, Port, choose};
 use crate::ports::{Broken, Link, Patchbay, Tally, system::Bell};
 use rtrb::{Consumer, Producer};
@@ -96,6 +96,10 @@ impl Desk {
                         Link::Up | Link::Back => info!("{name} is set up"),
                         Link::Down => warn!("{name} has gone"),
                     }
+                }
+                News::Asked(Ask::Stop) => self.stop(),
+                News::Asked(Ask::Reload) => {
+                    warn!("the stage file is only read again by a restart");
                 }
                 News::KeyboardLost { keyboard } => {
                     let name = &self.rig.keyboards[keyboard].name;

@@ -1,6 +1,6 @@
 //! The score: an engine and its queues, and what is done with them in one cycle.
 
-use crate::engine::{self, Command, Engine, Input, KeyboardId, Output, Report, SynthId};
+use crate::engine::{self, Ask, Command, Engine, Input, KeyboardId, Output, Report, SynthId};
 use crate::limits::{CHANNELS, SYNTHS_MAX};
 use crate::midi::controller::{ALL_NOTES_OFF, ALL_SOUND_OFF, DAMPER};
 use crate::midi::status;
@@ -22,6 +22,8 @@ pub enum News {
     KeyboardLost {
         keyboard: usize,
     },
+    /// A player asks for something that only the desk can do.
+    Asked(Ask),
     /// A synth's port takes nothing any more; it is tried again from time to time.
     Choked {
         synth: usize,
@@ -168,13 +170,16 @@ impl Score {
         outlet.at(now);
         loop {
             while let Some(output) = self.engine.poll_output() {
-                if let Output::Send {
-                    synth,
-                    weight,
-                    bytes,
-                } = output
-                {
-                    outlet.send(synth.index(), weight.into(), bytes);
+                match output {
+                    Output::Send {
+                        synth,
+                        weight,
+                        bytes,
+                    } => outlet.send(synth.index(), weight.into(), bytes),
+                    Output::Ask(ask) => {
+                        let _ = self.news.push(News::Asked(ask));
+                    }
+                    Output::Onset(_) | Output::Moved(_) => {}
                 }
             }
             let news = (0..self.synths).find_map(|s| Some((s, outlet.room_news(s)?)));

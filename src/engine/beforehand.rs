@@ -96,6 +96,7 @@ pub(super) fn bend_for(
     let channel = synth.channel(number);
     if channel.held == 0 || channel.word != word {
         channel.offset = want.offset;
+        channel.nudge = want.nudge;
     }
     let (bend, clipped) = Bend::encode(channel.offset + want.wheel, range);
     out.counters.clipped += clipped as u64;

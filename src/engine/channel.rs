@@ -63,7 +63,9 @@ pub(super) struct Channel {
     pub last_key: Option<Key>,
     /// Where its notes stand from their numbers, without the player's wheel.
     pub offset: Interval,
-    /// The same as a bend word.
+    /// The pitch nudge that is in the offset.
+    pub nudge: Interval,
+    /// The offset as a bend word.
     pub word: Bend,
     pub due: Due,
     // What the receiver has been told:
@@ -84,6 +86,7 @@ impl Channel {
         struck_at: Time::START,
         last_key: None,
         offset: Interval::ZERO,
+        nudge: Interval::ZERO,
         word: Bend::CENTRE,
         due: Due::Nothing,
         bend: None,

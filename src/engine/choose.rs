@@ -18,6 +18,8 @@ pub(super) struct Want {
     pub number: u8,
     /// Distance of the wanted pitch from the number's own.
     pub offset: Interval,
+    /// The pitch nudge that is in it.
+    pub nudge: Interval,
     /// The player's wheel, where it is added to the channel's bend.
     pub wheel: Interval,
 }
@@ -85,7 +87,10 @@ fn wish(
     let channel = &synth.channels[number as usize];
     let rest = channel.rest(now, synth.rig.tail, synth.rig.keeps_pitch());
     let this_key = channel.last_key == Some(want.key);
-    let this_bend = rest != Rest::New && same_bend(want, channel.offset, channel.word, synth);
+    // Notes that a nudge will move differently may not share, though they stand at one bend now.
+    let moves_alike = !matches!(rest, Rest::Held | Rest::Pedal) || channel.nudge == want.nudge;
+    let this_bend =
+        rest != Rest::New && moves_alike && same_bend(want, channel.offset, channel.word, synth);
     let must_part = voices
         .iter()
         .any(|v| v.synth == synth.id && v.channel == number && v.number == want.number);

@@ -9,6 +9,7 @@
 mod beforehand;
 mod channel;
 mod choose;
+mod commands;
 mod controls;
 mod dialect;
 mod hearing;
@@ -25,9 +26,10 @@ pub mod traffic;
 mod voices;
 
 pub use plan::{KeyboardId, PartId, Plan, SynthId};
-pub use traffic::{Command, Counters, Input, Link, Onset, Output, Report, Weight};
+pub use traffic::{Ask, Command, Counters, Input, Link, Nudge, Onset, Output, Report, Weight};
 
 use crate::limits::{KEYBOARDS_MAX, PARTS_MAX, SYNTHS_MAX};
+use crate::pitch::{Interval, Pitch};
 use crate::time::Time;
 use crate::tuning::Tuning;
 use keyboard::{Keyboard, Source};
@@ -47,6 +49,12 @@ pub struct Engine {
     song: usize,
     /// Its own settings, copied, so that they outlive the plan they came from.
     playing: Playing,
+    /// Over all songs.
+    nudge: Interval,
+    /// In place of the song's own.
+    transposed: Option<i8>,
+    /// Twelve-equal, whatever the song says.
+    plain: bool,
     keyboards: Vec<Keyboard>,
     parts: Vec<Part>,
     synths: Vec<Synth>,
@@ -61,6 +69,7 @@ pub struct Engine {
 /// What of a song decides pitch.
 struct Playing {
     tuning: Tuning,
+    reference: Pitch,
     transpose_keys: i8,
 }
 
@@ -68,6 +77,7 @@ impl Playing {
     fn of(song: &SongPlan) -> Playing {
         Playing {
             tuning: (*song.tuning).clone(), // an array: no heap
+            reference: song.reference,
             transpose_keys: song.transpose_keys,
         }
     }
@@ -106,6 +116,9 @@ impl Engine {
         Engine {
             song: 0,
             playing: Playing::of(&plan.set[0]),
+            nudge: Interval::ZERO,
+            transposed: None,
+            plain: false,
             sends_due: !plan.set[0].sends.is_empty(),
             keyboards,
             parts: vec![Part::NEW; PARTS_MAX],
@@ -179,6 +192,11 @@ impl Engine {
         let mut synths = self.synths.iter().take(self.plan.synths.len());
         Report {
             song: self.song as u16,
+            armed_song: None,
+            armed: 0,
+            nudge: self.nudge,
+            transpose_keys: self.transpose_keys(),
+            plain: self.plain,
             voices: self.voices.len() as u16,
             counters: self.out.counters,
             stopped: self.stopping && synths.all(|synth| synth.left || !synth.up),

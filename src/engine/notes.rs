@@ -98,6 +98,7 @@ impl Engine {
             key: press.key,
             number,
             offset: target - Pitch::of_key(number),
+            nudge: self.nudge_of(part),
             wheel,
         };
         match choose(&want, synth, &self.voices, now) {
@@ -111,13 +112,23 @@ impl Engine {
 
     /// Where the song puts a key of a part; `None` where it is silent.
     pub(super) fn target(&self, part: &PartPlan, key: Key) -> Option<Pitch> {
-        let moved = key.moved(part.transpose_keys as i32 + self.playing.transpose_keys as i32)?;
-        let pitch = if part.tune {
-            self.playing.tuning.pitch(moved)?
-        } else {
-            Pitch::of_key(moved.number())
+        let moved = key.moved(part.transpose_keys as i32 + self.transpose_keys() as i32)?;
+        let equal = Pitch::of_key(moved.number());
+        let pitch = match (part.tune, self.plain) {
+            (false, _) => equal,
+            (true, true) => equal + self.plan.plain_offset,
+            (true, false) => self.playing.tuning.pitch(moved)?,
         };
-        Some(pitch + part.offset)
+        Some(pitch + part.offset + self.nudge_of(part))
+    }
+
+    /// Untuned parts are not nudged either.
+    fn nudge_of(&self, part: &PartPlan) -> Interval {
+        if part.tune {
+            self.nudge
+        } else {
+            Interval::ZERO
+        }
     }
 
     fn make_room(&mut self, now: Time, id: SynthId, choice: Choice) {

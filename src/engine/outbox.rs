@@ -1,7 +1,7 @@
 //! What the engine has to say, in order, until the driver takes it.
 
 use super::plan::SynthId;
-use super::traffic::{Counters, Onset, Output, Weight};
+use super::traffic::{Ask, Counters, Onset, Output, Weight};
 use crate::limits::{BUNDLE_BYTES_MAX, OUTBOX_BYTES, OUTBOX_ITEMS};
 
 /// Outputs waiting for the driver, and the counters that go with them. Room is taken once.
@@ -21,6 +21,8 @@ enum Item {
         to: u32,
     },
     Onset(Onset),
+    Moved(Onset),
+    Ask(Ask),
 }
 
 /// Messages that go out together or not at all.
@@ -79,8 +81,20 @@ impl Outbox {
     }
 
     pub fn onset(&mut self, onset: Onset) {
+        self.push(Item::Onset(onset));
+    }
+
+    pub fn moved(&mut self, onset: Onset) {
+        self.push(Item::Moved(onset));
+    }
+
+    pub fn ask(&mut self, ask: Ask) {
+        self.push(Item::Ask(ask));
+    }
+
+    fn push(&mut self, item: Item) {
         if self.items.len() < OUTBOX_ITEMS {
-            self.items.push(Item::Onset(onset));
+            self.items.push(item);
         }
     }
 
@@ -95,6 +109,8 @@ impl Outbox {
         self.taken += 1;
         Some(match *item {
             Item::Onset(onset) => Output::Onset(onset),
+            Item::Moved(onset) => Output::Moved(onset),
+            Item::Ask(ask) => Output::Ask(ask),
             Item::Send {
                 synth,
                 weight,

@@ -2,8 +2,8 @@
 
 use crate::intonation::Method;
 use crate::limits::{KEYBOARDS_MAX, PARTS_MAX, SYNTHS_MAX};
-use crate::pitch::Interval;
 use crate::pitch::word::BendRange;
+use crate::pitch::{Interval, Pitch};
 use crate::time::Span;
 use crate::tuning::{Key, Tuning};
 use std::sync::Arc;
@@ -87,6 +87,8 @@ pub struct Plan {
     pub cues: Vec<CuePlan>,
     /// Whether a song whose own settings were edited takes them at once or at its next beginning.
     pub edits_at_once: bool,
+    /// Where twelve-equal stands at the evening's reference, above A4 = 440 Hz.
+    pub plain_offset: Interval,
 }
 
 #[derive(Clone, Debug, PartialEq)]
@@ -196,6 +198,8 @@ pub struct SongPlan {
     pub title: Box<str>,
     /// Shared between the songs that use it; built when the plan is, never touched after.
     pub tuning: Arc<Tuning>,
+    /// The frequency of its reference key, as a pitch.
+    pub reference: Pitch,
     pub transpose_keys: i8,
     pub method: Method,
     /// Whole messages given to a synth when the song begins, once no key is held, as if a player of it had sent them:

@@ -7,12 +7,9 @@ use super::synth::{PEDALS, Rig};
 use super::traffic::{Command, Link, Weight};
 use super::voices::Voice;
 use super::{Engine, Hand, Playing};
-use crate::midi::{Message, controller, status};
-use crate::time::{Span, Time};
+use crate::midi::{Message, controller};
+use crate::time::Time;
 use crate::tuning::Key;
-
-/// `next` and `back` are deaf to a second press within this time: footswitches bounce.
-const STEP_DEAF_MS: u64 = 400;
 
 impl Engine {
     /// Runs the cues on a gesture; tells whether one took the message away from the synth.
@@ -39,53 +36,15 @@ impl Engine {
         taken
     }
 
-    pub(super) fn command(&mut self, now: Time, command: Command) {
-        match command {
-            Command::Song(place) => self.choose_song(now, place as usize),
-            Command::Next => self.step(now, 1),
-            Command::Back => self.step(now, -1),
-            Command::Panic => self.panic(now),
-            Command::Resend(Some(id)) if id.index() < self.plan.synths.len() => {
-                self.set_up(now, id);
-            }
-            Command::Resend(Some(_)) => self.out.counters.ignored += 1,
-            Command::Resend(None) => {
-                for index in 0..self.plan.synths.len() {
-                    let id = self.synths[index].id;
-                    self.set_up(now, id);
-                }
-            }
-            Command::End => self.end_all(now),
-            Command::Stop => {
-                self.end_all(now);
-                self.stopping = true;
-                self.when_silent(now);
-            }
-        }
-    }
-
-    fn step(&mut self, now: Time, by: i32) {
-        let deaf_until = self
-            .stepped_at
-            .map(|at| at + Span::from_millis(STEP_DEAF_MS));
-        if deaf_until.is_some_and(|until| now < until) {
-            return;
-        }
-        self.stepped_at = Some(now);
-        match usize::try_from(self.song as i32 + by) {
-            Ok(place) => self.choose_song(now, place),
-            Err(_) => self.out.counters.ignored += 1, // never wraps
-        }
-    }
-
     /// Sounding notes keep their pitch: nothing is sent for them, and nothing they need is in the song.
-    fn choose_song(&mut self, now: Time, place: usize) {
+    pub(super) fn begin_song(&mut self, now: Time, place: usize) {
         let Some(song) = self.plan.set.get(place) else {
             self.out.counters.ignored += 1;
             return;
         };
         self.song = place;
         self.playing = Playing::of(song);
+        self.transposed = None;
         self.sends_due = !song.sends.is_empty();
         for synth in self.synths.iter_mut().take(self.plan.synths.len()) {
             synth.repeat_when_silent = true;
@@ -141,61 +100,6 @@ impl Engine {
                     synth.controller(manager, number, value, Weight::Owed, &mut self.out);
                 }
             }
-        }
-    }
-
-    /// Note-offs for all that is open, then pedals up.
-    fn end_all(&mut self, now: Time) {
-        for keyboard in &mut self.keyboards {
-            for source in &mut keyboard.sources {
-                source.pedals = Default::default();
-            }
-        }
-        while let Some(voice) = self.voices.take(|_| true) {
-            self.end(now, &voice, 64, None);
-        }
-        self.lift_all_pedals(now);
-    }
-
-    fn lift_all_pedals(&mut self, now: Time) {
-        for part in &mut self.parts {
-            for pedal in PEDALS {
-                if part.controllers[pedal as usize] != UNSAID {
-                    part.set(pedal, 0);
-                }
-            }
-        }
-        for synth in &mut self.synths {
-            for number in synth.rig.channels().iter() {
-                synth.lift_pedals(number, &mut self.out);
-                let channel = synth.channel(number);
-                if channel.damper || channel.sostenuto {
-                    channel.released_at = Some(now);
-                }
-                channel.damper = false;
-                channel.sostenuto = false;
-            }
-        }
-    }
-
-    /// Every note-off itself, then pedals up, then All Notes Off and All Sound Off, on every channel in use; then the
-    /// synths are set up again. No song state changes.
-    fn panic(&mut self, now: Time) {
-        self.end_all(now);
-        for index in 0..self.plan.synths.len() {
-            let synth = &mut self.synths[index];
-            let tail = synth.rig.tail;
-            for channel in synth.rig.channels().iter().chain(synth.rig.drums.iter()) {
-                for number in [controller::ALL_NOTES_OFF, controller::ALL_SOUND_OFF] {
-                    let bytes = [status::CONTROLLER | channel, number, 0];
-                    synth.send(Weight::Owed, &bytes, &mut self.out);
-                }
-                let channel = synth.channel(channel);
-                // All Sound Off leaves no tail.
-                channel.released_at = channel.released_at.map(|_| now - tail);
-            }
-            let id = synth.id;
-            self.set_up(now, id);
         }
     }
 

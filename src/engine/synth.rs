@@ -58,6 +58,14 @@ impl Rig {
         self.manager()
             .map_or(self.members, |manager| self.members.with(manager))
     }
+
+    /// Channels on which pedals are played: the manager's under MPE (MPE 1.1, 2.3), and drums.
+    pub fn pedal_channels(&self) -> ChannelSet {
+        let tuned = self
+            .manager()
+            .map_or(self.members, |manager| ChannelSet::NONE.with(manager));
+        ChannelSet(tuned.0 | self.drums.0)
+    }
 }
 
 pub(super) struct Synth {

@@ -1,7 +1,7 @@
 //! What goes into the engine and what comes out: closed lists.
 
 use super::plan::{KeyboardId, PartId, SynthId};
-use crate::pitch::Pitch;
+use crate::pitch::{Interval, Pitch};
 use crate::tuning::Key;
 
 /// One thing that happened.
@@ -40,7 +40,24 @@ pub enum Command {
     /// The n-th song of the set, from 0. Beyond the set: ignored and counted.
     Song(u16),
     Next,
+    /// The next song, if the song of this place is still playing; else refused and counted.
+    NextFrom(u16),
     Back,
+    /// A ratio over all songs. With `held_too`, held notes move to their new place at once.
+    Pitch {
+        to: Nudge,
+        held_too: bool,
+    },
+    /// So many keys up or down instead of the song's own transposition; `None` is the song's own again.
+    Transpose(Option<i8>),
+    /// Twelve-equal at the evening's reference; the second time back again. Outlasts songs.
+    Plain,
+    /// The song as it begins, not plain. The pitch nudge stays.
+    Home,
+    /// As if started anew: the first song, and nothing left of what was nudged, moved or armed.
+    Fresh,
+    /// Handed out as `Output::Ask`: not the engine's to do.
+    Ask(Ask),
     /// Silence everything, change nothing else, set the synths up again.
     Panic,
     /// Set a synth up again (all of them for `None`).
@@ -49,6 +66,25 @@ pub enum Command {
     End,
     /// Going away: as `End`, and once the last tail has died each synth is left as its plan says.
     /// `Report::stopped` tells when nothing more will come.
+    Stop,
+}
+
+/// Where a pitch nudge goes.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Nudge {
+    /// This much further.
+    By(Interval),
+    /// As far as brings the reference of the song now playing here.
+    To(Pitch),
+    Home,
+}
+
+/// What a player asks of whoever looks after the daemon.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Ask {
+    /// Read the stage file again.
+    Reload,
+    /// Stop as on SIGTERM.
     Stop,
 }
 
@@ -63,6 +99,10 @@ pub enum Output<'a> {
     },
     /// A note has just been started by the `Send` before; for records and displays, nothing need be done.
     Onset(Onset),
+    /// A sounding note has been moved by the `Send` before: `target` and `sent` say where to. For records, as `Onset`.
+    Moved(Onset),
+    /// For the desk. Nothing need be done where there is none.
+    Ask(Ask),
 }
 
 /// How a driver that runs short treats an output.
@@ -78,7 +118,7 @@ pub enum Weight {
     Through,
 }
 
-/// A note as it started.
+/// A note as it started, or as it stands once moved.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub struct Onset {
     pub part: PartId,
@@ -118,7 +158,7 @@ pub struct Counters {
     pub bad_bytes: u64,
     /// System exclusive messages too long or cut off.
     pub sysex_lost: u64,
-    /// Commands that could not be followed (a program beyond the set).
+    /// Commands that could not be followed (a program beyond the set, `next from` a song no longer playing).
     pub ignored: u64,
     /// Note-offs for which no note was open.
     pub orphans: u64,
@@ -131,6 +171,16 @@ pub struct Counters {
 pub struct Report {
     /// The song now playing, by place in the set, from 0.
     pub song: u16,
+    /// The song that a cue `at: quiet` waits to begin.
+    pub armed_song: Option<u16>,
+    /// How many commands of cues `at: quiet` wait.
+    pub armed: u8,
+    /// The pitch nudge over all songs.
+    pub nudge: Interval,
+    /// The transposition now in force, the song's own or another. A part's comes on top.
+    pub transpose_keys: i8,
+    /// Twelve-equal, whatever the song says.
+    pub plain: bool,
     /// Keys held (voices whose note-off is still to come).
     pub voices: u16,
     pub counters: Counters,

@@ -160,6 +160,7 @@ impl Player<'_> {
                     });
                     close(&mut self.open, &mut self.notes, synth, bytes, time);
                 }
+                Output::Moved(_) | Output::Ask(_) => {} // no desk here
                 Output::Onset(onset) => {
                     self.open.push(self.notes.len());
                     self.notes.push(Sounded {

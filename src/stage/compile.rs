@@ -4,6 +4,7 @@ use super::advice::Findings;
 use super::complaint::{Complaint, Trail};
 use super::naming::Scene;
 use super::node::{At, Fields, Node};
+use super::resolve::Names;
 use super::rig::{self, Rig, Sections};
 use super::songs::{self, Desk, Entry};
 use super::tunings::{Library, Reference};
@@ -11,6 +12,7 @@ use super::values::choice;
 use super::{Stage, cues, defaults, lamps, placing, pools, slips};
 use crate::engine::Plan;
 use crate::engine::plan::{CuePlan, PartPlan};
+use crate::pitch::{Interval, Pitch};
 use std::path::{Path, PathBuf};
 
 /// What the top of the file says for the whole evening.
@@ -68,7 +70,13 @@ fn read(path: &Path, top: &At<'_>, found: &mut Findings) -> Option<Stage> {
     let (used, titles) = (desk.used, desk.titles);
     let scene = Scene {
         rig: &rig,
-        titles: &titles,
+        names: Names {
+            titles: titles.iter().map(String::as_str).collect(),
+            synths: (rig.synths.iter())
+                .map(|synth| synth.device.name.as_str())
+                .collect(),
+            references: (entries.iter()).map(|entry| entry.plan.reference).collect(),
+        },
         tunings: &used,
         programs_from: evening.programs_from,
     };
@@ -121,6 +129,9 @@ fn assemble(evening: Evening, rig: Rig, rest: Rest) -> Stage {
             set: songs,
             cues: rest.cues,
             edits_at_once: evening.edits_at_once,
+            plain_offset: evening.pitch.map_or(Interval::ZERO, |(key, hertz, _)| {
+                hertz.pitch() - Pitch::of_key(key.number())
+            }),
         },
     }
 }

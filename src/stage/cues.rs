@@ -7,7 +7,6 @@ use super::node::{At, Fields, Node};
 use super::rig;
 use super::values::{channels, choice, key, spell_channels};
 use super::words::Words;
-use crate::engine::Command;
 use crate::engine::plan::{Act, ChannelSet, CuePlan, Gesture, KeyboardId};
 use crate::limits::CUES_MAX;
 
@@ -299,15 +298,8 @@ fn words(
 
 /// What the engine does for these words, if it can.
 fn act(words: &Words, scene: &Scene<'_>) -> Option<Act> {
-    let command = match words {
-        Words::Song(None) => return Some(Act::SongByProgram),
-        Words::Song(Some(name)) => Command::Song(scene.song_named(name)? as u16),
-        Words::Next { from: None } => Command::Next,
-        Words::Back => Command::Back,
-        Words::Panic => Command::Panic,
-        Words::Resend(None) => Command::Resend(None),
-        Words::Resend(Some(name)) => Command::Resend(Some(scene.synth_named(name)?)),
-        _ => return None,
-    };
-    Some(Act::Command(command))
+    match words {
+        Words::Song(None) => Some(Act::SongByProgram),
+        words => scene.names.resolve(words).ok().map(Act::Command),
+    }
 }

@@ -28,6 +28,7 @@ pub mod outlook;
 mod parts;
 mod placing;
 mod pools;
+mod resolve;
 mod rig;
 pub mod shipped;
 mod slips;
@@ -38,11 +39,14 @@ mod values;
 pub mod words;
 mod yaml_errors;
 
-use crate::engine::Plan;
+use crate::engine::{Command, Plan};
 use crate::tuning::{Letter, Placement, Scale, Tuning};
 use complaint::{Complaint, Complaints};
+use expression::Mistake;
+use resolve::{Names, Refusal};
 use std::path::{Path, PathBuf};
 use std::sync::Arc;
+use words::Words;
 
 /// An evening that cannot be wrong: rig, tunings, set, cues, all checked.
 pub struct Stage {
@@ -121,6 +125,27 @@ impl Stage {
     /// As `read`, for a text already in hand; `path` is where it is said to come from.
     pub fn parse(path: &Path, text: &str) -> Result<Stage, Vec<Complaint>> {
         compile::parse(path, text)
+    }
+
+    /// What the engine or the desk does for words that were told. The same grammar as behind `do:`.
+    ///
+    /// # Errors
+    /// A song or synth that is not there, words that mean something in a cue only or that nothing plays yet.
+    pub fn resolve(&self, words: &Words) -> Result<Command, Mistake> {
+        let names = Names {
+            titles: self.set.iter().map(|song| song.title.as_str()).collect(),
+            synths: (self.synths.iter())
+                .map(|synth| synth.name.as_str())
+                .collect(),
+            references: self.plan.set.iter().map(|song| song.reference).collect(),
+        };
+        names.resolve(words).map_err(|refusal| match refusal {
+            Refusal::Wrong(mistake) => mistake,
+            Refusal::NotPlayed => Mistake {
+                wrong: String::from("these words are understood but not played by this version"),
+                right: format!("it plays {}", resolve::PLAYED),
+            },
+        })
     }
 
     /// A plan for the live engine.

@@ -284,6 +284,7 @@ fn song(
         plan: SongPlan {
             title: title.into(),
             tuning: Arc::clone(&tuning),
+            reference: placement.hertz.pitch(),
             transpose_keys,
             method,
             sends,

@@ -34,6 +34,7 @@ pub fn song(title: &str, tuning: Arc<Tuning>) -> SongPlan {
     SongPlan {
         title: title.into(),
         tuning,
+        reference: Pitch::of_key(69),
         transpose_keys: 0,
         method: Method::Fixed,
         sends: Vec::new(),
@@ -98,5 +99,6 @@ pub fn plan(synth: SynthPlan, set: Vec<SongPlan>) -> Plan {
         set,
         cues: Vec::new(),
         edits_at_once: false,
+        plain_offset: Interval::ZERO,
     }
 }

@@ -5,7 +5,7 @@ use std::fmt::Write;
 use std::time::Duration;
 use trued::engine::plan::Dialect;
 use trued::engine::{
-    Command, Engine, Input, KeyboardId, Link, Onset, Output, Plan, SynthId, Weight,
+    Ask, Command, Engine, Input, KeyboardId, Link, Onset, Output, Plan, SynthId, Weight,
 };
 use trued::time::Time;
 
@@ -30,6 +30,9 @@ pub struct Rig {
     pub receivers: Vec<Receiver>,
     pub sent: Vec<Sent>,
     pub onsets: Vec<(Time, Onset)>,
+    /// Sounding notes that were moved, where to.
+    pub moved: Vec<(Time, Onset)>,
+    pub asked: Vec<(Time, Ask)>,
 }
 
 impl Rig {
@@ -49,6 +52,8 @@ impl Rig {
             now: Time::START,
             sent: Vec::new(),
             onsets: Vec::new(),
+            moved: Vec::new(),
+            asked: Vec::new(),
         }
     }
 
@@ -161,6 +166,8 @@ impl Rig {
                     });
                 }
                 Output::Onset(onset) => self.onsets.push((at, onset)),
+                Output::Moved(onset) => self.moved.push((at, onset)),
+                Output::Ask(ask) => self.asked.push((at, ask)),
             }
         }
     }

@@ -1,0 +1,241 @@
+//! What can be asked of a running engine, and what comes of it.
+
+use super::Engine;
+use super::channel::{Rest, UNSAID};
+use super::dialect::on_members;
+use super::plan::SynthId;
+use super::synth::PEDALS;
+use super::traffic::{Command, Nudge, Onset, Weight};
+use crate::limits::NUDGE_MAX_CENTS;
+use crate::midi::{controller, status};
+use crate::pitch::word::Bend;
+use crate::pitch::{Interval, Pitch};
+use crate::time::{Span, Time};
+
+/// `next` and `back` are deaf to a second press within this time: footswitches bounce.
+const STEP_DEAF_MS: u64 = 400;
+
+impl Engine {
+    /// Takes a command as it is given, and follows it at once.
+    pub(super) fn command(&mut self, now: Time, command: Command) {
+        if !self.is_deaf(now, command) {
+            self.follow(now, command);
+        }
+    }
+
+    /// Whether a command is a bounce of the last step, or was meant for another song.
+    pub(super) fn is_deaf(&mut self, now: Time, command: Command) -> bool {
+        if !matches!(
+            command,
+            Command::Next | Command::NextFrom(_) | Command::Back
+        ) {
+            return false;
+        }
+        if let Command::NextFrom(place) = command
+            && !self.is_playing(place)
+        {
+            self.out.counters.ignored += 1;
+            return true;
+        }
+        let deaf_until = self
+            .stepped_at
+            .map(|at| at + Span::from_millis(STEP_DEAF_MS));
+        let deaf = deaf_until.is_some_and(|until| now < until);
+        if !deaf {
+            self.stepped_at = Some(now);
+        }
+        deaf
+    }
+
+    /// Whether the song of a place is the one now playing; it may stand in the set more than once.
+    fn is_playing(&self, place: u16) -> bool {
+        let set = &self.plan.set;
+        set.get(place as usize)
+            .is_some_and(|song| song.title == set[self.song].title)
+    }
+
+    pub(super) fn follow(&mut self, now: Time, command: Command) {
+        match command {
+            Command::Song(place) => self.begin_song(now, place as usize),
+            Command::Next => self.step(now, 1),
+            Command::NextFrom(place) if self.is_playing(place) => self.step(now, 1),
+            Command::NextFrom(_) => self.out.counters.ignored += 1,
+            Command::Back => self.step(now, -1),
+            Command::Pitch { to, held_too } => self.nudge_pitch(now, to, held_too),
+            Command::Transpose(keys) => self.transposed = keys,
+            Command::Plain => self.plain = !self.plain,
+            Command::Home => self.begin_again(now, self.song),
+            Command::Fresh => {
+                self.nudge = Interval::ZERO;
+                self.begin_again(now, 0);
+            }
+            Command::Ask(ask) => self.out.ask(ask),
+            Command::Panic => self.panic(now),
+            Command::Resend(Some(id)) if id.index() < self.plan.synths.len() => {
+                self.set_up(now, id);
+            }
+            Command::Resend(Some(_)) => self.out.counters.ignored += 1,
+            Command::Resend(None) => {
+                for index in 0..self.plan.synths.len() {
+                    let id = self.synths[index].id;
+                    self.set_up(now, id);
+                }
+            }
+            Command::End => self.end_all(now),
+            Command::Stop => {
+                self.end_all(now);
+                self.stopping = true;
+                self.when_silent(now);
+            }
+        }
+    }
+
+    fn step(&mut self, now: Time, by: i32) {
+        match usize::try_from(self.song as i32 + by) {
+            Ok(place) => self.begin_song(now, place),
+            Err(_) => self.out.counters.ignored += 1, // never wraps
+        }
+    }
+
+    fn begin_again(&mut self, now: Time, place: usize) {
+        self.plain = false;
+        self.begin_song(now, place);
+    }
+
+    /// The transposition in force, without a part's own.
+    pub(super) fn transpose_keys(&self) -> i8 {
+        self.transposed.unwrap_or(self.playing.transpose_keys)
+    }
+
+    fn nudge_pitch(&mut self, now: Time, to: Nudge, held_too: bool) {
+        let nudge = match to {
+            Nudge::By(further) => self.nudge + further,
+            Nudge::To(pitch) => pitch - self.playing.reference,
+            Nudge::Home => Interval::ZERO,
+        };
+        if nudge.abs() > Interval::from_cents(NUDGE_MAX_CENTS) {
+            self.out.counters.ignored += 1;
+            return;
+        }
+        self.nudge = nudge;
+        if held_too {
+            for index in 0..self.plan.synths.len() {
+                for channel in self.synths[index].rig.members.iter() {
+                    self.move_held(now, self.synths[index].id, channel);
+                }
+            }
+        }
+    }
+
+    /// Brings what a key or pedal holds on a channel to where the nudge puts it: one bend for all of it.
+    fn move_held(&mut self, now: Time, id: SynthId, number: u8) {
+        let Some((part_id, part)) = self.part_of(id, number).filter(|(_, part)| part.tune) else {
+            return;
+        };
+        let synth = &mut self.synths[id.index()];
+        let wheel = if on_members(&synth.rig, &part) {
+            self.parts[part_id.index()].wheel
+        } else {
+            Interval::ZERO
+        };
+        let (range, tail, keeps_pitch) = (
+            synth.rig.bend_range,
+            synth.rig.tail,
+            synth.rig.keeps_pitch(),
+        );
+        let channel = synth.channel(number);
+        let held = matches!(
+            channel.rest(now, tail, keeps_pitch),
+            Rest::Held | Rest::Pedal
+        );
+        if !held || channel.nudge == self.nudge {
+            return;
+        }
+        channel.offset += self.nudge - channel.nudge;
+        channel.nudge = self.nudge;
+        let offset = channel.offset;
+        channel.word = Bend::encode(offset, range).0;
+        let (bend, clipped) = Bend::encode(offset + wheel, range);
+        self.out.counters.clipped += clipped as u64;
+        if synth.bend(number, bend, Weight::Owed, &mut self.out) {
+            self.out.counters.bends += 1;
+        }
+        let sent = synth.channel(number).word.decode(range);
+        for voice in self.voices.iter() {
+            if voice.synth == id && voice.channel == number {
+                self.out.moved(Onset {
+                    part: voice.part,
+                    keyboard: voice.keyboard,
+                    key: voice.key,
+                    velocity: voice.velocity,
+                    synth: id,
+                    channel: number,
+                    number: voice.number,
+                    target: Pitch::of_key(voice.number) + offset,
+                    sent: Pitch::of_key(voice.number) + sent,
+                });
+            }
+        }
+    }
+
+    /// Note-offs for all that is open, then pedals up.
+    fn end_all(&mut self, now: Time) {
+        for keyboard in &mut self.keyboards {
+            for source in &mut keyboard.sources {
+                source.pedals = Default::default();
+            }
+        }
+        while let Some(voice) = self.voices.take(|_| true) {
+            self.end(now, &voice, 64, None);
+        }
+        self.lift_all_pedals(now);
+    }
+
+    fn lift_all_pedals(&mut self, now: Time) {
+        for part in &mut self.parts {
+            for pedal in PEDALS {
+                if part.controllers[pedal as usize] != UNSAID {
+                    part.set(pedal, 0);
+                }
+            }
+        }
+        for synth in &mut self.synths {
+            for number in synth.rig.channels().iter() {
+                synth.lift_pedals(number, &mut self.out);
+                let channel = synth.channel(number);
+                if channel.damper || channel.sostenuto {
+                    channel.released_at = Some(now);
+                }
+                channel.damper = false;
+                channel.sostenuto = false;
+            }
+        }
+    }
+
+    /// Every note-off itself, then pedals up, then All Notes Off and All Sound Off, on every channel in use, whatever
+    /// it was told before; then the synths are set up again. No song state changes.
+    fn panic(&mut self, now: Time) {
+        self.end_all(now);
+        for index in 0..self.plan.synths.len() {
+            let synth = &mut self.synths[index];
+            for channel in synth.rig.pedal_channels().iter() {
+                for pedal in PEDALS {
+                    synth.channel(channel).controllers[pedal as usize] = UNSAID;
+                    synth.controller(channel, pedal, 0, Weight::Owed, &mut self.out);
+                }
+            }
+            let tail = synth.rig.tail;
+            for channel in synth.rig.channels().iter().chain(synth.rig.drums.iter()) {
+                for number in [controller::ALL_NOTES_OFF, controller::ALL_SOUND_OFF] {
+                    let bytes = [status::CONTROLLER | channel, number, 0];
+                    synth.send(Weight::Owed, &bytes, &mut self.out);
+                }
+                let channel = synth.channel(channel);
+                // All Sound Off leaves no tail.
+                channel.released_at = channel.released_at.map(|_| now - tail);
+            }
+            let id = synth.id;
+            self.set_up(now, id);
+        }
+    }
+}

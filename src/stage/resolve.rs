@@ -1,0 +1,146 @@
+//! From words to what the engine does: one grammar for `tell` and for what stands after `do:`.
+
+use super::expression::Mistake;
+use super::node::nearest;
+use super::values::one_of;
+use super::words::{PitchNudge, Words};
+use crate::engine::plan::SynthId;
+use crate::engine::{Ask, Command, Nudge};
+use crate::limits::NUDGE_MAX_CENTS;
+use crate::pitch::{Interval, Pitch};
+
+/// The words that are played.
+pub const PLAYED: &str =
+    "next, back, song, pitch, transpose, plain, home, resend, panic, fresh, reload and stop";
+
+/// What an evening calls its songs and synths, in their order.
+pub struct Names<'n> {
+    pub titles: Vec<&'n str>,
+    pub synths: Vec<&'n str>,
+    /// The reference of each song.
+    pub references: Vec<Pitch>,
+}
+
+/// Why words cannot be followed.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub enum Refusal {
+    Wrong(Mistake),
+    /// Understood, but nothing plays it yet.
+    NotPlayed,
+}
+
+impl Names<'_> {
+    /// What the words ask for.
+    pub fn resolve(&self, words: &Words) -> Result<Command, Refusal> {
+        Ok(match words {
+            Words::Song(None) => return Err(wrong(SONG_ALONE.0, SONG_ALONE.1)),
+            Words::Song(Some(name)) => Command::Song(self.song(name)?),
+            Words::Next { from: None } => Command::Next,
+            Words::Next { from: Some(title) } => Command::NextFrom(self.titled(title)?),
+            Words::Back => Command::Back,
+            Words::Pitch { to, now } => Command::Pitch {
+                to: self.nudge(to)?,
+                held_too: *now,
+            },
+            Words::Transpose(keys) => Command::Transpose(*keys),
+            Words::Plain => Command::Plain,
+            Words::Home => Command::Home,
+            Words::Resend(None) => Command::Resend(None),
+            Words::Resend(Some(name)) => Command::Resend(Some(self.synth(name)?)),
+            Words::Panic => Command::Panic,
+            Words::Fresh => Command::Fresh,
+            Words::Reload => Command::Ask(Ask::Reload),
+            Words::Stop => Command::Ask(Ask::Stop),
+            Words::Tonic { .. }
+            | Words::TonicHome
+            | Words::Inflect { .. }
+            | Words::InflectHome
+            | Words::Turn(_)
+            | Words::BlackKey(_)
+            | Words::Root(_)
+            | Words::Sevenths { .. }
+            | Words::Keep => return Err(Refusal::NotPlayed),
+        })
+    }
+
+    /// The place in the set of a title, or of a number people count from 1.
+    fn song(&self, name: &str) -> Result<u16, Refusal> {
+        let number = || name.parse::<usize>().ok().and_then(|n| n.checked_sub(1));
+        let numbered = || number().filter(|place| *place < self.titles.len());
+        let place = self.place(name).or_else(numbered);
+        place
+            .map(|place| place as u16)
+            .ok_or_else(|| self.no_song(name))
+    }
+
+    fn titled(&self, title: &str) -> Result<u16, Refusal> {
+        self.place(title)
+            .map(|place| place as u16)
+            .ok_or_else(|| self.no_song(title))
+    }
+
+    fn place(&self, title: &str) -> Option<usize> {
+        self.titles.iter().position(|known| *known == title)
+    }
+
+    fn no_song(&self, name: &str) -> Refusal {
+        if !name.is_empty() && name.bytes().all(|b| b.is_ascii_digit()) {
+            let right = format!("the songs of the set are 1 to {}", self.titles.len());
+            return wrong(format!("there is no song {name}"), right);
+        }
+        let right = match nearest(name, &self.titles) {
+            Some(near) => format!("did you mean `{near}`?"),
+            None => String::from("write a title of the set, or its number, from 1"),
+        };
+        wrong(format!("no song of the set is called `{name}`"), right)
+    }
+
+    fn synth(&self, name: &str) -> Result<SynthId, Refusal> {
+        let place = self.synths.iter().position(|synth| *synth == name);
+        place.and_then(SynthId::new).ok_or_else(|| {
+            wrong(
+                format!("no synth is called `{name}`"),
+                format!("write `resend` for all, or {}", one_of(&self.synths)),
+            )
+        })
+    }
+
+    fn nudge(&self, to: &PitchNudge) -> Result<Nudge, Refusal> {
+        let near = |far: Interval| far.abs() <= Interval::from_cents(NUDGE_MAX_CENTS);
+        match to {
+            PitchNudge::Home => Ok(Nudge::Home),
+            PitchNudge::By(log) if near(log.interval()) => Ok(Nudge::By(log.interval())),
+            PitchNudge::By(_) => Err(wrong(
+                "this nudge is more than an octave",
+                "a nudge goes an octave up or down at most, as in `pitch +1 c`",
+            )),
+            PitchNudge::To(hertz) => {
+                let pitch = hertz.pitch();
+                let reached = |reference: &Pitch| near(pitch - *reference);
+                if self.references.is_empty() || self.references.iter().any(reached) {
+                    return Ok(Nudge::To(pitch));
+                }
+                Err(wrong(
+                    format!(
+                        "{} Hz is more than an octave from every song's reference",
+                        hertz.hertz()
+                    ),
+                    "name the frequency of the reference key, as in `pitch 416 Hz`",
+                ))
+            }
+        }
+    }
+}
+
+/// What is wrong with `song` alone, and what would be right.
+const SONG_ALONE: (&str, &str) = (
+    "`song` alone takes its number from a program change",
+    "write `song 3`, `song TITLE`, or `when: {program: any}`",
+);
+
+fn wrong(wrong: impl Into<String>, right: impl Into<String>) -> Refusal {
+    Refusal::Wrong(Mistake {
+        wrong: wrong.into(),
+        right: right.into(),
+    })
+}
