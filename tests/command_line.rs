@@ -174,7 +174,7 @@ fn retune_begins_with_the_song_asked_for() {
             serde_json::from_str(fs::read_to_string(here.at("a.jsonl")).unwrap().trim()).unwrap();
         heard.push(line["target_cents"].as_f64().unwrap());
     }
-    // In meantone A is 889.735 cents above C, so with A4 = 440 Hz C4 stands at 6010.265. (Barbour 1951, table 24)
+    // In meantone A is 889.735 cents above C, so with A4 = 440 Hz C4 stands at 6010.265. (Aron 1523 by construction: a fifth is the fourth root of 5.)
     assert!((heard[0] - 6010.265).abs() < 0.001, "{heard:?}");
     assert_eq!(heard[1], 6000.0);
 }
@@ -210,7 +210,7 @@ fn rehearse_writes_its_demo_and_never_over_an_edited_one() {
     assert_eq!(fs::read_to_string(&stage).unwrap(), edited);
     let (code, out, err) = trued(&here.0, &["rehearse", "rehearsal/stage.yaml"]);
     assert_eq!(code, 0, "{err}");
-    // Werckmeister's C-E is 390.225 cents. (Barbour 1951; the demo said 386.31)
+    // Werckmeister's C-E is 390.225 cents. (Dupont 1935, p. 79, has 390; the demo said 386.31)
     assert!(
         out.contains("werckmeister-3") && out.contains("C4-E4 390.2"),
         "{out}"

@@ -9,6 +9,9 @@ mod midi_stream;
 /// Random play while songs, plans, ports and parts change under it.
 mod changes;
 
+/// Two keyboards on the same keys.
+mod unisons;
+
 /// A counting allocator: the engine takes nothing from the heap once it is made.
 mod no_alloc;
 

@@ -97,8 +97,8 @@ fn every_interval_and_beat_of_the_rehearsal_is_what_its_tuning_says() {
 }
 
 // The same against what is published, so that a wrong tuning cannot agree with itself: the syntonic comma is 21.506
-// cents, a pure third 386.314, the quarter-comma fifth 696.578 and its wolf 737.637 (Barbour 1951, table 24, and
-// arithmetic from 3/2, 5/4 and 81/80); 27/22 is 354.547.
+// cents, a pure third 386.314, the quarter-comma fifth 696.578 and its wolf 737.637 (Ratte 1991, p. 153, has the
+// wolf as 35.68 cents over a pure fifth; the rest is arithmetic from 3/2, 5/4 and 81/80); 27/22 is 354.547.
 #[test]
 fn the_intervals_are_those_of_the_books() {
     let rehearsal = rehearsal();

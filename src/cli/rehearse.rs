@@ -1,7 +1,7 @@
 //! `trued rehearse`: a score through the real engine into the listening synth, and what there is to hear.
 
 use super::retune::{Kind, read, read_score, write};
-use super::{Failure, print, read_stage};
+use super::{Failure, called, print, read_stage};
 use crate::offline::demo::{self, Scene};
 use crate::offline::measure::Sound;
 use crate::offline::moments::{self, clock};
@@ -90,10 +90,11 @@ fn write_demo(folder: &Path) -> Result<PathBuf, Failure> {
             return Err(Failure::new(
                 Failure::USAGE,
                 format!(
-                    "{} has been changed, and is kept. To hear it as it is now: trued rehearse {}\n\
-                     To hear the demo as it was: trued rehearse --out another-folder",
-                    path.display(),
-                    files[0].0.display()
+                    "{path} has been changed, and is kept. To hear it as it is now: {trued} rehearse {stage}\n\
+                     To hear the demo as it was: {trued} rehearse --out another-folder",
+                    path = path.display(),
+                    trued = called(),
+                    stage = files[0].0.display()
                 ),
             ));
         }
@@ -173,11 +174,11 @@ fn song_name(stage: &Stage, song: u16) -> String {
 }
 
 fn closing(folder: &Path, stage: &Path) -> String {
-    let (folder, stage) = (folder.display(), stage.display());
+    let (folder, stage, trued) = (folder.display(), stage.display(), called());
     format!(
         "\nWritten: {folder}/rehearsal.wav to listen to, .svg to look at, .mid and .jsonl for other programs.\n\
          Volume down, then play {folder}/rehearsal.wav.\n\
-         Change one word in {stage}, then: trued rehearse {stage}\n\
-         With a keyboard: trued ports --stage > evening.yaml\n"
+         Change one word in {stage}, then: {trued} rehearse {stage}\n\
+         With a keyboard: {trued} ports --stage > evening.yaml\n"
     )
 }

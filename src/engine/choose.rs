@@ -1,6 +1,6 @@
 //! Which channel a new note takes.
 
-use super::channel::Rest;
+use super::channel::{Channel, Rest};
 use super::plan::{PartId, Steal};
 use super::synth::Synth;
 use super::voices::Voices;
@@ -20,6 +20,10 @@ pub(super) struct Want {
     pub offset: Interval,
     /// The pitch nudge that is in it.
     pub nudge: Interval,
+    /// How many different bends the tuning can ask for.
+    pub groups: u8,
+    /// Its number is already held at this very bend.
+    pub doubles: bool,
     /// The player's wheel, where it is added to the channel's bend.
     pub wheel: Interval,
 }
@@ -48,10 +52,13 @@ enum Wish {
     LastPlayedThisKey,
     FreeAtThisBend,
     NeverUsed,
+    /// Sounding at this very bend with the same number still held: two note-ons on one number, as a keyboard on one
+    /// channel would send them. Better than to take a channel that another pitch will want back.
+    Doubled,
+    /// Quiet, and another channel has the same bend: taking it costs nobody a bend later.
+    Spare,
     BeyondTail,
     InTail,
-    /// Sounding at this very bend with the same number still held: two note-ons on one number, better than a theft.
-    Doubled,
     UnderPedal,
     Held,
 }
@@ -103,11 +110,17 @@ fn wish(
         }
         Rest::Quiet(_) if this_key => (Wish::LastPlayedThisKey, 0, Cost::Nothing),
         Rest::Quiet(_) if this_bend => (Wish::FreeAtThisBend, 0, Cost::Nothing),
+        Rest::New if want.doubles && !has_plenty(want, synth) => {
+            (Wish::BeyondTail, 0, Cost::Nothing)
+        }
         Rest::New => (Wish::NeverUsed, 0, Cost::Nothing),
+        Rest::Quiet(_) if is_spare(want, synth, number) => {
+            (Wish::Spare, oldest_first, Cost::Nothing)
+        }
         Rest::Quiet(_) => (Wish::BeyondTail, oldest_first, Cost::Nothing),
+        _ if this_bend && must_part && synth.rig.share => (Wish::Doubled, 0, Cost::Nothing),
         Rest::Tail(_) if synth.rig.keeps_pitch() => (Wish::InTail, oldest_first, Cost::Nothing),
         Rest::Tail(_) => (Wish::InTail, oldest_first, Cost::Tail),
-        _ if this_bend && must_part => (Wish::Doubled, 0, Cost::Nothing),
         Rest::Pedal => (Wish::UnderPedal, oldest_first, Cost::Steal),
         Rest::Held => match synth.rig.steal {
             Steal::Nothing => return None,
@@ -122,6 +135,31 @@ fn same_bend(want: &Want, offset: Interval, word: Bend, synth: &Synth) -> bool {
     let range = synth.rig.bend_range;
     Bend::encode(want.offset, range).0 == word
         && Bend::encode(want.offset + want.wheel, range) == Bend::encode(offset + want.wheel, range)
+}
+
+/// Whether there are more channels never used than bends that have none yet, so that a second one for a bend that has
+/// one will not be missed.
+fn has_plenty(want: &Want, synth: &Synth) -> bool {
+    let channels = || want.pool.iter().map(|n| &synth.channels[n as usize]);
+    let used = |channel: &&Channel| channel.released_at.is_some();
+    let is_first = |channel: &Channel| {
+        let same = |other: &&Channel| used(other) && other.word == channel.word;
+        channels()
+            .find(same)
+            .is_some_and(|first| std::ptr::eq(first, channel))
+    };
+    let unused = channels().filter(|c| !used(c)).count();
+    let placed = channels().filter(used).filter(|c| is_first(c)).count();
+    unused > (want.groups as usize).saturating_sub(placed)
+}
+
+/// Whether another channel of the pool has the same bend.
+fn is_spare(want: &Want, synth: &Synth, number: u8) -> bool {
+    let word = |number: u8| synth.channels[number as usize].word;
+    let used = |number: u8| synth.channels[number as usize].released_at.is_some();
+    want.pool
+        .iter()
+        .any(|other| other != number && used(other) && word(other) == word(number))
 }
 
 fn loudest(synth: &Synth, voices: &Voices, channel: u8) -> u64 {

@@ -92,13 +92,24 @@ impl Engine {
         } else {
             Interval::ZERO
         };
+        let offset = target - Pitch::of_key(number);
+        let word = Bend::encode(offset, synth.rig.bend_range).0;
+        let pool = dialect::members(&synth.rig, part);
+        let is_double = |v: &Voice| {
+            v.synth == part.to
+                && v.number == number
+                && pool.has(v.channel)
+                && synth.channels[v.channel as usize].word == word
+        };
         let want = Want {
             part: id,
-            pool: dialect::members(&synth.rig, part),
+            pool,
             key: press.key,
             number,
-            offset: target - Pitch::of_key(number),
+            offset,
             nudge: self.nudge_of(part),
+            groups: self.playing.tuning.groups(),
+            doubles: self.voices.iter().any(is_double),
             wheel,
         };
         match choose(&want, synth, &self.voices, now) {

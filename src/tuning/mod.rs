@@ -18,21 +18,46 @@ pub use letter::Letter;
 pub use scale::{FromTonic, KeyMap, Pin, Placement, Scale, TonicWanted, TuneError};
 
 use crate::limits::KEYS;
-use crate::pitch::Pitch;
+use crate::pitch::{Interval, Pitch};
 
 /// 128 keys, each with a pitch or silent.
 #[derive(Clone, Debug, PartialEq, Eq)]
 pub struct Tuning {
     keys: [Option<Pitch>; KEYS],
+    groups: u8,
 }
 
 impl Tuning {
-    pub const fn new(keys: [Option<Pitch>; KEYS]) -> Tuning {
-        Tuning { keys }
+    pub fn new(keys: [Option<Pitch>; KEYS]) -> Tuning {
+        let groups = groups(&keys);
+        Tuning { keys, groups }
     }
 
     /// The pitch of a key, or `None` where the key is silent.
     pub fn pitch(&self, key: Key) -> Option<Pitch> {
         self.keys[key.number() as usize]
     }
+
+    /// How many different distances from equal its keys have, each of which needs a bend: at most 128.
+    pub fn groups(&self) -> u8 {
+        self.groups
+    }
+}
+
+/// Distances that no bend can tell apart count as one.
+fn groups(keys: &[Option<Pitch>; KEYS]) -> u8 {
+    let alike = Interval::from_microcents(5_000);
+    let mut found = [Interval::ZERO; KEYS];
+    let mut count = 0;
+    for pitch in keys.iter().flatten() {
+        let Some(number) = pitch.nearest_key() else {
+            continue;
+        };
+        let offset = *pitch - Pitch::of_key(number);
+        if found[..count].iter().all(|f| (*f - offset).abs() > alike) {
+            found[count] = offset;
+            count += 1;
+        }
+    }
+    count as u8
 }
