@@ -9,6 +9,9 @@ mod midi_stream;
 /// Random play while songs, plans, ports and parts change under it.
 mod changes;
 
+/// What the README shows.
+mod readme;
+
 /// Two keyboards on the same keys.
 mod unisons;
 
