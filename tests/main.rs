@@ -12,6 +12,9 @@ mod changes;
 /// What the README shows.
 mod readme;
 
+/// A wire that carries less than a player does.
+mod thinning;
+
 /// Two keyboards on the same keys.
 mod unisons;
 

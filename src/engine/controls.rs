@@ -2,7 +2,7 @@
 
 use super::channel::UNSAID;
 use super::dialect::{gesture_channels, members, on_members};
-use super::plan::PartPlan;
+use super::plan::{PartPlan, SynthId};
 use super::synth::PEDALS;
 use super::traffic::Weight;
 use super::{Engine, Hand};
@@ -69,9 +69,9 @@ impl Engine {
         for channel in gesture_channels(&synth.rig, &part).iter() {
             let manager = synth.rig.manager() == Some(channel);
             if manager || synth.channels[channel as usize].rings(now, tail) {
-                synth.controller(channel, number, value, weight, &mut self.out);
+                let told = synth.controller(channel, number, value, weight, &mut self.out);
                 let channel = synth.channel(channel);
-                if channel.version + 1 == version {
+                if told && channel.version + 1 == version {
                     channel.version = version;
                 }
             }
@@ -255,6 +255,26 @@ impl Engine {
         }
     }
 
+    /// The newest value of every gesture that was left out while the wire was busy; what does not fit now waits again.
+    pub(super) fn say_gestures_left_out(&mut self, now: Time, id: SynthId) {
+        for index in 0..self.plan.parts.len() {
+            let part = self.plan.parts[index];
+            if part.to != id {
+                continue;
+            }
+            self.play_wheel(now, index, Weight::Control);
+            self.play_pressure(now, index);
+            for number in 0..128 {
+                let value = self.parts[index].controllers[number as usize];
+                let by_late_offs =
+                    part.late_offs && matches!(number, controller::DAMPER | controller::SOSTENUTO);
+                if value != UNSAID && !by_late_offs {
+                    self.spread(now, index, number, value, Weight::Control);
+                }
+            }
+        }
+    }
+
     /// Pressure on one key: as it came, where the synth may hear it so; as channel pressure of the note's own channel
     /// under MPE, the highest where several share (MPE 1.1, 2.4).
     pub(super) fn poly_pressure_in(&mut self, hand: Hand, key: crate::tuning::Key, value: u8) {
@@ -273,7 +293,7 @@ impl Engine {
             }
             voice.pressure = value;
             let voice = *voice;
-            let synth = &self.synths[voice.synth.index()];
+            let synth = &mut self.synths[voice.synth.index()];
             if synth.rig.keeps_pitch() {
                 let value = self.pressure_for(&part, voice.synth, voice.channel, voice.part);
                 let synth = &mut self.synths[voice.synth.index()];

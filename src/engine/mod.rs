@@ -24,6 +24,7 @@ mod songs;
 mod synth;
 pub mod traffic;
 mod voices;
+mod wire;
 
 pub use plan::{KeyboardId, PartId, Plan, SynthId};
 pub use traffic::{Ask, Command, Counters, Input, Link, Nudge, Onset, Output, Report, Weight};
@@ -134,6 +135,7 @@ impl Engine {
 
     /// Cannot fail; bad bytes are counted.
     pub fn handle_input(&mut self, now: Time, input: Input<'_>) {
+        self.tick(now);
         match input {
             Input::Midi { keyboard, bytes } => self.bytes_in(now, keyboard, bytes),
             Input::KeyboardLost(keyboard) => self.let_go(now, keyboard),
@@ -148,6 +150,7 @@ impl Engine {
 
     /// To be called once `poll_timeout` has come; harmless earlier.
     pub fn handle_timeout(&mut self, now: Time) {
+        self.tick(now);
         for index in 0..self.plan.keyboards.len() {
             if self.keyboards[index].gone_at().is_some_and(|at| at <= now) {
                 self.keyboards[index].sensed_at = None;
@@ -161,6 +164,9 @@ impl Engine {
                 self.set_up(now, id);
             }
             self.say_pieces(now, id);
+            if self.synths[index].wire.take_freed() {
+                self.say_gestures_left_out(now, id);
+            }
         }
         self.when_silent(now);
         self.send_song(now);
@@ -171,6 +177,7 @@ impl Engine {
     /// Nothing that sounds is disturbed, but for notes of a part or synth that is no more. The song is found again by title and keeps its own settings until it is begun
     /// again, unless the plan says that edits count at once. A synth whose rig changed takes it on once silent.
     pub fn handle_plan(&mut self, now: Time, plan: Box<Plan>) -> Box<Plan> {
+        self.tick(now);
         self.swap_plan(now, plan)
     }
 
@@ -200,6 +207,12 @@ impl Engine {
             voices: self.voices.len() as u16,
             counters: self.out.counters,
             stopped: self.stopping && synths.all(|synth| synth.left || !synth.up),
+        }
+    }
+
+    fn tick(&mut self, now: Time) {
+        for synth in &mut self.synths {
+            synth.wire.tick(now);
         }
     }
 

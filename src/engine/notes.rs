@@ -220,7 +220,7 @@ impl Engine {
     }
 
     fn start_drum(&mut self, id: SynthId, press: &Press) {
-        let synth = &self.synths[id.index()];
+        let synth = &mut self.synths[id.index()];
         if !synth.up || synth.tight || self.stopping || self.voices.full() {
             self.out.counters.refused += 1;
             return;

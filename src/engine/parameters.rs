@@ -127,7 +127,7 @@ impl Engine {
         bytes: impl Fn(u8) -> [u8; N],
     ) {
         let channels = self.gesture_channels_of(hand);
-        for (synth, channels) in self.synths.iter().zip(channels) {
+        for (synth, channels) in self.synths.iter_mut().zip(channels) {
             for channel in channels.iter() {
                 synth.send(Weight::Owed, &bytes(channel), &mut self.out);
             }

@@ -150,6 +150,8 @@ pub struct SynthPlan {
     pub leave: Leave,
     /// Time between the pieces of a set-up, so that it never holds up a key on a slow wire; zero says it all at once.
     pub pace: Span,
+    /// What the wire carries, at least 1; gestures are thinned to it, notes never. `None`: no limit worth the name.
+    pub bytes_per_s: Option<u32>,
 }
 
 /// Which of a player's gestures reach a part.

@@ -4,6 +4,7 @@ use super::channel::{Channel, Due, Program, UNSAID};
 use super::outbox::Outbox;
 use super::plan::{ChannelSet, Dialect, Leave, Steal, SynthId, SynthPlan};
 use super::traffic::Weight;
+use super::wire::Wire;
 use crate::limits::CHANNELS;
 use crate::midi::{controller, status};
 use crate::pitch::word::{Bend, BendRange};
@@ -23,6 +24,7 @@ pub(super) struct Rig {
     pub steal: Steal,
     pub leave: Leave,
     pub pace: Span,
+    pub bytes_per_s: Option<u32>,
 }
 
 impl Rig {
@@ -38,6 +40,7 @@ impl Rig {
             steal: plan.steal,
             leave: plan.leave,
             pace: plan.pace,
+            bytes_per_s: plan.bytes_per_s,
         }
     }
 
@@ -86,6 +89,7 @@ pub(super) struct Synth {
     pub repeat_when_silent: bool,
     /// When the next piece of a set-up is due.
     pub piece_at: Option<Time>,
+    pub wire: Wire,
     /// When set-up is to be said once more.
     pub again_at: Option<Time>,
 }
@@ -104,6 +108,7 @@ impl Synth {
             zone_due: false,
             repeat_when_silent: false,
             piece_at: None,
+            wire: Wire::IDLE,
             again_at: None,
         }
     }
@@ -125,8 +130,9 @@ impl Synth {
         self.silent_at().is_some_and(|at| at <= now)
     }
 
-    pub fn send(&self, weight: Weight, bytes: &[u8], out: &mut Outbox) {
+    pub fn send(&mut self, weight: Weight, bytes: &[u8], out: &mut Outbox) {
         if self.up {
+            self.wire.carry(bytes.len(), self.rig.bytes_per_s);
             out.send(self.id, weight, bytes);
         }
     }
@@ -147,13 +153,20 @@ impl Synth {
             None
         };
         // To a synth that is away nothing can be said; it is set up anew when it comes.
-        let said = [self.piece_at, self.again_at].map(|at| at.filter(|_| self.up));
+        let said = [self.piece_at, self.again_at, self.wire.free_at()];
+        let said = said.map(|at| at.filter(|_| self.up));
         said.into_iter().flatten().chain(silence).min()
+    }
+
+    /// Whether something of that weight may go out now: gestures wait for a slow wire, and only their newest value is
+    /// said then.
+    fn may_send(&mut self, weight: Weight) -> bool {
+        weight != Weight::Control || self.wire.has_room(self.rig.bytes_per_s)
     }
 
     /// Sends a bend unless the channel already has it; tells whether it did.
     pub fn bend(&mut self, channel: u8, bend: Bend, weight: Weight, out: &mut Outbox) -> bool {
-        if self.channel(channel).bend == Some(bend) {
+        if self.channel(channel).bend == Some(bend) || !self.may_send(weight) {
             return false;
         }
         self.channel(channel).bend = Some(bend);
@@ -161,7 +174,7 @@ impl Synth {
         true
     }
 
-    /// Sends a controller unless the channel already has it.
+    /// Sends a controller unless the channel already has it; tells whether it has it now.
     pub fn controller(
         &mut self,
         channel: u8,
@@ -169,17 +182,21 @@ impl Synth {
         value: u8,
         weight: Weight,
         out: &mut Outbox,
-    ) {
-        let told = &mut self.channel(channel).controllers[number as usize];
-        if *told != value {
-            *told = value;
-            self.send(weight, &[status::CONTROLLER | channel, number, value], out);
+    ) -> bool {
+        if self.channel(channel).controllers[number as usize] == value {
+            return true;
         }
+        if !self.may_send(weight) {
+            return false;
+        }
+        self.channel(channel).controllers[number as usize] = value;
+        self.send(weight, &[status::CONTROLLER | channel, number, value], out);
+        true
     }
 
     /// Sends channel pressure unless the channel already has it.
     pub fn pressure(&mut self, channel: u8, value: u8, weight: Weight, out: &mut Outbox) {
-        if self.channel(channel).pressure != value {
+        if self.channel(channel).pressure != value && self.may_send(weight) {
             self.channel(channel).pressure = value;
             self.send(weight, &[status::PRESSURE | channel, value], out);
         }

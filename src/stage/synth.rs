@@ -70,13 +70,11 @@ pub fn synth(name: String, at: &At<'_>, left: Leave, found: &mut Findings) -> Op
     if let Some(at) = fields.take("leave") {
         synth.plan.leave = leave(&at, complaints).unwrap_or_default();
     }
-    let thinned = fields
-        .take("bytes_per_s")
-        .and_then(|at| at.whole("bytes a second", 100..=10_000_000, complaints));
-    fields.finish(complaints);
-    if thinned.is_some() {
-        found.not_played(format!("`bytes_per_s` of {name}"));
+    if let Some(at) = fields.take("bytes_per_s") {
+        let speed = at.whole("bytes a second", 100..=10_000_000, complaints);
+        synth.plan.bytes_per_s = speed.map(|speed| speed as u32);
     }
+    fields.finish(complaints);
     Some(synth)
 }
 
@@ -183,6 +181,7 @@ pub fn any_synth(name: &str, leave: Leave) -> Synth {
             steal: Steal::Oldest,
             leave,
             pace: Span::from_millis(defaults::PACE_MS),
+            bytes_per_s: None,
         },
     }
 }

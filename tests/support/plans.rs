@@ -63,6 +63,7 @@ pub fn synth(name: &str, dialect: Dialect, range: u8) -> SynthPlan {
         steal: Steal::Oldest,
         leave: Leave::Plain,
         pace: Span::ZERO,
+        bytes_per_s: None,
     }
 }
 
