@@ -53,7 +53,9 @@ const SCORE: &[u8] =
 #[test]
 fn every_command_helps_with_an_example() {
     let here = Folder::new("help");
-    for command in ["rehearse", "run", "check", "chart", "retune", "ports"] {
+    for command in [
+        "rehearse", "run", "check", "chart", "retune", "ports", "tell", "status",
+    ] {
         let (code, out, err) = trued(&here.0, &[command, "--help"]);
         assert_eq!((code, err.as_str()), (0, ""), "{command}");
         assert!(

@@ -50,3 +50,6 @@ mod command_line;
 
 /// The chart on the command line.
 mod chart;
+
+/// A running daemon as people and a supervisor meet it: control socket, `tell`, `status`, readiness, watchdog.
+mod control;

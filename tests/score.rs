@@ -83,6 +83,23 @@ fn a_note_goes_through_at_once_with_its_bend_before_it() {
 }
 
 #[test]
+fn what_an_earlier_run_left_sounding_ends_before_anything_else_is_said() {
+    for link in [Link::Up, Link::Back] {
+        let begin = Step::Synth { synth: 0, link };
+        let sent = play(&stand(), vec![(at(1), begin)], at(1_000));
+        let (quiet, set_up) = sent.split_at(4 * 16);
+        for channel in 0..16 {
+            for number in [64, 66, 123, 120] {
+                let message = [0xB0 | channel, number, 0];
+                let told = quiet.iter().any(|s| s.time == at(1) && s.bytes == message);
+                assert!(told, "{link:?}: controller {number}, channel {channel}");
+            }
+        }
+        assert!(!set_up.is_empty(), "then it is set up");
+    }
+}
+
+#[test]
 fn stop_lets_go_waits_for_the_tail_and_leaves() {
     let mut stand = stand();
     let begin = vec![(at(1), UP), (at(10), midi(&[0x90, 64, 100]))];
@@ -192,7 +209,7 @@ fn a_keyboard_that_goes_lets_go_of_its_keys() {
     assert!(
         of_kind(&sent, 0xB0)
             .iter()
-            .any(|sent| sent.bytes[1..] == [64, 0])
+            .any(|sent| sent.time == at(50) && sent.bytes[1..] == [64, 0])
     );
     let news: Vec<News> = std::iter::from_fn(|| stand.news.pop().ok()).collect();
     let up = News::Synth {

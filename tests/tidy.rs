@@ -81,7 +81,7 @@ const CRATES: &[(&str, &[&str])] = &[
     ("rtrb", &["daemon"]),
     ("rustysynth", &["offline"]),
     ("serde", &["stage", "offline"]),
-    ("serde_json", &["offline", "cli"]),
+    ("serde_json", &["offline", "daemon", "cli"]),
     ("serde_yaml", &["stage"]),
     ("signal_hook", &["daemon"]),
     ("tracing", &["stage", "ports", "offline", "daemon", "cli"]),

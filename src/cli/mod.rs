@@ -13,6 +13,9 @@ mod ports;
 mod rehearse;
 mod retune;
 mod run;
+mod status;
+mod tell;
+mod which;
 
 use crate::stage::Stage;
 use clap::{Parser, Subcommand};
@@ -34,6 +37,8 @@ Examples:
   trued ports --stage > evening.yaml         a stage file from what is plugged in
   trued check evening.yaml                   what is wrong with it, and what to expect
   trued run evening.yaml                     play
+  trued tell next                            a word to the one that is playing
+  trued status                               how it stands
   trued chart --tuning vallotti              what every key sounds
   trued retune evening.yaml in.mid out.mid   the same for a MIDI file
 
@@ -94,6 +99,24 @@ Examples:
   trued ports --watch                         press something: each gesture as a line to paste
   trued ports --stage > evening.yaml")]
     Ports(ports::Args),
+    /// Tells the running daemon what to do
+    #[command(after_help = "\
+Examples:
+  trued tell next
+  trued tell song 3
+  trued tell panic
+  trued tell --name left back                 to the one that was started with --name left
+
+The words are those that may stand after `do:` in a stage file. Ends with 0 when it was done, 64 when the words are not
+understood or cannot be followed now, 69 when no daemon answers.")]
+    Tell(tell::Args),
+    /// Says how the running daemon stands: stage, song, ports, what gave way
+    #[command(after_help = "\
+Examples:
+  trued status
+  trued status --follow                       and then a line for each change
+  trued status --json")]
+    Status(status::Args),
 }
 
 /// Why a command could not do what was asked: one clear text for stderr, and the exit code.
@@ -172,6 +195,8 @@ fn dispatch(command: Command) -> Result<(), Failure> {
         Command::Chart(args) => chart::run(args),
         Command::Retune(args) => retune::run(args),
         Command::Ports(args) => ports::run(args),
+        Command::Tell(args) => tell::run(args),
+        Command::Status(args) => status::run(args),
     }
 }
 

@@ -1,6 +1,7 @@
 //! `trued run`: the daemon in the foreground.
 
 use super::Failure;
+use super::which::Which;
 use std::path::PathBuf;
 
 #[derive(clap::Args)]
@@ -13,9 +14,8 @@ pub struct Args {
     /// Which sound system carries the MIDI
     #[arg(long, value_enum, default_value = "auto")]
     backend: Choice,
-    /// What the client is called among the machine's ports
-    #[arg(long, default_value = "trued")]
-    name: String,
+    #[command(flatten)]
+    which: Which,
 }
 
 #[derive(Clone, Copy, Debug, PartialEq, Eq, clap::ValueEnum)]
@@ -35,7 +35,7 @@ pub fn run(args: Args) -> Result<(), Failure> {
         stage,
         fresh: _,
         backend,
-        name,
+        which,
     } = args;
     if matches!(backend, Choice::Jack | Choice::Midir) {
         let backend = format!("{backend:?}").to_lowercase();
@@ -46,15 +46,25 @@ pub fn run(args: Args) -> Result<(), Failure> {
             ),
         ));
     }
-    let stage = super::read_stage(&stage)?;
     start_log();
-    play(&stage, &name)
+    play(stage, which)
 }
 
 #[cfg(target_os = "linux")]
-fn play(stage: &crate::stage::Stage, name: &str) -> Result<(), Failure> {
-    use crate::daemon::run::{Trouble, play};
-    play(stage, name).map_err(|trouble| match trouble {
+fn play(file: PathBuf, which: Which) -> Result<(), Failure> {
+    use crate::daemon::run::{Evening, Trouble, play};
+    which.check()?;
+    let stage = super::read_stage(&file)?;
+    let Which { name, socket } = which;
+    let evening = Evening { file, name, socket };
+    play(stage, &evening).map_err(|trouble| match trouble {
+        Trouble::Taken(path) => Failure::new(
+            Failure::UNAVAILABLE,
+            format!(
+                "A daemon of this name is running already ({}); stop it with `trued tell stop`, or give this one another --name",
+                path.display()
+            ),
+        ),
         Trouble::Ports(broken) => Failure::new(Failure::UNAVAILABLE, broken.to_string()),
         Trouble::System(error) => {
             Failure::new(Failure::UNAVAILABLE, format!("The system refused: {error}"))
@@ -67,7 +77,7 @@ fn play(stage: &crate::stage::Stage, name: &str) -> Result<(), Failure> {
 }
 
 #[cfg(not(target_os = "linux"))]
-fn play(_: &crate::stage::Stage, _: &str) -> Result<(), Failure> {
+fn play(_: PathBuf, _: Which) -> Result<(), Failure> {
     Err(Failure::new(
         Failure::UNAVAILABLE,
         "this version plays on Linux only; check, chart, retune and rehearse work here",

@@ -1,29 +1,30 @@
-//! The desk thread: signals, connecting what is plugged in, the log.
+//! The desk thread: signals, connecting what is plugged in, the log, and whoever asks something at its front.
 
+use super::front::Front;
+use super::orders::Orders;
 use super::rig::RigWanted;
 use super::score::News;
-use crate::engine::{Ask, Command};
+use super::status::Device;
+use crate::engine::Ask;
 use crate::ports::names::{Address, Choice, Port, choose};
-use crate::ports::{Broken, Link, Patchbay, Tally, system::Bell};
-use rtrb::{Consumer, Producer};
+use crate::ports::{Broken, Link, Patchbay, Tally};
+use crate::time::Span;
+use rtrb::Consumer;
 use signal_hook::iterator::Signals;
 use std::sync::Arc;
 use std::sync::atomic::{AtomicBool, Ordering};
-use std::time::Duration;
 use tracing::{error, info, warn};
 
 /// How often the desk looks up. Nothing that sounds waits for it.
-const LOOK: Duration = Duration::from_millis(50);
+const LOOK: Span = Span::from_millis(50);
 
 pub struct Desk {
     pub rig: RigWanted,
     pub patch: Patch,
-    /// Titles in the order of the set.
-    pub titles: Vec<String>,
+    pub front: Front,
     pub signals: Signals,
-    pub commands: Producer<Command>,
+    pub orders: Orders,
     pub news: Consumer<News>,
-    pub bell: Bell,
     pub tally: Arc<Tally>,
     /// The score thread has left.
     pub done: Arc<AtomicBool>,
@@ -36,7 +37,7 @@ impl Desk {
         let mut losses = (0, 0);
         while !self.done.load(Ordering::Acquire) {
             for _ in self.signals.pending() {
-                self.stop();
+                self.front.stop(&mut self.orders);
             }
             self.log_news();
             let now = self.tally.changes.load(Ordering::Relaxed);
@@ -45,13 +46,17 @@ impl Desk {
                 self.reconnect();
             }
             losses = self.log_losses(losses);
-            std::thread::sleep(LOOK);
+            for asked in self.front.look(LOOK, &mut self.orders) {
+                let text = "this version reads its stage file once; stop it and start it again";
+                self.front.answer(asked, 64, text);
+            }
         }
         self.log_news();
+        self.front.close();
     }
 
     /// Input that was lost since `before`; gives the counts for the next look.
-    fn log_losses(&self, before: (u64, u64)) -> (u64, u64) {
+    fn log_losses(&mut self, before: (u64, u64)) -> (u64, u64) {
         let overruns = self.tally.overruns.load(Ordering::Relaxed);
         let too_long = self.tally.too_long.load(Ordering::Relaxed);
         if overruns != before.0 {
@@ -60,19 +65,19 @@ impl Desk {
         if too_long != before.1 {
             warn!("a message from a keyboard was too long and was left out");
         }
+        (self.front.status.overruns, self.front.status.too_long) = (overruns, too_long);
         (overruns, too_long)
-    }
-
-    fn stop(&mut self) {
-        info!("stopping: notes off, then tails die away");
-        // A full queue holds a stop already.
-        let _ = self.commands.push(Command::Stop);
-        self.bell.ring();
     }
 
     fn reconnect(&mut self) {
         let before = self.patch.choice.clone();
         let ports = self.patch.connect(&self.rig);
+        let (keyboards, synths) = self.rig.devices(&self.patch.choice, &ports);
+        self.front.status.keyboards = keyboards;
+        for (synth, before) in synths.into_iter().zip(&mut self.front.status.synths) {
+            let linked = before.linked;
+            *before = Device { linked, ..synth };
+        }
         if (&before.keyboards, &before.synths)
             != (&self.patch.choice.keyboards, &self.patch.choice.synths)
         {
@@ -86,18 +91,21 @@ impl Desk {
         while let Ok(news) = self.news.pop() {
             match news {
                 News::Song(place) => {
-                    let title = self.titles.get(usize::from(place));
+                    let title = self.front.status.titles.get(usize::from(place));
                     let title = title.map_or("", String::as_str);
                     info!("song {}: {title}", place + 1);
                 }
                 News::Synth { synth, link } => {
                     let name = synth_name(&self.rig, synth);
+                    if let Some(device) = self.front.status.synths.get_mut(synth) {
+                        device.linked = link != Link::Down;
+                    }
                     match link {
                         Link::Up | Link::Back => info!("{name} is set up"),
                         Link::Down => warn!("{name} has gone"),
                     }
                 }
-                News::Asked(Ask::Stop) => self.stop(),
+                News::Asked(Ask::Stop) => self.front.stop(&mut self.orders),
                 News::Asked(Ask::Reload) => {
                     warn!("the stage file is only read again by a restart");
                 }

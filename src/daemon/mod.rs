@@ -4,17 +4,30 @@
 //! another: keyboards in, engine, synths out. The desk thread does all else: signals, connecting ports, the log.
 //! **Start reading at** [`run::play`], then `score.rs`.
 //! **May know** `ports/`, `stage/`, `engine/`, `time`, `limits`.
-//! **Owns** signal-hook and rtrb. The score thread never allocates, logs, locks, parses or waits for the desk; between
-//! the two there are only queues that neither can hold up.
+//! **Owns** signal-hook and rtrb, and what is said on the control socket (`socket.rs`). The score thread never allocates,
+//! logs, locks, parses or waits for the desk; between the two there are only queues that neither can hold up.
 //! **Not here**: how bytes get in and out (`ports/`), what is made of them (`engine/`).
 
 #[cfg(target_os = "linux")]
 mod desk;
 #[cfg(target_os = "linux")]
+pub mod front;
+#[cfg(target_os = "linux")]
 mod open;
+#[cfg(target_os = "linux")]
+pub mod orders;
+#[cfg(target_os = "linux")]
+pub mod place;
 pub mod rig;
 #[cfg(target_os = "linux")]
 pub mod run;
 mod score;
+#[cfg(target_os = "linux")]
+pub mod socket;
+pub mod status;
+#[cfg(target_os = "linux")]
+pub mod systemd;
+#[cfg(target_os = "linux")]
+mod tell;
 
-pub use score::{Ending, News, Player, Score, Slot};
+pub use score::{Ending, News, Player, Pulse, Score, Slot};

@@ -51,18 +51,22 @@ impl Ports {
         }
     }
 
+    /// Lets the calling thread, which is to play, run before all ordinary ones. Says whether it does.
+    pub fn hurry(&self) -> bool {
+        let hurried = system::hurry();
+        if let Err(error) = &hurried {
+            info!("no real-time priority ({error}): notes may be late on a busy machine");
+        }
+        hurried.is_ok()
+    }
+
     /// Plays the score until it leaves. The calling thread becomes the score thread where the backend has none.
     ///
     /// # Errors
     /// The ports are gone for good.
     pub fn play(&mut self, slot: &Arc<Slot>) -> Result<(), Broken> {
         match self {
-            Ports::Alsa(alsa) => {
-                if let Err(error) = system::hurry() {
-                    info!("no real-time priority ({error}): notes may be late on a busy machine");
-                }
-                alsa.run(&mut Player::new(slot.clone()))
-            }
+            Ports::Alsa(alsa) => alsa.run(&mut Player::new(slot.clone())),
         }
     }
 }

@@ -1,7 +1,8 @@
 //! From the devices of a stage file to the ports they want, and back to words for players.
 
+use super::status::{Device, Waits};
 use crate::ports::names::{Address, Choice, Port, Wanted, Wish};
-use crate::stage::{self, Device, Stage};
+use crate::stage::{self, Stage};
 
 /// The keyboards and synths of a stage file, as ports know them.
 #[derive(Clone, Debug)]
@@ -18,6 +19,19 @@ impl RigWanted {
         }
     }
 
+    /// How every device stands, for status: keyboards, then synths.
+    pub fn devices(&self, choice: &Choice, ports: &[Port]) -> (Vec<Device>, Vec<Device>) {
+        let keyboards = self.keyboards.iter().enumerate().map(|(index, wanted)| {
+            let connected = choice.keyboards.get(index).map_or(&[][..], Vec::as_slice);
+            device(wanted, connected, ports)
+        });
+        let synths = self.synths.iter().enumerate().map(|(index, wanted)| {
+            let connected = choice.synths.get(index).copied().flatten();
+            device(wanted, connected.as_slice(), ports)
+        });
+        (keyboards.collect(), synths.collect())
+    }
+
     /// One clause for each device: what it `is` (or `would be`) connected to, or what it waits for.
     pub fn describe(&self, is: &str, choice: &Choice, ports: &[Port]) -> Vec<String> {
         let keyboards = self.keyboards.iter().enumerate().map(|(index, wanted)| {
@@ -32,7 +46,7 @@ impl RigWanted {
     }
 }
 
-fn wanted(device: &Device) -> Wanted {
+fn wanted(device: &stage::Device) -> Wanted {
     Wanted {
         name: device.name.clone(),
         wish: match &device.port {
@@ -46,13 +60,34 @@ fn wanted(device: &Device) -> Wanted {
     }
 }
 
+fn device(wanted: &Wanted, connected: &[Address], ports: &[Port]) -> Device {
+    Device {
+        name: wanted.name.clone(),
+        ports: names_of(connected, ports),
+        waits: match &wanted.wish {
+            Wish::Virtual => Waits::ForOthers,
+            Wish::Any => Waits::For("any port".to_string()),
+            Wish::Named { globs, socket } => Waits::For(named(globs, socket.as_deref())),
+        },
+        linked: false,
+    }
+}
+
+fn names_of(connected: &[Address], ports: &[Port]) -> Vec<String> {
+    let here = ports
+        .iter()
+        .filter(|port| connected.contains(&port.address));
+    here.map(Port::full_name).collect()
+}
+
+fn named(globs: &[String], socket: Option<&str>) -> String {
+    let place = socket.map_or(String::new(), |socket| format!(" at socket {socket}"));
+    format!("{}{place}", globs.join(" or "))
+}
+
 fn describe(wanted: &Wanted, is: &str, connected: &[Address], ports: &[Port]) -> String {
     let name = &wanted.name;
-    let names: Vec<String> = ports
-        .iter()
-        .filter(|port| connected.contains(&port.address))
-        .map(Port::full_name)
-        .collect();
+    let names = names_of(connected, ports);
     if !names.is_empty() {
         return format!("{name} {is} connected to {}", names.join(" and "));
     }
@@ -60,10 +95,7 @@ fn describe(wanted: &Wanted, is: &str, connected: &[Address], ports: &[Port]) ->
         Wish::Virtual => format!("{name} is a port for others to connect to"),
         Wish::Any => format!("{name} waits for any port"),
         Wish::Named { globs, socket } => {
-            let place = socket
-                .as_ref()
-                .map_or(String::new(), |socket| format!(" at socket {socket}"));
-            format!("{name} waits for {}{place}", globs.join(" or "))
+            format!("{name} waits for {}", named(globs, socket.as_deref()))
         }
     }
 }

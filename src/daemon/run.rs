@@ -1,27 +1,47 @@
 //! From a stage file to an evening: opens the ports, starts the threads, plays until it is told to stop.
 
 use super::desk::Desk;
+use super::front::Front;
 use super::open::Ports;
+use super::orders::Orders;
+use super::place;
 use super::rig::RigWanted;
 use super::score::{Ending, Score, Slot};
+use super::status::Status;
+use super::systemd::Systemd;
 use crate::engine::{Engine, Report};
 use crate::ports::Broken;
 use crate::stage::Stage;
 use signal_hook::consts::{SIGINT, SIGTERM};
 use signal_hook::iterator::Signals;
 use std::panic::{AssertUnwindSafe, catch_unwind};
+use std::path::PathBuf;
 use std::sync::Arc;
 use std::sync::atomic::{AtomicBool, Ordering};
 use tracing::{error, info, warn};
 
 /// Commands and news that can be under way between the two threads.
 const QUEUE: usize = 256;
+/// Pulses that can wait for the desk: over a look's worth of the shortest cycles.
+const PULSES: usize = 64;
+
+/// What a daemon was told on its command line.
+#[derive(Clone, Debug)]
+pub struct Evening {
+    pub file: PathBuf,
+    /// What it is called among the machine's ports and daemons.
+    pub name: String,
+    /// Where its control socket is to lie; else where it usually does.
+    pub socket: Option<PathBuf>,
+}
 
 /// Why an evening could not begin or go on.
 #[derive(Debug)]
 pub enum Trouble {
     /// No ports, or none any more.
     Ports(Broken),
+    /// Another daemon of this name is running, with its socket here.
+    Taken(PathBuf),
     /// The system refused a thread or a signal handler.
     System(std::io::Error),
     /// A bug of ours; everything has been silenced as well as could be done.
@@ -32,26 +52,40 @@ pub enum Trouble {
 ///
 /// # Errors
 /// There are no ports to play on, or we have failed.
-pub fn play(stage: &Stage, client_name: &str) -> Result<(), Trouble> {
+pub fn play(stage: Stage, evening: &Evening) -> Result<(), Trouble> {
     let signals = Signals::new([SIGTERM, SIGINT]).map_err(Trouble::System)?;
-    let rig = RigWanted::of(stage);
-    let (mut ports, mut patch) = Ports::open(&rig, client_name).map_err(Trouble::Ports)?;
+    let socket = place::open(&evening.name, evening.socket.as_deref()).map_err(Trouble::Taken)?;
+    let rig = RigWanted::of(&stage);
+    let (mut ports, mut patch) = Ports::open(&rig, &evening.name).map_err(Trouble::Ports)?;
     let there = patch.connect(&rig);
 
     let (commands_in, commands_out) = rtrb::RingBuffer::new(QUEUE);
     let (news_in, news_out) = rtrb::RingBuffer::new(QUEUE);
+    let (pulses_in, pulses_out) = rtrb::RingBuffer::new(PULSES);
     let engine = Engine::new(stage.plan());
-    let slot = Slot::new(Score::new(engine, rig.synths.len(), commands_out, news_in));
+    let score = Score::new(engine, rig.synths.len(), commands_out, news_in).with_pulses(pulses_in);
     let done = Arc::new(AtomicBool::new(false));
     let clauses = rig.describe("is", &patch.choice, &there).join("; ");
+    let mut status = Status::of(&stage, &evening.name, &evening.file, score.report());
+    status.real_time = ports.hurry();
+    (status.keyboards, status.synths) = rig.devices(&patch.choice, &there);
+    let stage = Arc::new(stage);
+    let mut front = Front::new(
+        stage,
+        status,
+        socket,
+        Systemd::from_environment(),
+        pulses_out,
+    );
+    front.ready();
+    let slot = Slot::new(score);
     let desk = Desk {
         rig,
         patch,
-        titles: stage.set.iter().map(|song| song.title.clone()).collect(),
+        front,
         signals,
-        commands: commands_in,
+        orders: Orders::new(commands_in, ports.bell()),
         news: news_out,
-        bell: ports.bell(),
         tally: ports.tally(),
         done: done.clone(),
     };

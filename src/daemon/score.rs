@@ -2,7 +2,7 @@
 
 use crate::engine::{self, Ask, Command, Engine, Input, KeyboardId, Output, Report, SynthId};
 use crate::limits::{CHANNELS, SYNTHS_MAX};
-use crate::midi::controller::{ALL_NOTES_OFF, ALL_SOUND_OFF, DAMPER};
+use crate::midi::controller::{ALL_NOTES_OFF, ALL_SOUND_OFF, DAMPER, SOSTENUTO};
 use crate::midi::status;
 use crate::ports::{self, Cycle, Inbox, Next, Outlet, Room, What};
 use crate::time::{Span, Time};
@@ -34,6 +34,14 @@ pub enum News {
     },
 }
 
+/// How things stand, for the desk: a copy after each cycle, and so a sign of life.
+#[derive(Clone, Copy, Debug)]
+pub struct Pulse {
+    pub report: Report,
+    /// Commands followed since the beginning.
+    pub obeyed: u64,
+}
+
 /// Why a score came to its end.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Ending {
@@ -55,6 +63,10 @@ const DEADLINES_MAX: usize = 10_000;
 const STOP: Span = Span::from_millis(4_000);
 /// How long a port that took nothing any more is left alone.
 const CHOKED: Span = Span::from_millis(1_000);
+/// How often the desk hears from us even if nothing happens.
+const BEAT: Span = Span::from_millis(250);
+/// How soon a pulse for which there was no room is tried again.
+const PULSE_AGAIN: Span = Span::from_millis(20);
 
 /// The engine with its queues. Lives in a [`Slot`], so that no backend that dies takes it along.
 pub struct Score {
@@ -62,6 +74,8 @@ pub struct Score {
     synths: usize,
     commands: Consumer<Command>,
     news: Producer<News>,
+    pulses: Option<Producer<Pulse>>,
+    obeyed: u64,
     song: u16,
     /// When a choked port is tried again.
     reopen_at: [Option<Time>; SYNTHS_MAX],
@@ -82,9 +96,20 @@ impl Score {
             synths: synths.min(SYNTHS_MAX),
             commands,
             news,
+            pulses: None,
+            obeyed: 0,
             reopen_at: [None; SYNTHS_MAX],
             give_up_at: None,
             ending: None,
+        }
+    }
+
+    /// Says after each cycle how things stand, and at least four times a second.
+    #[must_use]
+    pub fn with_pulses(self, pulses: Producer<Pulse>) -> Score {
+        Score {
+            pulses: Some(pulses),
+            ..self
         }
     }
 
@@ -114,10 +139,22 @@ impl Score {
         self.run_due(to, outlet);
         while let Ok(command) = self.commands.pop() {
             self.obey(to, command, outlet);
+            self.obeyed += 1;
         }
         self.reopen(to, outlet);
         self.tell_song();
-        self.next(to, outlet)
+        let pulse_at = self.beat(to);
+        self.next(to, pulse_at, outlet)
+    }
+
+    /// Gives a pulse; says when the next one is due.
+    fn beat(&mut self, now: Time) -> Option<Time> {
+        let pulse = Pulse {
+            report: self.engine.report(),
+            obeyed: self.obeyed,
+        };
+        let went = self.pulses.as_mut()?.push(pulse).is_ok();
+        Some(now + if went { BEAT } else { PULSE_AGAIN })
     }
 
     fn take_in(&mut self, time: Time, what: What<'_>, outlet: &mut Outlet<'_>) {
@@ -139,6 +176,12 @@ impl Score {
                 // What waits for a port that has gone, or had choked, is of no use to the one that comes.
                 if lost || self.reopen_at[synth].take().is_some() {
                     outlet.forget(synth);
+                }
+                if !lost {
+                    // An earlier run that was killed, or a cable pulled while notes sounded, may have left it so. Bends
+                    // are not said here: the engine takes none for granted.
+                    let quiet = [DAMPER, SOSTENUTO, ALL_NOTES_OFF, ALL_SOUND_OFF];
+                    hush(outlet, synth, &quiet);
                 }
                 self.link(time, synth, link.into());
                 self.tell(News::Synth { synth, link });
@@ -241,7 +284,7 @@ impl Score {
         let _ = self.news.push(news);
     }
 
-    fn next(&mut self, to: Time, outlet: &Outlet<'_>) -> Next {
+    fn next(&mut self, to: Time, pulse_at: Option<Time>, outlet: &Outlet<'_>) -> Next {
         if self.engine.report().stopped && !outlet.is_waiting() {
             self.ending = Some(Ending::Stopped);
         } else if self.give_up_at.is_some_and(|at| at <= to) {
@@ -251,8 +294,8 @@ impl Score {
             return Next::Leave;
         }
         let own = self.reopen_at.iter().copied().flatten();
-        let deadlines = own.chain(self.give_up_at).chain(self.engine.poll_timeout());
-        Next::Wait(deadlines.min())
+        let deadlines = own.chain(self.give_up_at).chain(pulse_at);
+        Next::Wait(deadlines.chain(self.engine.poll_timeout()).min())
     }
 
     /// After a panic: what the engine still knows to be open, then silence for every channel whatever it knows.

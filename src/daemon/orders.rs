@@ -1,0 +1,30 @@
+//! The way from the desk to the score thread, with a count, so that the desk knows when an order has been followed.
+
+use crate::engine::Command;
+use crate::ports::system::Bell;
+use rtrb::Producer;
+
+pub struct Orders {
+    commands: Producer<Command>,
+    bell: Bell,
+    given: u64,
+}
+
+impl Orders {
+    pub fn new(commands: Producer<Command>, bell: Bell) -> Orders {
+        Orders {
+            commands,
+            bell,
+            given: 0,
+        }
+    }
+
+    /// Gives an order and wakes the score thread. It is followed once `Pulse::obeyed` has come to the number returned;
+    /// `None` if so many wait already that the score thread must be stuck.
+    pub fn give(&mut self, command: Command) -> Option<u64> {
+        self.commands.push(command).ok()?;
+        self.given += 1;
+        self.bell.ring();
+        Some(self.given)
+    }
+}
