@@ -13,6 +13,10 @@ pub const PARTS_MAX: usize = 16;
 pub const VOICES_MAX: usize = 256;
 /// Songs in a set (a program change reaches 128 of them; cues reach all).
 pub const SONGS_MAX: usize = 512;
+/// Controls held at once that may become long presses.
+pub const PRESSES_MAX: usize = 64;
+/// Kinds of commands that can wait for quiet, and then some.
+pub const ARMED_MAX: usize = 16;
 /// Cues in one stage file.
 pub const CUES_MAX: usize = 128;
 /// Longest system exclusive message passed on whole; longer ones are dropped and counted.

@@ -18,6 +18,9 @@ mod thinning;
 /// Two keyboards on the same keys.
 mod unisons;
 
+/// Every form of a cue with every action, against a small model of its own.
+mod cue_forms;
+
 /// A counting allocator: the engine takes nothing from the heap once it is made.
 mod no_alloc;
 
@@ -26,6 +29,9 @@ mod random_play;
 
 /// Script in, transcript out: what the engine promises, one story each.
 mod scenes;
+
+/// A thousand song changes under held and pedalled notes.
+mod song_changes;
 
 /// Arrows between rooms, banned words in the core, file length.
 mod tidy;

@@ -5,9 +5,11 @@ use crate::support::plans;
 use std::alloc::{GlobalAlloc, Layout, System};
 use std::cell::Cell;
 use std::hint::black_box;
-use trued::engine::plan::{Act, ChannelSet, CuePlan, Dialect, Gesture};
-use trued::engine::{Command, Engine, Input, KeyboardId, Link, Plan, SynthId};
+use trued::engine::plan::{Act, ChannelSet, CuePlan, Dialect, Gesture, Press};
+use trued::engine::{Ask, Command, Engine, Input, KeyboardId, Link, Nudge, Plan, SynthId};
+use trued::pitch::Interval;
 use trued::time::{Span, Time};
+use trued::tuning::Key;
 
 /// Counts every call to the heap, for the thread that makes it.
 struct Counting;
@@ -54,6 +56,7 @@ pub fn heap_calls(work: impl FnOnce()) -> u64 {
     HEAP_CALLS.get() - before
 }
 
+const LONG: Span = Span::from_millis(100);
 const INPUTS: usize = 100_000;
 
 /// Two synths, one of each dialect, a layer on both, cues, three songs.
@@ -83,9 +86,27 @@ fn evening() -> Plan {
         from: None,
         channels: ChannelSet::ALL,
         gesture: Gesture::AnyProgram,
+        press: Press::Down,
+        at_quiet: false,
         act: Act::SongByProgram,
         pass: false,
     });
+    for (gesture, press, command) in [
+        (Gesture::Controller(7), Press::Down, Command::Next),
+        (Gesture::Controller(7), Press::Long(LONG), Command::Panic),
+        (Gesture::Controller(1), Press::Either, Command::Plain),
+        (Gesture::Note(Key::C4), Press::Up, Command::Back),
+    ] {
+        plan.cues.push(CuePlan {
+            from: None,
+            channels: ChannelSet::ALL,
+            gesture,
+            press,
+            act: Act::Command(command),
+            at_quiet: matches!(press, Press::Down | Press::Either),
+            pass: true,
+        });
+    }
     plan
 }
 
@@ -104,6 +125,20 @@ fn random_input<'a>(dice: &mut Dice, bytes: &'a mut [u8; 4096]) -> Input<'a> {
             Command::Back,
             Command::Song(1),
             Command::Song(900),
+            Command::NextFrom(0),
+            Command::Pitch {
+                to: Nudge::By(Interval::from_cents(3)),
+                held_too: true,
+            },
+            Command::Pitch {
+                to: Nudge::Home,
+                held_too: false,
+            },
+            Command::Transpose(Some(2)),
+            Command::Plain,
+            Command::Home,
+            Command::Fresh,
+            Command::Ask(Ask::Reload),
             Command::Panic,
             Command::Resend(None),
         ])),

@@ -3,7 +3,7 @@
 use super::support::plans;
 use std::sync::Arc;
 use trued::engine::Plan;
-use trued::engine::plan::{Act, ChannelSet, CuePlan, Dialect, Gesture};
+use trued::engine::plan::{Act, ChannelSet, CuePlan, Dialect, Gesture, Press};
 use trued::offline::retune::{self, Recording};
 use trued::offline::score_file::Score;
 use trued::offline::{notes_file, picture};
@@ -139,6 +139,8 @@ fn a_song_change_between_two_notes_of_one_tick_divides_them() {
         from: None,
         channels: ChannelSet::NONE.with(15),
         gesture: Gesture::AnyProgram,
+        press: Press::Down,
+        at_quiet: false,
         act: Act::SongByProgram,
         pass: false,
     });

@@ -55,18 +55,23 @@ impl Engine {
     }
 
     pub(super) fn follow(&mut self, now: Time, command: Command) {
+        if self.goal(command).is_some() {
+            self.armed.forget_songs();
+        }
         match command {
             Command::Song(place) => self.begin_song(now, place as usize),
-            Command::Next => self.step(now, 1),
-            Command::NextFrom(place) if self.is_playing(place) => self.step(now, 1),
-            Command::NextFrom(_) => self.out.counters.ignored += 1,
-            Command::Back => self.step(now, -1),
+            Command::NextFrom(place) if !self.is_playing(place) => self.out.counters.ignored += 1,
+            Command::Next | Command::NextFrom(_) | Command::Back => match self.goal(command) {
+                Some(place) => self.begin_song(now, place),
+                None => self.out.counters.ignored += 1, // never wraps
+            },
             Command::Pitch { to, held_too } => self.nudge_pitch(now, to, held_too),
             Command::Transpose(keys) => self.transposed = keys,
             Command::Plain => self.plain = !self.plain,
             Command::Home => self.begin_again(now, self.song),
             Command::Fresh => {
                 self.nudge = Interval::ZERO;
+                self.armed.clear();
                 self.begin_again(now, 0);
             }
             Command::Ask(ask) => self.out.ask(ask),
@@ -87,13 +92,6 @@ impl Engine {
                 self.stopping = true;
                 self.when_silent(now);
             }
-        }
-    }
-
-    fn step(&mut self, now: Time, by: i32) {
-        match usize::try_from(self.song as i32 + by) {
-            Ok(place) => self.begin_song(now, place),
-            Err(_) => self.out.counters.ignored += 1, // never wraps
         }
     }
 
@@ -183,6 +181,7 @@ impl Engine {
         for keyboard in &mut self.keyboards {
             for source in &mut keyboard.sources {
                 source.pedals = Default::default();
+                source.keys = 0;
             }
         }
         while let Some(voice) = self.voices.take(|_| true) {

@@ -15,6 +15,7 @@ impl Engine {
         let source = self.source(hand);
         match number {
             controller::ALL_SOUND_OFF | controller::ALL_NOTES_OFF..=127 => {
+                source.keys = 0;
                 self.release(now, 64, None, |v| v.down && hand.is_of(v));
             }
             controller::RESET_ALL => self.reset_all(now, hand),

@@ -1,8 +1,9 @@
 //! From bytes to gestures: who hears what, what is taken by a cue, what is passed on as it came.
 
+use super::cues::Heard;
 use super::plan::{Gesture, KeyboardId};
-use super::songs::{Heard, is_reset};
-use super::synth::bend_message;
+use super::songs::is_reset;
+use super::synth::{PEDALS, bend_message};
 use super::traffic::Weight;
 use super::{Engine, Hand, wheel_semitones};
 use crate::limits::RESET_MS;
@@ -54,22 +55,40 @@ impl Engine {
             keyboard: id,
             channel,
         };
-        if let Message::NoteOff { key, velocity, .. } = message
-            && self.is_open(hand, key)
-        {
-            // Whatever a new plan says of this key or channel, a note that was started is ended.
-            let key = Key::new(key).expect("MIDI keys are 0-127");
-            return self.key_up(now, hand, key, velocity);
+        let is_heard = self.plan.keyboards[id.index()].channels.has(channel);
+        if let Message::NoteOff { key, velocity, .. } = message {
+            self.source(hand).keys &= !(1 << key);
+            if self.is_open(hand, key) {
+                // Whatever a new plan says of this key or channel, a note that was started is ended.
+                let key = Key::new(key).expect("MIDI keys are 0-127");
+                self.key_up(now, hand, key, velocity);
+                if is_heard {
+                    self.cue(now, hand, Heard::Up(Gesture::Note(key)));
+                }
+                return self.when_quiet(now);
+            }
         }
-        if self.plan.keyboards[id.index()].channels.has(channel) {
+        if is_heard {
             self.gesture_in(now, hand, message);
+        }
+        if matches!(
+            message,
+            Message::NoteOff { .. } | Message::Controller { .. }
+        ) {
+            self.when_quiet(now);
         }
     }
 
     fn gesture_in(&mut self, now: Time, hand: Hand, message: Message<'_>) {
-        let heard = self.heard(hand, message);
-        if heard.is_some_and(|heard| self.cue(now, hand, heard)) {
-            return;
+        if let Some(heard) = self.heard(hand, message) {
+            let taken = self.takes(hand, heard);
+            if !taken {
+                self.keep_hand(hand, message);
+            }
+            self.cue(now, hand, heard);
+            if taken {
+                return;
+            }
         }
         self.pass_drums(hand, message);
         let key = |key| Key::new(key).expect("MIDI keys are 0-127");
@@ -99,24 +118,37 @@ impl Engine {
             .any(|v| v.down && v.key.number() == key && hand.is_of(v))
     }
 
+    /// What a hand holds down, so that it is known when all is up.
+    fn keep_hand(&mut self, hand: Hand, message: Message<'_>) {
+        let source = self.source(hand);
+        match message {
+            Message::NoteOn { key, .. } => source.keys |= 1 << key,
+            Message::Controller { number, value, .. } => {
+                if let Some(which) = PEDALS.iter().position(|pedal| *pedal == number) {
+                    source.pedals[which] = value;
+                }
+            }
+            _ => {}
+        }
+    }
+
     /// The gesture in a message, if it can be one.
     fn heard(&mut self, hand: Hand, message: Message<'_>) -> Option<Heard> {
         match message {
             Message::Program { number, .. } => Some(Heard::Program(number)),
             Message::Controller { number, value, .. } => {
                 let latest = &mut self.source(hand).latest[number as usize];
-                let rises = *latest < 64 && value >= 64;
+                let (was_down, is_down) = (*latest >= 64, value >= 64);
                 *latest = value;
-                Some(if rises {
-                    Heard::Rise(number)
-                } else {
-                    Heard::Idle(Gesture::Controller(number))
+                let control = Gesture::Controller(number);
+                Some(match (was_down, is_down) {
+                    (false, true) => Heard::Down(control),
+                    (true, false) => Heard::Up(control),
+                    _ => Heard::Idle(control),
                 })
             }
-            Message::NoteOn { key, .. } => Key::new(key).map(Heard::NoteOn),
-            Message::NoteOff { key, .. } => {
-                Key::new(key).map(|key| Heard::Idle(Gesture::Note(key)))
-            }
+            Message::NoteOn { key, .. } => Key::new(key).map(|key| Heard::Down(Gesture::Note(key))),
+            Message::NoteOff { key, .. } => Key::new(key).map(|key| Heard::Up(Gesture::Note(key))),
             _ => None,
         }
     }
@@ -167,6 +199,7 @@ impl Engine {
             return;
         }
         self.keyboards[index].splitter.reset();
+        self.presses.forget(|hand| hand.keyboard == id);
         self.release_keyboard(now, id);
         for channel in 0..16 {
             let hand = Hand {
@@ -176,5 +209,6 @@ impl Engine {
             self.hand_off(now, hand);
         }
         self.keyboards[index].let_go(wheel_semitones(&self.plan, index));
+        self.when_quiet(now);
     }
 }

@@ -24,6 +24,8 @@ pub(super) struct Source {
     pub pressure: u8,
     /// In the order of `PEDALS`.
     pub pedals: [u8; 4],
+    /// Keys that are down, whether they sound or not; those that cues take away are no playing. Bit 0 = key 0.
+    pub keys: u128,
     pub select: Select,
     pub data_msb: u8,
     /// CC88, for the next note.
@@ -51,6 +53,7 @@ impl Source {
             wheel_range: Interval::SEMITONE * wheel_semitones as i64,
             pressure: 0,
             pedals: [0; PEDALS.len()],
+            keys: 0,
             select: Select::Nothing,
             data_msb: 0,
             velocity_low: None,
@@ -58,6 +61,11 @@ impl Source {
             latest: [0; 128],
             bank: [UNSAID; 2],
         }
+    }
+
+    /// All keys and pedals are up.
+    pub fn is_quiet(&self) -> bool {
+        self.keys == 0 && self.pedals.iter().all(|value| *value < 64)
     }
 
     /// How far the wheel is pushed.

@@ -6,11 +6,13 @@
 //! **Owns** the nine promises; each is counted in [`Counters`] where it must give way.
 //! **Not here**: the stage file (`stage/`), ports and clocks (`ports/`), files (`offline/`).
 
+mod armed;
 mod beforehand;
 mod channel;
 mod choose;
 mod commands;
 mod controls;
+mod cues;
 mod dialect;
 mod hearing;
 mod keyboard;
@@ -33,6 +35,8 @@ use crate::limits::{KEYBOARDS_MAX, PARTS_MAX, SYNTHS_MAX};
 use crate::pitch::{Interval, Pitch};
 use crate::time::Time;
 use crate::tuning::Tuning;
+use armed::Armed;
+use cues::Presses;
 use keyboard::{Keyboard, Source};
 use outbox::Outbox;
 use part::Part;
@@ -61,6 +65,8 @@ pub struct Engine {
     synths: Vec<Synth>,
     voices: Voices,
     out: Outbox,
+    armed: Armed,
+    presses: Presses,
     strikes: u64,
     sends_due: bool,
     stepped_at: Option<Time>,
@@ -126,6 +132,8 @@ impl Engine {
             synths,
             voices: Voices::new(),
             out: Outbox::new(),
+            armed: Armed::new(),
+            presses: Presses::new(),
             strikes: 0,
             stepped_at: None,
             stopping: false,
@@ -168,6 +176,7 @@ impl Engine {
                 self.say_gestures_left_out(now, id);
             }
         }
+        self.fire_long(now);
         self.when_silent(now);
         self.send_song(now);
     }
@@ -192,15 +201,15 @@ impl Engine {
         let synths = self.synths.iter().take(self.plan.synths.len());
         let sensing = keyboards.filter_map(Keyboard::gone_at);
         let due = synths.filter_map(|synth| synth.due_at(self.stopping));
-        sensing.chain(due).min()
+        sensing.chain(due).chain(self.presses.due_at()).min()
     }
 
     pub fn report(&self) -> Report {
         let mut synths = self.synths.iter().take(self.plan.synths.len());
         Report {
             song: self.song as u16,
-            armed_song: None,
-            armed: 0,
+            armed_song: self.armed_song(),
+            armed: self.armed.len() as u8,
             nudge: self.nudge,
             transpose_keys: self.transpose_keys(),
             plain: self.plain,

@@ -216,7 +216,10 @@ pub struct CuePlan {
     /// Input channels on which the gesture counts.
     pub channels: ChannelSet,
     pub gesture: Gesture,
+    pub press: Press,
     pub act: Act,
+    /// Armed on the gesture, in force once every key and pedal of every keyboard is up.
+    pub at_quiet: bool,
     /// The message also goes on to the synth.
     pub pass: bool,
 }
@@ -226,10 +229,23 @@ pub enum Gesture {
     AnyProgram,
     /// 0-127 as on the wire.
     Program(u8),
-    /// A controller rising through 64.
+    /// Down from 64 up.
     Controller(u8),
-    /// A key going down. It sounds nothing unless `pass`.
+    /// A key. It sounds nothing unless `pass`.
     Note(Key),
+}
+
+/// When a control fires its cue. A program change always does.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Press {
+    /// On going down; where the control has a `Long` too, on being let go before that.
+    Down,
+    /// On being let go, unless it was a long press.
+    Up,
+    /// On both: a latching switch.
+    Either,
+    /// Once it has been held so long.
+    Long(Span),
 }
 
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]

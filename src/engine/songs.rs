@@ -1,41 +1,17 @@
-//! Songs, cues and commands.
+//! Songs, and edits of the whole plan.
 
+use super::armed::find_again;
 use super::channel::{Program, UNSAID};
 use super::part::owner_of;
-use super::plan::{Act, Gesture, Plan, SynthId};
+use super::plan::{KeyboardId, Plan, SynthId};
 use super::synth::{PEDALS, Rig};
-use super::traffic::{Command, Link, Weight};
+use super::traffic::{Link, Weight};
 use super::voices::Voice;
-use super::{Engine, Hand, Playing};
+use super::{Engine, Playing};
 use crate::midi::{Message, controller};
 use crate::time::Time;
-use crate::tuning::Key;
 
 impl Engine {
-    /// Runs the cues on a gesture; tells whether one took the message away from the synth.
-    pub(super) fn cue(&mut self, now: Time, hand: Hand, heard: Heard) -> bool {
-        let mut taken = false;
-        for index in 0..self.plan.cues.len() {
-            let cue = self.plan.cues[index];
-            if cue.from.is_some_and(|from| from != hand.keyboard)
-                || !cue.channels.has(hand.channel)
-                || !heard.is(cue.gesture)
-            {
-                continue;
-            }
-            taken |= !cue.pass;
-            match (cue.act, heard) {
-                (_, Heard::Idle(_)) => {}
-                (Act::SongByProgram, Heard::Program(number)) => {
-                    self.command(now, Command::Song(number as u16));
-                }
-                (Act::SongByProgram, _) => self.out.counters.ignored += 1,
-                (Act::Command(command), _) => self.command(now, command),
-            }
-        }
-        taken
-    }
-
     /// Sounding notes keep their pitch: nothing is sent for them, and nothing they need is in the song.
     pub(super) fn begin_song(&mut self, now: Time, place: usize) {
         let Some(song) = self.plan.set.get(place) else {
@@ -105,14 +81,13 @@ impl Engine {
 
     /// Takes over a new plan; gives back the old one.
     pub(super) fn swap_plan(&mut self, now: Time, plan: Box<Plan>) -> Box<Plan> {
+        for index in plan.keyboards.len()..self.plan.keyboards.len() {
+            // It is heard no more, so nobody else would end what it holds.
+            self.let_go(now, KeyboardId::new(index).expect("within limits"));
+        }
         let old = std::mem::replace(&mut self.plan, plan);
-        let title = &old.set[self.song].title;
-        let stays = |place: usize| self.plan.set.get(place).is_some_and(|s| s.title == *title);
-        let place = if stays(self.song) {
-            Some(self.song)
-        } else {
-            self.plan.set.iter().position(|song| song.title == *title)
-        };
+        let place = find_again(&self.plan.set, &old, self.song);
+        self.find_armed_again(&old);
         self.song = place.unwrap_or(self.song.min(self.plan.set.len() - 1));
         if place.is_none() || self.plan.edits_at_once {
             self.playing = Playing::of(&self.plan.set[self.song]);
@@ -210,30 +185,6 @@ impl Engine {
             {
                 self.say_gestures(id, manager, part);
             }
-        }
-    }
-}
-
-/// A gesture as it came.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
-pub(super) enum Heard {
-    Program(u8),
-    /// A controller that has just risen through 64.
-    Rise(u8),
-    NoteOn(Key),
-    /// Another movement of a control that may have a cue: it does nothing, and is taken away all the same.
-    Idle(Gesture),
-}
-
-impl Heard {
-    fn is(self, gesture: Gesture) -> bool {
-        match self {
-            Heard::Program(number) => {
-                gesture == Gesture::AnyProgram || gesture == Gesture::Program(number)
-            }
-            Heard::Rise(number) => gesture == Gesture::Controller(number),
-            Heard::NoteOn(key) => gesture == Gesture::Note(key),
-            Heard::Idle(idle) => gesture == idle,
         }
     }
 }

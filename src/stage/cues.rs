@@ -4,32 +4,12 @@ use super::advice::Findings;
 use super::complaint::{Complaints, Trail};
 use super::naming::Scene;
 use super::node::{At, Fields, Node};
-use super::rig;
 use super::values::{channels, choice, key, spell_channels};
 use super::words::Words;
-use crate::engine::plan::{Act, ChannelSet, CuePlan, Gesture, KeyboardId};
+use super::{defaults, rig};
+use crate::engine::plan::{Act, ChannelSet, CuePlan, Gesture, KeyboardId, Press};
 use crate::limits::CUES_MAX;
-
-/// How a gesture is made.
-#[derive(Clone, Copy, Debug, PartialEq)]
-enum Press {
-    Down,
-    Up,
-    Either,
-    Long,
-}
-
-impl Press {
-    /// What of it no engine plays yet.
-    fn unplayed(self) -> Option<&'static str> {
-        match self {
-            Press::Down => None,
-            Press::Up => Some("`press: up`"),
-            Press::Either => Some("`press: either`"),
-            Press::Long => Some("`press: long`"),
-        }
-    }
-}
+use crate::time::Span;
 
 /// What stands after `when`.
 struct When {
@@ -79,8 +59,9 @@ fn same_gesture(one: &When, other: &When) -> bool {
             && (one.gesture == Gesture::AnyProgram || other.gesture == Gesture::AnyProgram);
     let from = one.from == other.from || one.from.is_none() || other.from.is_none();
     let channels = one.channels.0 & other.channels.0 != 0;
+    // A latching switch is as good as never let go, so it has no long press beside it either.
     let press = match (one.press, other.press) {
-        (Press::Either, Press::Down | Press::Up) | (Press::Down | Press::Up, Press::Either) => true,
+        (Press::Either, _) | (_, Press::Either) | (Press::Long(_), Press::Long(_)) => true,
         (one, other) => one == other,
     };
     gesture && from && channels && press
@@ -125,9 +106,7 @@ fn cue(
     fields.finish(&mut found.complaints);
     let (when, words) = (when?, words?);
     let mut unplayed = Vec::new();
-    unplayed.extend(quiet.filter(|quiet| *quiet).map(|_| "`at: quiet`"));
     unplayed.extend(held.map(|_| "`while: held`"));
-    unplayed.extend(when.press.unplayed());
     let act = act(&words, scene);
     unplayed.extend(act.is_none().then_some("what it does"));
     for what in &unplayed {
@@ -140,7 +119,9 @@ fn cue(
         from: when.from,
         channels: when.channels,
         gesture: when.gesture,
+        press: when.press,
         act,
+        at_quiet: quiet.unwrap_or(false),
         pass: pass.unwrap_or(false),
     });
     Some((when, plan))
@@ -192,13 +173,14 @@ fn when(at: &At<'_>, scene: &Scene<'_>, complaints: &mut Complaints) -> Option<W
     };
     let gesture = gesture(&mut fields, at, scene.programs_from, complaints);
     let press_at = fields.take("press");
+    let usual_long = Span::from_millis(defaults::LONG_MS);
     let presses = [
         ("down", Press::Down),
         ("up", Press::Up),
         ("either", Press::Either),
-        ("long", Press::Long),
+        ("long", Press::Long(usual_long)),
     ];
-    let press = match &press_at {
+    let mut press = match &press_at {
         Some(at) => choice(at, &presses, complaints).unwrap_or(Press::Down),
         None => Press::Down,
     };
@@ -210,13 +192,15 @@ fn when(at: &At<'_>, scene: &Scene<'_>, complaints: &mut Complaints) -> Option<W
         );
     }
     if let Some(at) = fields.take("long_ms") {
-        let _ = at.whole("milliseconds", 100..=10_000, complaints);
-        if press != Press::Long {
-            complaints.add(
+        let long_ms = at.whole("milliseconds", 100..=10_000, complaints);
+        match (&mut press, long_ms) {
+            (Press::Long(long), Some(long_ms)) => *long = Span::from_millis(long_ms as u64),
+            (Press::Long(_), None) => {}
+            _ => complaints.add(
                 &at.trail,
                 "`long_ms` belongs to a long press",
                 "add `press: long`",
-            );
+            ),
         }
     }
     fields.finish(complaints);

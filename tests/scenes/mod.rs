@@ -1,5 +1,7 @@
 //! What the engine promises, as small stories: a script in, a transcript out.
 
+/// Presses, long and short; what waits until all hands are off.
+mod cues;
 /// Two runs of one script; a stream in portions.
 mod determinism;
 /// Keyboards and synths that go and come back, panic, a short outbox.
@@ -16,6 +18,8 @@ mod songs;
 mod stealing;
 /// The end of a file, and how synths are left.
 mod stopping;
+/// Words of `tell`, each as a story.
+mod telling;
 /// Drums, system exclusive, real-time, Active Sensing, System Reset.
 mod through;
 /// The player's wheel and what it means.

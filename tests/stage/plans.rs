@@ -1,9 +1,10 @@
 //! What a stage file becomes for the engine.
 
 use super::load;
-use trued::engine::Command;
-use trued::engine::plan::{Act, ChannelSet, Dialect, Gesture};
+use trued::engine::plan::{Act, ChannelSet, Dialect, Gesture, Press};
+use trued::engine::{Ask, Command};
 use trued::stage::defaults;
+use trued::time::Span;
 
 const SONG: &str = "set: [{song: A song}]\n";
 
@@ -135,6 +136,51 @@ fn cues_that_are_played() {
     assert!(matches!(acts[6].1, Act::Command(Command::Resend(Some(_)))));
     assert_eq!(cues[0].channels, ChannelSet(0x8000));
     assert!(cues[4].pass && cues[4].from.is_some() && !cues[3].pass);
+}
+
+#[test]
+fn every_form_of_a_press_is_played_and_may_wait_for_quiet() {
+    let plan = load(
+        "cues:\n\
+         \x20 - {when: {controller: 82, press: up}, do: next}\n\
+         \x20 - {when: {controller: 83, press: either}, do: back, at: quiet}\n\
+         \x20 - {when: {controller: 84, press: long}, do: fresh, at: now}\n\
+         \x20 - {when: {controller: 84}, do: next from Two}\n\
+         \x20 - {when: {note: D2, press: long, long_ms: 1500}, do: reload}\n\
+         set: [{song: One}, {song: Two}]\n",
+    )
+    .plan();
+    let long = |ms| Press::Long(Span::from_millis(ms));
+    let forms: Vec<(Press, bool)> = plan.cues.iter().map(|c| (c.press, c.at_quiet)).collect();
+    // 800 ms is the table's own default.
+    assert_eq!(
+        forms,
+        [
+            (Press::Up, false),
+            (Press::Either, true),
+            (long(800), false),
+            (Press::Down, false),
+            (long(1500), false),
+        ]
+    );
+    assert_eq!(plan.cues[3].act, Act::Command(Command::NextFrom(1)));
+    assert_eq!(plan.cues[4].act, Act::Command(Command::Ask(Ask::Reload)));
+}
+
+#[test]
+fn the_evening_s_reference_is_where_plain_stands() {
+    let offset = |pitch: &str| load(&format!("{pitch}{SONG}")).plan().plain_offset;
+    assert_eq!(offset("").cents(), 0.0);
+    // 1200 log2(415/440), and a C4 of 256 Hz from the equal one of 261.6256 Hz.
+    for (pitch, cents) in [
+        ("pitch: A4 = 415 Hz\n", 1200.0 * (415f64 / 440.0).log2()),
+        (
+            "pitch: C4 = 256 Hz\n",
+            1200.0 * (256f64 / 440.0).log2() + 900.0,
+        ),
+    ] {
+        assert!((offset(pitch).cents() - cents).abs() < 2e-6, "{pitch}");
+    }
 }
 
 #[test]

@@ -2,11 +2,14 @@
 
 use super::receiver::{Kind, Receiver, Stream};
 use std::fmt::Write;
+use std::path::Path;
 use std::time::Duration;
 use trued::engine::plan::Dialect;
 use trued::engine::{
     Ask, Command, Engine, Input, KeyboardId, Link, Onset, Output, Plan, SynthId, Weight,
 };
+use trued::stage::Stage;
+use trued::stage::words::Words;
 use trued::time::Time;
 
 /// Strange on purpose, so that a range never told is heard at once.
@@ -25,6 +28,8 @@ pub struct Sent {
 
 pub struct Rig {
     pub engine: Engine,
+    /// Where it came from one.
+    pub stage: Option<Stage>,
     pub now: Time,
     /// One for each synth of the plan.
     pub receivers: Vec<Receiver>,
@@ -47,6 +52,7 @@ impl Rig {
             Receiver::new(kind, tail, RANGE_AT_POWER_ON)
         });
         Rig {
+            stage: None,
             receivers: receivers.collect(),
             engine: Engine::new(Box::new(plan.clone())),
             now: Time::START,
@@ -55,6 +61,23 @@ impl Rig {
             moved: Vec::new(),
             asked: Vec::new(),
         }
+    }
+
+    /// A stage file's text, all up and ready.
+    pub fn of(text: &str) -> Rig {
+        let stage = Stage::parse(Path::new("test.yaml"), text);
+        let stage = stage.unwrap_or_else(|complaints| panic!("{text}\n{complaints:#?}"));
+        let mut rig = Rig::ready(&stage.plan_offline());
+        rig.stage = Some(stage);
+        rig
+    }
+
+    /// Words of `tell`, by the same grammar as the daemon's.
+    pub fn tell(&mut self, words: &str) {
+        let parsed = Words::parse(words).unwrap_or_else(|mistake| panic!("{words}: {mistake:?}"));
+        let stage = self.stage.as_ref().expect("a rig of a stage file");
+        let command = stage.resolve(&parsed);
+        self.command(command.unwrap_or_else(|mistake| panic!("{words}: {mistake:?}")));
     }
 
     /// All synths are up and set up; the clock stands where set-up has been said.

@@ -2,6 +2,7 @@
 //!
 //! A line is a time in milliseconds and what happens then:
 //! `0 on C4 100` · `500 off C4` · `0 pedal down` · `0 sostenuto up` · `0 wheel 16383` · `0 send F0 7D 01 F7` (raw bytes) ·
+//! `0 cc 82 127` · `0 program 3` (as on the wire) · `0 tell pitch +1 c` (a rig of a stage file) ·
 //! `0 song 2` · `0 next` · `0 back` · `0 panic` · `0 resend` · `0 end` · `0 stop` · `0 lost` (the keyboard) ·
 //! `0 synth down` (`up`, `back`, `tight`, `easy`) · `0 wait`. `second` before a gesture: from the other keyboard.
 //!
@@ -47,6 +48,11 @@ impl Rig {
                 self.midi(keyboard, &[0xE0, (to & 0x7F) as u8, (to >> 7) as u8]);
             }
             ["send", bytes @ ..] => self.midi(keyboard, &hex(&bytes.join(" "))),
+            ["cc", which, value] => {
+                self.midi(keyboard, &[0xB0, number(which), number(value)]);
+            }
+            ["program", which] => self.midi(keyboard, &[0xC0, number(which)]),
+            ["tell", words @ ..] => self.tell(&words.join(" ")),
             ["lost"] => self.input(Input::KeyboardLost(keyboard_id(keyboard))),
             ["synth", state] => self.link(0, link(state)),
             ["song", place] => self.command(Command::Song(number(place) as u16 - 1)),

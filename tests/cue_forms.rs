@@ -1,0 +1,432 @@
+//! Every form of a cue with every action, at random, against a small model written from the language alone.
+//!
+//! After each gesture song, nudge, transposition, plain and what is armed agree; no note sticks; no held note moves but
+//! by `pitch ... now`; each note begins where the model's song puts it. A failure names its seed.
+
+use crate::support::dice::Dice;
+use crate::support::receiver::Hold;
+use crate::support::rig::{Rig, keyboard_id};
+use std::collections::{BTreeMap, BTreeSet};
+use std::time::Duration;
+use trued::engine::Input;
+use trued::time::Span;
+
+/// Controls that have cues, as a stage file writes them, with the bytes of going down and up.
+const CONTROLS: [(&str, [u8; 3], [u8; 3]); 4] = [
+    ("controller: 82", [0xB0, 82, 127], [0xB0, 82, 0]),
+    ("controller: 83", [0xB0, 83, 64], [0xB0, 83, 63]),
+    ("note: C1", [0x90, 24, 80], [0x80, 24, 64]),
+    ("note: D1", [0x90, 26, 80], [0x90, 26, 0]),
+];
+const FORMS: [&[&str]; 7] = [
+    &["down"],
+    &["up"],
+    &["either"],
+    &["long"],
+    &["down", "long"],
+    &["up", "long"],
+    &["down", "up"],
+];
+const ACTIONS: [&str; 16] = [
+    "next",
+    "next",
+    "back",
+    "song 3",
+    "next from Third",
+    "pitch +5 c",
+    "pitch -30 c now",
+    "pitch home",
+    "pitch home now",
+    "transpose +2",
+    "transpose home",
+    "plain",
+    "home",
+    "fresh",
+    "panic",
+    "reload",
+];
+const TITLES: [&str; 4] = ["First", "Second", "Third", "Fourth"];
+/// Each song's own transposition, and how far its C and E stand from equal.
+const OWN: [(i32, f64, f64); 4] = [
+    (0, 0.0, 0.0),
+    (1, 10.0, -14.0),
+    (0, -7.0, 3.0),
+    (-2, 20.0, 1.0),
+];
+
+struct Cue {
+    control: usize,
+    form: &'static str,
+    long_ms: u64,
+    action: &'static str,
+    quiet: bool,
+    pass: bool,
+}
+
+fn some_cues(dice: &mut Dice) -> Vec<Cue> {
+    let mut cues = Vec::new();
+    for control in 0..CONTROLS.len() {
+        let pass = dice.percent(25);
+        for form in dice.pick(&FORMS) {
+            cues.push(Cue {
+                control,
+                form,
+                long_ms: dice.pick(&[300, 800]),
+                action: dice.pick(&ACTIONS),
+                quiet: dice.percent(40),
+                pass,
+            });
+        }
+    }
+    cues
+}
+
+fn stage(cues: &[Cue], dialect: &str) -> String {
+    let mut text = format!(
+        "keyboards: {{keys: {{port: virtual}}, pads: {{port: virtual}}}}\n\
+         synths: {{synth: {{port: virtual, dialect: {dialect}, bend_range: 12}}}}\ntunings:\n"
+    );
+    for (title, (_, c, e)) in TITLES.iter().zip(OWN) {
+        text += &format!("  of {title}: {{offsets: {{C: {c:+} c, E: {e:+} c}}}}\n");
+    }
+    text += "set:\n";
+    for (title, (keys, ..)) in TITLES.iter().zip(OWN) {
+        text += &format!("  - {{song: {title}, tuning: of {title}, transpose: {keys}}}\n");
+    }
+    text += "cues:\n";
+    for cue in cues {
+        let long = match cue.form {
+            "long" => format!(", long_ms: {}", cue.long_ms),
+            _ => String::new(),
+        };
+        let quiet = if cue.quiet { ", at: quiet" } else { "" };
+        let pass = if cue.pass { ", pass: yes" } else { "" };
+        text += &format!(
+            "  - {{when: {{{}, press: {}{long}}}, do: {}{quiet}{pass}}}\n",
+            CONTROLS[cue.control].0, cue.form, cue.action
+        );
+    }
+    text
+}
+
+/// What should be, by the language.
+#[derive(Default)]
+struct Model {
+    cues: Vec<Cue>,
+    song: usize,
+    nudge: i64,
+    transposed: Option<i32>,
+    plain: bool,
+    armed: Vec<&'static str>,
+    stepped_at: Option<u64>,
+    /// Keyboard and control: since when, and whether its long press has fired.
+    down: BTreeMap<(usize, usize), (u64, bool)>,
+    /// Keyboard and key, or pedal.
+    hands: BTreeSet<(usize, u8, bool)>,
+    asked: usize,
+    moved_at: BTreeSet<u64>,
+}
+
+impl Model {
+    fn with(&self, control: usize, form: &str) -> Vec<usize> {
+        let is_it = |at: &usize| self.cues[*at].control == control && self.cues[*at].form == form;
+        (0..self.cues.len()).filter(is_it).collect()
+    }
+
+    fn passes(&self, control: usize) -> bool {
+        self.cues
+            .iter()
+            .any(|cue| cue.control == control && cue.pass)
+    }
+
+    fn press(&mut self, at: u64, keyboard: usize, control: usize) {
+        if self.with(control, "long").is_empty() {
+            self.fire_all(at, control, "down");
+        }
+        self.fire_all(at, control, "either");
+        self.down.insert((keyboard, control), (at, false));
+    }
+
+    fn let_go(&mut self, at: u64, keyboard: usize, control: usize) {
+        let Some((_, was_long)) = self.down.remove(&(keyboard, control)) else {
+            return;
+        };
+        let may_be_long = !self.with(control, "long").is_empty();
+        for cue in 0..self.cues.len() {
+            let fires = self.cues[cue].control == control
+                && match self.cues[cue].form {
+                    "down" => may_be_long && !was_long,
+                    "up" => !was_long,
+                    form => form == "either",
+                };
+            if fires {
+                self.fire(at, cue);
+            }
+        }
+    }
+
+    fn fire_all(&mut self, at: u64, control: usize, form: &str) {
+        for cue in self.with(control, form) {
+            self.fire(at, cue);
+        }
+    }
+
+    /// Long presses whose time comes up to `to`, in their order.
+    fn pass_time(&mut self, to: u64) {
+        loop {
+            let mut due = Vec::new();
+            for (place, (since, done)) in &self.down {
+                for cue in self.with(place.1, "long") {
+                    due.push((since + self.cues[cue].long_ms, *place, cue, *done));
+                }
+            }
+            let next = due
+                .into_iter()
+                .filter(|(at, _, _, done)| !done && *at <= to)
+                .min();
+            let Some((at, place, cue, _)) = next else {
+                return;
+            };
+            if let Some((_, done)) = self.down.get_mut(&place) {
+                *done = true;
+            }
+            self.fire(at, cue);
+        }
+    }
+
+    fn fire(&mut self, at: u64, cue: usize) {
+        let action = self.cues[cue].action;
+        if action == "next from Third" && self.song != 2 {
+            return;
+        }
+        if ["next", "back", "next from Third"].contains(&action) {
+            if self.stepped_at.is_some_and(|before| at < before + 400) {
+                return;
+            }
+            self.stepped_at = Some(at);
+        }
+        if !self.cues[cue].quiet {
+            return self.act(at, action);
+        }
+        if changes_song(action) && self.goal(action).is_none() {
+            return;
+        }
+        let kind = |action: &str| match action {
+            action if changes_song(action) => String::from("song"),
+            action => action.split(' ').next().unwrap_or_default().to_string(),
+        };
+        self.armed.retain(|other| kind(other) != kind(action));
+        self.armed.push(action);
+        self.when_quiet(at);
+    }
+
+    fn when_quiet(&mut self, at: u64) {
+        while self.hands.is_empty() && !self.armed.is_empty() {
+            let action = self.armed.remove(0);
+            self.act(at, action);
+        }
+    }
+
+    fn goal(&self, action: &str) -> Option<usize> {
+        match action {
+            "next" | "next from Third" => Some(self.song + 1).filter(|song| *song < TITLES.len()),
+            "back" => self.song.checked_sub(1),
+            "song 3" => Some(2),
+            _ => Some(0),
+        }
+    }
+
+    fn act(&mut self, at: u64, action: &'static str) {
+        if changes_song(action) {
+            if action == "next from Third" && self.song != 2 {
+                return;
+            }
+            let Some(song) = self.goal(action) else {
+                return;
+            };
+            self.armed.retain(|other| !changes_song(other));
+            self.song = song;
+            self.transposed = None;
+        }
+        match action {
+            "fresh" => {
+                (self.nudge, self.plain) = (0, false);
+                self.armed.clear();
+            }
+            "home" => (self.plain, self.transposed) = (false, None),
+            "plain" => self.plain = !self.plain,
+            "pitch +5 c" if self.nudge + 5 > 1200 => return,
+            "pitch +5 c" => self.nudge += 5,
+            // An octave is the furthest.
+            "pitch -30 c now" if self.nudge - 30 < -1200 => return,
+            "pitch -30 c now" => self.nudge -= 30,
+            "pitch home" | "pitch home now" => self.nudge = 0,
+            "transpose +2" => self.transposed = Some(2),
+            "transpose home" => self.transposed = None,
+            "panic" => self.hands.clear(),
+            "reload" => self.asked += 1,
+            _ => {}
+        }
+        if action.ends_with(" now") {
+            self.moved_at.insert(at);
+        }
+    }
+
+    fn transpose_keys(&self) -> i32 {
+        self.transposed.unwrap_or(OWN[self.song].0)
+    }
+
+    fn cents(&self, key: u8) -> f64 {
+        let moved = i32::from(key) + self.transpose_keys();
+        let (_, c, e) = OWN[self.song];
+        let off = match moved % 12 {
+            0 if !self.plain => c,
+            4 if !self.plain => e,
+            _ => 0.0,
+        };
+        f64::from(moved) * 100.0 + off + self.nudge as f64
+    }
+}
+
+fn changes_song(action: &str) -> bool {
+    ["next", "back", "song 3", "next from Third", "fresh"].contains(&action)
+}
+
+/// One thing that happens, to the engine and to the model.
+fn happen(dice: &mut Dice, rig: &mut Rig, model: &mut Model) {
+    let at = rig.now.nanos() / 1_000_000;
+    let keyboard = dice.below(2) as usize;
+    match dice.below(100) {
+        0..=44 => {
+            let control = dice.below(CONTROLS.len() as u64) as usize;
+            let (_, down, up) = CONTROLS[control];
+            let is_down = model.down.contains_key(&(keyboard, control));
+            // A key that passes is played as well.
+            let hand = (keyboard, down[1], false);
+            let played = control > 1 && model.passes(control);
+            rig.midi(keyboard, if is_down { &up } else { &down });
+            if is_down {
+                model.hands.remove(&hand);
+                model.let_go(at, keyboard, control);
+            } else {
+                if played {
+                    model.hands.insert(hand);
+                }
+                model.press(at, keyboard, control);
+            }
+            // After a panic nothing is held; what is armed still waits for something to be let go.
+            if is_down || control < 2 {
+                model.when_quiet(at);
+            }
+        }
+        45..=64 => {
+            let key = dice.between(45, 80) as u8;
+            if model.hands.len() < 6 && model.hands.insert((keyboard, key, false)) {
+                rig.midi(keyboard, &[0x90, key, 80]);
+            }
+        }
+        65..=88 => {
+            let played = model
+                .hands
+                .iter()
+                .find(|hand| !hand.2 && hand.1 >= 45)
+                .copied();
+            if let Some((keyboard, key, _)) = played {
+                rig.midi(keyboard, &[0x80, key, 64]);
+                model.hands.remove(&(keyboard, key, false));
+                model.when_quiet(at);
+            }
+        }
+        89..=97 => {
+            let down = !model.hands.remove(&(keyboard, 64, true));
+            if down {
+                model.hands.insert((keyboard, 64, true));
+            }
+            rig.midi(keyboard, &[0xB0, 64, u8::from(down) * 127]);
+            model.when_quiet(at);
+        }
+        _ => {
+            rig.input(Input::KeyboardLost(keyboard_id(keyboard)));
+            model.down.retain(|place, _| place.0 != keyboard);
+            model.hands.retain(|hand| hand.0 != keyboard);
+            model.when_quiet(at);
+        }
+    }
+}
+
+fn agree(rig: &Rig, model: &Model, seed: u64, text: &str) {
+    let report = rig.engine.report();
+    let armed_song = model.armed.iter().find(|action| changes_song(action));
+    let armed_song = armed_song.and_then(|action| model.goal(action));
+    let wanted = (
+        model.song as u16,
+        model.nudge as f64,
+        model.transpose_keys(),
+        model.plain,
+        armed_song.map(|song| song as u16),
+        model.armed.len(),
+        model.asked,
+    );
+    let got = (
+        report.song,
+        report.nudge.cents(),
+        i32::from(report.transpose_keys),
+        report.plain,
+        report.armed_song,
+        usize::from(report.armed),
+        rig.asked.len(),
+    );
+    assert_eq!(got, wanted, "seed {seed} at {:?} with\n{text}", rig.now);
+}
+
+fn play(seed: u64) -> usize {
+    let mut dice = Dice::new(seed);
+    let dialect = dice.pick(&["channel-bend", "mpe"]);
+    let cues = some_cues(&mut dice);
+    let text = stage(&cues, dialect);
+    let mut rig = Rig::of(&text);
+    let mut model = Model {
+        cues,
+        ..Model::default()
+    };
+    for _ in 0..300 {
+        rig.until(rig.now + Span::from_millis(dice.pick(&[1, 20, 150, 420, 900])));
+        model.pass_time(rig.now.nanos() / 1_000_000);
+        agree(&rig, &model, seed, &text);
+        let onsets = rig.onsets.len();
+        happen(&mut dice, &mut rig, &mut model);
+        agree(&rig, &model, seed, &text);
+        for (_, onset) in &rig.onsets[onsets..] {
+            let wanted = model.cents(onset.key.number());
+            let off = (onset.target.cents() - wanted).abs();
+            assert!(
+                off < 1e-6,
+                "seed {seed}: {onset:?}, not {wanted}, with\n{text}"
+            );
+        }
+    }
+    for keyboard in 0..2 {
+        rig.input(Input::KeyboardLost(keyboard_id(keyboard)));
+    }
+    let heard = rig.heard();
+    assert!(heard.stuck().is_empty(), "seed {seed}: {:?}", heard.stuck());
+    assert!(heard.orphans.is_empty(), "seed {seed}: {:?}", heard.orphans);
+    for moved in heard.moves.iter().filter(|m| m.hold == Hold::Held) {
+        let by_us = model
+            .moved_at
+            .iter()
+            .any(|at| Duration::from_millis(*at) == moved.at);
+        assert!(by_us, "seed {seed}: {moved:?} with\n{text}");
+    }
+    heard.notes.len()
+}
+
+/// Three hundred, or as many as `SEEDS` says for a long run.
+#[test]
+fn every_form_of_a_cue_does_what_the_language_says() {
+    let many = std::env::var("SEEDS").ok().and_then(|n| n.parse().ok());
+    let seeds = 1..=many.unwrap_or(300u64);
+    let notes: usize = seeds.clone().map(play).sum();
+    println!("{} evenings of 300 gestures, {notes} notes", seeds.count());
+    assert!(notes > 1_000);
+}
