@@ -103,7 +103,14 @@ fn status_in_sentences_and_as_an_object() {
             "Synth organ is connected.",
         ]
     );
-    assert!(lines[4].contains("has been up for"), "{text}");
+    let about_itself = lines[4];
+    assert!(
+        about_itself.starts_with("trued has been up for ")
+            && about_itself.ends_with(
+                " s on alsa, without real-time priority: notes may be late on a busy machine."
+            ),
+        "{text}"
+    );
     assert_eq!(lines.len(), 5, "counters at zero are not shown: {text}");
 
     let (code, text, _) = trued(&folder, &["status", "--json", "--socket", &socket]);

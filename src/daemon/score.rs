@@ -180,6 +180,7 @@ impl Score {
                 if !lost {
                     // An earlier run that was killed, or a cable pulled while notes sounded, may have left it so. Bends
                     // are not said here: the engine takes none for granted.
+                    outlet.at(time);
                     let quiet = [DAMPER, SOSTENUTO, ALL_NOTES_OFF, ALL_SOUND_OFF];
                     hush(outlet, synth, &quiet);
                 }

@@ -70,12 +70,12 @@ impl Status {
     pub fn text(&self, uptime_s: u64) -> String {
         let mut lines = self.sentences();
         let priority = if self.real_time {
-            "with"
+            "with real-time priority."
         } else {
-            "without: notes may be late on a busy machine,"
+            "without real-time priority: notes may be late on a busy machine."
         };
         lines.push(format!(
-            "{} has been up for {}, {priority} real-time priority, on {}.",
+            "{} has been up for {} on {}, {priority}",
             self.name,
             duration(uptime_s),
             self.backend
