@@ -59,3 +59,6 @@ mod chart;
 
 /// A running daemon as people and a supervisor meet it: control socket, `tell`, `status`, readiness, watchdog.
 mod control;
+
+/// Edits of a stage file while it plays, on real files and real time.
+mod edits;

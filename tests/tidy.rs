@@ -78,6 +78,7 @@ const CRATES: &[(&str, &[&str])] = &[
     ("hound", &["offline"]),
     ("libc", &["ports", "daemon"]),
     ("midly", &["offline"]),
+    ("notify", &["stage"]),
     ("rtrb", &["daemon"]),
     ("rustysynth", &["offline"]),
     ("serde", &["stage", "offline"]),

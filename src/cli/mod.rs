@@ -18,6 +18,7 @@ mod tell;
 mod which;
 
 use crate::stage::Stage;
+use crate::stage::complaint::Complaint;
 use clap::{Parser, Subcommand};
 use std::io::Write;
 use std::path::Path;
@@ -202,12 +203,16 @@ fn dispatch(command: Command) -> Result<(), Failure> {
 
 /// A stage file, or all complaints about it, one a line.
 pub fn read_stage(path: &Path) -> Result<Stage, Failure> {
-    // Looked at first, so that a missing file has its own exit code.
-    std::fs::File::open(path).map_err(|error| Failure::unread(path, &error))?;
-    Stage::read(path).map_err(|complaints| {
-        let lines: Vec<String> = complaints.iter().map(|c| c.to_string()).collect();
-        Failure::new(Failure::DATA, lines.join("\n"))
-    })
+    Stage::read(path).map_err(|complaints| unusable(path, &complaints))
+}
+
+/// What is wrong with a stage file; one that is not there has its own exit code.
+pub fn unusable(path: &Path, complaints: &[Complaint]) -> Failure {
+    if let Err(error) = std::fs::File::open(path) {
+        return Failure::unread(path, &error);
+    }
+    let lines: Vec<String> = complaints.iter().map(Complaint::to_string).collect();
+    Failure::new(Failure::DATA, lines.join("\n"))
 }
 
 /// Data for stdout. A reader that has seen enough (`| head`) is no error.

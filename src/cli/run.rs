@@ -53,11 +53,13 @@ pub fn run(args: Args) -> Result<(), Failure> {
 #[cfg(target_os = "linux")]
 fn play(file: PathBuf, which: Which) -> Result<(), Failure> {
     use crate::daemon::run::{Evening, Trouble, play};
+    use crate::daemon::state::{Boot, folder};
     which.check()?;
-    let stage = super::read_stage(&file)?;
+    let boot = Boot::read(&file, folder().as_deref())
+        .map_err(|complaints| super::unusable(&file, &complaints))?;
     let Which { name, socket } = which;
     let evening = Evening { file, name, socket };
-    play(stage, &evening).map_err(|trouble| match trouble {
+    play(boot, &evening).map_err(|trouble| match trouble {
         Trouble::Taken(path) => Failure::new(
             Failure::UNAVAILABLE,
             format!(

@@ -1,15 +1,17 @@
 //! The desk thread: signals, connecting what is plugged in, the log, and whoever asks something at its front.
 
+use super::edits::Edits;
 use super::front::Front;
 use super::orders::Orders;
 use super::rig::RigWanted;
 use super::score::News;
 use super::status::Device;
 use crate::engine::Ask;
-use crate::ports::names::{Address, Choice, Port, choose};
+use crate::ports::names::{Address, Choice, Port, Wanted, choose};
 use crate::ports::{Broken, Link, Patchbay, Tally};
 use crate::time::Span;
 use rtrb::Consumer;
+use signal_hook::consts::SIGHUP;
 use signal_hook::iterator::Signals;
 use std::sync::Arc;
 use std::sync::atomic::{AtomicBool, Ordering};
@@ -28,6 +30,7 @@ pub struct Desk {
     pub tally: Arc<Tally>,
     /// The score thread has left.
     pub done: Arc<AtomicBool>,
+    pub edits: Edits,
 }
 
 impl Desk {
@@ -36,10 +39,16 @@ impl Desk {
         let mut changes = 0;
         let mut losses = (0, 0);
         while !self.done.load(Ordering::Acquire) {
-            for _ in self.signals.pending() {
-                self.front.stop(&mut self.orders);
+            for signal in self.signals.pending() {
+                match signal {
+                    SIGHUP => self.edits.reload.ask(),
+                    _ => self.front.stop(&mut self.orders),
+                }
             }
             self.log_news();
+            if self.see_to_edits() {
+                (changes, losses) = (0, (0, 0));
+            }
             let now = self.tally.changes.load(Ordering::Relaxed);
             if now != changes {
                 changes = now;
@@ -47,12 +56,12 @@ impl Desk {
             }
             losses = self.log_losses(losses);
             for asked in self.front.look(LOOK, &mut self.orders) {
-                let text = "this version reads its stage file once; stop it and start it again";
-                self.front.answer(asked, 64, text);
+                self.edits.ask(asked);
             }
         }
         self.log_news();
         self.front.close();
+        self.edits.reload.finish();
     }
 
     /// Input that was lost since `before`; gives the counts for the next look.
@@ -69,7 +78,7 @@ impl Desk {
         (overruns, too_long)
     }
 
-    fn reconnect(&mut self) {
+    pub(super) fn reconnect(&mut self) {
         let before = self.patch.choice.clone();
         let ports = self.patch.connect(&self.rig);
         let (keyboards, synths) = self.rig.devices(&self.patch.choice, &ports);
@@ -87,7 +96,12 @@ impl Desk {
     }
 
     fn log_news(&mut self) {
-        let synth_name = |rig: &RigWanted, index: usize| rig.synths[index].name.clone();
+        // News may be older than an edit that took its device away.
+        let name_of = |rig: &[Wanted], index: usize| {
+            rig.get(index)
+                .map_or(String::new(), |device| device.name.clone())
+        };
+        let synth_name = |rig: &RigWanted, index: usize| name_of(&rig.synths, index);
         while let Ok(news) = self.news.pop() {
             match news {
                 News::Song(place) => {
@@ -106,11 +120,9 @@ impl Desk {
                     }
                 }
                 News::Asked(Ask::Stop) => self.front.stop(&mut self.orders),
-                News::Asked(Ask::Reload) => {
-                    warn!("the stage file is only read again by a restart");
-                }
+                News::Asked(Ask::Reload) => self.edits.reload.ask(),
                 News::KeyboardLost { keyboard } => {
-                    let name = &self.rig.keyboards[keyboard].name;
+                    let name = name_of(&self.rig.keyboards, keyboard);
                     warn!("keyboard {name} has gone; all it held is let go");
                 }
                 News::Emptied { synth } => {

@@ -11,6 +11,8 @@
 #[cfg(target_os = "linux")]
 mod desk;
 #[cfg(target_os = "linux")]
+mod edits;
+#[cfg(target_os = "linux")]
 pub mod front;
 #[cfg(target_os = "linux")]
 mod open;
@@ -18,16 +20,20 @@ mod open;
 pub mod orders;
 #[cfg(target_os = "linux")]
 pub mod place;
+#[cfg(unix)]
+pub mod reload;
 pub mod rig;
 #[cfg(target_os = "linux")]
 pub mod run;
 mod score;
 #[cfg(target_os = "linux")]
 pub mod socket;
+#[cfg(unix)]
+pub mod state;
 pub mod status;
 #[cfg(target_os = "linux")]
 pub mod systemd;
 #[cfg(target_os = "linux")]
 mod tell;
 
-pub use score::{Ending, News, Player, Pulse, Score, Slot};
+pub use score::{Ending, Handover, News, Player, Pulse, Score, Slot};

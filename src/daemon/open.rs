@@ -4,6 +4,7 @@ use super::desk::Patch;
 use super::rig::RigWanted;
 use super::score::{Player, Slot};
 use crate::ports::alsa::{Alsa, desk::Desk as Sequencer};
+use crate::ports::clock::Clock;
 use crate::ports::names::{Choice, Wanted};
 use crate::ports::system::{self, Bell};
 use crate::ports::{Backend, Broken, Tally};
@@ -18,12 +19,17 @@ pub enum Ports {
 impl Ports {
     /// # Errors
     /// They cannot be had, or there is no room for us.
-    pub fn open(rig: &RigWanted, client_name: &str) -> Result<(Ports, Patch), Broken> {
+    pub fn open(
+        rig: &RigWanted,
+        client_name: &str,
+        clock: Clock,
+    ) -> Result<(Ports, Patch), Broken> {
         let names = |wanted: &[Wanted]| -> Vec<String> {
             wanted.iter().map(|device| device.name.clone()).collect()
         };
         let (keyboards, synths) = (names(&rig.keyboards), names(&rig.synths));
-        let alsa = Alsa::open(client_name, &keyboards, &synths)?;
+        let mut alsa = Alsa::open(client_name, &keyboards, &synths)?;
+        alsa.keep_time(clock);
         let mut sequencer = Sequencer::open(client_name)?;
         sequencer.add_ours(alsa.client());
         let patch = Patch {
@@ -36,6 +42,13 @@ impl Ports {
             said: Vec::new(),
         };
         Ok((Ports::Alsa(alsa), patch))
+    }
+
+    /// The score's time.
+    pub fn clock(&self) -> Clock {
+        match self {
+            Ports::Alsa(alsa) => alsa.clock(),
+        }
     }
 
     /// Ends a wait early, so that the desk's commands are looked at.

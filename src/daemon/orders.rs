@@ -19,6 +19,16 @@ impl Orders {
         }
     }
 
+    /// Wakes the score thread for something other than an order.
+    pub fn ring(&self) {
+        self.bell.ring();
+    }
+
+    /// The score thread waits at other ports now.
+    pub fn ring_at(&mut self, bell: Bell) {
+        self.bell = bell;
+    }
+
     /// Gives an order and wakes the score thread. It is followed once `Pulse::obeyed` has come to the number returned;
     /// `None` if so many wait already that the score thread must be stuck.
     pub fn give(&mut self, command: Command) -> Option<u64> {

@@ -1,6 +1,7 @@
 //! From the devices of a stage file to the ports they want, and back to words for players.
 
 use super::status::{Device, Waits};
+use crate::limits::{KEYBOARDS_MAX, SYNTHS_MAX};
 use crate::ports::names::{Address, Choice, Port, Wanted, Wish};
 use crate::stage::{self, Stage};
 
@@ -43,6 +44,81 @@ impl RigWanted {
             describe(wanted, is, connected.as_slice(), ports)
         });
         keyboards.chain(synths).collect()
+    }
+}
+
+/// What becomes of the devices of one rig in the next.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub struct Moved {
+    pub keyboards: Moves,
+    pub synths: Moves,
+}
+
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub struct Moves {
+    /// For each device of the new rig its place in the old one, if it was there and wanted the same port.
+    pub from: Vec<Option<usize>>,
+    /// Places of the old rig where the new one has another device, or one that wants another port.
+    pub gone: Places,
+    /// Not the same names in the same order.
+    renamed: bool,
+}
+
+/// Some places of a rig.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub struct Places(u8);
+
+const _: () = assert!(KEYBOARDS_MAX <= 8 && SYNTHS_MAX <= 8);
+
+impl Places {
+    pub fn add(&mut self, place: usize) {
+        self.0 |= 1 << place;
+    }
+
+    pub fn has(self, place: usize) -> bool {
+        self.0 >> place & 1 == 1
+    }
+
+    pub fn is_empty(self) -> bool {
+        self.0 == 0
+    }
+}
+
+impl Moved {
+    pub fn between(old: &RigWanted, new: &RigWanted) -> Moved {
+        Moved {
+            keyboards: Moves::between(&old.keyboards, &new.keyboards),
+            synths: Moves::between(&old.synths, &new.synths),
+        }
+    }
+
+    /// Our own ports, which bear the names of the devices, are no longer right.
+    pub fn renamed(&self) -> bool {
+        self.keyboards.renamed || self.synths.renamed
+    }
+
+    /// Nothing has to be connected otherwise than it is.
+    pub fn is_nothing(&self) -> bool {
+        !self.renamed() && self.keyboards.gone.is_empty() && self.synths.gone.is_empty()
+    }
+}
+
+impl Moves {
+    fn between(old: &[Wanted], new: &[Wanted]) -> Moves {
+        let from = |wanted: &Wanted| old.iter().position(|known| known == wanted);
+        let mut gone = Places::default();
+        for (place, known) in old.iter().enumerate() {
+            if new.get(place) != Some(known) {
+                gone.add(place);
+            }
+        }
+        let names = |rig: &[Wanted]| rig.iter().map(|wanted| wanted.name.clone()).collect();
+        let (before, after): (Vec<String>, Vec<String>) = (names(old), names(new));
+        Moves {
+            from: new.iter().map(from).collect(),
+            gone,
+            renamed: before != after,
+        }
     }
 }
 
@@ -103,6 +179,47 @@ fn describe(wanted: &Wanted, is: &str, connected: &[Address], ports: &[Port]) ->
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    #[test]
+    fn what_becomes_of_devices() {
+        let wanted = |name: &str, wish| Wanted {
+            name: name.to_string(),
+            wish,
+        };
+        let rig = |synths: &[(&str, Wish)]| RigWanted {
+            keyboards: vec![wanted("keys", Wish::Any)],
+            synths: synths.iter().map(|(n, w)| wanted(n, w.clone())).collect(),
+        };
+        let old = rig(&[("organ", Wish::Any), ("bells", Wish::Virtual)]);
+        assert!(Moved::between(&old, &old).is_nothing());
+
+        let other_port = rig(&[("organ", Wish::Any), ("bells", Wish::Any)]);
+        let moved = Moved::between(&old, &other_port);
+        assert!(!moved.renamed() && !moved.is_nothing() && moved.keyboards.gone.is_empty());
+        assert_eq!(moved.synths.from, [Some(0), None]);
+        assert_eq!(
+            [0, 1].map(|place| moved.synths.gone.has(place)),
+            [false, true]
+        );
+
+        let turned = rig(&[("bells", Wish::Virtual), ("organ", Wish::Any)]);
+        let moved = Moved::between(&old, &turned);
+        assert!(moved.renamed());
+        assert_eq!(moved.synths.from, [Some(1), Some(0)]);
+        assert_eq!(
+            [0, 1].map(|place| moved.synths.gone.has(place)),
+            [true, true]
+        );
+
+        let more = rig(&[
+            ("organ", Wish::Any),
+            ("bells", Wish::Virtual),
+            ("flute", Wish::Any),
+        ]);
+        let moved = Moved::between(&old, &more);
+        assert!(moved.renamed() && moved.synths.gone.is_empty());
+        assert_eq!(moved.synths.from, [Some(0), Some(1), None]);
+    }
 
     #[test]
     fn a_rig_in_words() {

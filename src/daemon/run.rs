@@ -1,18 +1,21 @@
 //! From a stage file to an evening: opens the ports, starts the threads, plays until it is told to stop.
 
 use super::desk::Desk;
+use super::edits::Edits;
 use super::front::Front;
 use super::open::Ports;
 use super::orders::Orders;
 use super::place;
+use super::reload::{Handing, Reload};
 use super::rig::RigWanted;
 use super::score::{Ending, Score, Slot};
+use super::state::Boot;
 use super::status::Status;
 use super::systemd::Systemd;
 use crate::engine::{Engine, Report};
 use crate::ports::Broken;
-use crate::stage::Stage;
-use signal_hook::consts::{SIGINT, SIGTERM};
+use crate::ports::clock::Clock;
+use signal_hook::consts::{SIGHUP, SIGINT, SIGTERM};
 use signal_hook::iterator::Signals;
 use std::panic::{AssertUnwindSafe, catch_unwind};
 use std::path::PathBuf;
@@ -24,6 +27,9 @@ use tracing::{error, info, warn};
 const QUEUE: usize = 256;
 /// Pulses that can wait for the desk: over a look's worth of the shortest cycles.
 const PULSES: usize = 64;
+
+/// Plans that can be under way, either way: one at a time.
+const PLANS: usize = 2;
 
 /// What a daemon was told on its command line.
 #[derive(Clone, Debug)]
@@ -52,26 +58,32 @@ pub enum Trouble {
 ///
 /// # Errors
 /// There are no ports to play on, or we have failed.
-pub fn play(stage: Stage, evening: &Evening) -> Result<(), Trouble> {
-    let signals = Signals::new([SIGTERM, SIGINT]).map_err(Trouble::System)?;
+pub fn play(boot: Boot, evening: &Evening) -> Result<(), Trouble> {
+    let signals = Signals::new([SIGTERM, SIGINT, SIGHUP]).map_err(Trouble::System)?;
     let socket = place::open(&evening.name, evening.socket.as_deref()).map_err(Trouble::Taken)?;
-    let rig = RigWanted::of(&stage);
-    let (mut ports, mut patch) = Ports::open(&rig, &evening.name).map_err(Trouble::Ports)?;
+    let clock = Clock::start();
+    let rig = RigWanted::of(&boot.stage);
+    let (ports, mut patch) = Ports::open(&rig, &evening.name, clock).map_err(Trouble::Ports)?;
     let there = patch.connect(&rig);
 
     let (commands_in, commands_out) = rtrb::RingBuffer::new(QUEUE);
     let (news_in, news_out) = rtrb::RingBuffer::new(QUEUE);
     let (pulses_in, pulses_out) = rtrb::RingBuffer::new(PULSES);
-    let engine = Engine::new(stage.plan());
-    let score = Score::new(engine, rig.synths.len(), commands_out, news_in).with_pulses(pulses_in);
+    let (plans, plans_out) = rtrb::RingBuffer::new(PLANS);
+    let (old_in, old) = rtrb::RingBuffer::new(PLANS);
+    let engine = Engine::new(boot.stage.plan());
+    let score = Score::new(engine, rig.synths.len(), commands_out, news_in)
+        .with_pulses(pulses_in)
+        .with_plans(plans_out, old_in);
     let done = Arc::new(AtomicBool::new(false));
     let clauses = rig.describe("is", &patch.choice, &there).join("; ");
-    let mut status = Status::of(&stage, &evening.name, &evening.file, score.report());
+    let mut status = Status::of(&boot.stage, &evening.name, &evening.file, score.report());
     status.real_time = ports.hurry();
     (status.keyboards, status.synths) = rig.devices(&patch.choice, &there);
-    let stage = Arc::new(stage);
+    let reload = Reload::new(boot, Handing { plans, old }, clock.now());
+    status.complaint = reload.complaint();
     let mut front = Front::new(
-        stage,
+        reload.stage(),
         status,
         socket,
         Systemd::from_environment(),
@@ -79,6 +91,7 @@ pub fn play(stage: Stage, evening: &Evening) -> Result<(), Trouble> {
     );
     front.ready();
     let slot = Slot::new(score);
+    let (edits, turn) = Edits::new(reload, clock);
     let desk = Desk {
         rig,
         patch,
@@ -88,6 +101,7 @@ pub fn play(stage: Stage, evening: &Evening) -> Result<(), Trouble> {
         news: news_out,
         tally: ports.tally(),
         done: done.clone(),
+        edits,
     };
     let desk = std::thread::Builder::new()
         .name("desk".to_string())
@@ -95,7 +109,7 @@ pub fn play(stage: Stage, evening: &Evening) -> Result<(), Trouble> {
         .map_err(Trouble::System)?;
     info!("ready: {clauses}");
 
-    let ran = catch_unwind(AssertUnwindSafe(|| ports.play(&slot)));
+    let ran = catch_unwind(AssertUnwindSafe(|| turn.play(ports, &slot, &evening.name)));
     done.store(true, Ordering::Release);
     if desk.join().is_err() {
         error!("the desk had failed before the end");

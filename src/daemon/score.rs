@@ -1,5 +1,9 @@
 //! The score: an engine and its queues, and what is done with them in one cycle.
 
+mod edits;
+
+pub use edits::Handover;
+
 use crate::engine::{self, Ask, Command, Engine, Input, KeyboardId, Output, Report, SynthId};
 use crate::limits::{CHANNELS, SYNTHS_MAX};
 use crate::midi::controller::{ALL_NOTES_OFF, ALL_SOUND_OFF, DAMPER, SOSTENUTO};
@@ -74,6 +78,9 @@ pub struct Score {
     synths: usize,
     commands: Consumer<Command>,
     news: Producer<News>,
+    edits: Option<edits::Edits>,
+    /// A plan has come that needs other ports, for so many synths.
+    ports_due: Option<usize>,
     pulses: Option<Producer<Pulse>>,
     obeyed: u64,
     song: u16,
@@ -96,6 +103,8 @@ impl Score {
             synths: synths.min(SYNTHS_MAX),
             commands,
             news,
+            edits: None,
+            ports_due: None,
             pulses: None,
             obeyed: 0,
             reopen_at: [None; SYNTHS_MAX],
@@ -141,6 +150,7 @@ impl Score {
             self.obey(to, command, outlet);
             self.obeyed += 1;
         }
+        self.take_plan(to, outlet);
         self.reopen(to, outlet);
         self.tell_song();
         let pulse_at = self.beat(to);
@@ -291,7 +301,7 @@ impl Score {
         } else if self.give_up_at.is_some_and(|at| at <= to) {
             self.ending = Some(Ending::GaveUp);
         }
-        if self.ending.is_some() {
+        if self.ending.is_some() || self.ports_due.is_some() {
             return Next::Leave;
         }
         let own = self.reopen_at.iter().copied().flatten();
@@ -336,6 +346,16 @@ impl Slot {
             Err(TryLockError::Poisoned(poisoned)) => poisoned.into_inner().take(),
             Err(TryLockError::WouldBlock) => None,
         }
+    }
+
+    /// Whether the loop has ended only because an edit needs other ports.
+    pub(super) fn takes_other_ports(&self) -> bool {
+        let Some(mut score) = self.take() else {
+            return false;
+        };
+        let due = score.take_ports_due();
+        self.put(score);
+        due
     }
 
     fn put(&self, score: Box<Score>) {

@@ -36,6 +36,15 @@ impl Engine {
                 self.set_up(now, id);
                 self.sends_due = !self.plan.set[self.song].sends.is_empty();
             }
+            Link::Going => {
+                while let Some(voice) = self.voices.take(|v| v.synth == id) {
+                    self.end(now, &voice, 64, None);
+                }
+                let synth = &mut self.synths[id.index()];
+                for number in synth.rig.channels().iter() {
+                    synth.lift_pedals(number, &mut self.out);
+                }
+            }
             Link::Tight => synth.tight = true,
             Link::Easy => synth.tight = false,
         }

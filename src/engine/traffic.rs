@@ -25,6 +25,8 @@ pub enum Input<'a> {
 pub enum Link {
     /// Nothing can be sent; what sounded there is forgotten.
     Down,
+    /// About to be taken away: what is open is let go.
+    Going,
     /// Connected: the synth is set up at once.
     Up,
     /// Connected again after having been lost, or perhaps still waking: set up at once, and once more 2 s later.

@@ -89,6 +89,15 @@ impl Alsa {
         self.tally.clone()
     }
 
+    pub fn clock(&self) -> Clock {
+        self.clock
+    }
+
+    /// Goes on by the clock of ports that were there before: a score knows no other time.
+    pub fn keep_time(&mut self, clock: Clock) {
+        self.clock = clock;
+    }
+
     pub fn client(&self) -> i32 {
         self.client
     }

@@ -97,4 +97,10 @@ pub trait Patchbay: Send {
     /// # Errors
     /// One of them is gone or does not want it.
     fn connect(&self, from: Address, to: Address) -> Result<(), Broken>;
+
+    /// Takes two ports apart. Not connected is as good.
+    ///
+    /// # Errors
+    /// The backend is gone.
+    fn disconnect(&self, from: Address, to: Address) -> Result<(), Broken>;
 }

@@ -1,7 +1,7 @@
 //! A whole stage file: its sections in order, then the plan.
 
 use super::advice::Findings;
-use super::complaint::{Complaint, Trail};
+use super::complaint::{Complaint, Complaints, Trail};
 use super::naming::Scene;
 use super::node::{At, Fields, Node};
 use super::resolve::Names;
@@ -30,14 +30,18 @@ struct Rest {
     cues: Vec<CuePlan>,
     advice: Vec<String>,
     files: Vec<PathBuf>,
+    texts: Vec<String>,
 }
 
-/// Reads a text as a stage file.
+/// Reads a text as a stage file; the files that it names are read from `kept`, or from the disk if that is empty.
 ///
 /// # Errors
 /// Every complaint at once.
-pub fn parse(path: &Path, text: &str) -> Result<Stage, Vec<Complaint>> {
-    let mut found = Findings::default();
+pub fn parse(path: &Path, text: &str, kept: &[(PathBuf, String)]) -> Result<Stage, Vec<Complaint>> {
+    let mut found = Findings {
+        complaints: Complaints::reading(kept),
+        ..Findings::default()
+    };
     let file = found.complaints.add_file(path, text);
     let stage = slips::read_tree(file, text, &mut found.complaints)
         .and_then(|tree| read(path, &At::new(&tree, Trail::root(file)), &mut found));
@@ -95,12 +99,14 @@ fn read(path: &Path, top: &At<'_>, found: &mut Findings) -> Option<Stage> {
         }
     }
     files.extend_from_slice(library.files());
+    let texts = found.complaints.texts(&files);
     let rest = Rest {
         entries,
         parts,
         cues,
         advice: std::mem::take(&mut found.advice),
         files,
+        texts,
     };
     Some(assemble(evening, rig, rest))
 }
@@ -122,6 +128,7 @@ fn assemble(evening: Evening, rig: Rig, rest: Rest) -> Stage {
         set,
         advice: rest.advice,
         files: rest.files,
+        texts: rest.texts,
         plan: Plan {
             keyboards: keyboard_plans,
             synths: synth_plans,
@@ -224,7 +231,7 @@ fn rig_file(
     let name = at.text("the path of a rig file", &mut found.complaints)?;
     let file = path.parent().unwrap_or(Path::new("")).join(&name);
     files.push(file.clone());
-    match std::fs::read_to_string(&file) {
+    match found.complaints.read(&file) {
         Ok(text) => {
             let number = found.complaints.add_file(&file, &text);
             let tree = slips::read_tree(number, &text, &mut found.complaints)?;

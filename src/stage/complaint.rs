@@ -70,9 +70,54 @@ pub struct Complaints {
     found: Vec<Complaint>,
     /// Lines, with their file, that are known not to be read as they were meant.
     settled: Vec<(usize, usize)>,
+    /// Texts that stand for the files of these absolute paths; where there are any, the disk is not read.
+    kept: Vec<(PathBuf, String)>,
 }
 
 impl Complaints {
+    /// For a stage that is read from a copy of its files; with none, from the disk.
+    pub fn reading(kept: &[(PathBuf, String)]) -> Complaints {
+        Complaints {
+            kept: kept.to_vec(),
+            ..Complaints::default()
+        }
+    }
+
+    /// The text of a file that the stage names.
+    ///
+    /// # Errors
+    /// It is not there, cannot be read, or is not UTF-8.
+    pub fn read(&self, path: &Path) -> std::io::Result<String> {
+        if self.kept.is_empty() {
+            return std::fs::read_to_string(path);
+        }
+        let text = self.kept_text(path).ok_or(std::io::ErrorKind::NotFound)?;
+        Ok(text.to_string())
+    }
+
+    /// Whether there is such a file.
+    pub fn has_file(&self, path: &Path) -> bool {
+        if self.kept.is_empty() {
+            return path.is_file();
+        }
+        self.kept_text(path).is_some()
+    }
+
+    fn kept_text(&self, path: &Path) -> Option<&str> {
+        let path = std::path::absolute(path).ok()?;
+        let found = self.kept.iter().find(|(kept, _)| *kept == path);
+        found.map(|(_, text)| text.as_str())
+    }
+
+    /// What stood in files that were read.
+    pub fn texts(&self, files: &[PathBuf]) -> Vec<String> {
+        let text = |file: &PathBuf| {
+            let found = self.files.iter().find(|(path, _)| path == file);
+            found.map_or(String::new(), |(_, text)| text.clone())
+        };
+        files.iter().map(text).collect()
+    }
+
     /// Takes in a file's text, so that complaints about it can be given a line. Returns its number for [`Trail::root`].
     pub fn add_file(&mut self, path: &Path, text: &str) -> usize {
         self.files.push((path.to_path_buf(), text.to_string()));

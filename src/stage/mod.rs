@@ -2,11 +2,12 @@
 //!
 //! **What this room is**: YAML to a tree (`node`), where it stumbles in words of our own (`slips`, `cuts`, `yaml_errors`);
 //! the tree, section by section, to checked types with every complaint at once (`rig`, `songs`, `tunings`, `cues`;
-//! `complaint`, `locate`); those to a [`Plan`] (`compile`, `pools`); what to expect of it (`outlook`).
+//! `complaint`, `locate`); those to a [`Plan`] (`compile`, `pools`); what to expect of it (`outlook`); when to read it
+//! again (`watch`).
 //! **Start reading at** [`Stage`], then `compile.rs`.
 //! **May know** `engine/` (its plan), `tuning/`, `pitch/`, `intonation/`, `limits`.
-//! **Owns** serde_yaml. A [`Stage`] cannot be wrong.
-//! **Not here**: who reads the file again while playing (`daemon/`).
+//! **Owns** serde_yaml and notify. A [`Stage`] cannot be wrong.
+//! **Not here**: what is done with an edit while playing (`daemon/reload.rs`).
 
 mod advice;
 mod black_keys;
@@ -36,6 +37,8 @@ mod songs;
 mod synth;
 pub mod tunings;
 mod values;
+#[cfg(unix)]
+pub mod watch;
 pub mod words;
 mod yaml_errors;
 
@@ -59,6 +62,8 @@ pub struct Stage {
     pub advice: Vec<String>,
     /// Every file that was read: the stage file first, then rig and tuning files. To be watched.
     pub files: Vec<PathBuf>,
+    /// What stood in them, in the same order.
+    pub texts: Vec<String>,
     plan: Plan,
 }
 
@@ -124,7 +129,18 @@ impl Stage {
 
     /// As `read`, for a text already in hand; `path` is where it is said to come from.
     pub fn parse(path: &Path, text: &str) -> Result<Stage, Vec<Complaint>> {
-        compile::parse(path, text)
+        compile::parse(path, text, &[])
+    }
+
+    /// From a copy of everything that was read once: absolute paths and texts, the stage file first.
+    ///
+    /// # Errors
+    /// Every complaint at once.
+    pub fn from_copy(copy: &[(PathBuf, String)]) -> Result<Stage, Vec<Complaint>> {
+        let Some((path, text)) = copy.first() else {
+            return Err(Vec::new());
+        };
+        compile::parse(path, text, copy)
     }
 
     /// What the engine or the desk does for words that were told. The same grammar as behind `do:`.

@@ -180,10 +180,10 @@ impl<'n> Library<'n> {
         let plain = !name.contains(['/', '\\']) && !name.starts_with('.');
         let file = (self.folders.iter())
             .map(|folder| folder.join(format!("{name}.yaml")))
-            .find(|file| plain && file.is_file());
+            .find(|file| plain && complaints.has_file(file));
         if let Some(file) = file {
             self.files.push(file.clone());
-            return match std::fs::read_to_string(&file) {
+            return match complaints.read(&file) {
                 Ok(text) => self.read_text(name, &file, &text, complaints),
                 Err(error) => {
                     let wrong = format!("cannot be read ({error})");

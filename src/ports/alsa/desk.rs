@@ -83,6 +83,13 @@ impl Patchbay for Desk {
             _ => Ok(()),
         }
     }
+
+    fn disconnect(&self, from: Address, to: Address) -> Result<(), Broken> {
+        match (self.seq).unsubscribe_port(super::addr(from), super::addr(to)) {
+            Err(error) if error.errno() != libc::ENOENT => Err(broken(error)),
+            _ => Ok(()),
+        }
+    }
 }
 
 /// The USB place of a sound card.

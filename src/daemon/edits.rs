@@ -1,0 +1,180 @@
+//! What the desk does when the stage file is edited: wakes the score thread, connects what has changed, and asks the
+//! main thread for other ports where the devices are not those of before.
+
+use super::desk::{Desk, Patch};
+use super::open::Ports;
+use super::reload::{Reload, Todo};
+use super::rig::{Moved, Moves, RigWanted};
+use super::score::Slot;
+use super::socket::ClientId;
+use crate::ports::clock::Clock;
+use crate::ports::names::{Address, Choice};
+use crate::ports::system::Bell;
+use crate::ports::{Broken, Tally};
+use std::sync::Arc;
+use std::sync::mpsc::{Receiver, Sender, channel};
+use tracing::warn;
+
+/// The desk's side.
+pub struct Edits {
+    pub reload: Reload,
+    clock: Clock,
+    /// Whoever waits to hear what has become of a reload.
+    asked: Vec<ClientId>,
+    wanted: Sender<RigWanted>,
+    opened: Receiver<Opened>,
+}
+
+/// The main thread's side.
+pub struct Turn {
+    wanted: Receiver<RigWanted>,
+    opened: Sender<Opened>,
+}
+
+/// Ports that were opened in place of others.
+struct Opened {
+    patch: Patch,
+    bell: Bell,
+    tally: Arc<Tally>,
+}
+
+impl Edits {
+    pub fn new(reload: Reload, clock: Clock) -> (Edits, Turn) {
+        let (wanted, wanted_out) = channel();
+        let (opened_in, opened) = channel();
+        let edits = Edits {
+            reload,
+            clock,
+            asked: Vec::new(),
+            wanted,
+            opened,
+        };
+        let turn = Turn {
+            wanted: wanted_out,
+            opened: opened_in,
+        };
+        (edits, turn)
+    }
+
+    /// Reads the files at the next look, and answers when that is done.
+    pub fn ask(&mut self, client: ClientId) {
+        self.reload.ask();
+        self.asked.push(client);
+    }
+}
+
+impl Turn {
+    /// Plays until the score has come to its end; where an edit needs other ports, goes on with those.
+    ///
+    /// # Errors
+    /// The ports are gone for good, or others cannot be had.
+    pub fn play(self, mut ports: Ports, slot: &Arc<Slot>, client_name: &str) -> Result<(), Broken> {
+        loop {
+            ports.play(slot)?;
+            if !slot.takes_other_ports() {
+                return Ok(());
+            }
+            // Fails only where the desk has failed; then there is nobody to connect anything.
+            let Ok(rig) = self.wanted.recv() else {
+                return Ok(());
+            };
+            let clock = ports.clock();
+            drop(ports);
+            let (others, patch) = Ports::open(&rig, client_name, clock)?;
+            ports = others;
+            let (bell, tally) = (ports.bell(), ports.tally());
+            // As above.
+            let _ = self.opened.send(Opened { patch, bell, tally });
+        }
+    }
+}
+
+impl Desk {
+    /// Sees to edits of the stage file. True if the ports are others now.
+    pub(super) fn see_to_edits(&mut self) -> bool {
+        let now = self.edits.clock.now();
+        let others = match self.edits.reload.look(now) {
+            Todo::Nothing => false,
+            Todo::Ring => {
+                self.orders.ring();
+                false
+            }
+            Todo::InForce(moved) => self.in_force(&moved),
+        };
+        self.front.status.complaint = self.edits.reload.complaint();
+        if self.edits.reload.is_settled() {
+            self.answer();
+        }
+        others
+    }
+
+    fn answer(&mut self) {
+        for client in std::mem::take(&mut self.edits.asked) {
+            match self.edits.reload.complaint() {
+                Some(complaint) => self.front.answer(client, 65, &complaint),
+                None => {
+                    let text = "the stage file is in force as it is now";
+                    self.front.answer(client, 0, text);
+                }
+            }
+        }
+    }
+
+    fn in_force(&mut self, moved: &Moved) -> bool {
+        let stage = self.edits.reload.stage();
+        self.rig = RigWanted::of(&stage);
+        self.front.show_stage(stage);
+        if moved.is_nothing() {
+            return false;
+        }
+        if !moved.renamed() {
+            self.patch.part(moved);
+            self.reconnect();
+            return false;
+        }
+        // The main thread waits for this, unless it is about to end; then it answers nothing.
+        let _ = self.edits.wanted.send(self.rig.clone());
+        let Ok(Opened { patch, bell, tally }) = self.edits.opened.recv() else {
+            return false;
+        };
+        (self.patch, self.tally) = (patch, tally);
+        self.orders.ring_at(bell);
+        let (_, synths) = self.rig.devices(&self.patch.choice, &[]);
+        self.front.status.synths = synths;
+        self.reconnect();
+        true
+    }
+}
+
+impl Patch {
+    /// Disconnects the devices that want other ports than before; the rest stays as it is.
+    fn part(&mut self, moved: &Moved) {
+        let old = std::mem::take(&mut self.choice);
+        let keyboards = old.keyboards.iter().zip(&self.keyboards).enumerate();
+        let from_keyboards = keyboards
+            .filter(|(place, _)| moved.keyboards.gone.has(*place))
+            .flat_map(|(_, (from, own))| from.iter().map(move |from| (*from, *own)));
+        let synths = old.synths.iter().zip(&self.synths).enumerate();
+        let to_synths = synths
+            .filter(|(place, _)| moved.synths.gone.has(*place))
+            .filter_map(|(_, (to, own))| Some((*own, (*to)?)));
+        let ways: Vec<(Address, Address)> = from_keyboards.chain(to_synths).collect();
+        for (from, to) in ways {
+            if let Err(Broken { wrong, .. }) = self.patchbay.disconnect(from, to) {
+                warn!("a port could not be disconnected: {wrong}");
+            }
+        }
+        self.choice = Choice {
+            keyboards: kept(&moved.keyboards, &old.keyboards),
+            synths: kept(&moved.synths, &old.synths),
+            ..old
+        };
+    }
+}
+
+/// What each device of the new rig has from before.
+fn kept<T: Clone + Default>(moves: &Moves, old: &[T]) -> Vec<T> {
+    let from = |place: &Option<usize>| place.and_then(|place| old.get(place).cloned());
+    let kept = moves.from.iter().map(from);
+    kept.map(Option::unwrap_or_default).collect()
+}
