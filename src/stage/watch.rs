@@ -14,7 +14,7 @@ use std::fs::Metadata;
 use std::os::unix::fs::MetadataExt;
 use std::path::{Path, PathBuf};
 use std::sync::mpsc::{Receiver, Sender, channel};
-use std::time::SystemTime;
+use std::time::{Duration, UNIX_EPOCH};
 
 /// What a look at a file sees; another print is another content, for all we know.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -32,7 +32,7 @@ struct Folder {
     path: PathBuf,
     device: u64,
     inode: u64,
-    born: Option<SystemTime>,
+    born: Option<Duration>,
 }
 
 /// The files, and what is known of them.
@@ -207,7 +207,7 @@ fn folder(path: &Path) -> Option<Folder> {
         path: path.to_path_buf(),
         device: metadata.dev(),
         inode: metadata.ino(),
-        born: metadata.created().ok(),
+        born: (metadata.created().ok()).and_then(|born| born.duration_since(UNIX_EPOCH).ok()),
     })
 }
 
