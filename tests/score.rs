@@ -61,6 +61,32 @@ fn of_kind(sent: &[Sent], status: u8) -> Vec<&Sent> {
 }
 
 #[test]
+fn a_synth_that_comes_is_silenced_first_and_one_that_joins_it_does_not_stop_it() {
+    let stand = stand();
+    let back = Step::Synth {
+        synth: 0,
+        link: Link::Back,
+    };
+    let script = vec![
+        (at(1), UP),
+        (at(500), midi(&[0x90, 64, 100])),
+        (at(600), back),
+        (at(900), midi(&[0x80, 64, 0])),
+    ];
+    let sent = play(&stand, script, at(1_000));
+    let quiet = |sent: &Sent| {
+        let [status, number, value] = sent.bytes[..] else {
+            return false;
+        };
+        status & 0xF0 == 0xB0 && [64, 66, 120, 123].contains(&number) && value == 0
+    };
+    let first = sent.iter().take_while(|sent| quiet(sent)).count();
+    assert_eq!(first, 16 * 4, "pedals up and silence on every channel");
+    let silences = |sent: &&Sent| sent.bytes[0] & 0xF0 == 0xB0 && sent.bytes[1] >= 120;
+    assert_eq!(sent[first..].iter().find(silences), None);
+}
+
+#[test]
 fn a_note_goes_through_at_once_with_its_bend_before_it() {
     let stand = stand();
     let script = vec![

@@ -19,6 +19,8 @@ use tracing::{error, info, warn};
 
 /// How often the desk looks up. Nothing that sounds waits for it.
 const LOOK: Span = Span::from_millis(50);
+/// Looks until a connection that was refused is tried again: about a second.
+const LOOKS_TO_RETRY: u32 = 20;
 
 pub struct Desk {
     pub rig: RigWanted,
@@ -38,6 +40,8 @@ impl Desk {
         // What changed while the first connections were made is looked at once more.
         let mut changes = 0;
         let mut losses = (0, 0);
+        let mut loops = 0;
+        let mut looks = 0;
         while !self.done.load(Ordering::Acquire) {
             for signal in self.signals.pending() {
                 match signal {
@@ -50,9 +54,15 @@ impl Desk {
                 (changes, losses) = (0, (0, 0));
             }
             let now = self.tally.changes.load(Ordering::Relaxed);
-            if now != changes {
-                changes = now;
+            looks += 1;
+            if now != changes || self.patch.refused && looks >= LOOKS_TO_RETRY {
+                (changes, looks) = (now, 0);
                 self.reconnect();
+            }
+            let now = self.tally.loops.load(Ordering::Relaxed);
+            if now != loops {
+                loops = now;
+                self.patch.cut_loops(&self.rig);
             }
             losses = self.log_losses(losses);
             for asked in self.front.look(LOOK, &mut self.orders) {
@@ -149,6 +159,8 @@ pub struct Patch {
     pub synths: Vec<Address>,
     /// Said once each.
     pub said: Vec<String>,
+    /// Not every connection could be made.
+    pub refused: bool,
 }
 
 impl Patch {
@@ -165,14 +177,33 @@ impl Patch {
             .flat_map(|(from, own)| from.iter().map(move |from| (*from, *own)))
             .chain(synths.filter_map(|(to, own)| Some((*own, (*to)?))))
             .collect();
+        self.refused = false;
         for (from, to) in ways {
             // Also what we take for connected: it may have gone and come back between two looks.
             if let Err(Broken { wrong, .. }) = self.patchbay.connect(from, to) {
+                self.refused = true;
                 let (from, to) = (shown(from), shown(to));
                 self.say(format!("{from} cannot be connected to {to}: {wrong}"));
             }
         }
         ports
+    }
+
+    /// Undoes connections that bring our own notes back to us, and says so each time. The score thread has not heard a
+    /// note of them.
+    fn cut_loops(&self, rig: &RigWanted) {
+        for (keyboard, own) in rig.keyboards.iter().zip(&self.keyboards) {
+            for from in self.patchbay.cut_loops(*own, &self.synths) {
+                let ports = self.patchbay.ports();
+                let port = ports.iter().find(|port| port.address == from);
+                let from = port.map_or_else(|| shown(from), Port::full_name);
+                error!(
+                    "{from} was connected to keyboard {}, which would have played our own notes back to us, round and \
+                     round; that connection is undone",
+                    keyboard.name
+                );
+            }
+        }
     }
 
     fn say(&mut self, text: String) {

@@ -40,6 +40,7 @@ impl Ports {
                 .collect(),
             synths: (0..synths.len()).map(|n| alsa.synth_address(n)).collect(),
             said: Vec::new(),
+            refused: false,
         };
         Ok((Ports::Alsa(alsa), patch))
     }

@@ -5,7 +5,7 @@ mod edits;
 pub use edits::Handover;
 
 use crate::engine::{self, Ask, Command, Engine, Input, KeyboardId, Output, Report, SynthId};
-use crate::limits::{CHANNELS, SYNTHS_MAX};
+use crate::limits::{CHANNELS, KEYBOARDS_MAX, SYNTHS_MAX};
 use crate::midi::controller::{ALL_NOTES_OFF, ALL_SOUND_OFF, DAMPER, SOSTENUTO};
 use crate::midi::status;
 use crate::ports::{self, Cycle, Inbox, Next, Outlet, Room, What};
@@ -84,6 +84,10 @@ pub struct Score {
     pulses: Option<Producer<Pulse>>,
     obeyed: u64,
     song: u16,
+    /// Synths whose port is there.
+    up: [bool; SYNTHS_MAX],
+    /// As which keyboard of the stage file each device plays.
+    seats: [usize; KEYBOARDS_MAX],
     /// When a choked port is tried again.
     reopen_at: [Option<Time>; SYNTHS_MAX],
     give_up_at: Option<Time>,
@@ -107,6 +111,8 @@ impl Score {
             ports_due: None,
             pulses: None,
             obeyed: 0,
+            up: [false; SYNTHS_MAX],
+            seats: std::array::from_fn(|seat| seat),
             reopen_at: [None; SYNTHS_MAX],
             give_up_at: None,
             ending: None,
@@ -179,24 +185,38 @@ impl Score {
                 if let Some(id) = KeyboardId::new(keyboard) {
                     self.engine.handle_input(time, Input::KeyboardLost(id));
                 }
+                let keyboard = self.seats[keyboard];
                 self.tell(News::KeyboardLost { keyboard });
             }
+            What::Seat { keyboard, plays_as } => self.seat(time, keyboard, plays_as),
             What::Synth { synth, link } => {
                 let lost = link == ports::Link::Down;
                 // What waits for a port that has gone, or had choked, is of no use to the one that comes.
                 if lost || self.reopen_at[synth].take().is_some() {
                     outlet.forget(synth);
                 }
-                if !lost {
-                    // An earlier run that was killed, or a cable pulled while notes sounded, may have left it so. Bends
-                    // are not said here: the engine takes none for granted.
+                if !lost && !self.up[synth] {
+                    // An earlier run that was killed, or a cable pulled while notes sounded, may have left it so. (Not
+                    // when a second device joins: the first plays on.) Bends are not said here: the engine takes none
+                    // for granted.
                     outlet.at(time);
                     let quiet = [DAMPER, SOSTENUTO, ALL_NOTES_OFF, ALL_SOUND_OFF];
                     hush(outlet, synth, &quiet);
                 }
+                self.up[synth] = !lost;
                 self.link(time, synth, link.into());
                 self.tell(News::Synth { synth, link });
             }
+        }
+    }
+
+    fn seat(&mut self, time: Time, keyboard: usize, plays_as: usize) {
+        self.seats[keyboard] = plays_as;
+        if let (Some(keyboard), Some(plays_as)) =
+            (KeyboardId::new(keyboard), KeyboardId::new(plays_as))
+        {
+            let input = Input::Seat { keyboard, plays_as };
+            self.engine.handle_input(time, input);
         }
     }
 

@@ -102,7 +102,7 @@ impl Engine {
     /// Whether a cue takes a message away from the synth.
     pub(super) fn takes(&self, hand: Hand, heard: Heard) -> bool {
         let mut cues = self.plan.cues.iter();
-        cues.any(|cue| !cue.pass && is_for(cue, hand, heard))
+        cues.any(|cue| !cue.pass && self.is_for(cue, hand, heard))
     }
 
     /// Runs the cues on a gesture.
@@ -110,7 +110,7 @@ impl Engine {
         let length = self.press(now, hand, heard);
         for index in 0..self.plan.cues.len() {
             let cue = self.plan.cues[index];
-            if is_for(&cue, hand, heard) && fires(cue.press, heard, length) {
+            if self.is_for(&cue, hand, heard) && fires(cue.press, heard, length) {
                 self.fire(now, &cue, heard);
             }
         }
@@ -141,7 +141,7 @@ impl Engine {
     fn long_press(&self, hand: Hand, gesture: Gesture) -> Option<Span> {
         let mut cues = self.plan.cues.iter();
         cues.find_map(|cue| match cue.press {
-            Press::Long(long) if is_for(cue, hand, Heard::Idle(gesture)) => Some(long),
+            Press::Long(long) if self.is_for(cue, hand, Heard::Idle(gesture)) => Some(long),
             _ => None,
         })
     }
@@ -152,7 +152,7 @@ impl Engine {
             let heard = Heard::Idle(gesture);
             for index in 0..self.plan.cues.len() {
                 let cue = self.plan.cues[index];
-                if matches!(cue.press, Press::Long(_)) && is_for(&cue, hand, heard) {
+                if matches!(cue.press, Press::Long(_)) && self.is_for(&cue, hand, heard) {
                     self.fire(now, &cue, heard);
                 }
             }
@@ -174,12 +174,13 @@ impl Engine {
             self.command(now, command);
         }
     }
-}
 
-fn is_for(cue: &CuePlan, hand: Hand, heard: Heard) -> bool {
-    cue.from.is_none_or(|from| from == hand.keyboard)
-        && cue.channels.has(hand.channel)
-        && heard.is(cue.gesture)
+    fn is_for(&self, cue: &CuePlan, hand: Hand, heard: Heard) -> bool {
+        let keyboard = self.plays_as(hand.keyboard);
+        cue.from.is_none_or(|from| from == keyboard)
+            && cue.channels.has(hand.channel)
+            && heard.is(cue.gesture)
+    }
 }
 
 /// Where a control has a long press too, a short one is only known when it is let go.

@@ -13,7 +13,7 @@ use crate::tuning::Key;
 
 impl Engine {
     pub(super) fn bytes_in(&mut self, now: Time, id: KeyboardId, bytes: &[u8]) {
-        if id.index() >= self.plan.keyboards.len() {
+        if self.plays_as(id).index() >= self.plan.keyboards.len() {
             self.out.counters.bad_bytes += bytes.len() as u64;
             return;
         }
@@ -55,7 +55,8 @@ impl Engine {
             keyboard: id,
             channel,
         };
-        let is_heard = self.plan.keyboards[id.index()].channels.has(channel);
+        let keyboard = &self.plan.keyboards[self.plays_as(id).index()];
+        let is_heard = keyboard.channels.has(channel);
         if let Message::NoteOff { key, velocity, .. } = message {
             self.source(hand).keys &= !(1 << key);
             if self.is_open(hand, key) {
@@ -195,9 +196,6 @@ impl Engine {
     /// A keyboard has gone, or wants everything reset: what it held is let go.
     pub(super) fn let_go(&mut self, now: Time, id: KeyboardId) {
         let index = id.index();
-        if index >= self.plan.keyboards.len() {
-            return;
-        }
         self.keyboards[index].splitter.reset();
         self.presses.forget(|hand| hand.keyboard == id);
         self.release_keyboard(now, id);
@@ -208,7 +206,15 @@ impl Engine {
             };
             self.hand_off(now, hand);
         }
-        self.keyboards[index].let_go(wheel_semitones(&self.plan, index));
+        let wheel = wheel_semitones(&self.plan, self.plays_as(id));
+        self.keyboards[index].let_go(wheel);
         self.when_quiet(now);
+    }
+
+    /// A device sits down to play as one of the plan's keyboards.
+    pub(super) fn seat(&mut self, now: Time, id: KeyboardId, plays_as: KeyboardId) {
+        self.let_go(now, id);
+        self.keyboards[id.index()].plays_as = plays_as;
+        self.keyboards[id.index()].let_go(wheel_semitones(&self.plan, plays_as));
     }
 }

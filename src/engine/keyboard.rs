@@ -1,6 +1,7 @@
 //! What a keyboard holds: its stream, and the player's hands on each of its channels.
 
 use super::channel::UNSAID;
+use super::plan::KeyboardId;
 use super::synth::PEDALS;
 use crate::limits::{CHANNELS, SENSING_MS};
 use crate::midi::Splitter;
@@ -9,6 +10,8 @@ use crate::pitch::word::Bend;
 use crate::time::{Span, Time};
 
 pub(super) struct Keyboard {
+    /// The keyboard of the plan that it plays as: itself, unless several devices play as one.
+    pub plays_as: KeyboardId,
     pub splitter: Splitter,
     pub sources: [Source; CHANNELS],
     /// Set once it has sent Active Sensing: when it was last heard.
@@ -90,8 +93,9 @@ impl Source {
 }
 
 impl Keyboard {
-    pub fn new(wheel_semitones: u8) -> Keyboard {
+    pub fn new(plays_as: KeyboardId, wheel_semitones: u8) -> Keyboard {
         Keyboard {
+            plays_as,
             splitter: Splitter::new(),
             sources: [Source::new(wheel_semitones); CHANNELS],
             sensed_at: None,

@@ -114,7 +114,8 @@ impl Engine {
     /// If the plan breaks its own limits or its set is empty; `stage/` never makes such a plan.
     pub fn new(plan: Box<Plan>) -> Engine {
         let keyboards = (0..KEYBOARDS_MAX)
-            .map(|index| Keyboard::new(wheel_semitones(&plan, index)))
+            .filter_map(KeyboardId::new)
+            .map(|id| Keyboard::new(id, wheel_semitones(&plan, id)))
             .collect();
         let rig = |index: usize| Rig::of(plan.synths.get(index).unwrap_or(&plan.synths[0]));
         let synths = (0..SYNTHS_MAX)
@@ -147,6 +148,7 @@ impl Engine {
         match input {
             Input::Midi { keyboard, bytes } => self.bytes_in(now, keyboard, bytes),
             Input::KeyboardLost(keyboard) => self.let_go(now, keyboard),
+            Input::Seat { keyboard, plays_as } => self.seat(now, keyboard, plays_as),
             Input::Synth { synth, link } if synth.index() < self.plan.synths.len() => {
                 self.link_changed(now, synth, link);
             }
@@ -159,7 +161,7 @@ impl Engine {
     /// To be called once `poll_timeout` has come; harmless earlier.
     pub fn handle_timeout(&mut self, now: Time) {
         self.tick(now);
-        for index in 0..self.plan.keyboards.len() {
+        for index in 0..KEYBOARDS_MAX {
             if self.keyboards[index].gone_at().is_some_and(|at| at <= now) {
                 self.keyboards[index].sensed_at = None;
                 self.let_go(now, KeyboardId::new(index).expect("within limits"));
@@ -197,9 +199,8 @@ impl Engine {
 
     /// When `handle_timeout` is next due.
     pub fn poll_timeout(&self) -> Option<Time> {
-        let keyboards = self.keyboards.iter().take(self.plan.keyboards.len());
         let synths = self.synths.iter().take(self.plan.synths.len());
-        let sensing = keyboards.filter_map(Keyboard::gone_at);
+        let sensing = self.keyboards.iter().filter_map(Keyboard::gone_at);
         let due = synths.filter_map(|synth| synth.due_at(self.stopping));
         sensing.chain(due).chain(self.presses.due_at()).min()
     }
@@ -235,8 +236,9 @@ impl Engine {
     }
 
     fn hears(&self, part: &PartPlan, hand: Hand) -> bool {
-        let known = self.plan.keyboards.get(hand.keyboard.index());
-        part.from.is_none_or(|from| from == hand.keyboard)
+        let keyboard = self.plays_as(hand.keyboard);
+        let known = self.plan.keyboards.get(keyboard.index());
+        part.from.is_none_or(|from| from == keyboard)
             && part.hears.has(hand.channel)
             && known.is_some_and(|keyboard| keyboard.channels.has(hand.channel))
     }
@@ -261,7 +263,13 @@ impl Engine {
         set
     }
 
+    /// The keyboard of the plan that a device plays as.
+    fn plays_as(&self, id: KeyboardId) -> KeyboardId {
+        self.keyboards[id.index()].plays_as
+    }
+
     fn synths_of(&self, id: KeyboardId) -> SynthSet {
+        let id = self.plays_as(id);
         let mut set = SynthSet::default();
         for part in &self.plan.parts {
             if part.from.is_none_or(|from| from == id) {
@@ -290,6 +298,7 @@ impl SynthSet {
     }
 }
 
-fn wheel_semitones(plan: &Plan, index: usize) -> u8 {
-    plan.keyboards.get(index).map_or(2, |k| k.wheel_semitones)
+fn wheel_semitones(plan: &Plan, id: KeyboardId) -> u8 {
+    let keyboard = plan.keyboards.get(id.index());
+    keyboard.map_or(2, |k| k.wheel_semitones)
 }

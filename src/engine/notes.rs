@@ -184,7 +184,7 @@ impl Engine {
         self.out.counters.notes += 1;
         self.out.onset(Onset {
             part: want.part,
-            keyboard: press.hand.keyboard,
+            keyboard: self.plays_as(press.hand.keyboard),
             key: press.key,
             velocity: press.velocity,
             synth: part.to,

@@ -8,7 +8,8 @@ use crate::time::Span;
 use crate::tuning::{Key, Tuning};
 use std::sync::Arc;
 
-/// A keyboard, by place in the plan; always below `KEYBOARDS_MAX`.
+/// A keyboard, by place in the plan, or a place beyond those of the plan for one more device that plays as one of them;
+/// always below `KEYBOARDS_MAX`.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord, Hash)]
 pub struct KeyboardId(u8);
 

@@ -8,6 +8,7 @@ use super::synth::{PEDALS, Rig};
 use super::traffic::{Link, Weight};
 use super::voices::Voice;
 use super::{Engine, Playing};
+use crate::limits::KEYBOARDS_MAX;
 use crate::midi::{Message, controller};
 use crate::time::Time;
 
@@ -81,9 +82,12 @@ impl Engine {
 
     /// Takes over a new plan; gives back the old one.
     pub(super) fn swap_plan(&mut self, now: Time, plan: Box<Plan>) -> Box<Plan> {
-        for index in plan.keyboards.len()..self.plan.keyboards.len() {
-            // It is heard no more, so nobody else would end what it holds.
-            self.let_go(now, KeyboardId::new(index).expect("within limits"));
+        let gone = plan.keyboards.len()..self.plan.keyboards.len();
+        for id in (0..KEYBOARDS_MAX).filter_map(KeyboardId::new) {
+            if gone.contains(&self.plays_as(id).index()) {
+                // It is heard no more, so nobody else would end what it holds.
+                self.let_go(now, id);
+            }
         }
         let old = std::mem::replace(&mut self.plan, plan);
         let place = find_again(&self.plan.set, &old, self.song);

@@ -14,6 +14,12 @@ pub enum Input<'a> {
     },
     /// The keyboard's port has gone: everything it held is let go.
     KeyboardLost(KeyboardId),
+    /// From now on a device plays as `plays_as`, a keyboard of the plan, with hands of its own; what `keyboard` held
+    /// is let go. Several devices can so play as one keyboard. Until told otherwise each plays as itself.
+    Seat {
+        keyboard: KeyboardId,
+        plays_as: KeyboardId,
+    },
     /// The state of a synth's port has changed. Synths start `Down`.
     Synth { synth: SynthId, link: Link },
     /// The player, or whoever looks after the daemon, wants something.

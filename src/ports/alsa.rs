@@ -2,10 +2,11 @@
 
 pub mod desk;
 mod events;
+mod reader;
 mod wire;
 
 use super::clock::Clock;
-use super::hotplug::{Change, End, Hotplug, Notice};
+use super::hotplug::Hotplug;
 use super::names::Address;
 use super::outbox::{Outbox, RETRY, outboxes};
 use super::system::{Bell, readable, wait};
@@ -13,11 +14,11 @@ use super::{Backend, Broken, Cycle, Inbox, Next, Outlet, Tally};
 use crate::limits::{KEYBOARDS_MAX, SYNTHS_MAX, SYSEX_BYTES_MAX};
 use crate::time::{Span, Time};
 use alsa::poll::{Descriptors, pollfd};
-use alsa::seq::{Addr, Connect, Event, EventType, PortCap, PortSubscribe, PortType};
+use alsa::seq::{Addr, PortCap, PortSubscribe, PortType};
 use alsa::{Direction, Seq};
+use reader::Reader;
 use std::ffi::CString;
 use std::sync::Arc;
-use std::sync::atomic::Ordering;
 
 /// Events that may wait for us in the kernel: its largest allowed pool. When it runs over, the kernel throws all away.
 const INPUT_POOL: u32 = 2000;
@@ -67,7 +68,7 @@ impl Alsa {
             right: "raise the limit of open files".to_string(),
         })?;
         Ok(Alsa {
-            hotplug: Hotplug::new(keyboards.len(), synths.len()),
+            hotplug: Hotplug::new(client, keyboards.len(), synths.len()),
             inbox: Inbox::new(),
             outboxes: outboxes(synths.len()),
             clock: Clock::start(),
@@ -120,8 +121,8 @@ impl Alsa {
 
     /// Takes in what has come until there is no more, or no more room.
     fn read(&mut self, now: Time) -> Result<Reading, Broken> {
-        let seq = &self.seq;
         let mut reader = Reader {
+            seq: &self.seq,
             now,
             client: self.client,
             keyboards: &self.keyboards,
@@ -130,7 +131,7 @@ impl Alsa {
             inbox: &mut self.inbox,
             tally: &self.tally,
         };
-        let mut input = seq.input();
+        let mut input = self.seq.input();
         while reader.inbox.has_room() {
             match input.event_input() {
                 Ok(event) => reader.take(&event),
@@ -198,91 +199,6 @@ impl Backend for Alsa {
                     deadline.map(until).into_iter().chain(retry).min()
                 }
             };
-        }
-    }
-}
-
-/// Sorts one event after another into the inbox.
-struct Reader<'a> {
-    now: Time,
-    client: i32,
-    keyboards: &'a [i32],
-    synths: &'a [i32],
-    hotplug: &'a mut Hotplug,
-    inbox: &'a mut Inbox,
-    tally: &'a Tally,
-}
-
-impl Reader<'_> {
-    fn take(&mut self, event: &Event<'_>) {
-        match event.get_type() {
-            EventType::PortSubscribed | EventType::PortUnsubscribed => {
-                if let Some(connection) = event.get_data::<Connect>() {
-                    self.connection(connection, event.get_type() == EventType::PortSubscribed);
-                }
-            }
-            EventType::PortExit | EventType::ClientExit => {
-                if let Some(gone) = event.get_data::<Addr>() {
-                    self.notice(match event.get_type() {
-                        EventType::PortExit => Notice::PortGone(address(gone)),
-                        _ => Notice::ClientGone(gone.client),
-                    });
-                }
-                self.tally.changes.fetch_add(1, Ordering::Relaxed);
-            }
-            EventType::PortStart | EventType::PortChange | EventType::ClientStart => {
-                self.tally.changes.fetch_add(1, Ordering::Relaxed);
-            }
-            _ => self.midi(event),
-        }
-    }
-
-    fn midi(&mut self, event: &Event<'_>) {
-        let port = event.get_dest().port;
-        let Some(keyboard) = self.keyboards.iter().position(|own| *own == port) else {
-            return;
-        };
-        let mut buffer = events::Buffer::default();
-        let bytes = events::to_bytes(event, &mut buffer);
-        if !bytes.is_empty() && !self.inbox.add_midi(self.now, keyboard, bytes) {
-            self.tally.too_long.fetch_add(1, Ordering::Relaxed);
-        }
-    }
-
-    fn connection(&mut self, connection: Connect, joined: bool) {
-        let Connect { sender, dest } = connection;
-        let place = |ports: &[i32], port: i32| ports.iter().position(|own| *own == port);
-        let keyboard = (dest.client == self.client)
-            .then(|| place(self.keyboards, dest.port))
-            .flatten()
-            .map(|index| (End::Keyboard(index), address(sender)));
-        let synth = (sender.client == self.client)
-            .then(|| place(self.synths, sender.port))
-            .flatten()
-            .map(|index| (End::Synth(index), address(dest)));
-        for (end, peer) in keyboard.into_iter().chain(synth) {
-            self.notice(if joined {
-                Notice::Joined(end, peer)
-            } else {
-                Notice::Left(end, peer)
-            });
-        }
-    }
-
-    fn notice(&mut self, notice: Notice) {
-        let (inbox, now) = (&mut *self.inbox, self.now);
-        self.hotplug.handle(notice, &mut |change| match change {
-            Change::KeyboardLost(keyboard) => inbox.add_keyboard_lost(now, keyboard),
-            Change::Synth(synth, link) => inbox.add_synth(now, synth, link),
-        });
-    }
-
-    /// The kernel has thrown away what we had not read: note-offs among it, perhaps. Every key is let go.
-    fn overrun(&mut self) {
-        self.tally.overruns.fetch_add(1, Ordering::Relaxed);
-        self.tally.changes.fetch_add(1, Ordering::Relaxed);
-        for keyboard in 0..self.keyboards.len() {
-            self.inbox.add_keyboard_lost(self.now, keyboard);
         }
     }
 }

@@ -1,9 +1,12 @@
 //! Who is connected now, and what a coming or going means: a state machine without ports of its own.
 //!
 //! Notices may come twice or late (from the port itself and from the system's announcements); only changes are told.
+//! Each device that plays gets a seat: a place of its own, so that what it holds and half says is its alone even where
+//! several play as one keyboard of the stage file.
 
 use super::Link;
 use super::names::Address;
+use crate::limits::KEYBOARDS_MAX;
 
 /// One of our ports, by place in the stage file.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -21,55 +24,56 @@ pub enum Notice {
     ClientGone(i32),
 }
 
-/// What it means.
+/// What it means. A seat is a keyboard's place in the stage file, or a place beyond those.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Change {
-    KeyboardLost(usize),
+    Seat {
+        seat: usize,
+        keyboard: usize,
+    },
+    KeyboardLost {
+        seat: usize,
+    },
     Synth(usize, Link),
+    /// What came in there is what we sent out; it is not heard.
+    Loop {
+        keyboard: usize,
+    },
 }
 
-/// Ports that can be joined to one of ours; what comes beyond is heard, but its going is not noticed.
-const PEERS_MAX: usize = 32;
+/// Ports that can be joined to ours; what comes beyond is heard, but its going is not noticed.
+pub const PEERS_MAX: usize = 32;
+
+/// The client that gives back all it is given (`SNDRV_SEQ_CLIENT_DUMMY` in the kernel's sound/asequencer.h).
+pub const THROUGH: i32 = 14;
 
 /// The state.
 #[derive(Debug)]
 pub struct Hotplug {
-    keyboards: Vec<Peers>,
-    synths: Vec<Peers>,
+    /// Our own client.
+    client: i32,
+    keyboards: usize,
+    sitting: Vec<Sitting>,
+    synths: Vec<Vec<Address>>,
     settled: bool,
 }
 
-#[derive(Debug)]
-struct Peers(Vec<Address>);
-
-impl Peers {
-    fn new() -> Peers {
-        Peers(Vec::with_capacity(PEERS_MAX))
-    }
-
-    /// True if it is new.
-    fn add(&mut self, peer: Address) -> bool {
-        let new = !self.0.contains(&peer) && self.0.len() < PEERS_MAX;
-        if new {
-            self.0.push(peer);
-        }
-        new
-    }
-
-    /// True if any was there.
-    fn remove(&mut self, leaves: impl Fn(&Address) -> bool) -> bool {
-        let before = self.0.len();
-        self.0.retain(|peer| !leaves(peer));
-        self.0.len() < before
-    }
+/// A device that plays as a keyboard.
+#[derive(Clone, Copy, Debug)]
+struct Sitting {
+    peer: Address,
+    keyboard: usize,
+    seat: usize,
 }
 
 impl Hotplug {
     /// The only allocation.
-    pub fn new(keyboards: usize, synths: usize) -> Hotplug {
+    pub fn new(client: i32, keyboards: usize, synths: usize) -> Hotplug {
         Hotplug {
-            keyboards: (0..keyboards).map(|_| Peers::new()).collect(),
-            synths: (0..synths).map(|_| Peers::new()).collect(),
+            client,
+            keyboards,
+            sitting: Vec::with_capacity(PEERS_MAX),
+            synths: (0..synths).map(|_| Vec::with_capacity(PEERS_MAX)).collect(),
             settled: false,
         }
     }
@@ -81,19 +85,33 @@ impl Hotplug {
 
     /// How many ports hear a synth's port.
     pub fn hearers(&self, synth: usize) -> usize {
-        self.synths.get(synth).map_or(0, |peers| peers.0.len())
+        self.synths.get(synth).map_or(0, Vec::len)
+    }
+
+    /// The seat of what plays into a keyboard's port. One that has never joined sits down now: a program may send
+    /// straight to a port. `None`: it is not to be heard.
+    pub fn seat(
+        &mut self,
+        keyboard: usize,
+        peer: Address,
+        tell: &mut dyn FnMut(Change),
+    ) -> Option<usize> {
+        if self.place(keyboard, peer).is_none() {
+            self.sit_down(keyboard, peer, tell);
+        }
+        if self.is_loop(peer) {
+            return None;
+        }
+        let place = self.place(keyboard, peer);
+        Some(place.map_or(keyboard, |place| self.sitting[place].seat))
     }
 
     pub fn handle(&mut self, notice: Notice, tell: &mut dyn FnMut(Change)) {
         match notice {
-            Notice::Joined(End::Keyboard(index), peer) => {
-                if let Some(peers) = self.keyboards.get_mut(index) {
-                    peers.add(peer);
-                }
-            }
-            Notice::Joined(End::Synth(index), peer) => self.joined(index, peer, tell),
+            Notice::Joined(End::Keyboard(index), peer) => self.sit_down(index, peer, tell),
+            Notice::Joined(End::Synth(index), peer) => self.synth_joined(index, peer, tell),
             Notice::Left(End::Keyboard(index), peer) => {
-                self.keyboard_left(index, |p| *p == peer, tell);
+                self.stand_up(|s| s.keyboard == index && s.peer == peer, tell);
             }
             Notice::Left(End::Synth(index), peer) => self.synth_left(index, |p| *p == peer, tell),
             Notice::PortGone(peer) => self.gone(|p| *p == peer, tell),
@@ -101,29 +119,91 @@ impl Hotplug {
         }
     }
 
-    /// A second port that joins a synth's port has heard no set-up, so it is said again for it.
-    fn joined(&mut self, index: usize, peer: Address, tell: &mut dyn FnMut(Change)) {
-        let Some(peers) = self.synths.get_mut(index) else {
-            return;
-        };
-        if peers.add(peer) {
-            let at_start = !self.settled && peers.0.len() == 1;
-            let link = if at_start { Link::Up } else { Link::Back };
-            tell(Change::Synth(index, link));
+    /// Notices have been lost: these are all that are joined to a port of ours now.
+    pub fn agree(&mut self, end: End, peers: &[Address], tell: &mut dyn FnMut(Change)) {
+        match end {
+            End::Keyboard(index) => {
+                let left = |s: &Sitting| s.keyboard == index && !peers.contains(&s.peer);
+                self.stand_up(left, tell);
+            }
+            End::Synth(index) => self.synth_left(index, |p| !peers.contains(p), tell),
+        }
+        for peer in peers {
+            self.handle(Notice::Joined(end, *peer), tell);
         }
     }
 
-    /// Where several keyboards play as one and one goes, nobody can say whose keys were down: all are let go.
-    fn keyboard_left(
-        &mut self,
-        index: usize,
-        leaves: impl Fn(&Address) -> bool,
-        tell: &mut dyn FnMut(Change),
-    ) {
-        if let Some(peers) = self.keyboards.get_mut(index)
-            && peers.remove(leaves)
-        {
-            tell(Change::KeyboardLost(index));
+    /// Every device sits down anew, so that nothing is held any more.
+    pub fn let_all_go(&self, tell: &mut dyn FnMut(Change)) {
+        for (index, sitting) in self.sitting.iter().enumerate() {
+            let Sitting { seat, keyboard, .. } = *sitting;
+            if !self.sitting[..index].iter().any(|s| s.seat == seat) {
+                tell(Change::Seat { seat, keyboard });
+            }
+        }
+    }
+
+    fn place(&self, keyboard: usize, peer: Address) -> Option<usize> {
+        let is = |s: &Sitting| s.keyboard == keyboard && s.peer == peer;
+        self.sitting.iter().position(is)
+    }
+
+    /// The keyboard's own seat, else a spare one, else its own shared with whoever has it.
+    fn sit_down(&mut self, keyboard: usize, peer: Address, tell: &mut dyn FnMut(Change)) {
+        if keyboard >= self.keyboards || self.place(keyboard, peer).is_some() {
+            return;
+        }
+        if self.is_loop(peer) {
+            return tell(Change::Loop { keyboard });
+        }
+        if self.sitting.len() == PEERS_MAX {
+            return;
+        }
+        let spare = (self.keyboards..KEYBOARDS_MAX).rev();
+        let free = std::iter::once(keyboard)
+            .chain(spare)
+            .find(|seat| self.sitting.iter().all(|s| s.seat != *seat));
+        let seat = free.unwrap_or(keyboard);
+        self.sitting.push(Sitting {
+            peer,
+            keyboard,
+            seat,
+        });
+        if free.is_some() {
+            tell(Change::Seat { seat, keyboard });
+        }
+    }
+
+    /// Where seats ran out and several share one, nobody can say whose keys were down: all are let go.
+    fn stand_up(&mut self, leaves: impl Fn(&Sitting) -> bool, tell: &mut dyn FnMut(Change)) {
+        self.sitting.retain(|sitting| {
+            let leaves = leaves(sitting);
+            if leaves {
+                tell(Change::KeyboardLost { seat: sitting.seat });
+            }
+            !leaves
+        });
+    }
+
+    /// A second port that joins a synth's port has heard no set-up, so it is said again for it.
+    fn synth_joined(&mut self, index: usize, peer: Address, tell: &mut dyn FnMut(Change)) {
+        let Some(peers) = self.synths.get_mut(index) else {
+            return;
+        };
+        if peer.client == self.client || peers.contains(&peer) || peers.len() == PEERS_MAX {
+            return;
+        }
+        peers.push(peer);
+        let at_start = !self.settled && peers.len() == 1;
+        let link = if at_start { Link::Up } else { Link::Back };
+        tell(Change::Synth(index, link));
+        // What was a source of notes until now gives back ours from now on.
+        for place in (0..self.sitting.len()).rev() {
+            let Sitting { peer, keyboard, .. } = self.sitting[place];
+            if self.is_loop(peer) {
+                self.stand_up(|s| s.keyboard == keyboard && s.peer == peer, tell);
+                tell(Change::Loop { keyboard });
+            }
         }
     }
 
@@ -133,126 +213,29 @@ impl Hotplug {
         leaves: impl Fn(&Address) -> bool,
         tell: &mut dyn FnMut(Change),
     ) {
-        if let Some(peers) = self.synths.get_mut(index)
-            && peers.remove(leaves)
-            && peers.0.is_empty()
-        {
+        let Some(peers) = self.synths.get_mut(index) else {
+            return;
+        };
+        let before = peers.len();
+        peers.retain(|peer| !leaves(peer));
+        if peers.is_empty() && before > 0 {
             tell(Change::Synth(index, Link::Down));
         }
     }
 
     fn gone(&mut self, leaves: impl Fn(&Address) -> bool, tell: &mut dyn FnMut(Change)) {
-        for index in 0..self.keyboards.len() {
-            self.keyboard_left(index, &leaves, tell);
-        }
+        self.stand_up(|s| leaves(&s.peer), tell);
         for index in 0..self.synths.len() {
             self.synth_left(index, &leaves, tell);
         }
     }
+
+    /// Whether what a port sends us is what we sent: it is our own, or gives back what it gets and gets it from us.
+    fn is_loop(&self, peer: Address) -> bool {
+        let fed = || self.synths.iter().flatten().any(|p| p.client == THROUGH);
+        peer.client == self.client || peer.client == THROUGH && fed()
+    }
 }
 
 #[cfg(test)]
-mod tests {
-    use super::*;
-
-    const A: Address = Address {
-        client: 20,
-        port: 0,
-    };
-    const B: Address = Address {
-        client: 24,
-        port: 0,
-    };
-    const B2: Address = Address {
-        client: 24,
-        port: 1,
-    };
-
-    fn run(hotplug: &mut Hotplug, notices: &[Notice]) -> Vec<Change> {
-        let mut changes = Vec::new();
-        for notice in notices {
-            hotplug.handle(*notice, &mut |change| changes.push(change));
-        }
-        changes
-    }
-
-    #[test]
-    fn a_keyboard_goes_once_however_often_it_is_said() {
-        let mut hotplug = Hotplug::new(2, 1);
-        let keys = End::Keyboard(1);
-        let changes = run(
-            &mut hotplug,
-            &[
-                Notice::Joined(keys, A),
-                Notice::Joined(keys, A),
-                Notice::Left(keys, A),
-                Notice::Left(keys, A),
-                Notice::PortGone(A),
-                Notice::ClientGone(A.client),
-            ],
-        );
-        assert_eq!(changes, [Change::KeyboardLost(1)]);
-        let changes = run(
-            &mut hotplug,
-            &[Notice::Joined(keys, A), Notice::ClientGone(A.client)],
-        );
-        assert_eq!(changes, [Change::KeyboardLost(1)]);
-    }
-
-    #[test]
-    fn a_synth_is_up_at_the_start_and_back_later() {
-        let mut hotplug = Hotplug::new(1, 1);
-        let organ = End::Synth(0);
-        assert_eq!(
-            run(
-                &mut hotplug,
-                &[Notice::Joined(organ, A), Notice::Joined(organ, A)]
-            ),
-            [Change::Synth(0, Link::Up)]
-        );
-        hotplug.settle();
-        assert_eq!(
-            run(
-                &mut hotplug,
-                &[Notice::PortGone(A), Notice::Joined(organ, A)]
-            ),
-            [Change::Synth(0, Link::Down), Change::Synth(0, Link::Back)]
-        );
-        assert_eq!(hotplug.hearers(0), 1);
-    }
-
-    #[test]
-    fn a_synth_port_is_down_when_the_last_hearer_goes() {
-        let mut hotplug = Hotplug::new(0, 1);
-        let organ = End::Synth(0);
-        hotplug.settle();
-        assert_eq!(
-            run(
-                &mut hotplug,
-                &[
-                    Notice::Joined(organ, A),
-                    Notice::Joined(organ, B),
-                    Notice::Joined(organ, B2),
-                    Notice::PortGone(A),
-                ]
-            ),
-            [Change::Synth(0, Link::Back); 3]
-        );
-        assert_eq!(
-            run(&mut hotplug, &[Notice::ClientGone(24)]),
-            [Change::Synth(0, Link::Down)]
-        );
-    }
-
-    #[test]
-    fn strangers_are_nobodys_business() {
-        let mut hotplug = Hotplug::new(1, 1);
-        let notices = [
-            Notice::PortGone(A),
-            Notice::ClientGone(9),
-            Notice::Joined(End::Synth(7), A),
-            Notice::Left(End::Keyboard(7), A),
-        ];
-        assert_eq!(run(&mut hotplug, &notices), []);
-    }
-}
+mod tests;

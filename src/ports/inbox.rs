@@ -24,17 +24,34 @@ struct Arrival {
 enum Kind {
     Midi { start: usize, end: usize },
     KeyboardLost,
+    Seat { plays_as: usize },
     Synth(Link),
 }
 
-/// One thing that arrived. Keyboards and synths by their place in the stage file.
+/// One thing that arrived. Synths by their place in the stage file; keyboards too, or by a place beyond those, after a
+/// `Seat` has said as which of them it plays.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum What<'a> {
-    Midi { keyboard: usize, bytes: &'a [u8] },
-    KeyboardLost { keyboard: usize },
-    Synth { synth: usize, link: Link },
+    Midi {
+        keyboard: usize,
+        bytes: &'a [u8],
+    },
+    KeyboardLost {
+        keyboard: usize,
+    },
+    /// A device begins to play as one of the stage file's keyboards; what was held at this place is let go.
+    Seat {
+        keyboard: usize,
+        plays_as: usize,
+    },
+    Synth {
+        synth: usize,
+        link: Link,
+    },
 }
 
+/// Changes that one event can cause: every seat let go and taken again, every synth gone and back.
+const CHANGES_MAX: usize = 2 * crate::limits::KEYBOARDS_MAX + 2 * crate::limits::SYNTHS_MAX;
 /// Keyboards come after all synths in the order of ports.
 const FIRST_KEYBOARD: usize = crate::limits::SYNTHS_MAX;
 
@@ -53,10 +70,10 @@ impl Inbox {
         }
     }
 
-    /// Whether one more packet of any legal length and one more change surely fit. A backend stops reading when not.
+    /// Whether one more packet of any legal length and one more event's changes surely fit. A backend stops reading when not.
     pub fn has_room(&self) -> bool {
         self.bytes.len() + SYSEX_BYTES_MAX <= INBOX_BYTES
-            && self.arrivals.len() + crate::limits::KEYBOARDS_MAX < INBOX_ARRIVALS
+            && self.arrivals.len() + CHANGES_MAX < INBOX_ARRIVALS
     }
 
     pub fn is_empty(&self) -> bool {
@@ -77,6 +94,10 @@ impl Inbox {
 
     pub fn add_keyboard_lost(&mut self, time: Time, keyboard: usize) {
         self.add(time, FIRST_KEYBOARD + keyboard, Kind::KeyboardLost);
+    }
+
+    pub fn add_seat(&mut self, time: Time, keyboard: usize, plays_as: usize) {
+        self.add(time, FIRST_KEYBOARD + keyboard, Kind::Seat { plays_as });
     }
 
     pub fn add_synth(&mut self, time: Time, synth: usize, link: Link) {
@@ -122,6 +143,10 @@ impl Kind {
             },
             Kind::KeyboardLost => What::KeyboardLost {
                 keyboard: port - FIRST_KEYBOARD,
+            },
+            Kind::Seat { plays_as } => What::Seat {
+                keyboard: port - FIRST_KEYBOARD,
+                plays_as,
             },
             Kind::Synth(link) => What::Synth { synth: port, link },
         }

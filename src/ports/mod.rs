@@ -85,6 +85,8 @@ pub struct Tally {
     pub overruns: AtomicU64,
     /// Packets too long for us, or for the port they were to leave by.
     pub too_long: AtomicU64,
+    /// Times that our own notes came back to us and were not heard.
+    pub loops: AtomicU64,
 }
 
 /// The desk's view of a backend's ports, and its hand to connect them.
@@ -103,4 +105,10 @@ pub trait Patchbay: Send {
     /// # Errors
     /// The backend is gone.
     fn disconnect(&self, from: Address, to: Address) -> Result<(), Broken>;
+
+    /// Undoes every connection into a keyboard's port that brings back what goes out by the synths' ports; gives where
+    /// they came from. A backend that cannot know of any leaves it at this.
+    fn cut_loops(&self, _keyboard: Address, _synths: &[Address]) -> Vec<Address> {
+        Vec::new()
+    }
 }

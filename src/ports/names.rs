@@ -39,6 +39,17 @@ pub enum Wish {
     },
 }
 
+impl Wish {
+    /// Whether a port is one that may be had.
+    fn fits(&self, port: &Port) -> bool {
+        match self {
+            Wish::Any => !port.ours,
+            Wish::Virtual => false,
+            Wish::Named { globs, socket } => globs.iter().any(|glob| port.fits(glob, socket)),
+        }
+    }
+}
+
 /// A device of the stage file and its wish.
 #[derive(Clone, Debug, PartialEq, Eq)]
 pub struct Wanted {
@@ -133,10 +144,14 @@ pub fn choose(ports: &[Port], keyboards: &[Wanted], synths: &[Wanted], held: &Ch
         synths: vec![None; synths.len()],
         remarks: Vec::new(),
     };
-    let is_there = |address: Address| ports.iter().any(|port| port.address == address);
-    for index in 0..synths.len() {
+    // Numbers are dealt out anew: where a port was, another may stand now.
+    let still_fits = |wanted: &Wanted, address: Address| {
+        let port = ports.iter().find(|port| port.address == address);
+        port.is_some_and(|port| wanted.wish.fits(port))
+    };
+    for (index, wanted) in synths.iter().enumerate() {
         let held = held.synths.get(index).copied().flatten();
-        choice.synths[index] = held.filter(|address| is_there(*address));
+        choice.synths[index] = held.filter(|address| still_fits(wanted, *address));
     }
     // Those that say a name choose first.
     for (index, wanted) in synths.iter().enumerate() {
@@ -151,7 +166,7 @@ pub fn choose(ports: &[Port], keyboards: &[Wanted], synths: &[Wanted], held: &Ch
     }
     for (index, wanted) in keyboards.iter().enumerate() {
         let held: Vec<Address> = held.keyboards.get(index).cloned().unwrap_or_default();
-        let kept = held.into_iter().find(|address| is_there(*address));
+        let kept = held.into_iter().find(|a| still_fits(wanted, *a));
         choice.keyboards[index] = match (&wanted.wish, kept) {
             (Wish::Virtual, _) => Vec::new(),
             (Wish::Any, _) => ports
@@ -171,7 +186,30 @@ pub fn choose(ports: &[Port], keyboards: &[Wanted], synths: &[Wanted], held: &Ch
             }
         };
     }
+    refuse_loops(ports, keyboards, &mut choice);
     choice
+}
+
+/// Midi Through as keyboard and as synth would play trued's notes back to it for ever.
+fn refuse_loops(ports: &[Port], keyboards: &[Wanted], choice: &mut Choice) {
+    let is_through = |address: &Address| {
+        let port = ports.iter().find(|port| port.address == *address);
+        port.is_some_and(Port::is_through)
+    };
+    if !choice.synths.iter().flatten().any(is_through) {
+        return;
+    }
+    for (taken, wanted) in choice.keyboards.iter_mut().zip(keyboards) {
+        let before = taken.len();
+        taken.retain(|address| !is_through(address));
+        if taken.len() < before {
+            choice.remarks.push(format!(
+                "keyboard {} is not connected to Midi Through, which a synth uses: every note would come back and go \
+                 round for ever; give one of them another port",
+                wanted.name
+            ));
+        }
+    }
 }
 
 /// Neither ours, nor a through port, nor used as a synth.

@@ -1,8 +1,9 @@
 //! Cables come out. Nothing sticks, and what comes back is set up anew.
 
 use super::{mpe, plain};
-use crate::support::rig::Rig;
+use crate::support::rig::{Rig, keyboard_id};
 use crate::support::script::assert_heard;
+use trued::engine::Input;
 use trued::time::Time;
 
 #[test]
@@ -47,6 +48,45 @@ fn a_lost_wheel_goes_home() {
             1,
             "the other keyboard still holds it"
         );
+    }
+}
+
+#[test]
+fn several_devices_play_as_one_keyboard_and_one_goes() {
+    for mut plan in [plain(), mpe()] {
+        // Only the first keyboard plays, and its wheel reaches a semitone: so does that of a device that plays as it.
+        plan.parts[0].from = Some(keyboard_id(0));
+        plan.keyboards[0].wheel_semitones = 1;
+        let mut rig = Rig::ready(&plan);
+        let one_more = keyboard_id(5);
+        rig.midi(5, &[0x90, 60, 90]);
+        assert!(rig.heard().notes.is_empty(), "not yet one of the rig");
+        rig.input(Input::Seat {
+            keyboard: one_more,
+            plays_as: keyboard_id(0),
+        });
+        rig.play("10 on A4 90\n20 pedal down\n30 send F0 7D 01");
+        rig.midi(5, &[0x90, 69, 90, 0xB0, 64, 127]);
+        rig.midi(5, &[0x90, 62, 90]);
+        // The sysex under way from the first is not cut by the second's notes.
+        rig.play("40 send 02 F7\n50 off A4");
+        assert_eq!(rig.engine.report().counters.sysex_lost, 0);
+        let sysex = rig.sent.iter().filter(|s| s.bytes[0] == 0xF0);
+        assert_eq!(
+            sysex.map(|s| &s.bytes[..]).collect::<Vec<_>>(),
+            [[0xF0, 0x7D, 1, 2, 0xF7]]
+        );
+        rig.input(Input::KeyboardLost(one_more));
+        assert!(rig.heard().stuck().is_empty());
+        // The first still holds its pedal: what rings under it goes on, until its player lifts it.
+        assert!(!rig.heard().sounding().is_empty());
+        rig.play("100 pedal up");
+        assert!(rig.heard().sounding().is_empty());
+        rig.midi(5, &[0x90, 69, 90, 0xE0, 127, 127]);
+        let highest = rig.heard().notes[rig.heard().notes.len() - 1].cents();
+        assert!((highest - 7000.0).abs() < 1.0, "{highest}");
+        rig.input(Input::KeyboardLost(one_more));
+        assert!(rig.heard().sounding().is_empty() && rig.heard().orphans.is_empty());
     }
 }
 

@@ -61,7 +61,10 @@ impl Cycle for Watch {
             let What::Midi { keyboard, bytes } = what else {
                 continue;
             };
-            for line in self.gestures[keyboard].lines(bytes) {
+            let Some(gestures) = self.gestures.get_mut(keyboard) else {
+                continue; // somebody has connected a second device to one of our ports
+            };
+            for line in gestures.lines(bytes) {
                 // A reader that has gone has seen enough.
                 let mut stdout = std::io::stdout().lock();
                 if writeln!(stdout, "{line}")

@@ -1,11 +1,15 @@
 //! The desk's view of the sequencer: what is there, and connecting it. Through a client of its own without ports,
 //! because the score thread's may not be shared.
 
-use super::{broken, open_sequencer, text};
+use super::{address, broken, open_sequencer, text};
+use crate::ports::hotplug::THROUGH;
 use crate::ports::names::{Address, Port};
 use crate::ports::{Broken, Patchbay};
 use alsa::Seq;
-use alsa::seq::{ClientInfo, ClientIter, PortCap, PortInfo, PortIter, PortSubscribe};
+use alsa::seq::{
+    ClientInfo, ClientIter, PortCap, PortInfo, PortIter, PortSubscribe, PortSubscribeIter,
+    QuerySubsType,
+};
 use std::path::{Path, PathBuf};
 
 /// A look at all ports of the machine.
@@ -89,6 +93,23 @@ impl Patchbay for Desk {
             Err(error) if error.errno() != libc::ENOENT => Err(broken(error)),
             _ => Ok(()),
         }
+    }
+
+    fn cut_loops(&self, keyboard: Address, synths: &[Address]) -> Vec<Address> {
+        let own = |address: Address| self.ours.contains(&address.client);
+        let fed = synths.iter().any(|synth| {
+            PortSubscribeIter::new(&self.seq, super::addr(*synth), QuerySubsType::READ)
+                .any(|found| found.get_dest().client == THROUGH)
+        });
+        let senders =
+            PortSubscribeIter::new(&self.seq, super::addr(keyboard), QuerySubsType::WRITE);
+        let mut cut: Vec<Address> = senders.map(|found| address(found.get_sender())).collect();
+        cut.retain(|sender| own(*sender) || fed && sender.client == THROUGH);
+        cut.retain(|sender| {
+            let undone = (self.seq).unsubscribe_port(super::addr(*sender), super::addr(keyboard));
+            undone.is_ok()
+        });
+        cut
     }
 }
 

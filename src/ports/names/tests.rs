@@ -186,3 +186,72 @@ fn what_is_held_stays_until_it_goes() {
     let three = choose(&[wharf], &keys, &synths, &two);
     assert_eq!(clients(&three), (vec![vec![24]], vec![-1]));
 }
+
+#[test]
+fn who_stands_where_another_stood_is_not_taken_for_it() {
+    let wharf = port(24, "Wharf Keys", "Wharf Keys MIDI 1", "s");
+    let organ = port(28, "Loft Organ", "Loft Organ MIDI 1", "sh");
+    let keys = [named("keys", &["*Keys*"])];
+    let synths = [named("organ", &["*Organ*"])];
+    let one = choose(
+        &[wharf.clone(), organ.clone()],
+        &keys,
+        &synths,
+        &Choice::default(),
+    );
+    assert_eq!(clients(&one), (vec![vec![24]], vec![28]));
+    // Both out and in again, in the other order.
+    let swapped = [
+        port(24, &organ.device, &organ.name, "sh"),
+        port(28, &wharf.device, &wharf.name, "s"),
+    ];
+    let two = choose(&swapped, &keys, &synths, &one);
+    assert_eq!(clients(&two), (vec![vec![28]], vec![24]));
+}
+
+#[test]
+fn twins_come_back_to_their_places() {
+    let twin = |client: i32, socket: &str| Port {
+        socket: Some(socket.to_string()),
+        ..port(client, "Wharf Keys", "Wharf Keys MIDI 1", "s")
+    };
+    let at = |name: &str, socket: &str| Wanted {
+        name: name.to_string(),
+        wish: Wish::Named {
+            globs: vec!["*".to_string()],
+            socket: Some(socket.to_string()),
+        },
+    };
+    let keys = [at("left", "1-1.2"), at("right", "1-1.3")];
+    let before = [twin(24, "1-1.2"), twin(28, "1-1.3")];
+    let one = choose(&before, &keys, &[], &Choice::default());
+    assert_eq!(clients(&one).0, [[24], [28]]);
+    let after = [twin(24, "1-1.3"), twin(32, "1-1.2")];
+    let two = choose(&after, &keys, &[], &one);
+    assert_eq!(clients(&two).0, [[32], [24]]);
+}
+
+#[test]
+fn one_device_is_keyboard_and_synth_but_midi_through_is_not() {
+    let piano = port(20, "Wharf Piano", "Wharf Piano MIDI 1", "sh");
+    let through = port(14, "Midi Through", "Midi Through Port-0", "sh");
+    let ports = [through, piano];
+    let both = |glob: &str| {
+        let keys = [named("keys", &[glob])];
+        choose(
+            &ports,
+            &keys,
+            &[named("synth", &[glob])],
+            &Choice::default(),
+        )
+    };
+    assert_eq!(clients(&both("*piano*")), (vec![vec![20]], vec![20]));
+    assert_eq!(both("*piano*").remarks, [""; 0]);
+    let through = both("*through*");
+    assert_eq!(clients(&through), (vec![vec![]], vec![14]));
+    assert!(
+        through.remarks[0].starts_with("keyboard keys is not connected to Midi Through"),
+        "{:?}",
+        through.remarks
+    );
+}
