@@ -51,9 +51,14 @@ static HEAP: Counting = Counting;
 
 /// Calls to the heap while `work` runs.
 pub fn heap_calls(work: impl FnOnce()) -> u64 {
-    let before = HEAP_CALLS.get();
+    let before = heap_calls_so_far();
     work();
-    HEAP_CALLS.get() - before
+    heap_calls_so_far() - before
+}
+
+/// Calls to the heap that this thread has made.
+pub fn heap_calls_so_far() -> u64 {
+    HEAP_CALLS.get()
 }
 
 const LONG: Span = Span::from_millis(100);

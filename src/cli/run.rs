@@ -24,7 +24,7 @@ enum Choice {
     Auto,
     /// The Linux sequencer
     Alsa,
-    /// Not in this version
+    /// A JACK server, or PipeWire in its place
     Jack,
     /// Not in this version
     Midir,
@@ -37,28 +37,36 @@ pub fn run(args: Args) -> Result<(), Failure> {
         backend,
         which,
     } = args;
-    if matches!(backend, Choice::Jack | Choice::Midir) {
-        let backend = format!("{backend:?}").to_lowercase();
+    if backend == Choice::Midir {
         return Err(Failure::new(
             Failure::UNAVAILABLE,
-            format!(
-                "--backend {backend} is not in this version; leave it out, or use --backend alsa"
-            ),
+            "--backend midir is not in this version; leave it out, or use --backend alsa or jack",
         ));
     }
     start_log();
-    play(stage, which)
+    play(stage, backend, which)
 }
 
 #[cfg(target_os = "linux")]
-fn play(file: PathBuf, which: Which) -> Result<(), Failure> {
+fn play(file: PathBuf, backend: Choice, which: Which) -> Result<(), Failure> {
+    use crate::daemon::open::Asked;
     use crate::daemon::run::{Evening, Trouble, play};
     use crate::daemon::state::{Boot, folder};
     which.check()?;
     let boot = Boot::read(&file, folder().as_deref())
         .map_err(|complaints| super::unusable(&file, &complaints))?;
     let Which { name, socket } = which;
-    let evening = Evening { file, name, socket };
+    let asked = match backend {
+        Choice::Alsa => Asked::Alsa,
+        Choice::Jack => Asked::Jack,
+        Choice::Auto | Choice::Midir => Asked::Auto,
+    };
+    let evening = Evening {
+        file,
+        asked,
+        name,
+        socket,
+    };
     play(boot, &evening).map_err(|trouble| match trouble {
         Trouble::Taken(path) => Failure::new(
             Failure::UNAVAILABLE,
@@ -79,7 +87,7 @@ fn play(file: PathBuf, which: Which) -> Result<(), Failure> {
 }
 
 #[cfg(not(target_os = "linux"))]
-fn play(_: PathBuf, _: Which) -> Result<(), Failure> {
+fn play(_: PathBuf, _: Choice, _: Which) -> Result<(), Failure> {
     Err(Failure::new(
         Failure::UNAVAILABLE,
         "this version plays on Linux only; check, chart, retune and rehearse work here",

@@ -182,6 +182,7 @@ impl Patch {
             // Also what we take for connected: it may have gone and come back between two looks.
             if let Err(Broken { wrong, .. }) = self.patchbay.connect(from, to) {
                 self.refused = true;
+                let shown = |address| self.patchbay.shown(address);
                 let (from, to) = (shown(from), shown(to));
                 self.say(format!("{from} cannot be connected to {to}: {wrong}"));
             }
@@ -196,7 +197,7 @@ impl Patch {
             for from in self.patchbay.cut_loops(*own, &self.synths) {
                 let ports = self.patchbay.ports();
                 let port = ports.iter().find(|port| port.address == from);
-                let from = port.map_or_else(|| shown(from), Port::full_name);
+                let from = port.map_or_else(|| self.patchbay.shown(from), Port::full_name);
                 error!(
                     "{from} was connected to keyboard {}, which would have played our own notes back to us, round and \
                      round; that connection is undone",
@@ -212,8 +213,4 @@ impl Patch {
             self.said.push(text);
         }
     }
-}
-
-fn shown(address: Address) -> String {
-    format!("{}:{}", address.client, address.port)
 }

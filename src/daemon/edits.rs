@@ -5,6 +5,7 @@ use super::desk::{Desk, Patch};
 use super::open::Ports;
 use super::reload::{Reload, Todo};
 use super::rig::{Moved, Moves, RigWanted};
+use super::run::Evening;
 use super::score::Slot;
 use super::socket::ClientId;
 use crate::ports::clock::Clock;
@@ -68,7 +69,7 @@ impl Turn {
     ///
     /// # Errors
     /// The ports are gone for good, or others cannot be had.
-    pub fn play(self, mut ports: Ports, slot: &Arc<Slot>, client_name: &str) -> Result<(), Broken> {
+    pub fn play(self, mut ports: Ports, slot: &Arc<Slot>, evening: &Evening) -> Result<(), Broken> {
         loop {
             ports.play(slot)?;
             if !slot.takes_other_ports() {
@@ -80,7 +81,7 @@ impl Turn {
             };
             let clock = ports.clock();
             drop(ports);
-            let (others, patch) = Ports::open(&rig, client_name, clock)?;
+            let (others, patch) = Ports::open(evening.asked, &rig, &evening.name, clock)?;
             ports = others;
             let (bell, tally) = (ports.bell(), ports.tally());
             // As above.

@@ -15,7 +15,7 @@ mod edits;
 #[cfg(target_os = "linux")]
 pub mod front;
 #[cfg(target_os = "linux")]
-mod open;
+pub mod open;
 #[cfg(target_os = "linux")]
 pub mod orders;
 #[cfg(target_os = "linux")]

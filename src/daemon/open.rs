@@ -5,6 +5,7 @@ use super::rig::RigWanted;
 use super::score::{Player, Slot};
 use crate::ports::alsa::{Alsa, desk::Desk as Sequencer};
 use crate::ports::clock::Clock;
+use crate::ports::jack::Jack;
 use crate::ports::names::{Choice, Wanted};
 use crate::ports::system::{self, Bell};
 use crate::ports::{Backend, Broken, Tally};
@@ -14,12 +15,23 @@ use tracing::info;
 /// What carries the MIDI.
 pub enum Ports {
     Alsa(Alsa),
+    Jack(Jack),
+}
+
+/// Which backend is asked for.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Asked {
+    /// The sequencer if there is one, else a JACK server if one runs.
+    Auto,
+    Alsa,
+    Jack,
 }
 
 impl Ports {
     /// # Errors
     /// They cannot be had, or there is no room for us.
     pub fn open(
+        asked: Asked,
         rig: &RigWanted,
         client_name: &str,
         clock: Clock,
@@ -27,8 +39,34 @@ impl Ports {
         let names = |wanted: &[Wanted]| -> Vec<String> {
             wanted.iter().map(|device| device.name.clone()).collect()
         };
-        let (keyboards, synths) = (names(&rig.keyboards), names(&rig.synths));
-        let mut alsa = Alsa::open(client_name, &keyboards, &synths)?;
+        let (keyboards, synths) = (&names(&rig.keyboards)[..], &names(&rig.synths)[..]);
+        match asked {
+            Asked::Alsa => Ports::open_alsa(client_name, keyboards, synths, clock),
+            Asked::Jack => Jack::open(client_name, keyboards, synths, clock).map(Ports::with_jack),
+            Asked::Auto => {
+                let no_alsa = match Ports::open_alsa(client_name, keyboards, synths, clock) {
+                    Err(broken) => broken,
+                    opened => return opened,
+                };
+                match Jack::open(client_name, keyboards, synths, clock) {
+                    Ok(jack) if jack.found_server() => Ok(Ports::with_jack(jack)),
+                    Ok(_) => Err(neither(&no_alsa, "start a JACK server")),
+                    Err(_) => Err(neither(
+                        &no_alsa,
+                        "install and start a JACK server: sudo apt-get install jackd2",
+                    )),
+                }
+            }
+        }
+    }
+
+    fn open_alsa(
+        client_name: &str,
+        keyboards: &[String],
+        synths: &[String],
+        clock: Clock,
+    ) -> Result<(Ports, Patch), Broken> {
+        let mut alsa = Alsa::open(client_name, keyboards, synths)?;
         alsa.keep_time(clock);
         let mut sequencer = Sequencer::open(client_name)?;
         sequencer.add_ours(alsa.client());
@@ -45,10 +83,25 @@ impl Ports {
         Ok((Ports::Alsa(alsa), patch))
     }
 
+    fn with_jack(jack: Jack) -> (Ports, Patch) {
+        let desk = jack.desk();
+        let (keyboards, synths) = jack.counts();
+        let patch = Patch {
+            choice: Choice::default(),
+            keyboards: (0..keyboards).map(|n| desk.keyboard_address(n)).collect(),
+            synths: (0..synths).map(|n| desk.synth_address(n)).collect(),
+            patchbay: Box::new(desk),
+            refused: false,
+            said: Vec::new(),
+        };
+        (Ports::Jack(jack), patch)
+    }
+
     /// The score's time.
     pub fn clock(&self) -> Clock {
         match self {
             Ports::Alsa(alsa) => alsa.clock(),
+            Ports::Jack(jack) => jack.clock(),
         }
     }
 
@@ -56,17 +109,23 @@ impl Ports {
     pub fn bell(&self) -> Bell {
         match self {
             Ports::Alsa(alsa) => alsa.bell(),
+            Ports::Jack(jack) => jack.bell(),
         }
     }
 
     pub fn tally(&self) -> Arc<Tally> {
         match self {
             Ports::Alsa(alsa) => alsa.tally(),
+            Ports::Jack(jack) => jack.tally(),
         }
     }
 
     /// Lets the calling thread, which is to play, run before all ordinary ones. Says whether it does.
     pub fn hurry(&self) -> bool {
+        if matches!(self, Ports::Jack(_)) {
+            // The server decides for the thread that it gives us, and does not tell; this one only waits.
+            return false;
+        }
         let hurried = system::hurry();
         if let Err(error) = &hurried {
             info!("no real-time priority ({error}): notes may be late on a busy machine");
@@ -81,6 +140,14 @@ impl Ports {
     pub fn play(&mut self, slot: &Arc<Slot>) -> Result<(), Broken> {
         match self {
             Ports::Alsa(alsa) => alsa.run(&mut Player::new(slot.clone())),
+            Ports::Jack(jack) => jack.run(&|| Box::new(Player::new(slot.clone()))),
         }
+    }
+}
+
+fn neither(no_alsa: &Broken, jack: &str) -> Broken {
+    Broken {
+        wrong: format!("{}, and no JACK server runs", no_alsa.wrong),
+        right: format!("{}; or {jack}", no_alsa.right),
     }
 }

@@ -3,7 +3,7 @@
 use super::desk::Desk;
 use super::edits::Edits;
 use super::front::Front;
-use super::open::Ports;
+use super::open::{Asked, Ports};
 use super::orders::Orders;
 use super::place;
 use super::reload::{Handing, Reload};
@@ -35,6 +35,8 @@ const PLANS: usize = 2;
 #[derive(Clone, Debug)]
 pub struct Evening {
     pub file: PathBuf,
+    /// Which sound system carries the MIDI.
+    pub asked: Asked,
     /// What it is called among the machine's ports and daemons.
     pub name: String,
     /// Where its control socket is to lie; else where it usually does.
@@ -54,7 +56,7 @@ pub enum Trouble {
     Bug,
 }
 
-/// Plays a stage file on the ALSA sequencer until SIGTERM or SIGINT. The calling thread becomes the score thread.
+/// Plays a stage file until SIGTERM or SIGINT. The calling thread becomes the score thread, but for JACK.
 ///
 /// # Errors
 /// There are no ports to play on, or we have failed.
@@ -63,7 +65,8 @@ pub fn play(boot: Boot, evening: &Evening) -> Result<(), Trouble> {
     let socket = place::open(&evening.name, evening.socket.as_deref()).map_err(Trouble::Taken)?;
     let clock = Clock::start();
     let rig = RigWanted::of(&boot.stage);
-    let (ports, mut patch) = Ports::open(&rig, &evening.name, clock).map_err(Trouble::Ports)?;
+    let (ports, mut patch) =
+        Ports::open(evening.asked, &rig, &evening.name, clock).map_err(Trouble::Ports)?;
     let there = patch.connect(&rig);
 
     let (commands_in, commands_out) = rtrb::RingBuffer::new(QUEUE);
@@ -109,7 +112,7 @@ pub fn play(boot: Boot, evening: &Evening) -> Result<(), Trouble> {
         .map_err(Trouble::System)?;
     info!("ready: {clauses}");
 
-    let ran = catch_unwind(AssertUnwindSafe(|| turn.play(ports, &slot, &evening.name)));
+    let ran = catch_unwind(AssertUnwindSafe(|| turn.play(ports, &slot, evening)));
     done.store(true, Ordering::Release);
     if desk.join().is_err() {
         error!("the desk had failed before the end");

@@ -201,6 +201,7 @@ impl Score {
                     // for granted.
                     outlet.at(time);
                     let quiet = [DAMPER, SOSTENUTO, ALL_NOTES_OFF, ALL_SOUND_OFF];
+                    outlet.at(time);
                     hush(outlet, synth, &quiet);
                 }
                 self.up[synth] = !lost;

@@ -2,9 +2,9 @@
 //!
 //! **What this room is**: each backend is a loop ([`Backend::run`]) that waits, gathers what has arrived ([`Inbox`]),
 //! runs one [`Cycle`] and writes what comes out ([`Outlet`]). What a cycle does is not known here.
-//! **Start reading at** [`Cycle`], then `outbox.rs`; `alsa.rs` is the loop of a stage.
+//! **Start reading at** [`Cycle`], then `outbox.rs`; `alsa.rs` is the loop of a stage, `jack/process.rs` the other.
 //! **May know** `time`, `limits`.
-//! **Owns** alsa, the only clock (`clock.rs`), the only unsafe code (`system.rs`), which port fits which name (`names.rs`),
+//! **Owns** alsa, jack, the only clock (`clock.rs`), the only unsafe code (`system.rs`; in `jack/` one signature), which port fits which name (`names.rs`),
 //! and when a device has come or gone (`hotplug.rs`).
 //! Nothing in a loop blocks but its one wait, and nothing in it allocates, logs or locks.
 //! **Not here**: the engine and what is done in a cycle (`daemon/`), what a stage file says (`stage/`).
@@ -14,6 +14,8 @@ pub mod alsa;
 pub mod clock;
 pub mod hotplug;
 pub mod inbox;
+#[cfg(target_os = "linux")]
+pub mod jack;
 pub mod loopback;
 mod message;
 pub mod names;
@@ -93,6 +95,9 @@ pub struct Tally {
 pub trait Patchbay: Send {
     /// Every port that others may connect to.
     fn ports(&self) -> Vec<Port>;
+
+    /// A port in words.
+    fn shown(&self, address: Address) -> String;
 
     /// Connects two ports. Connected already is as good.
     ///

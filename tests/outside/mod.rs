@@ -6,5 +6,8 @@ mod fluidsynth;
 /// A real sequencer, in a virtual machine.
 mod alsa;
 
+/// A real JACK server.
+mod jack;
+
 /// Tunings, beats and words on the wire, against published tables.
 mod tables;

@@ -78,6 +78,10 @@ impl Patchbay for Desk {
             .collect()
     }
 
+    fn shown(&self, address: Address) -> String {
+        format!("{}:{}", address.client, address.port)
+    }
+
     fn connect(&self, from: Address, to: Address) -> Result<(), Broken> {
         let subscription = PortSubscribe::empty().map_err(broken)?;
         subscription.set_sender(super::addr(from));

@@ -1,0 +1,216 @@
+//! What runs in the server's process callback: one cycle of the score, each thing at its frame.
+//!
+//! Nothing here allocates, locks, logs or makes a system call, but for the one ring of the bell at the very end.
+
+use super::Shared;
+use super::frames::Frames;
+use crate::limits::{KEYBOARDS_MAX, SYNTHS_MAX};
+use crate::ports::hotplug::Change;
+use crate::ports::message::cut;
+use crate::ports::outbox::{Outbox, outboxes};
+use crate::ports::{Cycle, Inbox, Next, Outlet, Wire};
+use crate::time::Time;
+use jack::{Client, Control, MidiIn, MidiIter, MidiOut, MidiWriter, Port, ProcessScope, RawMidi};
+use rtrb::Consumer;
+use std::sync::Arc;
+use std::sync::atomic::Ordering;
+
+/// Empty cycles after the last one, so that the server's own ports have taken what it wrote before ours go.
+const EMPTY_CYCLES: u32 = 4;
+
+/// What the callback owns.
+pub struct Process {
+    pub cycle: Box<dyn Cycle + Send>,
+    pub keyboards: Vec<Port<MidiIn>>,
+    pub synths: Vec<Port<MidiOut>>,
+    /// When this server's time begins on our clock.
+    pub zero: Time,
+    pub rate: u32,
+    pub changes: Consumer<Change>,
+    pub shared: Arc<Shared>,
+    frames: Option<Frames>,
+    inbox: Inbox,
+    outboxes: Vec<Outbox>,
+    /// Cycles since the score has left.
+    left: Option<u32>,
+    /// Which keyboard the device on each seat plays. The server mixes what is joined to one port, so all of them are one
+    /// to the engine, and when one goes all let go.
+    seats: [usize; KEYBOARDS_MAX],
+}
+
+impl Process {
+    pub fn new(
+        cycle: Box<dyn Cycle + Send>,
+        ports: (Vec<Port<MidiIn>>, Vec<Port<MidiOut>>),
+        (zero, rate): (Time, u32),
+        changes: Consumer<Change>,
+        shared: Arc<Shared>,
+    ) -> Process {
+        Process {
+            outboxes: outboxes(ports.1.len()),
+            cycle,
+            keyboards: ports.0,
+            synths: ports.1,
+            zero,
+            rate,
+            changes,
+            shared,
+            frames: None,
+            inbox: Inbox::new(),
+            left: None,
+            seats: std::array::from_fn(|seat| seat),
+        }
+    }
+
+    fn play(&mut self, scope: &ProcessScope) {
+        let count = scope.last_frame_time();
+        let frames = self
+            .frames
+            .get_or_insert_with(|| Frames::new(self.rate, self.zero, count));
+        frames.begin(count, scope.n_frames());
+        let frames = *frames;
+        let mut ports = self.synths.iter_mut();
+        let mut wire = FrameWire {
+            frames,
+            at: 0,
+            // To ask for a writer is to clear what the port held.
+            synths: std::array::from_fn(|_| ports.next().map(|port| Writer::new(port, scope))),
+            too_long: 0,
+        };
+        if let Some(left) = &mut self.left {
+            *left += 1;
+            if *left == EMPTY_CYCLES {
+                self.shared.left.store(true, Ordering::Release);
+                self.shared.bell.ring();
+            }
+            return;
+        }
+        let mut outlet = Outlet {
+            outboxes: &mut self.outboxes,
+            wire: &mut wire,
+        };
+        outlet.retry();
+        while self.inbox.has_room() {
+            let Ok(change) = self.changes.pop() else {
+                break;
+            };
+            match change {
+                Change::Seat { seat, keyboard } => {
+                    if let Some(place) = self.seats.get_mut(seat) {
+                        *place = keyboard;
+                    }
+                }
+                Change::KeyboardLost { seat } => {
+                    let keyboard = self.seats.get(seat).copied().unwrap_or(seat);
+                    self.inbox.add_keyboard_lost(frames.time(0), keyboard);
+                }
+                Change::Loop { .. } => {}
+                Change::Synth(synth, link) => self.inbox.add_synth(frames.time(0), synth, link),
+            }
+        }
+        let mut next = Next::Wait(None);
+        let mut sources = Sources::new(&self.keyboards, scope);
+        while let Some((keyboard, event)) = sources.earliest() {
+            let time = frames.time(event.time);
+            if !self.inbox.has_room() {
+                next = self.cycle.run(time, &mut self.inbox, &mut outlet);
+                self.inbox.clear();
+            }
+            if !self.inbox.add_midi(time, keyboard, event.bytes) {
+                self.shared.tally.too_long.fetch_add(1, Ordering::Relaxed);
+            }
+        }
+        if next != Next::Leave {
+            next = self.cycle.run(frames.end(), &mut self.inbox, &mut outlet);
+        }
+        self.inbox.clear();
+        let too_long = wire.too_long;
+        self.shared
+            .tally
+            .too_long
+            .fetch_add(too_long, Ordering::Relaxed);
+        self.shared
+            .reached
+            .store(frames.end().nanos(), Ordering::Release);
+        self.left = (next == Next::Leave).then_some(0);
+    }
+}
+
+impl jack::ProcessHandler for Process {
+    fn process(&mut self, _: &Client, scope: &ProcessScope) -> Control {
+        let shared = self.shared.clone();
+        if let Some(_inside) = shared.gate.enter() {
+            self.play(scope);
+        }
+        Control::Continue
+    }
+}
+
+/// All that keyboards sent in this cycle, merged by time; at one time by the order of the stage file.
+struct Sources<'a>([Option<MidiIter<'a>>; KEYBOARDS_MAX]);
+
+impl<'a> Sources<'a> {
+    fn new(keyboards: &'a [Port<MidiIn>], scope: &'a ProcessScope) -> Sources<'a> {
+        Sources(std::array::from_fn(|n| Some(keyboards.get(n)?.iter(scope))))
+    }
+
+    fn earliest(&mut self) -> Option<(usize, RawMidi<'a>)> {
+        let waiting = self.0.iter().enumerate();
+        let (keyboard, _) = waiting
+            .filter_map(|(n, source)| Some((n, source.as_ref()?.peek()?.time)))
+            .min_by_key(|(n, time)| (*time, *n))?;
+        Some((keyboard, self.0[keyboard].as_mut()?.next()?))
+    }
+}
+
+/// Writes into this cycle's port buffers, in order of frames.
+struct FrameWire<'a> {
+    frames: Frames,
+    at: u32,
+    synths: [Option<Writer<'a>>; SYNTHS_MAX],
+    too_long: u64,
+}
+
+struct Writer<'a> {
+    writer: MidiWriter<'a>,
+    /// The longest message that an empty port takes.
+    longest: usize,
+}
+
+impl<'a> Writer<'a> {
+    fn new(port: &'a mut Port<MidiOut>, scope: &'a ProcessScope) -> Writer<'a> {
+        let writer = port.writer(scope);
+        Writer {
+            longest: writer.max_event_size(),
+            writer,
+        }
+    }
+}
+
+impl Wire for FrameWire<'_> {
+    fn write(&mut self, synth: usize, bytes: &[u8]) -> usize {
+        let Some(Some(out)) = self.synths.get_mut(synth) else {
+            return bytes.len();
+        };
+        let mut rest = bytes;
+        while let Some((message, more)) = cut(rest) {
+            let event = RawMidi {
+                time: self.at,
+                bytes: message,
+            };
+            if out.writer.write(&event).is_err() {
+                if message.len() <= out.longest {
+                    return bytes.len() - rest.len();
+                }
+                // It would wait for ever and hold up all behind it.
+                self.too_long += 1;
+            }
+            rest = more;
+        }
+        bytes.len() - rest.len()
+    }
+
+    fn at(&mut self, time: Time) {
+        self.at = self.at.max(self.frames.frame(time));
+    }
+}
