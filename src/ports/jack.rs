@@ -40,6 +40,9 @@ type Place = Arc<Mutex<Option<Active>>>;
 /// What makes a cycle for each client; what it knows must lie elsewhere, because it dies with the client.
 pub type MakeCycle<'a> = &'a dyn Fn() -> Box<dyn Cycle + Send>;
 
+/// Our ports, in the order of the stage file.
+type Ports = (Vec<jack::Port<MidiIn>>, Vec<jack::Port<MidiOut>>);
+
 /// What one client's threads tell the thread that keeps it.
 struct Shared {
     gate: Gate,
@@ -240,10 +243,7 @@ impl Jack {
     }
 
     /// One port each. A synth that is called like a keyboard is told apart.
-    fn register(
-        &self,
-        client: &Client,
-    ) -> Option<(Vec<jack::Port<MidiIn>>, Vec<jack::Port<MidiOut>>)> {
+    fn register(&self, client: &Client) -> Option<Ports> {
         let keyboards = self.keyboards.iter();
         let keyboards: Result<_, _> = keyboards
             .map(|name| client.register_port(&desk::short(name), MidiIn::default()))

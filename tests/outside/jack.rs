@@ -25,8 +25,9 @@ const NOTES: usize = 10_000;
 const NOTES_A_SONG: usize = 500;
 /// Half a bend step at range 2: 400 cents over 16384 steps, halved.
 const HALF_STEP_CENTS: f64 = 400.0 / 16384.0 / 2.0 + 1e-6;
-/// A machine with other work makes the server skip cycles, and what is skipped is lost to everybody. Then once more.
-const TRIES: usize = 3;
+/// Frames a cycle. A machine with other work makes the server skip cycles, and what is skipped is lost to everybody:
+/// then once more, and at last with cycles that give it time.
+const PERIODS: [u32; 3] = [64, 64, 1024];
 
 const STAGE: &str = r#"
 stage: Server check
@@ -104,10 +105,9 @@ fn write_evening(dice: &mut Dice) -> (Vec<Event>, Vec<Played>) {
 #[test]
 fn ten_thousand_notes_and_no_frame_later() {
     in_a_process_of_its_own("ten_thousand_notes_and_no_frame_later", || {
-        let _server = Server::start();
-        let trued = Trued::start(STAGE);
-        let mut receiver = Receiver::new(Kind::Plain, Duration::ZERO, 7);
-        for attempt in 1..=TRIES {
+        for (attempt, period) in PERIODS.into_iter().enumerate() {
+            let _server = Server::start(period);
+            let trued = Trued::start(STAGE);
             let (events, played) = write_evening(&mut Dice::new(attempt as u64));
             let bench = Bench::open();
             bench.wait_until_connected();
@@ -115,25 +115,25 @@ fn ten_thousand_notes_and_no_frame_later() {
             std::thread::sleep(Duration::from_millis(2_500));
             bench.play(&events);
             let heard = bench.finish();
-            let verdict = judge(&heard, &played, &mut receiver);
-            println!("run {attempt}: {} xruns; {verdict:?}", heard.xruns);
-            if heard.xruns > 0 && verdict.is_err() && attempt < TRIES {
-                receiver = Receiver::new(Kind::Plain, Duration::ZERO, 7);
-                continue;
+            let verdict = judge(&heard, &played);
+            println!(
+                "{period} frames a cycle, {} xruns: {verdict:?}",
+                heard.xruns
+            );
+            trued.stop_cleanly();
+            let once_more = heard.xruns > 0 && attempt + 1 < PERIODS.len();
+            if verdict.is_ok() || !once_more {
+                verdict.expect("every note in its place");
+                break;
             }
-            verdict.expect("every note in its place");
-            break;
         }
-        trued.stop_cleanly();
     });
 }
 
 /// The figures, or what is wrong.
-fn judge(
-    heard: &bench::Heard,
-    played: &[Played],
-    receiver: &mut Receiver,
-) -> Result<String, String> {
+fn judge(heard: &bench::Heard, played: &[Played]) -> Result<String, String> {
+    // A power-on range that is no range of ours, so that one never told is heard.
+    let mut receiver = Receiver::new(Kind::Plain, Duration::ZERO, 7);
     let frames = |events: &[Event], kinds: &[u8]| -> Vec<u64> {
         let is = |event: &&Event| kinds.contains(&(event.bytes()[0] & 0xF0));
         events.iter().filter(is).map(|event| event.frame).collect()
@@ -197,7 +197,7 @@ fn a_server_killed_under_play_comes_back_and_nothing_is_stuck() {
                 .ok()
                 .and_then(|n| n.parse().ok());
             let kills: u64 = kills.unwrap_or(3);
-            let mut server = Server::start();
+            let mut server = Server::start(64);
             let trued = Trued::start(STAGE);
             // Hardware behind the server: it knows nothing of servers, and what it sounds goes on sounding.
             let mut receiver = Receiver::new(Kind::Plain, Duration::ZERO, 7);
@@ -220,7 +220,7 @@ fn a_server_killed_under_play_comes_back_and_nothing_is_stuck() {
                 drop(bench);
                 notes_before = receiver.notes.len();
                 let began = Instant::now();
-                server = Server::start();
+                server = Server::start(64);
                 let up = began.elapsed();
                 let bench = Bench::open();
                 bench.wait_until_connected();
@@ -288,7 +288,7 @@ impl Cycle for Counted {
 fn the_callback_takes_nothing_from_the_heap() {
     in_a_process_of_its_own("the_callback_takes_nothing_from_the_heap", || {
         const CYCLES: u64 = 3_000;
-        let _server = Server::start();
+        let _server = Server::start(64);
         let synth = plans::synth("organ", Dialect::ChannelBend, 2);
         let low = plans::offsets([0.0, 0.0, 0.0, 0.0, -14.0, 0.0, 0.0, 0.0, 0.0, 0.0, 0.0, 0.0]);
         let plan = plans::plan(synth, vec![plans::song("Lantern hymn", low)]);

@@ -2,13 +2,13 @@
 //!
 //! Nothing here allocates, locks, logs or makes a system call, but for the one ring of the bell at the very end.
 
-use super::Shared;
 use super::frames::Frames;
+use super::{Ports, Shared};
 use crate::limits::{KEYBOARDS_MAX, SYNTHS_MAX};
 use crate::ports::hotplug::Change;
 use crate::ports::message::cut;
 use crate::ports::outbox::{Outbox, outboxes};
-use crate::ports::{Cycle, Inbox, Next, Outlet, Wire};
+use crate::ports::{Cycle, Inbox, Next, Outlet, Tally, Wire};
 use crate::time::Time;
 use jack::{Client, Control, MidiIn, MidiIter, MidiOut, MidiWriter, Port, ProcessScope, RawMidi};
 use rtrb::Consumer;
@@ -20,58 +20,66 @@ const EMPTY_CYCLES: u32 = 4;
 
 /// What the callback owns.
 pub struct Process {
-    pub cycle: Box<dyn Cycle + Send>,
-    pub keyboards: Vec<Port<MidiIn>>,
-    pub synths: Vec<Port<MidiOut>>,
-    /// When this server's time begins on our clock.
-    pub zero: Time,
-    pub rate: u32,
-    pub changes: Consumer<Change>,
-    pub shared: Arc<Shared>,
+    synths: Vec<Port<MidiOut>>,
+    player: Rounds,
+    /// When this server's time begins on our clock, and how many frames it has in a second.
+    zero: Time,
+    rate: u32,
     frames: Option<Frames>,
-    inbox: Inbox,
-    outboxes: Vec<Outbox>,
+    shared: Arc<Shared>,
     /// Cycles since the score has left.
     left: Option<u32>,
+}
+
+/// All but the ports that are written to.
+struct Rounds {
+    cycle: Box<dyn Cycle + Send>,
+    keyboards: Vec<Port<MidiIn>>,
+    changes: Consumer<Change>,
+    inbox: Inbox,
+    outboxes: Vec<Outbox>,
+    tally: Arc<Tally>,
     /// Which keyboard the device on each seat plays. The server mixes what is joined to one port, so all of them are one
     /// to the engine, and when one goes all let go.
     seats: [usize; KEYBOARDS_MAX],
 }
 
 impl Process {
+    /// The only allocation.
     pub fn new(
         cycle: Box<dyn Cycle + Send>,
-        ports: (Vec<Port<MidiIn>>, Vec<Port<MidiOut>>),
+        (keyboards, synths): Ports,
         (zero, rate): (Time, u32),
         changes: Consumer<Change>,
         shared: Arc<Shared>,
     ) -> Process {
         Process {
-            outboxes: outboxes(ports.1.len()),
-            cycle,
-            keyboards: ports.0,
-            synths: ports.1,
+            player: Rounds {
+                cycle,
+                keyboards,
+                changes,
+                inbox: Inbox::new(),
+                outboxes: outboxes(synths.len()),
+                tally: shared.tally.clone(),
+                seats: std::array::from_fn(|seat| seat),
+            },
+            synths,
             zero,
             rate,
-            changes,
-            shared,
             frames: None,
-            inbox: Inbox::new(),
+            shared,
             left: None,
-            seats: std::array::from_fn(|seat| seat),
         }
     }
 
     fn play(&mut self, scope: &ProcessScope) {
         let count = scope.last_frame_time();
-        let frames = self
-            .frames
-            .get_or_insert_with(|| Frames::new(self.rate, self.zero, count));
+        let first = || Frames::new(self.rate, self.zero, count);
+        let frames = self.frames.get_or_insert_with(first);
         frames.begin(count, scope.n_frames());
-        let frames = *frames;
         let mut ports = self.synths.iter_mut();
         let mut wire = FrameWire {
-            frames,
+            frames: *frames,
             at: 0,
             // To ask for a writer is to clear what the port held.
             synths: std::array::from_fn(|_| ports.next().map(|port| Writer::new(port, scope))),
@@ -85,15 +93,26 @@ impl Process {
             }
             return;
         }
+        let next = self.player.run(&mut wire, scope);
+        self.left = (next == Next::Leave).then_some(0);
+        let reached = frames.end().nanos();
+        self.shared.reached.store(reached, Ordering::Release);
+    }
+}
+
+impl Rounds {
+    /// All that has come in this cycle; in several rounds, should it be more than the inbox holds.
+    fn run(&mut self, wire: &mut FrameWire<'_>, scope: &ProcessScope) -> Next {
+        let frames = wire.frames;
         let mut outlet = Outlet {
             outboxes: &mut self.outboxes,
-            wire: &mut wire,
+            wire,
         };
         outlet.retry();
-        while self.inbox.has_room() {
-            let Ok(change) = self.changes.pop() else {
-                break;
-            };
+        let start = frames.time(0);
+        while self.inbox.has_room()
+            && let Ok(change) = self.changes.pop()
+        {
             match change {
                 Change::Seat { seat, keyboard } => {
                     if let Some(place) = self.seats.get_mut(seat) {
@@ -102,37 +121,32 @@ impl Process {
                 }
                 Change::KeyboardLost { seat } => {
                     let keyboard = self.seats.get(seat).copied().unwrap_or(seat);
-                    self.inbox.add_keyboard_lost(frames.time(0), keyboard);
+                    self.inbox.add_keyboard_lost(start, keyboard);
                 }
                 Change::Loop { .. } => {}
-                Change::Synth(synth, link) => self.inbox.add_synth(frames.time(0), synth, link),
+                Change::Synth(synth, link) => self.inbox.add_synth(start, synth, link),
             }
         }
-        let mut next = Next::Wait(None);
         let mut sources = Sources::new(&self.keyboards, scope);
         while let Some((keyboard, event)) = sources.earliest() {
             let time = frames.time(event.time);
             if !self.inbox.has_room() {
-                next = self.cycle.run(time, &mut self.inbox, &mut outlet);
+                let next = self.cycle.run(time, &mut self.inbox, &mut outlet);
                 self.inbox.clear();
+                if next == Next::Leave {
+                    return next;
+                }
             }
             if !self.inbox.add_midi(time, keyboard, event.bytes) {
-                self.shared.tally.too_long.fetch_add(1, Ordering::Relaxed);
+                self.tally.too_long.fetch_add(1, Ordering::Relaxed);
             }
         }
-        if next != Next::Leave {
-            next = self.cycle.run(frames.end(), &mut self.inbox, &mut outlet);
-        }
+        let next = self.cycle.run(frames.end(), &mut self.inbox, &mut outlet);
         self.inbox.clear();
-        let too_long = wire.too_long;
-        self.shared
-            .tally
+        self.tally
             .too_long
-            .fetch_add(too_long, Ordering::Relaxed);
-        self.shared
-            .reached
-            .store(frames.end().nanos(), Ordering::Release);
-        self.left = (next == Next::Leave).then_some(0);
+            .fetch_add(wire.too_long, Ordering::Relaxed);
+        next
     }
 }
 

@@ -46,19 +46,27 @@ pub fn wait_for(what: &str, mut is_there: impl FnMut() -> bool) {
 pub struct Server(Child);
 
 impl Server {
-    pub fn start() -> Server {
+    pub fn start(period: u32) -> Server {
         jack::set_logger(jack::LoggerType::None);
-        Server::try_start(&["-R", "-P", "60"])
-            .or_else(|| Server::try_start(&["-r"]))
+        Server::try_start(&["-R", "-P", "60"], period)
+            .or_else(|| Server::try_start(&["-r"], period))
             .expect("jackd starts")
     }
 
-    fn try_start(priority: &[&str]) -> Option<Server> {
+    fn try_start(priority: &[&str], period: u32) -> Option<Server> {
         let name = std::env::var(SERVER).expect("set for this process");
         let child = Command::new("jackd")
             .args(["-n", &name])
             .args(priority)
-            .args(["-S", "-d", "dummy", "-r", "48000", "-p", "64"])
+            .args([
+                "-S",
+                "-d",
+                "dummy",
+                "-r",
+                "48000",
+                "-p",
+                &period.to_string(),
+            ])
             .stdout(Stdio::null())
             .stderr(Stdio::null())
             .spawn()
