@@ -1,18 +1,20 @@
 //! trued on a real ALSA sequencer: `aplaymidi` plays into it, `aseqdump` hears it (both of alsa-utils), a Debian kernel
 //! carries the MIDI. What was heard is judged by the independent receiver of `tests/support`.
 
-use crate::support::dice::Dice;
+/// What is played into the guest, as MIDI files.
+mod files;
+/// The virtual machine and what it leaves.
+mod guest;
+/// Ports that come and go, and stops of all kinds.
+mod plugging;
+
 use crate::support::receiver::{Kind, Receiver};
-use midly::num::{u4, u7, u15, u24, u28};
-use midly::{Format, Header, MetaMessage, MidiMessage, Smf, Timing, TrackEvent, TrackEventKind};
-use std::path::{Path, PathBuf};
-use std::process::Command;
+use files::{HELD, NOTES, Played};
+use guest::Guest;
+use std::path::Path;
 use std::time::Duration;
 use trued::stage::Stage;
 
-const NOTES: usize = 2000;
-/// The song changes after so many notes: six changes in all, three times each song.
-const NOTES_A_SONG: usize = NOTES / 6;
 /// Half a bend step at range 2: 400 cents over 16384 steps, halved.
 const HALF_STEP_CENTS: f64 = 400.0 / 16384.0 / 2.0 + 1e-6;
 
@@ -58,9 +60,6 @@ const RUN: usize = 600;
 /// Notes after it reads again.
 const FEW: usize = 20;
 
-/// Keys that are down when the stop comes.
-const HELD: [u8; 4] = [48, 52, 55, 61];
-
 /// Quarter-comma meantone, Eb to G#, in cents above C, from its definition: four fifths make 5/1 (common practice).
 fn meantone_cents(pitch_class: u8) -> f64 {
     let fifth = 1200.0 * 5f64.log2() / 4.0;
@@ -86,133 +85,6 @@ fn wanted_cents(key: u8, song: usize) -> f64 {
     let above_c = [meantone_cents, werckmeister_cents][song];
     let octave = f64::from(key / 12) - 5.0;
     6900.0 + octave * 1200.0 + above_c(key % 12) - above_c(9)
-}
-
-struct Played {
-    key: u8,
-    velocity: u8,
-    song: usize,
-}
-
-/// A track under way: events with their ticks since the one before.
-#[derive(Default)]
-struct Track(Vec<TrackEvent<'static>>);
-
-impl Track {
-    fn add(&mut self, delta: u32, channel: u8, message: MidiMessage) {
-        self.0.push(TrackEvent {
-            delta: u28::new(delta),
-            kind: TrackEventKind::Midi {
-                channel: u4::new(channel),
-                message,
-            },
-        });
-    }
-
-    /// One tick is a millisecond: 1000 ticks to a beat of one second.
-    fn save(mut self, path: &Path) {
-        let meta = |delta, message| TrackEvent {
-            delta: u28::new(delta),
-            kind: TrackEventKind::Meta(message),
-        };
-        let tempo = MetaMessage::Tempo(u24::new(1_000_000));
-        self.0.insert(0, meta(0, tempo));
-        self.0.push(meta(0, MetaMessage::EndOfTrack));
-        let timing = Timing::Metrical(u15::new(1000));
-        let mut smf = Smf::new(Header::new(Format::SingleTrack, timing));
-        smf.tracks.push(self.0);
-        smf.save(path).expect("a writable file");
-    }
-}
-
-fn on(key: u8, velocity: u8) -> MidiMessage {
-    MidiMessage::NoteOn {
-        key: u7::new(key),
-        vel: u7::new(velocity),
-    }
-}
-
-fn off(key: u8) -> MidiMessage {
-    MidiMessage::NoteOff {
-        key: u7::new(key),
-        vel: u7::new(64),
-    }
-}
-
-fn pedal(value: u8) -> MidiMessage {
-    MidiMessage::Controller {
-        controller: u7::new(64),
-        value: u7::new(value),
-    }
-}
-
-/// Chords of one to four keys, some under the pedal, with song changes between them, mostly while keys are down.
-fn write_evening(path: &Path) -> Vec<Played> {
-    let mut dice = Dice::new(20);
-    let mut track = Track::default();
-    let mut played: Vec<Played> = Vec::new();
-    let mut down: Vec<u8> = Vec::new();
-    let mut song = 0;
-    while played.len() < NOTES {
-        let due = played.len() / NOTES_A_SONG % 2;
-        if due != song {
-            song = due;
-            let program = u7::new(song as u8);
-            track.add(5, 15, MidiMessage::ProgramChange { program });
-        }
-        track.add(15, 0, pedal(if dice.percent(20) { 127 } else { 0 }));
-        let chord = (1 + dice.below(4) as usize).min(NOTES - played.len());
-        let mut keys: Vec<u8> = Vec::new();
-        while keys.len() < chord {
-            let key = 36 + dice.below(49) as u8;
-            if !keys.contains(&key) && !down.contains(&key) {
-                keys.push(key);
-            }
-        }
-        for (n, key) in keys.iter().enumerate() {
-            let velocity = 1 + dice.below(127) as u8;
-            track.add(if n == 0 { 5 } else { 0 }, 0, on(*key, velocity));
-            played.push(Played {
-                key: *key,
-                velocity,
-                song,
-            });
-        }
-        for (n, key) in down.drain(..).enumerate() {
-            track.add(if n == 0 { 10 } else { 0 }, 0, off(key));
-        }
-        down = keys;
-    }
-    for key in down {
-        track.add(10, 0, off(key));
-    }
-    track.add(10, 0, pedal(0));
-    track.save(path);
-    played
-}
-
-/// A chord and a pedal that are still down when the stop comes, and the wheel pushed.
-fn write_held(path: &Path) {
-    let mut track = Track::default();
-    track.add(0, 0, pedal(127));
-    for key in HELD {
-        track.add(0, 0, on(key, 90));
-    }
-    let bend = midly::PitchBend(midly::num::u14::new(12_000));
-    track.add(200, 0, MidiMessage::PitchBend { bend });
-    track.add(60_000, 0, pedal(0));
-    track.save(path);
-}
-
-/// Notes one after another.
-fn write_run(path: &Path, notes: usize) {
-    let mut track = Track::default();
-    for n in 0..notes {
-        let key = 48 + (n * 7 % 36) as u8;
-        track.add(2, 0, on(key, 1 + (n % 127) as u8));
-        track.add(2, 0, off(key));
-    }
-    track.save(path);
 }
 
 /// One line of aseqdump as bytes.
@@ -247,70 +119,6 @@ fn bytes_of(line: &str) -> Option<Vec<u8>> {
     })
 }
 
-/// What the guest left.
-struct Guest {
-    out: PathBuf,
-    folder: PathBuf,
-}
-
-impl Guest {
-    fn run(folder: PathBuf) -> Guest {
-        for tool in ["qemu-system-x86_64", "busybox", "cpio", "aseqdump"] {
-            let found = Command::new("sh")
-                .args(["-c", &format!("command -v {tool}")])
-                .output()
-                .is_ok_and(|output| output.status.success());
-            assert!(found, "{tool} is missing; run tests/setup");
-        }
-        let here = Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/outside");
-        let out = folder.join("out");
-        let files = [
-            "stage.yaml",
-            "plugged.yaml",
-            "layer.yaml",
-            "evening.mid",
-            "held.mid",
-            "run.mid",
-            "few.mid",
-        ];
-        let done = Command::new(here.join("alsa_vm.sh"))
-            .arg(here.join("alsa_guest.sh"))
-            .arg(&out)
-            .arg(env!("CARGO_BIN_EXE_trued"))
-            .args(files.map(|file| folder.join(file)))
-            .env("VM_TIMEOUT_S", "240")
-            .output()
-            .expect("bash runs");
-        let guest = Guest { out, folder };
-        assert!(
-            done.status.success(),
-            "the guest ended with {}\n{}\n{}\n{}",
-            done.status,
-            String::from_utf8_lossy(&done.stdout),
-            String::from_utf8_lossy(&done.stderr),
-            guest.text("trued.log"),
-        );
-        guest
-    }
-
-    fn bytes(&self, file: &str) -> Vec<u8> {
-        std::fs::read(self.out.join(file)).unwrap_or_default()
-    }
-
-    fn text(&self, file: &str) -> String {
-        String::from_utf8_lossy(&self.bytes(file)).into_owned()
-    }
-}
-
-impl Drop for Guest {
-    fn drop(&mut self) {
-        // Left for a look when a test has failed.
-        if !std::thread::panicking() {
-            let _ = std::fs::remove_dir_all(&self.folder);
-        }
-    }
-}
-
 #[test]
 fn on_a_real_sequencer() {
     let folder = std::env::temp_dir().join(format!("trued-alsa-{}", std::process::id()));
@@ -318,19 +126,16 @@ fn on_a_real_sequencer() {
     std::fs::write(folder.join("stage.yaml"), STAGE).unwrap();
     std::fs::write(folder.join("plugged.yaml"), PLUGGED).unwrap();
     std::fs::write(folder.join("layer.yaml"), LAYER).unwrap();
-    write_run(&folder.join("run.mid"), RUN);
-    write_run(&folder.join("few.mid"), FEW);
-    let played = write_evening(&folder.join("evening.mid"));
-    write_held(&folder.join("held.mid"));
+    plugging::write(&folder);
+    files::write_run(&folder.join("run.mid"), RUN);
+    files::write_run(&folder.join("few.mid"), FEW);
+    files::write_flood(&folder.join("flood.mid"));
+    let played = files::write_evening(&folder.join("evening.mid"));
+    files::write_held(&folder.join("held.mid"));
     let guest = Guest::run(folder);
-    assert_eq!(
-        guest.text("missing.txt"),
-        "",
-        "{}",
-        guest.text("plugged.log")
-    );
+    assert_eq!(guest.text("missing.txt"), "", "{}", guest.text("ports.log"));
     two_thousand_notes_in_two_tunings_and_a_clean_stop(&guest, &played);
-    ports_by_name_pulled_out_and_put_in_again(&guest);
+    plugging::judge(&guest);
     a_synth_that_does_not_read_holds_nobody_up(&guest);
     what_ports_says(&guest);
 }
@@ -382,36 +187,6 @@ fn assert_left_plain(receiver: &Receiver) {
             assert_eq!(range, 200.0, "range of channel {}", channel + 1);
         }
     }
-}
-
-fn ports_by_name_pulled_out_and_put_in_again(guest: &Guest) {
-    let log = guest.text("plugged.log");
-    println!("{log}");
-    let wanted = wanted_cents(64, 0);
-    let hear = |bytes: &[u8]| {
-        let mut receiver = Receiver::new(Kind::Plain, Duration::ZERO, 7);
-        receiver.hear(Duration::ZERO, bytes);
-        receiver
-    };
-    // The ear begins to listen after the set-up: it does not know the range, so only the bend itself is compared.
-    let first = guest.bytes("first.bin");
-    let onset = first
-        .windows(3)
-        .position(|w| w[0] & 0xF0 == 0x90 && w[1..] == [64, 100]);
-    assert!(onset.is_some(), "the first note came through: {first:02x?}");
-    // The second time the set-up is heard, at the latest when it is said once more after 2 s.
-    let second = hear(&guest.bytes("second.bin"));
-    assert_eq!(second.notes.len(), 1, "{:02x?}", guest.bytes("second.bin"));
-    let note = &second.notes[0];
-    let bend = second.notes[0].onset_cents() - f64::from(note.number) * 100.0;
-    assert!(bend.abs() > 1.0, "the note is bent");
-    assert!(
-        (note.onset_cents() - wanted).abs() <= HALF_STEP_CENTS,
-        "{} instead of {wanted}",
-        note.onset_cents()
-    );
-    assert_eq!(guest.text("plugged.exit").trim(), "0", "{log}");
-    assert_plain(&second);
 }
 
 fn a_synth_that_does_not_read_holds_nobody_up(guest: &Guest) {

@@ -1,5 +1,6 @@
 # In the guest. First: aplaymidi -> trued -> aseqdump, then SIGTERM while a chord and a pedal are held.
 export NO_COLOR=1
+UNPLUGS=$(cat /guest/unplugs)
 ready() { for _ in $(seq 100); do grep -q "$1" "$2" && return; sleep 0.1; done; echo "never: $1" >> /out/missing.txt; }
 
 /guest/trued run /guest/stage.yaml 2> /out/trued.log &
@@ -21,37 +22,14 @@ kill $held
 sleep 0.5
 kill $dump
 
-# Second: raw MIDI ports found by name, pulled out under a held note and put in again, then SIGINT (Ctrl-C).
+# Second: raw MIDI ports found by name, that come and go.
 /guest/trued ports /guest/plugged.yaml > /out/ports.txt
 /guest/trued ports --stage > /out/starter.yaml
 /guest/trued ports /out/starter.yaml --json > /out/ports.json
 card=$(ls /dev/snd | sed -n 's/^midiC\([0-9]*\)D0$/\1/p')
 keys=/dev/snd/midiC${card}D0 organ=/dev/snd/midiC${card}D1
 driver=/sys/bus/platform/drivers/snd_virmidi
-/guest/trued run /guest/plugged.yaml 2> /out/plugged.log &
-trued=$!
-ready "organ is set up" /out/plugged.log
-cat $organ > /out/first.bin &
-ear=$!
-sleep 0.3
-printf '\220\100\144' > $keys # C-E: key 64, held
-sleep 0.7
-kill $ear
-echo snd_virmidi.0 > $driver/unbind
-ready "organ has gone" /out/plugged.log
-ready "keyboard keys has gone" /out/plugged.log
-echo snd_virmidi.0 > $driver/bind
-for _ in $(seq 50); do [ -e $organ ] && break; sleep 0.1; done
-cat $organ > /out/second.bin &
-ear=$!
-for _ in $(seq 100); do [ "$(grep -c "organ is set up" /out/plugged.log)" = 2 ] && break; sleep 0.1; done
-sleep 2.6 # what has just come back is set up once more after 2 s
-printf '\220\100\144' > $keys
-sleep 0.7
-kill -INT $trued
-wait $trued
-echo $? > /out/plugged.exit
-kill $ear
+. /guest/alsa_ports.sh
 
 # Third: one of two synths stops reading in the middle of a run of notes, then reads again.
 /guest/trued run /guest/layer.yaml 2> /out/layer.log &
