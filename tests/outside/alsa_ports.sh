@@ -20,7 +20,9 @@ linked() { # the kernel says that the raw port's keys reach somebody
 }
 unplug() { echo snd_virmidi.0 > $driver/unbind; }
 plug() { echo snd_virmidi.0 > $driver/bind; }
-listen() { until cat $organ; do :; done > "$1" 2> /dev/null & } # from the moment the port is there
+listen() { # listen FILE: from the moment the port is there, until it goes; $! is the ear
+  (until [ -e $organ ]; do :; done; exec cat $organ) > "$1" 2> /dev/null &
+}
 chord='\260\100\177\220\074\144\220\100\144\220\103\144' # pedal, C E G
 single='\220\100\144'
 log=/out/ports.log
