@@ -16,6 +16,7 @@ use std::time::{Duration, Instant};
 use trued::daemon::{Player, Score, Slot};
 use trued::engine::Engine;
 use trued::engine::plan::Dialect;
+use trued::ports::clock::Clock;
 use trued::ports::jack::Jack;
 use trued::ports::{Cycle, Inbox, Next, Outlet};
 use trued::time::Time;
@@ -303,7 +304,8 @@ fn the_callback_takes_nothing_from_the_heap() {
             std::thread::spawn(move || {
                 let names = |name: &str| vec![name.to_string()];
                 let mut jack =
-                    Jack::open("counted", &names("keys"), &names("organ")).expect("jack");
+                    Jack::open("counted", &names("keys"), &names("organ"), Clock::start())
+                        .expect("jack");
                 assert!(jack.found_server());
                 jack.run(&|| {
                     Box::new(Counted {
