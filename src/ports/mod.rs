@@ -6,7 +6,8 @@
 //! **May know** `time`, `limits`.
 //! **Owns** alsa, jack, the only clock (`clock.rs`), the only unsafe code (`system.rs`; in `jack/` one signature), which port fits which name (`names.rs`),
 //! and when a device has come or gone (`hotplug.rs`).
-//! Nothing in a loop blocks but its one wait, and nothing in it allocates, logs or locks.
+//! Nothing in a loop blocks but its one wait, and nothing in it logs or locks. Nothing allocates either, but for one
+//! occasion: after an input overrun the sequencer is asked who is still connected.
 //! **Not here**: the engine and what is done in a cycle (`daemon/`), what a stage file says (`stage/`).
 
 #[cfg(target_os = "linux")]
