@@ -67,6 +67,9 @@ const DEADLINES_MAX: usize = 10_000;
 const STOP: Span = Span::from_millis(4_000);
 /// How long a port that took nothing any more is left alone.
 const CHOKED: Span = Span::from_millis(1_000);
+/// How long a port that has lost messages is left alone once it reads again: the kernel throws a queue that ran over
+/// away at its reader's next read, with whatever has come in until then.
+const EMPTIED: Span = Span::from_millis(60);
 /// How often the desk hears from us even if nothing happens.
 const BEAT: Span = Span::from_millis(250);
 /// How soon a pulse for which there was no room is tried again.
@@ -224,6 +227,9 @@ impl Score {
     fn obey(&mut self, now: Time, command: Command, outlet: &mut Outlet<'_>) {
         if command == Command::Stop {
             self.give_up_at.get_or_insert(now + STOP);
+            // There is no later: what hangs on a choked port is let go now, as far as it hears.
+            self.reopen_at.iter_mut().flatten().for_each(|at| *at = now);
+            self.reopen(now, outlet);
         }
         self.engine.handle_input(now, Input::Command(command));
         self.drain(now, outlet);
@@ -271,8 +277,8 @@ impl Score {
                 }
                 Room::Emptied => {
                     self.tell(News::Emptied { synth });
+                    self.reopen_at[synth] = Some(now + EMPTIED);
                     self.link(now, synth, engine::Link::Down);
-                    self.begin_anew(now, synth, outlet);
                 }
             }
         }

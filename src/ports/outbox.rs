@@ -11,6 +11,9 @@ use crate::time::{Span, Time};
 /// How long a full port is left alone before it is tried again.
 pub const RETRY: Span = Span::from_millis(2);
 
+/// All Notes Off on channel 1: it will be said again, with all the rest, once the port is known to read.
+const PROBE: [u8; 3] = [0xB0, 0x7B, 0];
+
 /// How a message is treated when there is not room for all.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Weight {
@@ -79,11 +82,16 @@ impl Outlet<'_> {
     }
 
     /// Tries once more to send what waits. To be called before anything new is sent.
+    ///
+    /// Where a full port loses what it had taken, what waits is of no use any more: one message that does no harm is
+    /// enough to find out whether it reads again.
     pub fn retry(&mut self) {
+        let loses = self.wire.loses_when_full();
         for (synth, outbox) in self.outboxes.iter_mut().enumerate() {
-            let before = outbox.live_bytes;
-            outbox.flush(&mut |bytes| self.wire.write(synth, bytes));
-            if outbox.live_bytes < before && self.wire.loses_when_full() {
+            let mut write = |bytes: &[u8]| self.wire.write(synth, bytes);
+            if outbox.is_empty() || !loses {
+                outbox.flush(&mut write);
+            } else if write(&PROBE) == PROBE.len() {
                 outbox.close(Room::Emptied);
             }
         }

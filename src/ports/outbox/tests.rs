@@ -277,8 +277,11 @@ fn a_port_that_loses_when_full_begins_anew() {
     };
     outlet.retry();
     assert_eq!(outlet.room_news(0), Some(Room::Emptied));
-    assert!(!outlet.is_waiting(), "what waited is of no use any more");
+    outlet.send(0, Weight::Owed, &OFF_2);
+    assert!(!outlet.is_waiting());
     outlet.forget(0);
+    let probe: [&[u8]; 1] = [&PROBE];
+    assert_eq!(port.heard, probe, "what waited is of no use any more");
     port.takes = 9;
     port.heard.clear();
     let mut outlet = Outlet {
