@@ -7,6 +7,10 @@
 //! **Not here**: which channel carries the result (`engine/`). Methods that follow the chord are described and checked
 //! by the stage file but not played yet.
 
+mod pitch_classes;
+
+pub use pitch_classes::PitchClasses;
+
 /// How a song's notes are placed.
 #[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
 pub enum Method {
