@@ -8,6 +8,7 @@
 //! by the stage file but not played yet.
 
 mod pitch_classes;
+pub mod root;
 
 pub use pitch_classes::PitchClasses;
 

@@ -11,3 +11,6 @@ mod jack;
 
 /// Tunings, beats and words on the wire, against published tables.
 mod tables;
+
+/// Roots of chords, against published models and a harmony book.
+mod roots;
