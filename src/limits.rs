@@ -32,6 +32,8 @@ pub const BUNDLE_BYTES_MAX: usize = 24;
 pub const BEND_RANGE_MAX: u8 = 96;
 /// How far the pitch nudge may go, up or down: further is a slip of the hand.
 pub const NUDGE_MAX_CENTS: i64 = 1_200;
+/// What is remembered from one run to the next; a longer file is none of ours.
+pub const REMEMBERED_BYTES_MAX: usize = 64 * 1024;
 pub const TAIL_MS_MAX: u64 = 60_000;
 /// Active Sensing: a keyboard that sent FE once and is then silent this long has gone (MIDI 1.0, p. 32: over 300 ms).
 pub const SENSING_MS: u64 = 330;

@@ -8,7 +8,7 @@ use std::path::PathBuf;
 pub struct Args {
     /// The stage file of the evening
     stage: PathBuf,
-    /// Start as the stage file says (this version remembers nothing from the last time, so it always does)
+    /// Start as the stage file says, and forget song, pitch and the like of the last time
     #[arg(long)]
     fresh: bool,
     /// Which sound system carries the MIDI
@@ -33,7 +33,7 @@ enum Choice {
 pub fn run(args: Args) -> Result<(), Failure> {
     let Args {
         stage,
-        fresh: _,
+        fresh,
         backend,
         which,
     } = args;
@@ -44,16 +44,17 @@ pub fn run(args: Args) -> Result<(), Failure> {
         ));
     }
     start_log();
-    play(stage, backend, which)
+    play(stage, backend, which, fresh)
 }
 
 #[cfg(target_os = "linux")]
-fn play(file: PathBuf, backend: Choice, which: Which) -> Result<(), Failure> {
+fn play(file: PathBuf, backend: Choice, which: Which, fresh: bool) -> Result<(), Failure> {
     use crate::daemon::open::Asked;
     use crate::daemon::run::{Evening, Trouble, play};
     use crate::daemon::state::{Boot, folder};
     which.check()?;
-    let boot = Boot::read(&file, folder().as_deref())
+    let state = folder();
+    let boot = Boot::read(&file, state.as_deref())
         .map_err(|complaints| super::unusable(&file, &complaints))?;
     let Which { name, socket } = which;
     let asked = match backend {
@@ -66,6 +67,8 @@ fn play(file: PathBuf, backend: Choice, which: Which) -> Result<(), Failure> {
         asked,
         name,
         socket,
+        state,
+        fresh,
     };
     play(boot, &evening).map_err(|trouble| match trouble {
         Trouble::Taken(path) => Failure::new(
@@ -87,7 +90,7 @@ fn play(file: PathBuf, backend: Choice, which: Which) -> Result<(), Failure> {
 }
 
 #[cfg(not(target_os = "linux"))]
-fn play(_: PathBuf, _: Choice, _: Which) -> Result<(), Failure> {
+fn play(_: PathBuf, _: Choice, _: Which, _: bool) -> Result<(), Failure> {
     Err(Failure::new(
         Failure::UNAVAILABLE,
         "this version plays on Linux only; check, chart, retune and rehearse work here",

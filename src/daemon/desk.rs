@@ -3,6 +3,8 @@
 use super::edits::Edits;
 use super::front::Front;
 use super::orders::Orders;
+use super::remember::Memory;
+use super::remember::record::State;
 use super::rig::RigWanted;
 use super::score::News;
 use super::status::Device;
@@ -33,6 +35,7 @@ pub struct Desk {
     /// The score thread has left.
     pub done: Arc<AtomicBool>,
     pub edits: Edits,
+    pub memory: Memory,
 }
 
 impl Desk {
@@ -68,10 +71,25 @@ impl Desk {
             for asked in self.front.look(LOOK, &mut self.orders) {
                 self.edits.ask(asked);
             }
+            self.remember();
         }
         self.log_news();
         self.front.close();
+        self.remember();
+        self.memory.finish(self.edits.now());
         self.edits.reload.finish();
+    }
+
+    fn remember(&mut self) {
+        // Until the score has the set that we have, its song's place means nothing here.
+        if self.edits.reload.plans_in_force() != Some(self.front.plans) {
+            return;
+        }
+        let status = &mut self.front.status;
+        let state = State::of(&status.report, &status.titles);
+        if self.memory.look(self.edits.now(), &status.stage, state) {
+            status.resumed = None;
+        }
     }
 
     /// Input that was lost since `before`; gives the counts for the next look.

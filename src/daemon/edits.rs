@@ -12,6 +12,7 @@ use crate::ports::clock::Clock;
 use crate::ports::names::{Address, Choice};
 use crate::ports::system::Bell;
 use crate::ports::{Broken, Tally};
+use crate::time::Time;
 use std::sync::Arc;
 use std::sync::mpsc::{Receiver, Sender, channel};
 use tracing::warn;
@@ -55,6 +56,10 @@ impl Edits {
             opened: opened_in,
         };
         (edits, turn)
+    }
+
+    pub fn now(&self) -> Time {
+        self.clock.now()
     }
 
     /// Reads the files at the next look, and answers when that is done.

@@ -36,6 +36,8 @@ pub struct Front {
     systemd: Systemd,
     pulses: Consumer<Pulse>,
     obeyed: u64,
+    /// Plans that the score had taken over by then.
+    pub plans: u64,
     /// A pulse has come since the supervisor was last told that we live.
     alive: bool,
     waiting: Vec<Waiting>,
@@ -71,6 +73,7 @@ impl Front {
             systemd,
             pulses,
             obeyed: 0,
+            plans: 0,
             alive: false,
             waiting: Vec::new(),
             clock,
@@ -158,7 +161,7 @@ impl Front {
     fn take_pulses(&mut self) {
         while let Ok(pulse) = self.pulses.pop() {
             self.status.report = pulse.report;
-            self.obeyed = pulse.obeyed;
+            (self.obeyed, self.plans) = (pulse.obeyed, pulse.plans);
             self.alive = true;
         }
         if self.alive && self.systemd.ping(self.clock.now()) {

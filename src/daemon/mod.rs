@@ -22,6 +22,8 @@ pub mod orders;
 pub mod place;
 #[cfg(unix)]
 pub mod reload;
+#[cfg(unix)]
+pub mod remember;
 pub mod rig;
 #[cfg(target_os = "linux")]
 pub mod run;

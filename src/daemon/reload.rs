@@ -104,6 +104,12 @@ impl Reload {
         (!news.complaints.is_empty()).then(|| news.complaints.join("\n"))
     }
 
+    /// How many plans have come into force after the first, if none is under way.
+    pub fn plans_in_force(&self) -> Option<u64> {
+        let news = self.news.lock().unwrap_or_else(PoisonError::into_inner);
+        self.under_way.is_none().then_some(news.reloads)
+    }
+
     /// Whether all that was asked for has been read, and is in force if it is good.
     pub fn is_settled(&self) -> bool {
         !self.asked && self.next.is_none() && self.under_way.is_none()

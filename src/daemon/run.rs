@@ -6,15 +6,18 @@ use super::front::Front;
 use super::open::{Asked, Ports};
 use super::orders::Orders;
 use super::place;
+use super::remember::{Memory, Resumed};
 use super::reload::{Handing, Reload};
 use super::rig::RigWanted;
 use super::score::{Ending, Score, Slot};
 use super::state::Boot;
 use super::status::Status;
 use super::systemd::Systemd;
-use crate::engine::{Engine, Report};
+use crate::engine::{Engine, Input, Report};
 use crate::ports::Broken;
 use crate::ports::clock::Clock;
+use crate::stage::Stage;
+use crate::time::Time;
 use signal_hook::consts::{SIGHUP, SIGINT, SIGTERM};
 use signal_hook::iterator::Signals;
 use std::panic::{AssertUnwindSafe, catch_unwind};
@@ -41,6 +44,10 @@ pub struct Evening {
     pub name: String,
     /// Where its control socket is to lie; else where it usually does.
     pub socket: Option<PathBuf>,
+    /// Where what is remembered lies, if anywhere.
+    pub state: Option<PathBuf>,
+    /// What is remembered is to be forgotten.
+    pub fresh: bool,
 }
 
 /// Why an evening could not begin or go on.
@@ -74,7 +81,8 @@ pub fn play(boot: Boot, evening: &Evening) -> Result<(), Trouble> {
     let (pulses_in, pulses_out) = rtrb::RingBuffer::new(PULSES);
     let (plans, plans_out) = rtrb::RingBuffer::new(PLANS);
     let (old_in, old) = rtrb::RingBuffer::new(PLANS);
-    let engine = Engine::new(boot.stage.plan());
+    let mut engine = Engine::new(boot.stage.plan());
+    let (memory, resumed) = resume(&mut engine, &boot.stage, evening, clock.now());
     let score = Score::new(engine, rig.synths.len(), commands_out, news_in)
         .with_pulses(pulses_in)
         .with_plans(plans_out, old_in);
@@ -82,6 +90,7 @@ pub fn play(boot: Boot, evening: &Evening) -> Result<(), Trouble> {
     let clauses = rig.describe("is", &patch.choice, &there).join("; ");
     let mut status = Status::of(&boot.stage, &evening.name, &evening.file, score.report());
     status.real_time = ports.hurry();
+    status.resumed = resumed;
     (status.keyboards, status.synths) = rig.devices(&patch.choice, &there);
     let reload = Reload::new(boot, Handing { plans, old }, clock.now());
     status.complaint = reload.complaint();
@@ -105,6 +114,7 @@ pub fn play(boot: Boot, evening: &Evening) -> Result<(), Trouble> {
         tally: ports.tally(),
         done: done.clone(),
         edits,
+        memory,
     };
     let desk = std::thread::Builder::new()
         .name("desk".to_string())
@@ -118,6 +128,28 @@ pub fn play(boot: Boot, evening: &Evening) -> Result<(), Trouble> {
         error!("the desk had failed before the end");
     }
     finish(ran, &slot)
+}
+
+/// Brings an engine that has heard nothing yet to where the last run was; says what that is.
+fn resume(
+    engine: &mut Engine,
+    stage: &Stage,
+    evening: &Evening,
+    now: Time,
+) -> (Memory, Option<String>) {
+    let mut memory = Memory::new(&evening.file, &evening.name, evening.state.as_deref());
+    if evening.fresh {
+        memory.forget();
+        return (memory, None);
+    }
+    let titles: Vec<String> = stage.set.iter().map(|song| song.title.clone()).collect();
+    let Resumed { commands, said } = memory.resume(&stage.name, &titles);
+    for command in commands {
+        engine.handle_input(now, Input::Command(command));
+        // No synth is there yet, so there is nothing that would have to be sent.
+        while engine.poll_output().is_some() {}
+    }
+    (memory, said)
 }
 
 fn finish(ran: std::thread::Result<Result<(), Broken>>, slot: &Slot) -> Result<(), Trouble> {

@@ -44,6 +44,8 @@ pub struct Pulse {
     pub report: Report,
     /// Commands followed since the beginning.
     pub obeyed: u64,
+    /// Plans taken over since the beginning: places in the set are by the last of them.
+    pub plans: u64,
 }
 
 /// Why a score came to its end.
@@ -86,6 +88,7 @@ pub struct Score {
     ports_due: Option<usize>,
     pulses: Option<Producer<Pulse>>,
     obeyed: u64,
+    plans_taken: u64,
     song: u16,
     /// Synths whose port is there.
     up: [bool; SYNTHS_MAX],
@@ -114,6 +117,7 @@ impl Score {
             ports_due: None,
             pulses: None,
             obeyed: 0,
+            plans_taken: 0,
             up: [false; SYNTHS_MAX],
             seats: std::array::from_fn(|seat| seat),
             reopen_at: [None; SYNTHS_MAX],
@@ -171,6 +175,7 @@ impl Score {
         let pulse = Pulse {
             report: self.engine.report(),
             obeyed: self.obeyed,
+            plans: self.plans_taken,
         };
         let went = self.pulses.as_mut()?.push(pulse).is_ok();
         Some(now + if went { BEAT } else { PULSE_AGAIN })

@@ -4,11 +4,12 @@
 //! Written a moment after a good load, by a thread of its own (a slow card may take a second), beside the old one and
 //! then in its place, so that a cut of the power leaves one of the two.
 
+use super::remember::disk::{Folder, replace};
 use crate::stage::Stage;
 use crate::stage::complaint::Complaint;
 use crate::time::{Span, Time};
-use std::fs::{self, File};
-use std::io::{self, Write};
+use std::fs;
+use std::io;
 use std::path::{Path, PathBuf};
 use std::thread::JoinHandle;
 use tracing::warn;
@@ -69,17 +70,26 @@ fn kept(path: &Path, folder: &Path) -> Option<Stage> {
     ours.then(|| Stage::from_copy(&copy).ok()).flatten()
 }
 
-/// The copy of a stage file is named after it, and after the whole path by a number (FNV-1a), for there may be others
+/// The copy of a stage file is named after it, and after the whole path by a number, for there may be others
 /// of that name.
 fn file_for(path: &Path, folder: &Path) -> Option<PathBuf> {
     let path = std::path::absolute(path).ok()?;
     let stem = path.file_stem()?.to_string_lossy().into_owned();
-    let bytes = path.as_os_str().as_encoded_bytes();
-    let number = bytes.iter().fold(0xcbf2_9ce4_8422_2325u64, |hash, byte| {
-        (hash ^ u64::from(*byte)).wrapping_mul(0x0100_0000_01b3)
-    });
     let short: String = stem.chars().take(40).collect();
+    let number = number(&path);
     Some(folder.join(format!("last-good-{short}-{number:016x}")))
+}
+
+/// Tells paths apart in the names of files.
+pub(super) fn number(path: &Path) -> u64 {
+    fnv(path.as_os_str().as_encoded_bytes())
+}
+
+/// FNV-1a, 64 bits.
+pub(super) fn fnv(bytes: &[u8]) -> u64 {
+    bytes.iter().fold(0xcbf2_9ce4_8422_2325, |hash, byte| {
+        (hash ^ u64::from(*byte)).wrapping_mul(0x0100_0000_01b3)
+    })
 }
 
 /// `None` where a path cannot be written in a line.
@@ -165,7 +175,11 @@ impl Keeper {
             return;
         };
         self.kept.clone_from(&bytes);
-        let write = move || replace(&file, &bytes);
+        let write = move || {
+            let folder = file.parent().unwrap_or(Path::new(".")).to_path_buf();
+            let name = file.file_name().unwrap_or_default().to_string_lossy();
+            replace(&Folder(folder), &name, &bytes)
+        };
         match std::thread::Builder::new().name("keep".into()).spawn(write) {
             Ok(writing) => self.writing = Some(writing),
             Err(error) => self.failed(&error),
@@ -190,26 +204,6 @@ impl Keeper {
             );
         }
     }
-}
-
-fn replace(file: &Path, bytes: &[u8]) -> io::Result<()> {
-    let folder = file.parent().unwrap_or(Path::new("."));
-    fs::create_dir_all(folder)?;
-    let beside = file.with_extension("new");
-    let written = write_through(&beside, bytes).and_then(|()| fs::rename(&beside, file));
-    if written.is_err() {
-        // What is left of it is of no use; that it cannot be removed either changes nothing.
-        let _ = fs::remove_file(&beside);
-    }
-    written?;
-    // The new name is on the disk only when its folder is.
-    File::open(folder)?.sync_all()
-}
-
-fn write_through(file: &Path, bytes: &[u8]) -> io::Result<()> {
-    let mut file = File::create(file)?;
-    file.write_all(bytes)?;
-    file.sync_all()
 }
 
 #[cfg(test)]

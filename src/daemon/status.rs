@@ -17,6 +17,8 @@ pub struct Status {
     pub file: String,
     /// What is wrong with the file as it lies there now, while an earlier text plays.
     pub complaint: Option<String>,
+    /// What was taken up from before the restart, or why nothing was; until something changes.
+    pub resumed: Option<String>,
     /// Titles in the order of the set.
     pub titles: Vec<String>,
     pub keyboards: Vec<Device>,
@@ -56,6 +58,7 @@ impl Status {
             stage: stage.name.clone(),
             file: file.display().to_string(),
             complaint: None,
+            resumed: None,
             titles: stage.set.iter().map(|song| song.title.clone()).collect(),
             keyboards: Vec::new(),
             synths: Vec::new(),
@@ -101,6 +104,7 @@ impl Status {
             "stage": self.stage,
             "file": self.file,
             "complaint": self.complaint,
+            "resumed": self.resumed,
             "song": song(now),
             "next": song(now + 1),
             "armed": self.report.armed_song.and_then(|place| song(usize::from(place))),
@@ -173,6 +177,7 @@ impl Status {
             None => "It is the last.".to_string(),
         };
         out.push(format!("Now {}. {next}", self.song_shown()));
+        out.extend(self.resumed.clone());
         out.extend(self.moved());
         let keyboards = self.keyboards.iter();
         out.extend(keyboards.map(|device| format!("Keyboard {}.", device.clause())));

@@ -213,6 +213,7 @@ impl Engine {
             armed: self.armed.len() as u8,
             nudge: self.nudge,
             transpose_keys: self.transpose_keys(),
+            transposed: self.transposed,
             plain: self.plain,
             voices: self.voices.len() as u16,
             counters: self.out.counters,

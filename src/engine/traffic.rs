@@ -187,6 +187,8 @@ pub struct Report {
     pub nudge: Interval,
     /// The transposition now in force, the song's own or another. A part's comes on top.
     pub transpose_keys: i8,
+    /// The one set in place of the song's own.
+    pub transposed: Option<i8>,
     /// Twelve-equal, whatever the song says.
     pub plain: bool,
     /// Keys held (voices whose note-off is still to come).
