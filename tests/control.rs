@@ -2,7 +2,7 @@
 //! thread is the real one on ports in memory and real time; so are the binary, the sockets and the signals.
 
 /// A daemon on ports in memory.
-mod stand;
+pub mod stand;
 
 /// Clients that mean no good, or are merely broken.
 mod hostile;

@@ -60,5 +60,8 @@ mod chart;
 /// A running daemon as people and a supervisor meet it: control socket, `tell`, `status`, readiness, watchdog.
 mod control;
 
+/// What outlasts a restart or a pulled plug.
+mod remembered;
+
 /// Edits of a stage file while it plays, on real files and real time.
 mod edits;

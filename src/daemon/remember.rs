@@ -154,7 +154,10 @@ impl Memory {
         };
         let name = self.name.clone();
         let write = move || replace(&folder, &name, &bytes);
-        match std::thread::Builder::new().name("remember".into()).spawn(write) {
+        match std::thread::Builder::new()
+            .name("remember".into())
+            .spawn(write)
+        {
             Ok(writing) => self.writing = Some(writing),
             Err(error) => self.done(now, Err(error)),
         }
@@ -163,7 +166,10 @@ impl Memory {
     fn join(&mut self, now: Time) {
         if let Some(writing) = self.writing.take() {
             let written = writing.join();
-            self.done(now, written.unwrap_or_else(|_| Err(io::ErrorKind::Other.into())));
+            self.done(
+                now,
+                written.unwrap_or_else(|_| Err(io::ErrorKind::Other.into())),
+            );
         }
     }
 
@@ -172,7 +178,9 @@ impl Memory {
         let place = self.place().display().to_string();
         match written {
             Err(error) if !std::mem::replace(&mut self.said, true) => {
-                warn!("song and pitch cannot be remembered in {place} ({error}); it goes on without");
+                warn!(
+                    "song and pitch cannot be remembered in {place} ({error}); it goes on without"
+                );
             }
             Ok(()) if std::mem::take(&mut self.said) => info!("remembered again in {place}"),
             _ => {}

@@ -106,10 +106,7 @@ impl Disk for Folder {
     fn create(&self, name: &str) -> io::Result<File> {
         make(&self.0)?;
         let mut options = OpenOptions::new();
-        options
-            .write(true)
-            .create_new(true)
-            .open(self.0.join(name))
+        options.write(true).create_new(true).open(self.0.join(name))
     }
 
     fn write(&self, file: &mut File, bytes: &[u8]) -> io::Result<()> {

@@ -173,6 +173,7 @@ fn folder_with(stage: &str) -> PathBuf {
 
 fn command(folder: &std::path::Path, backend: &str) -> Command {
     let mut command = Command::new(env!("CARGO_BIN_EXE_trued"));
+    command.env("XDG_STATE_HOME", folder);
     command.arg("run").arg(folder.join("stage.yaml"));
     command.args(["--backend", backend, "--socket"]);
     command.arg(folder.join("socket"));
