@@ -39,7 +39,7 @@ fn state(number: u64) -> State {
         place: place as u16,
         title: TITLES[place as usize].to_string(),
         nudge: Interval::from_microcents(number as i64 * 1_000),
-        transposed: (number % 3 == 0).then_some((number % 7) as i8 - 3),
+        transposed: (number.is_multiple_of(3)).then_some((number % 7) as i8 - 3),
         plain: number % 2 == 1,
     }
 }

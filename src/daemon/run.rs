@@ -94,13 +94,8 @@ pub fn play(boot: Boot, evening: &Evening) -> Result<(), Trouble> {
     (status.keyboards, status.synths) = rig.devices(&patch.choice, &there);
     let reload = Reload::new(boot, Handing { plans, old }, clock.now());
     status.complaint = reload.complaint();
-    let mut front = Front::new(
-        reload.stage(),
-        status,
-        socket,
-        Systemd::from_environment(),
-        pulses_out,
-    );
+    let systemd = Systemd::from_environment();
+    let mut front = Front::new(reload.stage(), status, socket, systemd, pulses_out);
     front.ready();
     let slot = Slot::new(score);
     let (edits, turn) = Edits::new(reload, clock);
