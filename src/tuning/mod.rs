@@ -1,7 +1,7 @@
 //! Scales and temperaments, and the keys they fall on.
 //!
 //! **What this room is**: the ways a tuning can be described ([`Scale`]), where one is put ([`Placement`]), and the 128
-//! pitches that come out ([`Tuning`]).
+//! pitches that come out ([`Tuning`]); a scale laid out for every tonic ([`Turning`]).
 //! **Start reading at** [`Scale`] and [`Scale::tune`].
 //! **May know** `pitch/`, `limits`.
 //! **Owns**: a [`Tuning`] never changes once built; a tuning by letter never moves because of the key a piece is in.
@@ -11,11 +11,13 @@ mod by_letter;
 mod key;
 mod letter;
 mod scale;
+mod turning;
 
 pub use by_letter::{ByLetter, near_key};
 pub use key::Key;
 pub use letter::Letter;
 pub use scale::{FromTonic, KeyMap, Pin, Placement, Scale, TonicWanted, TuneError};
+pub use turning::{Tonic, Turning};
 
 use crate::limits::KEYS;
 use crate::pitch::{Interval, Pitch};

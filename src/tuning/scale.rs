@@ -163,7 +163,12 @@ impl FromTonic {
 
     /// Where a key stands above step 0, or `None` where it is silent.
     fn place_of_key(&self, key: Key, tonic: Key) -> Option<Log> {
-        let above = key.number() as i64 - tonic.number() as i64;
+        let place = self.place_above_tonic(key.number() as i64 - tonic.number() as i64)?;
+        Some(place + self.changes[key.pitch_class() as usize])
+    }
+
+    /// Where the key so many keys above the tonic stands, but for `changes`.
+    pub(super) fn place_above_tonic(&self, above: i64) -> Option<Log> {
         let every = self.keys_to_period() as i64;
         let (times, within) = (above.div_euclid(every), above.rem_euclid(every) as usize);
         let step = match &self.map {
@@ -173,8 +178,7 @@ impl FromTonic {
         };
         let count = self.steps.len();
         let periods = times + (step / count) as i64;
-        let change = self.changes[key.pitch_class() as usize];
-        Some(self.steps[step % count] + self.period.times(periods) + change)
+        Some(self.steps[step % count] + self.period.times(periods))
     }
 }
 
