@@ -15,8 +15,20 @@ pub const VOICES_MAX: usize = 256;
 pub const SONGS_MAX: usize = 512;
 /// Controls held at once that may become long presses.
 pub const PRESSES_MAX: usize = 64;
-/// Kinds of commands that can wait for quiet, and then some.
-pub const ARMED_MAX: usize = 16;
+/// Controls held at once whose cues last `while: held`.
+pub const HELD_MAX: usize = 64;
+/// Commands that can wait for quiet.
+pub const ARMED_MAX: usize = 64;
+/// Other places of all keys of a tuning together.
+pub const PLACES_MAX: usize = 96;
+/// Keys of all turns of a tuning together.
+pub const TURN_STEPS_MAX: usize = 128;
+/// How far a key may be nudged from its place, up or down.
+pub const INFLECT_MAX_CENTS: i64 = 100;
+/// Keys of a keyboard that are remembered, to know whether the line comes from below or above.
+pub const LINE_KEYS: usize = 8;
+/// So long without a key down is a rest in the line.
+pub const REST_MS: u64 = 500;
 /// Cues in one stage file.
 pub const CUES_MAX: usize = 128;
 /// Longest system exclusive message passed on whole; longer ones are dropped and counted.

@@ -94,6 +94,7 @@ fn evening() -> Plan {
         press: Press::Down,
         at_quiet: false,
         act: Act::SongByProgram,
+        held: false,
         pass: false,
     });
     for (gesture, press, command) in [
@@ -109,6 +110,7 @@ fn evening() -> Plan {
             press,
             act: Act::Command(command),
             at_quiet: matches!(press, Press::Down | Press::Either),
+            held: false,
             pass: true,
         });
     }

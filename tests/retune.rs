@@ -142,6 +142,7 @@ fn a_song_change_between_two_notes_of_one_tick_divides_them() {
         press: Press::Down,
         at_quiet: false,
         act: Act::SongByProgram,
+        held: false,
         pass: false,
     });
     let bytes = file(

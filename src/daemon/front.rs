@@ -91,6 +91,7 @@ impl Front {
     pub fn show_stage(&mut self, stage: Arc<Stage>) {
         let titles = stage.set.iter().map(|song| song.title.clone());
         self.status.titles = titles.collect();
+        self.status.places = stage.place_names();
         self.status.stage.clone_from(&stage.name);
         self.stage = stage;
     }

@@ -9,6 +9,7 @@
 //! **Not here**: how bytes get in and out (`ports/`), what is made of them (`engine/`).
 
 #[cfg(target_os = "linux")]
+mod by_hand;
 mod desk;
 #[cfg(target_os = "linux")]
 mod edits;

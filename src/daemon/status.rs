@@ -1,6 +1,8 @@
 //! How things stand, in plain sentences and as one object with stable names.
 
+use super::by_hand;
 use crate::engine::Report;
+use crate::engine::plan::NameId;
 use crate::pitch::Interval;
 use crate::stage::Stage;
 use serde_json::{Value, json};
@@ -21,6 +23,8 @@ pub struct Status {
     pub resumed: Option<String>,
     /// Titles in the order of the set.
     pub titles: Vec<String>,
+    /// What the places of keys are called.
+    pub places: Vec<(NameId, String)>,
     pub keyboards: Vec<Device>,
     pub synths: Vec<Device>,
     pub report: Report,
@@ -60,6 +64,7 @@ impl Status {
             complaint: None,
             resumed: None,
             titles: stage.set.iter().map(|song| song.title.clone()).collect(),
+            places: stage.place_names(),
             keyboards: Vec::new(),
             synths: Vec::new(),
             report,
@@ -112,6 +117,10 @@ impl Status {
             "pitch_nudge_cents": cents(self.report.nudge),
             "transpose_keys": self.report.transpose_keys,
             "plain": self.report.plain,
+            "tonic": by_hand::tonic(&self.report),
+            "waits_for_key": self.report.waits_for_key,
+            "inflections": by_hand::inflections(&self.report, &self.places),
+            "black_keys": by_hand::black_keys(&self.report),
             "songs": self.titles.len(),
             "keyboards": devices(&self.keyboards),
             "synths": devices(&self.synths),
@@ -215,6 +224,7 @@ impl Status {
         if plain {
             out.push("Plain: equal temperament, whatever the song says.".to_string());
         }
+        out.extend(by_hand::sentences(&self.report, &self.places));
         out
     }
 

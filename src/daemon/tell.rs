@@ -1,5 +1,6 @@
 //! What is said once words of `tell` have been followed.
 
+use super::by_hand;
 use super::status::{Status, cents};
 use crate::engine::{Command, Report};
 
@@ -35,6 +36,13 @@ pub fn outcome(command: Command, before: &Report, now: &Status) -> Result<String
         Command::Transpose(_) => Ok(format!("keys are moved by {:+}", report.transpose_keys)),
         Command::Plain if report.plain => Ok("plain: equal temperament".to_string()),
         Command::Plain => Ok(format!("as the songs say: {}", now.song_shown())),
+        Command::Inflect { .. }
+        | Command::InflectHome
+        | Command::Turn(_)
+        | Command::BlackKey(_)
+        | Command::Tonic { .. }
+        | Command::TonicNextKey(_)
+        | Command::TonicHome => by_hand(command, before, now),
         Command::Home => Ok(format!("as it begins: {}", now.song_shown())),
         Command::Fresh => Ok(format!("as if started anew: {}", now.song_shown())),
         Command::Panic => Ok("all is silenced, and every synth set up again".to_string()),
@@ -48,6 +56,34 @@ pub fn outcome(command: Command, before: &Report, now: &Status) -> Result<String
         Command::End => Ok("notes off".to_string()),
         Command::Ask(_) => Ok("passed on".to_string()),
     }
+}
+
+fn by_hand(command: Command, before: &Report, now: &Status) -> Result<String, String> {
+    if now.report.counters.ignored == before.counters.ignored {
+        let changed = by_hand::sentences(&now.report, &now.places);
+        return Ok(match changed.is_empty() {
+            true => "every key is at home".to_string(),
+            false => changed.join(" "),
+        });
+    }
+    let song = now.song_shown();
+    Err(match command {
+        Command::Tonic { .. } | Command::TonicNextKey(_) | Command::TonicHome => {
+            match now.report.tonic {
+                None => format!(
+                    "the tuning goes by letter: its keys keep their pitches whatever the tonic; {song}"
+                ),
+                Some(_) => format!(
+                    "the tonic cannot go there: a key that is needed for it is silent; {song}"
+                ),
+            }
+        }
+        Command::BlackKey(name) => {
+            format!("no black key may be {name} or something else in {song}")
+        }
+        Command::Turn(_) => format!("there is no such turn in {song}"),
+        _ => format!("that key has no such place, or is as far from it as it goes, in {song}"),
+    })
 }
 
 /// Why a step to another song was none.

@@ -23,11 +23,14 @@ impl Armed {
         self.list.len()
     }
 
-    /// A second press does not arm twice, and of two songs the later one is meant.
-    fn add(&mut self, command: Command) {
+    /// A second press does not arm twice, and of two songs the later one is meant. Tells whether there was room.
+    fn add(&mut self, command: Command) -> bool {
         self.list.retain(|other| !alike(*other, command));
-        debug_assert!(self.list.len() < ARMED_MAX, "there are fewer kinds");
-        self.list.push(command);
+        let room = self.list.len() < ARMED_MAX;
+        if room {
+            self.list.push(command);
+        }
+        room
     }
 
     fn take(&mut self) -> Option<Command> {
@@ -45,7 +48,16 @@ impl Armed {
 }
 
 fn alike(one: Command, other: Command) -> bool {
-    begins_a_song(one) && begins_a_song(other) || discriminant(&one) == discriminant(&other)
+    match (one, other) {
+        (Command::Inflect { key, .. }, Command::Inflect { key: other, .. }) => key == other,
+        (Command::Turn(name), Command::Turn(other)) => name == other,
+        (Command::BlackKey(name), Command::BlackKey(other)) => {
+            name.pitch_class() == other.pitch_class()
+        }
+        _ => {
+            begins_a_song(one) && begins_a_song(other) || discriminant(&one) == discriminant(&other)
+        }
+    }
 }
 
 fn begins_a_song(command: Command) -> bool {
@@ -58,6 +70,13 @@ fn begins_a_song(command: Command) -> bool {
         Command::Pitch { .. }
         | Command::Transpose(_)
         | Command::Plain
+        | Command::Inflect { .. }
+        | Command::InflectHome
+        | Command::Turn(_)
+        | Command::BlackKey(_)
+        | Command::Tonic { .. }
+        | Command::TonicNextKey(_)
+        | Command::TonicHome
         | Command::Home
         | Command::Ask(_)
         | Command::Panic
@@ -77,7 +96,9 @@ impl Engine {
             self.out.counters.ignored += 1;
             return;
         }
-        self.armed.add(command);
+        if !self.armed.add(command) {
+            self.out.counters.ignored += 1;
+        }
         self.when_quiet(now);
     }
 

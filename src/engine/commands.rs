@@ -5,8 +5,7 @@ use super::channel::{Rest, UNSAID};
 use super::dialect::on_members;
 use super::plan::SynthId;
 use super::synth::PEDALS;
-use super::traffic::{Command, Nudge, Onset, Weight};
-use crate::limits::NUDGE_MAX_CENTS;
+use super::traffic::{Command, Onset, Weight};
 use crate::midi::{controller, status};
 use crate::pitch::word::Bend;
 use crate::pitch::{Interval, Pitch};
@@ -65,12 +64,22 @@ impl Engine {
                 Some(place) => self.begin_song(now, place),
                 None => self.out.counters.ignored += 1, // never wraps
             },
-            Command::Pitch { to, held_too } => self.nudge_pitch(now, to, held_too),
-            Command::Transpose(keys) => self.transposed = keys,
-            Command::Plain => self.plain = !self.plain,
+            Command::Pitch { .. }
+            | Command::Transpose(_)
+            | Command::Plain
+            | Command::Inflect { .. }
+            | Command::InflectHome
+            | Command::Turn(_)
+            | Command::BlackKey(_)
+            | Command::Tonic { .. } => self.latch_told(now, command),
+            Command::TonicHome => {
+                self.next_key = None;
+                self.latch_told(now, command);
+            }
+            Command::TonicNextKey(by) => self.wait_for_key(by, None),
             Command::Home => self.begin_again(now, self.song),
             Command::Fresh => {
-                self.nudge = Interval::ZERO;
+                self.latched.nudge = Interval::ZERO;
                 self.armed.clear();
                 self.begin_again(now, 0);
             }
@@ -96,7 +105,8 @@ impl Engine {
     }
 
     fn begin_again(&mut self, now: Time, place: usize) {
-        self.plain = false;
+        self.latched.plain = false;
+        self.held.clear();
         self.begin_song(now, place);
     }
 
@@ -105,22 +115,11 @@ impl Engine {
         self.transposed.unwrap_or(self.playing.transpose_keys)
     }
 
-    fn nudge_pitch(&mut self, now: Time, to: Nudge, held_too: bool) {
-        let nudge = match to {
-            Nudge::By(further) => self.nudge + further,
-            Nudge::To(pitch) => pitch - self.playing.reference,
-            Nudge::Home => Interval::ZERO,
-        };
-        if nudge.abs() > Interval::from_cents(NUDGE_MAX_CENTS) {
-            self.out.counters.ignored += 1;
-            return;
-        }
-        self.nudge = nudge;
-        if held_too {
-            for index in 0..self.plan.synths.len() {
-                for channel in self.synths[index].rig.members.iter() {
-                    self.move_held(now, self.synths[index].id, channel);
-                }
+    /// Brings all that is held to where the nudge puts it.
+    pub(super) fn move_all_held(&mut self, now: Time) {
+        for index in 0..self.plan.synths.len() {
+            for channel in self.synths[index].rig.members.iter() {
+                self.move_held(now, self.synths[index].id, channel);
             }
         }
     }

@@ -107,11 +107,15 @@ impl Engine {
 
     /// Runs the cues on a gesture.
     pub(super) fn cue(&mut self, now: Time, hand: Hand, heard: Heard) {
+        if let Heard::Up(gesture) = heard {
+            self.let_go_of(now, hand, gesture);
+            self.end_wait(|by, with, held| held && (by, with) == (hand, gesture));
+        }
         let length = self.press(now, hand, heard);
         for index in 0..self.plan.cues.len() {
             let cue = self.plan.cues[index];
-            if self.is_for(&cue, hand, heard) && fires(cue.press, heard, length) {
-                self.fire(now, &cue, heard);
+            if self.is_for(&cue, hand, heard) && fires(&cue, heard, length) {
+                self.fire(now, hand, &cue, heard);
             }
         }
     }
@@ -153,13 +157,13 @@ impl Engine {
             for index in 0..self.plan.cues.len() {
                 let cue = self.plan.cues[index];
                 if matches!(cue.press, Press::Long(_)) && self.is_for(&cue, hand, heard) {
-                    self.fire(now, &cue, heard);
+                    self.fire(now, hand, &cue, heard);
                 }
             }
         }
     }
 
-    fn fire(&mut self, now: Time, cue: &CuePlan, heard: Heard) {
+    fn fire(&mut self, now: Time, hand: Hand, cue: &CuePlan, heard: Heard) {
         let command = match (cue.act, heard) {
             (Act::Command(command), _) => command,
             (Act::SongByProgram, Heard::Program(number)) => Command::Song(number as u16),
@@ -168,7 +172,11 @@ impl Engine {
                 return;
             }
         };
-        if cue.at_quiet {
+        if let Command::TonicNextKey(by) = command {
+            self.wait_for_key(by, Some((cue, hand)));
+        } else if cue.held {
+            self.hold(now, hand, cue.gesture, command);
+        } else if cue.at_quiet {
             self.arm(now, command);
         } else {
             self.command(now, command);
@@ -184,8 +192,10 @@ impl Engine {
 }
 
 /// Where a control has a long press too, a short one is only known when it is let go.
-fn fires(press: Press, heard: Heard, length: Length) -> bool {
-    match (press, heard) {
+fn fires(cue: &CuePlan, heard: Heard, length: Length) -> bool {
+    match (cue.press, heard) {
+        (_, Heard::Down(_)) if cue.held => true,
+        (_, _) if cue.held => false,
         (_, Heard::Program(_)) => true,
         (Press::Down, Heard::Down(_)) => length == Length::Any,
         (Press::Down, Heard::Up(_)) => length == Length::Short,

@@ -59,6 +59,10 @@ impl Engine {
         let is_heard = keyboard.channels.has(channel);
         if let Message::NoteOff { key, velocity, .. } = message {
             self.source(hand).keys &= !(1 << key);
+            self.note_silence(now);
+            if self.named_by_key(hand, key) {
+                return self.when_quiet(now);
+            }
             if self.is_open(hand, key) {
                 // Whatever a new plan says of this key or channel, a note that was started is ended.
                 let key = Key::new(key).expect("MIDI keys are 0-127");
@@ -81,6 +85,12 @@ impl Engine {
     }
 
     fn gesture_in(&mut self, now: Time, hand: Hand, message: Message<'_>) {
+        let key = |key| Key::new(key).expect("MIDI keys are 0-127");
+        if let Message::NoteOn { key: k, .. } = message
+            && self.names_by_key(now, hand, key(k))
+        {
+            return;
+        }
         if let Some(heard) = self.heard(hand, message) {
             let taken = self.takes(hand, heard);
             if !taken {
@@ -92,11 +102,13 @@ impl Engine {
             }
         }
         self.pass_drums(hand, message);
-        let key = |key| Key::new(key).expect("MIDI keys are 0-127");
         match message {
             Message::NoteOn {
                 key: k, velocity, ..
-            } => self.key_down(now, hand, key(k), velocity),
+            } => {
+                self.follow_line(now, hand, key(k));
+                self.key_down(now, hand, key(k), velocity);
+            }
             Message::NoteOff {
                 key: k, velocity, ..
             } => self.key_up(now, hand, key(k), velocity),
@@ -198,6 +210,8 @@ impl Engine {
         let index = id.index();
         self.keyboards[index].splitter.reset();
         self.presses.forget(|hand| hand.keyboard == id);
+        self.end_wait(|hand, _, _| hand.keyboard == id);
+        self.let_go_of_hands(now, |hand| hand.keyboard == id);
         self.release_keyboard(now, id);
         for channel in 0..16 {
             let hand = Hand {
@@ -208,6 +222,7 @@ impl Engine {
         }
         let wheel = wheel_semitones(&self.plan, self.plays_as(id));
         self.keyboards[index].let_go(wheel);
+        self.note_silence(now);
         self.when_quiet(now);
     }
 

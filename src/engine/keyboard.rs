@@ -29,6 +29,8 @@ pub(super) struct Source {
     pub pedals: [u8; 4],
     /// Keys that are down, whether they sound or not; those that cues take away are no playing. Bit 0 = key 0.
     pub keys: u128,
+    /// Keys that are down and only named something. Bit 0 = key 0.
+    pub named: u128,
     pub select: Select,
     pub data_msb: u8,
     /// CC88, for the next note.
@@ -57,6 +59,7 @@ impl Source {
             pressure: 0,
             pedals: [0; PEDALS.len()],
             keys: 0,
+            named: 0,
             select: Select::Nothing,
             data_msb: 0,
             velocity_low: None,

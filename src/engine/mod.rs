@@ -8,6 +8,7 @@
 
 mod armed;
 mod beforehand;
+mod by_hand;
 mod channel;
 mod choose;
 mod commands;
@@ -15,7 +16,11 @@ mod controls;
 mod cues;
 mod dialect;
 mod hearing;
+mod held;
 mod keyboard;
+mod lasting;
+mod line;
+mod next_key;
 mod notes;
 mod outbox;
 mod parameters;
@@ -29,15 +34,23 @@ mod voices;
 mod wire;
 
 pub use plan::{KeyboardId, PartId, Plan, SynthId};
-pub use traffic::{Ask, Command, Counters, Input, Link, Nudge, Onset, Output, Report, Weight};
+pub use traffic::{
+    Ask, Command, Counters, InflectTo, Inflected, Input, Link, Nudge, Onset, Output, Place, Report,
+    TonicBy, Weight,
+};
 
 use crate::limits::{KEYBOARDS_MAX, PARTS_MAX, SYNTHS_MAX};
 use crate::pitch::{Interval, Pitch};
 use crate::time::Time;
 use crate::tuning::Tuning;
 use armed::Armed;
+use by_hand::ByHand;
 use cues::Presses;
+use held::Held;
 use keyboard::{Keyboard, Source};
+use lasting::Lasting;
+use line::Line;
+use next_key::Wait;
 use outbox::Outbox;
 use part::Part;
 use plan::{PartPlan, SongPlan};
@@ -54,12 +67,18 @@ pub struct Engine {
     song: usize,
     /// Its own settings, copied, so that they outlive the plan they came from.
     playing: Playing,
-    /// Over all songs.
+    /// What was told for good, what cues hold on top of it, and what is so in force.
+    latched: Lasting,
+    held: Held,
+    in_force: Lasting,
+    /// Of what is in force. Over all songs.
     nudge: Interval,
     /// In place of the song's own.
     transposed: Option<i8>,
     /// Twelve-equal, whatever the song says.
     plain: bool,
+    line: Line,
+    next_key: Option<Wait>,
     keyboards: Vec<Keyboard>,
     parts: Vec<Part>,
     synths: Vec<Synth>,
@@ -75,7 +94,11 @@ pub struct Engine {
 
 /// What of a song decides pitch.
 struct Playing {
+    /// In force: what was told by hand is in it.
     tuning: Tuning,
+    /// As the song begins.
+    rest: Tuning,
+    by_hand: ByHand,
     reference: Pitch,
     transpose_keys: i8,
 }
@@ -84,6 +107,8 @@ impl Playing {
     fn of(song: &SongPlan) -> Playing {
         Playing {
             tuning: (*song.tuning).clone(), // an array: no heap
+            rest: (*song.tuning).clone(),
+            by_hand: (*song.by_hand).clone(), // arrays too
             reference: song.reference,
             transpose_keys: song.transpose_keys,
         }
@@ -121,9 +146,16 @@ impl Engine {
         let synths = (0..SYNTHS_MAX)
             .map(|index| Synth::new(SynthId::new(index).expect("within limits"), rig(index)))
             .collect();
-        Engine {
+        let playing = Playing::of(&plan.set[0]);
+        let lasting = Lasting::new(&playing.by_hand);
+        let mut engine = Engine {
             song: 0,
-            playing: Playing::of(&plan.set[0]),
+            playing,
+            latched: lasting,
+            held: Held::new(),
+            in_force: lasting,
+            line: Line::new(),
+            next_key: None,
             nudge: Interval::ZERO,
             transposed: None,
             plain: false,
@@ -139,7 +171,9 @@ impl Engine {
             stepped_at: None,
             stopping: false,
             plan,
-        }
+        };
+        engine.begin_told();
+        engine
     }
 
     /// Cannot fail; bad bytes are counted.
@@ -207,6 +241,7 @@ impl Engine {
 
     pub fn report(&self) -> Report {
         let mut synths = self.synths.iter().take(self.plan.synths.len());
+        let (tonic, tonic_from_home) = self.tonic_in_force();
         Report {
             song: self.song as u16,
             armed_song: self.armed_song(),
@@ -215,6 +250,13 @@ impl Engine {
             transpose_keys: self.transpose_keys(),
             transposed: self.transposed,
             plain: self.plain,
+            tonic,
+            tonic_moved: self.in_force.tonic.is_some(),
+            tonic_from_home,
+            waits_for_key: self.next_key.is_some(),
+            places: self.in_force.shown(),
+            alone: self.in_force.shown_alone(),
+            second_names: self.second_names(),
             voices: self.voices.len() as u16,
             counters: self.out.counters,
             stopped: self.stopping && synths.all(|synth| synth.left || !synth.up),

@@ -1,5 +1,6 @@
 //! The compiled stage file, ready to play. Built by `stage/`, played by the engine, changed by nobody.
 
+pub use super::by_hand::{ByHand, ByLine, NameId, OtherPlace, TurnStep, TwoNames};
 use crate::intonation::Method;
 use crate::limits::{KEYBOARDS_MAX, PARTS_MAX, SYNTHS_MAX};
 use crate::pitch::word::BendRange;
@@ -205,6 +206,8 @@ pub struct SongPlan {
     pub reference: Pitch,
     pub transpose_keys: i8,
     pub method: Method,
+    /// What can be changed of it by hand; shared as the tuning is.
+    pub by_hand: Arc<ByHand>,
     /// Whole messages given to a synth when the song begins, once no key is held, as if a player of it had sent them:
     /// their own channel is ignored, the synth's parts spread them as they do a player's.
     pub sends: Vec<(SynthId, Box<[u8]>)>,
@@ -219,6 +222,8 @@ pub struct CuePlan {
     pub gesture: Gesture,
     pub press: Press,
     pub act: Act,
+    /// What it does lasts as long as the control is down.
+    pub held: bool,
     /// Armed on the gesture, in force once every key and pedal of every keyboard is up.
     pub at_quiet: bool,
     /// The message also goes on to the synth.

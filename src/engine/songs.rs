@@ -21,8 +21,8 @@ impl Engine {
         };
         self.song = place;
         self.playing = Playing::of(song);
-        self.transposed = None;
         self.sends_due = !song.sends.is_empty();
+        self.begin_told();
         for synth in self.synths.iter_mut().take(self.plan.synths.len()) {
             synth.repeat_when_silent = true;
         }
@@ -95,7 +95,12 @@ impl Engine {
         self.song = place.unwrap_or(self.song.min(self.plan.set.len() - 1));
         if place.is_none() || self.plan.edits_at_once {
             self.playing = Playing::of(&self.plan.set[self.song]);
+            if place.is_none() {
+                self.begin_told();
+            }
+            self.retell();
         }
+        self.let_go_of_edited(now);
         for index in 0..self.plan.synths.len() {
             let rig = Rig::of(&self.plan.synths[index]);
             let synth = &mut self.synths[index];

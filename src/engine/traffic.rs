@@ -1,8 +1,9 @@
 //! What goes into the engine and what comes out: closed lists.
 
+use super::by_hand::NameId;
 use super::plan::{KeyboardId, PartId, SynthId};
 use crate::pitch::{Interval, Pitch};
-use crate::tuning::Key;
+use crate::tuning::{Key, Letter};
 
 /// One thing that happened.
 #[derive(Clone, Copy, Debug)]
@@ -60,6 +61,26 @@ pub enum Command {
     Transpose(Option<i8>),
     /// Twelve-equal at the evening's reference; the second time back again. Outlasts songs.
     Plain,
+    /// A place for a key, from the next note on.
+    Inflect {
+        key: Inflected,
+        to: InflectTo,
+    },
+    /// Every key at its place in the tuning.
+    InflectHome,
+    /// The places of several keys under one name.
+    Turn(NameId),
+    /// A black key that stands for two notes is this one from the next note on.
+    BlackKey(Letter),
+    /// Step 0 on another key.
+    Tonic {
+        to: Letter,
+        by: TonicBy,
+    },
+    /// The same for the next key that goes down.
+    TonicNextKey(TonicBy),
+    /// Back to the song's own.
+    TonicHome,
     /// The song as it begins, not plain. The pitch nudge stays.
     Home,
     /// As if started anew: the first song, and nothing left of what was nudged, moved or armed.
@@ -85,6 +106,49 @@ pub enum Nudge {
     /// As far as brings the reference of the song now playing here.
     To(Pitch),
     Home,
+}
+
+/// Which keys take another place.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Inflected {
+    /// A pitch class, in all octaves.
+    Everywhere(u8),
+    Alone(Key),
+}
+
+impl Inflected {
+    pub fn pitch_class(self) -> u8 {
+        match self {
+            Inflected::Everywhere(pitch_class) => pitch_class,
+            Inflected::Alone(key) => key.pitch_class(),
+        }
+    }
+}
+
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum InflectTo {
+    Place(Place),
+    /// So much from wherever it stands.
+    By(Interval),
+}
+
+/// Where a key stands in its tuning.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Place {
+    Home,
+    Named(NameId),
+}
+
+/// What keeps its pitch when the tonic moves.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub enum TonicBy {
+    /// The reference.
+    #[default]
+    Absolute,
+    /// The new tonic, where it sounds now.
+    Pivot,
+    /// Nothing: the new tonic takes its place in equal temperament.
+    Equal,
 }
 
 /// What a player asks of whoever looks after the daemon.
@@ -191,9 +255,39 @@ pub struct Report {
     pub transposed: Option<i8>,
     /// Twelve-equal, whatever the song says.
     pub plain: bool,
+    /// The key of the tonic in force; `None` where the tuning goes by letter.
+    pub tonic: Option<Letter>,
+    /// It was moved by hand.
+    pub tonic_moved: bool,
+    /// How far it stands from where the reference would put it.
+    pub tonic_from_home: Interval,
+    /// The next key names a tonic.
+    pub waits_for_key: bool,
+    /// By pitch class: the place of its keys, and how far they were nudged from it.
+    pub places: [(Place, Interval); 12],
+    /// Pitch classes some of whose keys go alone, one bit each.
+    pub alone: u16,
+    /// By pitch class: black keys that are the second of their two names.
+    pub second_names: [Option<Letter>; 12],
     /// Keys held (voices whose note-off is still to come).
     pub voices: u16,
     pub counters: Counters,
     /// After `Command::Stop`: everything has been said.
     pub stopped: bool,
+}
+
+impl Report {
+    /// Keys that are not at home, with their place and how far they were nudged from it.
+    pub fn off_home(&self) -> impl Iterator<Item = (Letter, Place, Interval)> {
+        let keys = self.places.iter().enumerate();
+        keys.filter(|(_, (place, nudge))| *place != Place::Home || *nudge != Interval::ZERO)
+            .map(|(key, (place, nudge))| (Letter::usual(key as u8), *place, *nudge))
+    }
+
+    /// Keys of which some octave goes alone.
+    pub fn go_alone(&self) -> impl Iterator<Item = Letter> {
+        (0..12u8)
+            .filter(|key| self.alone >> key & 1 == 1)
+            .map(Letter::usual)
+    }
 }

@@ -1,37 +1,56 @@
 //! `black_keys`: what the black keys are called, and over a chain of fifths which place each begins at.
 
-use super::advice::Findings;
 use super::complaint::Complaints;
 use super::node::{At, Node};
+use crate::engine::plan::TwoNames;
+use crate::pitch::Log;
 use crate::tuning::{Letter, Scale};
 
-/// Reads the list, and gives each key its first name and what goes with it.
-pub fn read(at: &At<'_>, scale: &mut Scale, turned_to: Option<Letter>, found: &mut Findings) {
+/// Reads the list, and gives each key its first name and what goes with it. Back come those with two names, by pitch class.
+pub fn read(
+    at: &At<'_>,
+    scale: &mut Scale,
+    turned_to: Option<Letter>,
+    complaints: &mut Complaints,
+) -> [Option<TwoNames>; 12] {
+    let mut two_names = [None; 12];
     let mut seen = [false; 12];
     for item in at.items() {
-        let Some((first, second)) = names_of(&item, &mut found.complaints) else {
+        let Some((first, second)) = names_of(&item, complaints) else {
             continue;
         };
         if std::mem::replace(&mut seen[first.pitch_class() as usize], true) {
-            found.complaints.add(
+            complaints.add(
                 &item.trail,
                 format!("the key {first} stands here twice"),
                 "name each black key once, and both its names together: `G# or Ab`",
             );
             continue;
         }
+        let mut apart = Log::ZERO;
         if let Scale::ByLetter(by_letter) = scale {
             // Names are those of the keys as turned, the scale is not turned yet.
             let home = by_letter.names[by_letter.home as usize];
             let along = turned_to.map_or(0, |letter| letter.place() - home.place());
-            if let Some(name) = Letter::on_line(first.place() - along) {
+            let unturned = |name: Letter| Letter::on_line(name.place() - along);
+            if let Some(name) = unturned(first) {
                 *by_letter = by_letter.renamed(name);
+                let second_place = second
+                    .and_then(unturned)
+                    .and_then(|name| by_letter.place_of_name(name));
+                let first_place = by_letter.places[name.pitch_class() as usize];
+                apart = second_place
+                    .zip(first_place)
+                    .map_or(Log::ZERO, |(second, first)| second - first);
             }
         }
-        if second.is_some() {
-            found.not_played("flipping `black_keys` between two names");
-        }
+        two_names[first.pitch_class() as usize] = second.map(|second| TwoNames {
+            first,
+            second,
+            apart: apart.interval(),
+        });
     }
+    two_names
 }
 
 /// Over a scale from the tonic the list only says what the keys are called.

@@ -7,6 +7,7 @@ use super::node::{At, Fields, Node};
 use super::resolve::Names;
 use super::rig::{self, Rig, Sections};
 use super::songs::{self, Desk, Entry};
+use super::told::Told;
 use super::tunings::{Library, Reference};
 use super::values::choice;
 use super::{Stage, cues, defaults, lamps, placing, pools, slips};
@@ -28,6 +29,7 @@ struct Rest {
     entries: Vec<Entry>,
     parts: Vec<PartPlan>,
     cues: Vec<CuePlan>,
+    told: Told,
     advice: Vec<String>,
     files: Vec<PathBuf>,
     texts: Vec<String>,
@@ -67,11 +69,12 @@ fn read(path: &Path, top: &At<'_>, found: &mut Findings) -> Option<Stage> {
         programs_from: evening.programs_from,
         found,
         placed: Vec::new(),
-        used: Vec::new(),
+        by_hand: Vec::new(),
+        told: Told::default(),
         titles: Vec::new(),
     };
     let entries = songs::read(book.as_ref(), set.as_ref(), top, &mut desk);
-    let (used, titles) = (desk.used, desk.titles);
+    let (told, titles) = (desk.told, desk.titles);
     let scene = Scene {
         rig: &rig,
         names: Names {
@@ -80,14 +83,12 @@ fn read(path: &Path, top: &At<'_>, found: &mut Findings) -> Option<Stage> {
                 .map(|synth| synth.device.name.as_str())
                 .collect(),
             references: (entries.iter()).map(|entry| entry.plan.reference).collect(),
+            told: &told,
         },
-        tunings: &used,
         programs_from: evening.programs_from,
     };
-    let cues = match fields.take("cues") {
-        Some(at) => cues::read(&at, &scene, found),
-        None => Vec::new(),
-    };
+    let cues = fields.take("cues");
+    let cues = cues.map_or_else(Vec::new, |at| cues::read(&at, &scene, found));
     if let Some(at) = fields.take("lamps") {
         lamps::check(&at, &scene, found);
     }
@@ -104,6 +105,7 @@ fn read(path: &Path, top: &At<'_>, found: &mut Findings) -> Option<Stage> {
         entries,
         parts,
         cues,
+        told,
         advice: std::mem::take(&mut found.advice),
         files,
         texts,
@@ -129,6 +131,7 @@ fn assemble(evening: Evening, rig: Rig, rest: Rest) -> Stage {
         advice: rest.advice,
         files: rest.files,
         texts: rest.texts,
+        told: rest.told,
         plan: Plan {
             keyboards: keyboard_plans,
             synths: synth_plans,

@@ -94,37 +94,85 @@ fn cue(
             None
         }
     };
-    let quiet = fields
-        .take("at")
-        .and_then(|at| choice(&at, &AT, &mut found.complaints));
-    let held = fields
-        .take("while")
-        .and_then(|at| choice(&at, &[("held", true)], &mut found.complaints));
+    let quiet = fields.take("at");
+    let quiet = quiet.and_then(|at| choice(&at, &AT, &mut found.complaints));
+    let held_at = fields.take("while");
+    let held = held_at.as_ref();
+    let held = held.and_then(|at| choice(at, &[("held", true)], &mut found.complaints));
     let pass = fields
         .take("pass")
         .and_then(|at| at.flag(&mut found.complaints));
     fields.finish(&mut found.complaints);
     let (when, words) = (when?, words?);
-    let mut unplayed = Vec::new();
-    unplayed.extend(held.map(|_| "`while: held`"));
+    if let Some(at) = held_at.filter(|_| held == Some(true)) {
+        check_held(&at, &when, &words, quiet, &mut found.complaints);
+    }
     let act = act(&words, scene);
-    unplayed.extend(act.is_none().then_some("what it does"));
-    for what in &unplayed {
-        found.not_played(format!("cue {number}: {what}"));
+    if act.is_none() {
+        found.not_played(format!("cue {number}: what it does"));
     }
-    if let Some(line) = unheard(&when, number, scene) {
-        found.advise(line);
-    }
-    let plan = act.filter(|_| unplayed.is_empty()).map(|act| CuePlan {
+    let worth_knowing = [
+        unheard(&when, number, scene),
+        unmoved(&words, number, scene),
+    ];
+    worth_knowing
+        .into_iter()
+        .flatten()
+        .for_each(|line| found.advise(line));
+    let plan = act.map(|act| CuePlan {
         from: when.from,
         channels: when.channels,
         gesture: when.gesture,
         press: when.press,
         act,
+        held: held.unwrap_or(false),
         at_quiet: quiet.unwrap_or(false),
         pass: pass.unwrap_or(false),
     });
     Some((when, plan))
+}
+
+/// A tonic to be moved where no tuning has one.
+fn unmoved(words: &Words, number: usize, scene: &Scene<'_>) -> Option<String> {
+    (matches!(words, Words::Tonic { .. }) && !scene.names.told.tonics).then(|| {
+        format!(
+            "cue {number} moves the tonic, and tonight's tunings all go by letter: their keys keep their pitches"
+        )
+    })
+}
+
+/// Complains of a cue that cannot be `while: held`.
+fn check_held(
+    at: &At<'_>,
+    when: &When,
+    words: &Words,
+    quiet: Option<bool>,
+    complaints: &mut Complaints,
+) {
+    let (wrong, right) = if let Gesture::AnyProgram | Gesture::Program(_) = when.gesture {
+        (
+            "a program change cannot be held",
+            "take a note, a controller or a pedal",
+        )
+    } else if when.press != Press::Down {
+        (
+            "what is held lasts from the press to the release",
+            "leave `press` out",
+        )
+    } else if quiet == Some(true) {
+        (
+            "what is held cannot wait for quiet",
+            "leave `at: quiet` or `while: held` out",
+        )
+    } else if !words.can_be_held() {
+        (
+            "this is over in a moment, and cannot be held",
+            "leave `while` out, or hold what lasts, as in `inflect B natural`",
+        )
+    } else {
+        return;
+    };
+    complaints.add(&at.trail, wrong, right);
 }
 
 /// A gesture on channels where no keyboard of the cue is listened to.

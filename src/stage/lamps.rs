@@ -68,6 +68,7 @@ fn lasts(words: &Words) -> bool {
         | Words::Tonic { .. }
         | Words::TonicHome
         | Words::Inflect { .. }
+        | Words::InflectBy { .. }
         | Words::InflectHome
         | Words::Turn(_)
         | Words::BlackKey(_)

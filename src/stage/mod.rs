@@ -35,6 +35,7 @@ pub mod shipped;
 mod slips;
 mod songs;
 mod synth;
+mod told;
 pub mod tunings;
 mod values;
 #[cfg(unix)]
@@ -42,6 +43,7 @@ pub mod watch;
 pub mod words;
 mod yaml_errors;
 
+use crate::engine::plan::NameId;
 use crate::engine::{Command, Plan};
 use crate::tuning::{Letter, Placement, Scale, Tuning};
 use complaint::{Complaint, Complaints};
@@ -49,6 +51,7 @@ use expression::Mistake;
 use resolve::{Names, Refusal};
 use std::path::{Path, PathBuf};
 use std::sync::Arc;
+use told::Told;
 use words::Words;
 
 /// An evening that cannot be wrong: rig, tunings, set, cues, all checked.
@@ -64,6 +67,7 @@ pub struct Stage {
     pub files: Vec<PathBuf>,
     /// What stood in them, in the same order.
     pub texts: Vec<String>,
+    told: Told,
     plan: Plan,
 }
 
@@ -154,6 +158,7 @@ impl Stage {
                 .map(|synth| synth.name.as_str())
                 .collect(),
             references: self.plan.set.iter().map(|song| song.reference).collect(),
+            told: &self.told,
         };
         names.resolve(words).map_err(|refusal| match refusal {
             Refusal::Wrong(mistake) => mistake,
@@ -162,6 +167,11 @@ impl Stage {
                 right: format!("it plays {}", resolve::PLAYED),
             },
         })
+    }
+
+    /// What the places of keys are called that the engine reports.
+    pub fn place_names(&self) -> Vec<(NameId, String)> {
+        self.told.place_names()
     }
 
     /// A plan for the live engine.

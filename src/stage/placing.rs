@@ -8,6 +8,7 @@ use super::node::{At, Fields, Node};
 use super::songs::Desk;
 use super::tunings::{Reference, TuningText};
 use super::values::{self, choice, key, letter};
+use crate::engine::plan::TwoNames;
 use crate::pitch::{Hertz, Log};
 use crate::tuning::{Key, Letter, Pin, Placement, Scale, TuneError, Tuning};
 use std::sync::Arc;
@@ -92,7 +93,15 @@ fn pitch_map(at: &At<'_>, complaints: &mut Complaints) -> Option<Reference> {
     Some((reference?, hertz?, pin?))
 }
 
-type Placed = (Scale, Placement, Arc<Tuning>, [Letter; 12]);
+/// A tuning put on the keys.
+pub struct Placed {
+    pub scale: Scale,
+    pub placement: Placement,
+    pub tuning: Arc<Tuning>,
+    pub names: [Letter; 12],
+    /// By pitch class.
+    pub two_names: [Option<TwoNames>; 12],
+}
 
 /// Takes `pitch`, `tonic`, `turned_to`, `black_keys` and `by_chord`, and puts the tuning there.
 pub fn read(
@@ -120,9 +129,10 @@ pub fn read(
     let complaints = &mut desk.found.complaints;
     let tonic = tonic(tonic_at.as_ref(), &scale, &described.name, complaints);
     let turned_to = turned_to(turned_at.as_ref(), &scale, &described.name, complaints);
-    if let Some(at) = &black_at {
-        black_keys::read(at, &mut scale, turned_to, desk.found);
-    }
+    let two_names = match &black_at {
+        Some(at) => black_keys::read(at, &mut scale, turned_to, &mut desk.found.complaints),
+        None => [None; 12],
+    };
     // Not written at all is one thing (the tuning may bring its own), written wrong is another.
     let reference = match reference {
         Some(written) => Some(written?),
@@ -135,7 +145,13 @@ pub fn read(
     }
     let place = pitch_at.as_ref().unwrap_or(song);
     let tuning = put(&scale, &placement, &described.name, place, desk)?;
-    Some((scale, placement, tuning, names))
+    Some(Placed {
+        scale,
+        placement,
+        tuning,
+        names,
+        two_names,
+    })
 }
 
 /// Puts a scale on the keys, or hands out what another song has put there already.

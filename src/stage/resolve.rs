@@ -2,16 +2,17 @@
 
 use super::expression::Mistake;
 use super::node::nearest;
+use super::told::Told;
 use super::values::one_of;
-use super::words::{PitchNudge, Words};
+use super::words::{PitchNudge, TonicMove, Words};
 use crate::engine::plan::SynthId;
-use crate::engine::{Ask, Command, Nudge};
-use crate::limits::NUDGE_MAX_CENTS;
-use crate::pitch::{Interval, Pitch};
+use crate::engine::{Ask, Command, InflectTo, Nudge, Place};
+use crate::limits::{INFLECT_MAX_CENTS, NUDGE_MAX_CENTS};
+use crate::pitch::{Interval, Log, Pitch};
 
 /// The words that are played.
-pub const PLAYED: &str =
-    "next, back, song, pitch, transpose, plain, home, resend, panic, fresh, reload and stop";
+pub const PLAYED: &str = "next, back, song, pitch, transpose, tonic, inflect, turn, black-key, plain, home, resend, panic, fresh, reload and \
+     stop";
 
 /// What an evening calls its songs and synths, in their order.
 pub struct Names<'n> {
@@ -19,6 +20,7 @@ pub struct Names<'n> {
     pub synths: Vec<&'n str>,
     /// The reference of each song.
     pub references: Vec<Pitch>,
+    pub told: &'n Told,
 }
 
 /// Why words cannot be followed.
@@ -51,15 +53,30 @@ impl Names<'_> {
             Words::Fresh => Command::Fresh,
             Words::Reload => Command::Ask(Ask::Reload),
             Words::Stop => Command::Ask(Ask::Stop),
-            Words::Tonic { .. }
-            | Words::TonicHome
-            | Words::Inflect { .. }
-            | Words::InflectHome
-            | Words::Turn(_)
-            | Words::BlackKey(_)
-            | Words::Root(_)
-            | Words::Sevenths { .. }
-            | Words::Keep => return Err(Refusal::NotPlayed),
+            Words::Tonic { to, by } => match to {
+                TonicMove::To(to) => Command::Tonic { to: *to, by: *by },
+                TonicMove::NextKey => Command::TonicNextKey(*by),
+            },
+            Words::TonicHome => Command::TonicHome,
+            Words::Inflect { key, place } => Command::Inflect {
+                key: *key,
+                to: InflectTo::Place(match place.as_str() {
+                    "home" => Place::Home,
+                    name => Place::Named(self.told.place(*key, name).map_err(Refusal::Wrong)?),
+                }),
+            },
+            Words::InflectBy { key, by } => Command::Inflect {
+                key: *key,
+                to: InflectTo::By(inflect_by(*by)?),
+            },
+            Words::InflectHome => Command::InflectHome,
+            Words::Turn(name) => Command::Turn(self.told.turn(name).map_err(Refusal::Wrong)?),
+            Words::BlackKey(name) => {
+                Command::BlackKey(self.told.black_key(*name).map_err(Refusal::Wrong)?)
+            }
+            Words::Root(_) | Words::Sevenths { .. } | Words::Keep => {
+                return Err(Refusal::NotPlayed);
+            }
         })
     }
 
@@ -130,6 +147,17 @@ impl Names<'_> {
             }
         }
     }
+}
+
+fn inflect_by(by: Log) -> Result<Interval, Refusal> {
+    let by = by.interval();
+    if by.abs() <= Interval::from_cents(INFLECT_MAX_CENTS) {
+        return Ok(by);
+    }
+    Err(wrong(
+        "this moves a key by more than a semitone",
+        format!("a key goes {INFLECT_MAX_CENTS} c up or down at most, as in `inflect B +5 c`"),
+    ))
 }
 
 /// What is wrong with `song` alone, and what would be right.

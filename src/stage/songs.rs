@@ -5,10 +5,11 @@ use super::complaint::{Complaints, Trail};
 use super::node::{At, Fields, Node, nearest};
 use super::placing;
 use super::rig::{self, Rig};
+use super::told::Told;
 use super::tunings::{Library, Reference, TuningText};
 use super::{Song, defaults, intonation};
 use super::{inflections, parts};
-use crate::engine::plan::{SongPlan, SynthId};
+use crate::engine::plan::{ByHand, SongPlan, SynthId};
 use crate::limits::SONGS_MAX;
 use crate::midi::status;
 use crate::tuning::{Letter, Placement, Scale, Tuning};
@@ -31,8 +32,10 @@ pub struct Desk<'d, 'n> {
     pub found: &'d mut Findings,
     /// Tunings already put somewhere, shared by the songs that put them there again.
     pub placed: Vec<(Scale, Placement, Arc<Tuning>)>,
-    /// The tunings of all songs, each once.
-    pub used: Vec<Rc<TuningText>>,
+    /// Likewise what can be changed of a tuning by hand.
+    pub by_hand: Vec<Arc<ByHand>>,
+    /// What of it can be told by name.
+    pub told: Told,
     /// The titles of the set in their order, also of songs that are written wrong.
     pub titles: Vec<String>,
 }
@@ -267,7 +270,7 @@ fn song(
         described.as_deref(),
         desk.found,
     );
-    inflections::check(&mut fields, title, described.as_deref(), desk.found);
+    let by_hand = inflections::read(&mut fields, described.as_deref(), placed.as_ref(), desk);
     let sends = match fields.take("send") {
         Some(at) => sends(&at, desk),
         None => Vec::new(),
@@ -279,25 +282,26 @@ fn song(
             .not_played(format!("`parts` of a song of its own ({title})"));
     }
     fields.finish(&mut desk.found.complaints);
-    let (scale, placement, tuning, names) = placed?;
+    let (placed, by_hand) = (placed?, by_hand?);
     Some(Entry {
         plan: SongPlan {
             title: title.into(),
-            tuning: Arc::clone(&tuning),
-            reference: placement.hertz.pitch(),
+            tuning: Arc::clone(&placed.tuning),
+            reference: placed.placement.hertz.pitch(),
             transpose_keys,
             method,
+            by_hand,
             sends,
         },
         song: Song {
             title: title.to_string(),
             tuning_name,
             tuning_about: described.and_then(|d| d.about.clone()),
-            scale,
-            placement,
-            tuning,
+            scale: placed.scale,
+            placement: placed.placement,
+            tuning: placed.tuning,
             in_keys,
-            names,
+            names: placed.names,
         },
     })
 }
@@ -324,11 +328,7 @@ fn tuning(
         let right = "as above: `trued chart --list` lists those there are";
         desk.found.complaints.add(&at.trail, wrong, right);
     }
-    let text = text?;
-    if !desk.used.iter().any(|used| used.name == text.name) {
-        desk.used.push(Rc::clone(&text));
-    }
-    Some(text)
+    text
 }
 
 /// `D minor`, or a list of such: moves nothing, tells which chords matter.

@@ -5,6 +5,8 @@
 use super::expression::{self, Expression, Mistake};
 use super::node::nearest;
 use super::values::{key_remedy, letter_remedy, one_of};
+use crate::engine::Inflected;
+pub use crate::engine::TonicBy;
 use crate::pitch::{Hertz, Log};
 use crate::tuning::{Key, Letter};
 
@@ -33,6 +35,11 @@ pub enum Words {
     Inflect {
         key: Inflected,
         place: String,
+    },
+    /// `inflect B +5 c`: so much from wherever it stands.
+    InflectBy {
+        key: Inflected,
+        by: Log,
     },
     InflectHome,
     Turn(String),
@@ -65,21 +72,6 @@ pub enum TonicMove {
     NextKey,
 }
 
-/// How a tonic moves: where the reference puts it, held by a common key, or by equal steps.
-#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
-pub enum TonicBy {
-    #[default]
-    Absolute,
-    Pivot,
-    Equal,
-}
-
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
-pub enum Inflected {
-    Everywhere(Letter),
-    One(Key),
-}
-
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Root {
     Hold,
@@ -101,7 +93,10 @@ const FORMS: [(&str, &str); 19] = [
         "tonic",
         "tonic D, tonic next-key or tonic home; behind a key: absolute, pivot or equal",
     ),
-    ("inflect", "inflect B half-flat, or inflect home"),
+    (
+        "inflect",
+        "inflect B half-flat (B4: that key alone), inflect B +5 c, inflect B home, or inflect home",
+    ),
     ("turn", "turn NAME, a name under `turns` in the tuning"),
     ("black-key", "black-key Ab"),
     ("root", "root hold, root free or root next-key"),
@@ -117,6 +112,34 @@ const FORMS: [(&str, &str); 19] = [
 ];
 
 impl Words {
+    /// Whether a cue can hold it: it lasts, and can be taken back. (`next` is over in a moment.)
+    pub fn can_be_held(&self) -> bool {
+        match self {
+            Words::Pitch { .. }
+            | Words::Transpose(_)
+            | Words::Tonic { .. }
+            | Words::TonicHome
+            | Words::Inflect { .. }
+            | Words::InflectBy { .. }
+            | Words::InflectHome
+            | Words::Turn(_)
+            | Words::BlackKey(_)
+            | Words::Root(_)
+            | Words::Sevenths { .. }
+            | Words::Plain => true,
+            Words::Next { .. }
+            | Words::Back
+            | Words::Song(_)
+            | Words::Home
+            | Words::Resend(_)
+            | Words::Panic
+            | Words::Fresh
+            | Words::Keep
+            | Words::Reload
+            | Words::Stop => false,
+        }
+    }
+
     /// Reads what was told.
     ///
     /// # Errors
@@ -248,15 +271,20 @@ fn inflect(rest: &str) -> Result<Option<Words>, Mistake> {
         return Ok(None);
     };
     let key = match (Letter::parse(name), Key::parse(name)) {
-        (Some(letter), _) => Inflected::Everywhere(letter),
-        (None, Some(key)) => Inflected::One(key),
+        (Some(letter), _) => Inflected::Everywhere(letter.pitch_class()),
+        (None, Some(key)) => Inflected::Alone(key),
         (None, None) => {
             return Err(mistake(format!("`{name}` is not a key"), key_remedy(name)));
         }
     };
+    let place = place.trim();
+    if place.starts_with(['+', '-']) {
+        let by = Expression::distance(place)?;
+        return Ok(Some(Words::InflectBy { key, by }));
+    }
     Ok(Some(Words::Inflect {
         key,
-        place: place.trim().to_string(),
+        place: place.to_string(),
     }))
 }
 
@@ -303,6 +331,9 @@ mod tests {
             "tonic home",
             "inflect B half-flat",
             "inflect B4 half-flat",
+            "inflect B +5 c",
+            "inflect B4 -3.5 c",
+            "inflect B home",
             "inflect home",
             "turn saba",
             "black-key Ab",

@@ -1,9 +1,13 @@
 //! What the engine promises, as small stories: a script in, a transcript out.
 
+/// Black keys that stand for two notes.
+mod black_keys;
 /// Presses, long and short; what waits until all hands are off.
 mod cues;
 /// Two runs of one script; a stream in portions.
 mod determinism;
+/// Other places of keys, latched, held and by the line.
+mod inflections;
 /// Keyboards and synths that go and come back, panic, a short outbox.
 mod lost;
 /// Mode messages, Reset All Controllers.
@@ -22,6 +26,8 @@ mod stopping;
 mod telling;
 /// Drums, system exclusive, real-time, Active Sensing, System Reset.
 mod through;
+/// The tonic moved while playing.
+mod tonic;
 /// The player's wheel and what it means.
 mod wheel;
 

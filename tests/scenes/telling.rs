@@ -353,7 +353,7 @@ fn words_that_cannot_be_followed_say_why() {
         (
             "root hold",
             "these words are understood but not played by this version",
-            "it plays next, back, song, pitch, transpose, plain, home, resend, panic, fresh, reload and stop",
+            "it plays next, back, song, pitch, transpose, tonic, inflect, turn, black-key, plain, home, resend, panic, fresh, reload and stop",
         ),
     ] {
         let parsed = Words::parse(words).expect(words);

@@ -2,7 +2,7 @@
 
 use std::sync::Arc;
 use trued::engine::plan::{
-    ChannelSet, Dialect, KeyboardPlan, Leave, PartPlan, Pass, SongPlan, Steal, SynthPlan,
+    ByHand, ChannelSet, Dialect, KeyboardPlan, Leave, PartPlan, Pass, SongPlan, Steal, SynthPlan,
 };
 use trued::engine::{Plan, SynthId};
 use trued::intonation::Method;
@@ -37,6 +37,7 @@ pub fn song(title: &str, tuning: Arc<Tuning>) -> SongPlan {
         reference: Pitch::of_key(69),
         transpose_keys: 0,
         method: Method::Fixed,
+        by_hand: Arc::new(ByHand::nothing(Key::C4)),
         sends: Vec::new(),
     }
 }

@@ -1,7 +1,7 @@
 //! The body of one tuning: exactly one form, and what may stand beside it.
 
-use super::other_places::{read_also, read_turns};
-use super::{Library, TuningText, by_letter, from_tonic, notes};
+use super::other_places::{fits, read_also, read_turns, turn};
+use super::{Library, OtherPlace, TuningText, Turn, by_letter, from_tonic, notes};
 use crate::pitch::{Hertz, Log};
 use crate::stage::complaint::Complaints;
 use crate::stage::expression::{Expression, Mistake};
@@ -64,14 +64,10 @@ pub(super) fn read(
         }
     });
     let changed = beside.change(described, complaints);
-    let (mut also, mut turns) = match &base {
-        Some(base) => (base.also.clone(), base.turns.clone()),
-        None => (Vec::new(), Vec::new()),
-    };
-    let named = read_also(beside.also.as_ref(), &mut also, complaints);
-    let turned = read_turns(beside.turns.as_ref(), &also, &mut turns, complaints);
-    (named.and(turned))?;
+    let others = beside.others_of(base.as_deref(), complaints);
     let (scale, heard_at) = changed?;
+    let (also, turns) = others?;
+    fits(beside.also.as_ref(), &scale, &also, &turns, complaints)?;
     Some(TuningText {
         name: name.to_string(),
         about,
@@ -204,6 +200,33 @@ impl<'n> Beside<'n> {
                 Some(scale?.turned(to?))
             }
         }
+    }
+
+    /// Other places and turns, those of the tuning it is built on first. What is turned turns them along.
+    fn others_of(
+        &self,
+        base: Option<&TuningText>,
+        complaints: &mut Complaints,
+    ) -> Option<(Vec<OtherPlace>, Vec<Turn>)> {
+        let (mut also, mut turns) = base.map_or_else(Default::default, |base| {
+            (base.also.clone(), base.turns.clone())
+        });
+        let named = read_also(self.also.as_ref(), &mut also, complaints);
+        let turned = read_turns(self.turns.as_ref(), &also, &mut turns, complaints);
+        named.and(turned)?;
+        // Not understood, they are complained about elsewhere.
+        let letter = |at: &Option<At<'_>>| match at.as_ref()?.node {
+            Node::Text(text) => Letter::parse(text),
+            _ => None,
+        };
+        if let Some(to) = letter(&self.turned_to) {
+            let from = match base.map(|base| &base.scale) {
+                Some(Scale::ByLetter(scale)) => scale.home,
+                _ => letter(&self.tonic).unwrap_or(Letter::C).pitch_class(),
+            };
+            turn(&mut also, &mut turns, to.pitch_class() + 12 - from);
+        }
+        Some((also, turns))
     }
 
     fn pitches(&self, at: &At<'_>, complaints: &mut Complaints) -> Option<Described> {

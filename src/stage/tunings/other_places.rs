@@ -2,9 +2,10 @@
 
 use super::body::distance_at;
 use super::{OtherPlace, Turn, by_letter};
+use crate::limits::{PLACES_MAX, TURN_STEPS_MAX};
 use crate::stage::complaint::Complaints;
 use crate::stage::node::{At, nearest};
-use crate::tuning::Letter;
+use crate::tuning::{Letter, Scale};
 
 /// `also: {E: {natural: 9/8, flat: 90 c}}`.
 pub(super) fn read_also(
@@ -75,6 +76,52 @@ pub(super) fn read_turns(
         turns.push(Turn { name, keys });
     }
     good
+}
+
+/// Moves all of them so many keys up; they then go by their usual names.
+pub(super) fn turn(also: &mut [OtherPlace], turns: &mut [Turn], keys: u8) {
+    let moved = |letter: Letter| Letter::usual(letter.pitch_class() + keys);
+    for other in also {
+        other.key = moved(other.key);
+    }
+    for (letter, _) in turns.iter_mut().flat_map(|turn| &mut turn.keys) {
+        *letter = moved(*letter);
+    }
+}
+
+/// Whether the scale has room for its other places.
+pub(super) fn fits(
+    at: Option<&At<'_>>,
+    scale: &Scale,
+    also: &[OtherPlace],
+    turns: &[Turn],
+    complaints: &mut Complaints,
+) -> Option<()> {
+    let Some(at) = at else { return Some(()) };
+    let steps: usize = turns.iter().map(|turn| turn.keys.len()).sum();
+    let (wrong, right) = if scale.keys_to_period() != 12 {
+        (
+            format!(
+                "`also` names keys by letter, and this tuning repeats after {} keys",
+                scale.keys_to_period()
+            ),
+            String::from("give it twelve keys to the period, with `keys`"),
+        )
+    } else if also.len() > PLACES_MAX {
+        (
+            format!("these are {} other places", also.len()),
+            format!("a tuning has at most {PLACES_MAX}"),
+        )
+    } else if steps > TURN_STEPS_MAX {
+        (
+            format!("the turns of this tuning name {steps} places"),
+            format!("all turns together name at most {TURN_STEPS_MAX}"),
+        )
+    } else {
+        return Some(());
+    };
+    complaints.add(&at.trail, wrong, right);
+    None
 }
 
 /// The name of a place that `also` gives to a key.

@@ -1,0 +1,100 @@
+//! Words that wait for the next key: `tonic next-key`. That key names something and is silent, unless the cue passes it on.
+
+use super::cues::Heard;
+use super::plan::{CuePlan, Gesture};
+use super::traffic::TonicBy;
+use super::{Engine, Hand};
+use crate::pitch::Interval;
+use crate::time::Time;
+use crate::tuning::{Key, Letter, Tonic};
+
+/// What the next key is for.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(super) struct Wait {
+    by: TonicBy,
+    /// The key sounds as well.
+    pass: bool,
+    /// The control it was asked by; `None` if it was told.
+    asked_by: Option<(Hand, Gesture)>,
+    /// It ends when that control is let go.
+    while_held: bool,
+}
+
+impl Engine {
+    pub(super) fn wait_for_key(&mut self, by: TonicBy, cue: Option<(&CuePlan, Hand)>) {
+        if self.playing.by_hand.turning.is_none() {
+            self.out.counters.ignored += 1;
+            return;
+        }
+        self.next_key = Some(Wait {
+            by,
+            pass: cue.is_some_and(|(cue, _)| cue.pass),
+            asked_by: cue.map(|(cue, hand)| (hand, cue.gesture)),
+            while_held: cue.is_some_and(|(cue, _)| cue.held),
+        });
+    }
+
+    /// A key goes down. Tells whether it only named something, so that it is not played.
+    pub(super) fn names_by_key(&mut self, now: Time, hand: Hand, key: Key) -> bool {
+        let Some(wait) = self.next_key else {
+            return false;
+        };
+        let gesture = Gesture::Note(key);
+        let Some(tonic) = self.as_tuned(hand, key) else {
+            return false;
+        };
+        if self.takes(hand, Heard::Down(gesture)) || wait.asked_by == Some((hand, gesture)) {
+            return false;
+        }
+        self.next_key = None;
+        if !self.latched.move_tonic(tonic, wait.by, &self.playing) {
+            self.out.counters.ignored += 1;
+        }
+        self.put_in_force(now, false);
+        if !wait.pass {
+            self.source(hand).named |= 1 << key.number();
+        }
+        !wait.pass
+    }
+
+    /// A key that only named something comes up.
+    pub(super) fn named_by_key(&mut self, hand: Hand, key: u8) -> bool {
+        let source = self.source(hand);
+        let named = source.named >> key & 1 == 1;
+        source.named &= !(1 << key);
+        named
+    }
+
+    /// The tonic in force, and how far it stands from where the reference would put it.
+    pub(super) fn tonic_in_force(&self) -> (Option<Letter>, Interval) {
+        let Some(turning) = &self.playing.by_hand.turning else {
+            return (None, Interval::ZERO);
+        };
+        let letter = |key: Key| Some(Letter::usual(key.pitch_class()));
+        let Some(tonic) = self.in_force.tonic else {
+            return (letter(turning.tonic), Interval::ZERO);
+        };
+        let sounds = |tonic: Tonic| turning.pitch(tonic, tonic.key);
+        let at_rest = turning.absolute(tonic.key).and_then(sounds);
+        let from_home = sounds(tonic)
+            .zip(at_rest)
+            .map(|(now, at_rest)| now - at_rest);
+        (letter(tonic.key), from_home.unwrap_or_default())
+    }
+
+    /// By pitch class: black keys that are the second of their two names.
+    pub(super) fn second_names(&self) -> [Option<Letter>; 12] {
+        let second = |key: usize| self.in_force.second_names >> key & 1 == 1;
+        let names = &self.playing.by_hand.black_keys;
+        std::array::from_fn(|key| names[key].filter(|_| second(key)).map(|names| names.second))
+    }
+
+    pub(super) fn end_wait(&mut self, ends: impl Fn(Hand, Gesture, bool) -> bool) {
+        if let Some(wait) = self.next_key
+            && let Some((hand, gesture)) = wait.asked_by
+            && ends(hand, gesture, wait.while_held)
+        {
+            self.next_key = None;
+        }
+    }
+}
