@@ -69,6 +69,8 @@ fn same_gesture(one: &When, other: &When) -> bool {
 
 /// When a cue takes effect; true is armed until all keys and pedals are up.
 const AT: [(&str, bool); 2] = [("quiet", true), ("now", false)];
+/// How long what a cue does lasts.
+const HELD: [(&str, ()); 1] = [("held", ())];
 
 fn cue(
     at: &At<'_>,
@@ -96,15 +98,14 @@ fn cue(
     };
     let quiet = fields.take("at");
     let quiet = quiet.and_then(|at| choice(&at, &AT, &mut found.complaints));
-    let held_at = fields.take("while");
-    let held = held_at.as_ref();
-    let held = held.and_then(|at| choice(at, &[("held", true)], &mut found.complaints));
+    let while_at = fields.take("while");
+    let held = (while_at.as_ref()).and_then(|at| choice(at, &HELD, &mut found.complaints));
     let pass = fields
         .take("pass")
         .and_then(|at| at.flag(&mut found.complaints));
     fields.finish(&mut found.complaints);
     let (when, words) = (when?, words?);
-    if let Some(at) = held_at.filter(|_| held == Some(true)) {
+    if let Some(at) = while_at.filter(|_| held.is_some()) {
         check_held(&at, &when, &words, quiet, &mut found.complaints);
     }
     let act = act(&words, scene);
@@ -125,7 +126,7 @@ fn cue(
         gesture: when.gesture,
         press: when.press,
         act,
-        held: held.unwrap_or(false),
+        held: held.is_some(),
         at_quiet: quiet.unwrap_or(false),
         pass: pass.unwrap_or(false),
     });
