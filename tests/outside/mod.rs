@@ -14,3 +14,6 @@ mod tables;
 
 /// Roots of chords, against published models and a harmony book.
 mod roots;
+
+/// Chorales in tunings that follow the chord, against published figures.
+mod adaptive;

@@ -1,23 +1,34 @@
-//! The smallest MIDI file: one track, a tick a millisecond. (Standard MIDI Files 1.0: header, variable length, end of
-//! track.)
+//! The smallest MIDI file: one track. (Standard MIDI Files 1.0: header, variable length, tempo, end of track.)
 
 use super::receiver::Stream;
 
 /// One or several whole channel messages at each time in milliseconds; times must not fall.
 pub fn midi_file(sent: &[(u64, Vec<u8>)], end_ms: u64) -> Vec<u8> {
-    let mut track = Vec::new();
-    let mut before_ms = 0;
-    for (at_ms, bytes) in sent {
+    midi_file_at(500, 500_000, sent, end_ms)
+}
+
+/// The same in ticks, so many to a quarter note that lasts so many microseconds.
+pub fn midi_file_at(
+    ticks_per_quarter: u16,
+    quarter_us: u32,
+    sent: &[(u64, Vec<u8>)],
+    end: u64,
+) -> Vec<u8> {
+    let mut track = vec![0x00, 0xFF, 0x51, 0x03];
+    track.extend(&quarter_us.to_be_bytes()[1..]);
+    let mut before = 0;
+    for (at, bytes) in sent {
         for message in Stream::default().cut(bytes) {
-            track.extend(variable_length(at_ms - before_ms));
+            track.extend(variable_length(at - before));
             track.extend(message);
-            before_ms = *at_ms;
+            before = *at;
         }
     }
-    track.extend(variable_length(end_ms - before_ms));
+    track.extend(variable_length(end - before));
     track.extend([0xFF, 0x2F, 0x00]);
-    // 500 ticks to the quarter at 120 quarters a minute, the tempo where none is given.
-    let mut out = b"MThd\0\0\0\x06\0\0\0\x01\x01\xF4MTrk".to_vec();
+    let mut out = b"MThd\0\0\0\x06\0\0\0\x01".to_vec();
+    out.extend(ticks_per_quarter.to_be_bytes());
+    out.extend(b"MTrk");
     out.extend((track.len() as u32).to_be_bytes());
     out.extend(track);
     out
