@@ -17,21 +17,23 @@ const WINDOW_NS: u64 = 8 * QUARTER_NS;
 const PURE_CENTS: f64 = 3.0;
 const SHORTEST_NS: u64 = 1_000;
 
-/// Ratios that an interval may be meant as, by semitones modulo 12; the first column's are consonances.
+type Ratios = &'static [(f64, f64)];
+
+/// What an interval may be meant as, by semitones modulo 12: consonances, others within five, others within seven.
 #[rustfmt::skip]
-const TARGETS: [(usize, &[(f64, f64)], &[(f64, f64)], &[(f64, f64)]); 12] = [
-    (0, &[(1.0, 1.0)], &[], &[]),
-    (1, &[], &[(16.0, 15.0)], &[]),
-    (2, &[], &[(9.0, 8.0), (10.0, 9.0)], &[(8.0, 7.0)]),
-    (3, &[(6.0, 5.0)], &[], &[(7.0, 6.0)]),
-    (4, &[(5.0, 4.0)], &[], &[]),
-    (5, &[(4.0, 3.0)], &[], &[]),
-    (6, &[], &[(45.0, 32.0), (64.0, 45.0)], &[(7.0, 5.0), (10.0, 7.0)]),
-    (7, &[(3.0, 2.0)], &[], &[]),
-    (8, &[(8.0, 5.0)], &[], &[]),
-    (9, &[(5.0, 3.0)], &[], &[(12.0, 7.0)]),
-    (10, &[], &[(16.0, 9.0), (9.0, 5.0)], &[(7.0, 4.0)]),
-    (11, &[], &[(15.0, 8.0)], &[]),
+const TARGETS: [[Ratios; 3]; 12] = [
+    [&[(1.0, 1.0)], &[], &[]],
+    [&[], &[(16.0, 15.0)], &[]],
+    [&[], &[(9.0, 8.0), (10.0, 9.0)], &[(8.0, 7.0)]],
+    [&[(6.0, 5.0)], &[], &[(7.0, 6.0)]],
+    [&[(5.0, 4.0)], &[], &[]],
+    [&[(4.0, 3.0)], &[], &[]],
+    [&[], &[(45.0, 32.0), (64.0, 45.0)], &[(7.0, 5.0), (10.0, 7.0)]],
+    [&[(3.0, 2.0)], &[], &[]],
+    [&[(8.0, 5.0)], &[], &[]],
+    [&[(5.0, 3.0)], &[], &[(12.0, 7.0)]],
+    [&[], &[(16.0, 9.0), (9.0, 5.0)], &[(7.0, 4.0)]],
+    [&[], &[(15.0, 8.0)], &[]],
 ];
 
 /// Which intervals count, and what they may be.
@@ -54,10 +56,12 @@ impl Purity {
     fn new() -> Purity {
         let cents = |(a, b): &(f64, f64)| 1200.0 * (a / b).log2();
         Purity(TABLES.map(|table| {
-            TARGETS.map(|(_, consonant, five, seven)| {
-                let columns = [consonant, five, seven];
-                let columns = &columns[..=table as usize];
-                columns.iter().flat_map(|c| c.iter()).map(cents).collect()
+            TARGETS.map(|columns| {
+                let counted = columns[..=table as usize].iter();
+                counted
+                    .flat_map(|ratios| ratios.iter())
+                    .map(cents)
+                    .collect()
             })
         }))
     }
