@@ -64,6 +64,8 @@ const _: () = assert!(KEYBOARDS_MAX * CHANNELS <= 128 && SYNTHS_MAX * CHANNELS <
 /// Things that can arrive at the ports between two cycles; more is read in the next one.
 pub const INBOX_ARRIVALS: usize = 1024;
 pub const INBOX_BYTES: usize = 2 * SYSEX_BYTES_MAX;
+/// Messages that callbacks have brought and that wait for the score thread.
+pub const FEED_MESSAGES: usize = 4 * 1024;
 /// Messages and bundles that can wait for one synth's port while it is full.
 pub const WAITING_ITEMS: usize = 8 * 1024;
 pub const WAITING_BYTES: usize = 4 * SYSEX_BYTES_MAX;

@@ -75,9 +75,11 @@ const CORE: &[&str] = &[
 const CRATES: &[(&str, &[&str])] = &[
     ("alsa", &["ports"]),
     ("clap", &["cli"]),
+    ("crossbeam_channel", &["ports"]),
     ("hound", &["offline"]),
     ("jack", &["ports"]),
     ("libc", &["ports", "daemon"]),
+    ("midir", &["ports"]),
     ("midly", &["offline"]),
     ("notify", &["stage"]),
     ("rtrb", &["daemon", "ports"]),

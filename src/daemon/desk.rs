@@ -196,6 +196,10 @@ impl Patch {
             .chain(synths.filter_map(|(to, own)| Some((*own, (*to)?))))
             .collect();
         self.refused = false;
+        if let Err(broken) = self.patchbay.offer(&rig.keyboards, &rig.synths) {
+            self.refused = true;
+            self.say(broken.to_string());
+        }
         for (from, to) in ways {
             // Also what we take for connected: it may have gone and come back between two looks.
             if let Err(Broken { wrong, .. }) = self.patchbay.connect(from, to) {

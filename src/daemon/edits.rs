@@ -10,8 +10,7 @@ use super::score::Slot;
 use super::socket::ClientId;
 use crate::ports::clock::Clock;
 use crate::ports::names::{Address, Choice};
-use crate::ports::system::Bell;
-use crate::ports::{Broken, Tally};
+use crate::ports::{Broken, Ring, Tally};
 use crate::time::Time;
 use std::sync::Arc;
 use std::sync::mpsc::{Receiver, Sender, channel};
@@ -36,7 +35,7 @@ pub struct Turn {
 /// Ports that were opened in place of others.
 struct Opened {
     patch: Patch,
-    bell: Bell,
+    bell: Box<dyn Ring>,
     tally: Arc<Tally>,
 }
 

@@ -6,9 +6,10 @@ use super::score::{Player, Slot};
 use crate::ports::alsa::{Alsa, desk::Desk as Sequencer};
 use crate::ports::clock::Clock;
 use crate::ports::jack::Jack;
+use crate::ports::midir::Midir;
 use crate::ports::names::{Choice, Wanted};
-use crate::ports::system::{self, Bell};
-use crate::ports::{Backend, Broken, Tally};
+use crate::ports::{Backend, Broken, Ring, Tally, system};
+use std::panic::resume_unwind;
 use std::sync::Arc;
 use tracing::info;
 
@@ -16,6 +17,7 @@ use tracing::info;
 pub enum Ports {
     Alsa(Alsa),
     Jack(Jack),
+    Midir(Midir),
 }
 
 /// Which backend is asked for.
@@ -25,6 +27,7 @@ pub enum Asked {
     Auto,
     Alsa,
     Jack,
+    Midir,
 }
 
 impl Ports {
@@ -43,6 +46,7 @@ impl Ports {
         match asked {
             Asked::Alsa => Ports::open_alsa(client_name, keyboards, synths, clock),
             Asked::Jack => Jack::open(client_name, keyboards, synths, clock).map(Ports::with_jack),
+            Asked::Midir => Ports::open_midir(rig, client_name, clock),
             Asked::Auto => {
                 let no_alsa = match Ports::open_alsa(client_name, keyboards, synths, clock) {
                     Err(broken) => broken,
@@ -97,19 +101,50 @@ impl Ports {
         (Ports::Jack(jack), patch)
     }
 
+    fn open_midir(
+        rig: &RigWanted,
+        client_name: &str,
+        clock: Clock,
+    ) -> Result<(Ports, Patch), Broken> {
+        let (keyboards, synths) = (&rig.keyboards, &rig.synths);
+        let (midir, desk) = Midir::open(client_name, keyboards, synths, clock)?;
+        let patch = Patch {
+            choice: Choice::default(),
+            keyboards: (0..keyboards.len())
+                .map(|n| desk.keyboard_address(n))
+                .collect(),
+            synths: (0..synths.len()).map(|n| desk.synth_address(n)).collect(),
+            patchbay: Box::new(desk),
+            said: Vec::new(),
+            refused: false,
+        };
+        Ok((Ports::Midir(midir), patch))
+    }
+
+    /// What it is called in `--backend` and in status.
+    pub fn name(&self) -> &'static str {
+        match self {
+            Ports::Alsa(_) => "alsa",
+            Ports::Jack(_) => "jack",
+            Ports::Midir(_) => "midir",
+        }
+    }
+
     /// The score's time.
     pub fn clock(&self) -> Clock {
         match self {
             Ports::Alsa(alsa) => alsa.clock(),
             Ports::Jack(jack) => jack.clock(),
+            Ports::Midir(midir) => midir.clock(),
         }
     }
 
     /// Ends a wait early, so that the desk's commands are looked at.
-    pub fn bell(&self) -> Bell {
+    pub fn bell(&self) -> Box<dyn Ring> {
         match self {
-            Ports::Alsa(alsa) => alsa.bell(),
-            Ports::Jack(jack) => jack.bell(),
+            Ports::Alsa(alsa) => Box::new(alsa.bell()),
+            Ports::Jack(jack) => Box::new(jack.bell()),
+            Ports::Midir(midir) => Box::new(midir.waker()),
         }
     }
 
@@ -117,16 +152,22 @@ impl Ports {
         match self {
             Ports::Alsa(alsa) => alsa.tally(),
             Ports::Jack(jack) => jack.tally(),
+            Ports::Midir(midir) => midir.tally(),
         }
     }
 
     /// Lets the calling thread, which is to play, run before all ordinary ones. Says whether it does.
     pub fn hurry(&self) -> bool {
-        if matches!(self, Ports::Jack(_)) {
+        let hurried = match self {
+            Ports::Alsa(_) => system::hurry(),
             // The server decides for the thread that it gives us, and does not tell; this one only waits.
-            return false;
-        }
-        let hurried = system::hurry();
+            Ports::Jack(_) => return false,
+            // A thread such as those that will play.
+            Ports::Midir(_) => match std::thread::spawn(system::hurry).join() {
+                Ok(hurried) => hurried,
+                Err(_) => return false,
+            },
+        };
         if let Err(error) = &hurried {
             info!("no real-time priority ({error}): notes may be late on a busy machine");
         }
@@ -141,8 +182,22 @@ impl Ports {
         match self {
             Ports::Alsa(alsa) => alsa.run(&mut Player::new(slot.clone())),
             Ports::Jack(jack) => jack.run(&|| Box::new(Player::new(slot.clone()))),
+            Ports::Midir(midir) => play_beside(midir, slot),
         }
     }
+}
+
+/// On a thread of its own that asks for priority like those of the callbacks, whatever a unit file gave to this one: a
+/// score that ran before a callback could wait for it and keep it from running.
+fn play_beside(midir: &mut Midir, slot: &Arc<Slot>) -> Result<(), Broken> {
+    std::thread::scope(|scope| {
+        let score = scope.spawn(|| {
+            // Said already, if it may not.
+            let _ = system::hurry();
+            midir.run(&mut Player::new(slot.clone()))
+        });
+        score.join().unwrap_or_else(|panic| resume_unwind(panic))
+    })
 }
 
 fn neither(no_alsa: &Broken, jack: &str) -> Broken {

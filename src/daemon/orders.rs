@@ -1,17 +1,17 @@
 //! The way from the desk to the score thread, with a count, so that the desk knows when an order has been followed.
 
 use crate::engine::Command;
-use crate::ports::system::Bell;
+use crate::ports::Ring;
 use rtrb::Producer;
 
 pub struct Orders {
     commands: Producer<Command>,
-    bell: Bell,
+    bell: Box<dyn Ring>,
     given: u64,
 }
 
 impl Orders {
-    pub fn new(commands: Producer<Command>, bell: Bell) -> Orders {
+    pub fn new(commands: Producer<Command>, bell: Box<dyn Ring>) -> Orders {
         Orders {
             commands,
             bell,
@@ -25,7 +25,7 @@ impl Orders {
     }
 
     /// The score thread waits at other ports now.
-    pub fn ring_at(&mut self, bell: Bell) {
+    pub fn ring_at(&mut self, bell: Box<dyn Ring>) {
         self.bell = bell;
     }
 

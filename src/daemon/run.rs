@@ -89,6 +89,7 @@ pub fn play(boot: Boot, evening: &Evening) -> Result<(), Trouble> {
     let done = Arc::new(AtomicBool::new(false));
     let clauses = rig.describe("is", &patch.choice, &there).join("; ");
     let mut status = Status::of(&boot.stage, &evening.name, &evening.file, score.report());
+    status.backend = ports.name().to_string();
     status.real_time = ports.hurry();
     status.resumed = resumed;
     (status.keyboards, status.synths) = rig.devices(&patch.choice, &there);

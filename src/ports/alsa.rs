@@ -242,12 +242,19 @@ fn broken(error: alsa::Error) -> Broken {
 
 /// Opens a client, after a look at the device: the library would write to stderr by itself if it is not there.
 fn open_sequencer() -> Result<Seq, Broken> {
+    look_for_sequencer()?;
+    Seq::open(None, None, true).map_err(broken)
+}
+
+/// # Errors
+/// There is none, or this user may not have it.
+pub fn look_for_sequencer() -> Result<(), Broken> {
     let device = std::fs::File::options()
         .read(true)
         .write(true)
         .open("/dev/snd/seq");
     match device.map_err(|error| error.kind()) {
-        Ok(_) => Seq::open(None, None, true).map_err(broken),
+        Ok(_) => Ok(()),
         Err(std::io::ErrorKind::PermissionDenied) => Err(Broken {
             wrong: "This user may not use the ALSA sequencer (/dev/snd/seq)".to_string(),
             right: "add the user to the group audio (sudo adduser $USER audio) and log in again"

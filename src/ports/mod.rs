@@ -4,7 +4,7 @@
 //! runs one [`Cycle`] and writes what comes out ([`Outlet`]). What a cycle does is not known here.
 //! **Start reading at** [`Cycle`], then `outbox.rs`; `alsa.rs` is the loop of a stage, `jack/process.rs` the other.
 //! **May know** `time`, `limits`.
-//! **Owns** alsa, jack, the only clock (`clock.rs`), the only unsafe code (`system.rs`; in `jack/` one signature), which port fits which name (`names.rs`),
+//! **Owns** alsa, jack, midir, crossbeam-channel, the only clock (`clock.rs`), the only unsafe code (`system.rs`; in `jack/` one signature), which port fits which name (`names.rs`),
 //! and when a device has come or gone (`hotplug.rs`).
 //! Nothing in a loop blocks but its one wait, and nothing in it logs or locks. Nothing allocates either, but for one
 //! occasion: after an input overrun the sequencer is asked who is still connected.
@@ -19,6 +19,7 @@ pub mod inbox;
 pub mod jack;
 pub mod loopback;
 mod message;
+pub mod midir;
 pub mod names;
 pub mod outbox;
 #[cfg(target_os = "linux")]
@@ -26,7 +27,7 @@ pub mod outbox;
 pub mod system;
 
 pub use inbox::{Inbox, What};
-use names::{Address, Port};
+use names::{Address, Port, Wanted};
 pub use outbox::{Outlet, Room, Weight, Wire};
 
 use crate::time::Time;
@@ -79,10 +80,15 @@ pub enum Link {
     Down,
 }
 
+/// Ends a loop's wait early, so that it looks for what the desk has sent.
+pub trait Ring: Send {
+    fn ring(&self);
+}
+
 /// Counts that the desk reads while a loop runs.
 #[derive(Debug, Default)]
 pub struct Tally {
-    /// Ports that came, went or changed: time to look for devices again.
+    /// Ports that came, went or changed, or may have: time to look for devices again.
     pub changes: AtomicU64,
     /// Times that the system threw our input away because we were too slow.
     pub overruns: AtomicU64,
@@ -96,6 +102,14 @@ pub struct Tally {
 pub trait Patchbay: Send {
     /// Every port that others may connect to.
     fn ports(&self) -> Vec<Port>;
+
+    /// What the devices wish for from now on. Only a backend without a port of ours for each of them needs to know.
+    ///
+    /// # Errors
+    /// A port that others are to connect to cannot be had.
+    fn offer(&self, _keyboards: &[Wanted], _synths: &[Wanted]) -> Result<(), Broken> {
+        Ok(())
+    }
 
     /// A port in words.
     fn shown(&self, address: Address) -> String;

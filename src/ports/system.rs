@@ -1,5 +1,6 @@
 //! The few things that the system only gives to unsafe code: a wait with a fine deadline, a bell to end it, priority, and who we are.
 
+use super::Ring;
 use crate::time::Span;
 use libc::{POLLIN, c_int, pollfd};
 use std::fs::File;
@@ -36,6 +37,12 @@ impl Bell {
 
     pub fn fd(&self) -> RawFd {
         self.0.as_raw_fd()
+    }
+}
+
+impl Ring for Bell {
+    fn ring(&self) {
+        Bell::ring(self);
     }
 }
 

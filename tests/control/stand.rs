@@ -165,7 +165,7 @@ impl Stand {
         };
         let stage = Arc::new(stage);
         let mut front = Front::new(stage, status, Some(open(path).unwrap()), systemd, pulses);
-        let mut orders = Orders::new(commands_in, bell.clone());
+        let mut orders = Orders::new(commands_in, Box::new(bell.clone()));
         front.ready();
         let desk = shared.clone();
         let score = std::thread::spawn(move || fake.run(&mut Player::new(slot)).unwrap());

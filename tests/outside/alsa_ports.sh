@@ -15,8 +15,11 @@ lines() { [ "$(grep -c "$2" "$3")" -ge "$1" ]; } # lines COUNT PATTERN FILE: at 
 onsets() { # onsets COUNT FILE: at least so many note-ons of velocity 100 among raw bytes
   [ "$(hexdump -v -e '1/1 " %02x"' "$2" 2> /dev/null | grep -o " 9[0-9a-f] .. 64" | wc -l)" -ge "$1" ]
 }
-linked() { # the kernel says that the raw port's keys reach somebody
-  awk '/^ *Port/ {name = $0} /Connecting To/ && name ~ /VirMIDI .-0"/ {found = 1} END {exit !found}' /proc/asound/seq/clients
+linked() { # linked PORT: the kernel says that what the port of this name sends reaches somebody
+  awk -v port="\"$1\"" '/^ *Port/ {name = $0} /Connecting To/ && name ~ port {found = 1} END {exit !found}' /proc/asound/seq/clients
+}
+address() { # address PORT: client and number of the port of this name
+  awk -v port="\"$1\"" '/^Client/ {client = $2} /^ *Port/ && $0 ~ port {print client ":" $2 + 0; exit}' /proc/asound/seq/clients
 }
 unplug() { echo snd_virmidi.0 > $driver/unbind; }
 plug() { echo snd_virmidi.0 > $driver/bind; }
@@ -25,74 +28,96 @@ listen() { # listen FILE: from the moment the port is there, until it goes; $! i
 }
 chord='\260\100\177\220\074\144\220\100\144\220\103\144' # pedal, C E G
 single='\220\100\144'
-log=/out/ports.log
 
 # Nothing plugged in at the start; then in and out, again and again, under a held chord and pedal. The organ goes and
 # comes with the keyboard; the bells, a port of our own, stay and hear what becomes of the notes.
-unplug
-/guest/trued run /guest/ports.yaml 2> $log &
-trued=$!
-await "ready without a rig" lines 1 ready: $log
-aseqdump -p trued:3 > /out/bells.txt &
-bells=$!
-await "bells are set up" lines 1 "bells is set up" $log
-: > /out/cycles.txt
-for n in $(seq "$UNPLUGS"); do
-  listen /out/ear.$n
-  ear=$!
-  plug
-  began=$(now)
-  await "organ is set up, time $n" lines $n "organ is set up" $log
-  set_up=$(($(now) - began))
-  await "keyboard, time $n" linked
-  printf "$chord" > $keys
-  await "the chord at the organ, time $n" onsets 3 /out/ear.$n
-  await "the chord at the bells, time $n" lines $((3 * n)) "Note on" /out/bells.txt
-  began=$(now)
+in_and_out() { # in_and_out BACKEND PORT: trued goes on running as $trued; $bells hears its bells, at PORT
+  log=/out/$1.log
   unplug
-  await "let go, time $n" lines $((3 * n)) "Note off" /out/bells.txt
-  echo "$set_up $(($(now) - began))" >> /out/cycles.txt
-  await "organ has gone, time $n" lines $n "organ has gone" $log
-  await "keyboard has gone, time $n" lines $n "keyboard keys has gone" $log
-  kill $ear 2> /dev/null
-done
+  /guest/trued run --backend "$1" /guest/ports.yaml 2> $log &
+  trued=$!
+  await "ready without a rig, $1" lines 1 ready: $log
+  aseqdump -p "$(address "$2")" > /out/$1.bells.txt &
+  bells=$!
+  await "bells are heard, $1" linked "$2"
+  await "bells are set up, $1" lines 1 "bells is set up" $log
+  : > /out/$1.cycles.txt
+  for n in $(seq "$UNPLUGS"); do
+    listen /out/$1.ear.$n
+    ear=$!
+    plug
+    began=$(now)
+    await "organ is set up, $1, time $n" lines $n "organ is set up" $log
+    set_up=$(($(now) - began))
+    await "keyboard, $1, time $n" linked "VirMIDI .-0"
+    printf "$chord" > $keys
+    await "the chord at the organ, $1, time $n" onsets 3 /out/$1.ear.$n
+    await "the chord at the bells, $1, time $n" lines $((3 * n)) "Note on" /out/$1.bells.txt
+    began=$(now)
+    unplug
+    await "let go, $1, time $n" lines $((3 * n)) "Note off" /out/$1.bells.txt
+    echo "$set_up $(($(now) - began))" >> /out/$1.cycles.txt
+    await "organ has gone, $1, time $n" lines $n "organ has gone" $log
+    await "keyboard has gone, $1, time $n" lines $n "keyboard keys has gone" $log
+    kill $ear 2> /dev/null
+  done
+  cp /out/$1.bells.txt /out/$1.bells_in_and_out.txt
+}
+
+# First through midir, to a clean stop under a held chord and pedal.
+in_and_out midir "trued synth bells"
+listen /out/midir.ear.last
+ear=$!
+plug
+await "organ before the stop, midir" lines $((UNPLUGS + 1)) "organ is set up" $log
+await "keyboard before the stop, midir" linked "VirMIDI .-0"
+printf "$chord" > $keys
+await "the chord before the stop, midir" onsets 3 /out/midir.ear.last
+/guest/trued status --json > /out/midir.json
+kill -TERM $trued
+wait $trued
+echo $? > /out/midir.exit
+sleep 0.3 # what is still on its way to the ears
+kill $ear $bells
+
+in_and_out alsa bells
 
 # Input lost, and with it the news that the ports have gone: trued sleeps while more comes than its queue holds.
 plug
 n=$((UNPLUGS + 1))
 await "organ before the flood" lines $n "organ is set up" $log
-await "keyboard before the flood" linked
+await "keyboard before the flood" linked "VirMIDI .-0"
 printf "$single" > $keys
-await "a note before the flood" lines $((3 * UNPLUGS + 1)) "Note on" /out/bells.txt
+await "a note before the flood" lines $((3 * UNPLUGS + 1)) "Note on" /out/alsa.bells.txt
 kill -STOP $trued
 aplaymidi -p trued:1 -d 0 /guest/flood.mid
 unplug
 kill -CONT $trued
 await "the loss is told" lines 1 "faster than it could be read" $log
 await "organ has gone in the flood" lines $n "organ has gone" $log
-listen /out/ear.flood
+listen /out/alsa.ear.flood
 ear=$!
 plug
 await "organ after the flood" lines $((n + 1)) "organ is set up" $log
-await "keyboard after the flood" linked
+await "keyboard after the flood" linked "VirMIDI .-0"
 printf "$single" > $keys
-await "a note after the flood" onsets 1 /out/ear.flood
+await "a note after the flood" onsets 1 /out/alsa.ear.flood
 printf '\200\100\100' > $keys
-await "its end" lines $((3 * UNPLUGS + 2)) "Note off" /out/bells.txt
-cp /out/bells.txt /out/bells_before_kill.txt
+await "its end" lines $((3 * UNPLUGS + 2)) "Note off" /out/alsa.bells.txt
+cp /out/alsa.bells.txt /out/alsa.bells_before_kill.txt
 
 # Killed under a held chord and pedal, started again; then a clean stop under the same.
 printf "$chord" > $keys
-await "a chord before the kill" onsets 4 /out/ear.flood
+await "a chord before the kill" onsets 4 /out/alsa.ear.flood
 kill -KILL $trued
 wait $trued
 log=/out/again.log
 /guest/trued run /guest/ports.yaml 2> $log &
 trued=$!
 await "organ after the kill" lines 1 "organ is set up" $log
-await "keyboard after the kill" linked
+await "keyboard after the kill" linked "VirMIDI .-0"
 printf "$chord" > $keys
-await "a chord after the kill" onsets 7 /out/ear.flood
+await "a chord after the kill" onsets 7 /out/alsa.ear.flood
 kill -INT $trued # Ctrl-C
 wait $trued
 echo $? > /out/again.exit

@@ -54,7 +54,9 @@ pub fn write(folder: &Path) {
 }
 
 pub fn judge(guest: &Guest) {
-    in_and_out_under_a_held_chord(guest);
+    in_and_out_under_a_held_chord(guest, "midir");
+    stopped_under_a_held_chord_through_midir(guest);
+    in_and_out_under_a_held_chord(guest, "alsa");
     news_lost_in_a_flood_then_killed_then_stopped(guest);
     several_keyboards_as_one(guest);
     loops_are_cut(guest);
@@ -94,9 +96,9 @@ fn assert_in_tune(receiver: &Receiver, first: usize, keys: &[u8]) {
     }
 }
 
-fn in_and_out_under_a_held_chord(guest: &Guest) {
+fn in_and_out_under_a_held_chord(guest: &Guest, backend: &str) {
     let (unplugs, strict) = unplugs();
-    let log = guest.text("ports.log");
+    let log = guest.text(&format!("{backend}.log"));
     let waits = log.lines().find(|line| line.contains("ready:"));
     let waits = waits.expect("a line that says ready");
     assert!(
@@ -107,20 +109,16 @@ fn in_and_out_under_a_held_chord(guest: &Guest) {
     // Each time the organ is as new: it hears its set-up, then the chord in tune, and no note-off of an earlier time.
     let mut whole = 0;
     for n in 1..=unplugs {
-        let bytes = guest.bytes(&format!("ear.{n}"));
+        let bytes = guest.bytes(&format!("{backend}.ear.{n}"));
         whole += usize::from(from_the_start(&bytes));
         let organ = hear_raw(&bytes);
         assert_eq!(organ.notes.len(), CHORD.len(), "time {n}");
         assert_in_tune(&organ, 0, &CHORD);
         assert_eq!(organ.orphans, [], "time {n}");
     }
-    // The bells heard it all, with a note before and one after the flood.
-    let bells = hear_lines(guest, "bells_before_kill.txt");
-    assert_eq!(bells.notes.len(), CHORD.len() * unplugs + 2);
-    assert_eq!(bells.orphans, []);
-    assert!(bells.stuck().is_empty(), "{:?}", bells.stuck());
-    assert!(bells.sounding().is_empty(), "{:?}", bells.sounding());
-    let times = guest.text("cycles.txt");
+    let bells = hear_lines(guest, &format!("{backend}.bells_in_and_out.txt"));
+    assert_all_ended(&bells, CHORD.len() * unplugs);
+    let times = guest.text(&format!("{backend}.cycles.txt"));
     let column = |place: usize| -> Vec<f64> {
         let field = |line: &str| line.split_whitespace().nth(place)?.parse::<f64>().ok();
         times.lines().filter_map(field).map(|n| n / 100.0).collect()
@@ -129,7 +127,7 @@ fn in_and_out_under_a_held_chord(guest: &Guest) {
     assert_eq!((set_up.len(), let_go.len()), (unplugs, unplugs));
     let worst = |times: &[f64]| times.iter().copied().fold(0.0, f64::max);
     println!(
-        "{unplugs} times out and in under a held chord and pedal: set up again after {:.2} s at worst, \
+        "{unplugs} times out and in under a held chord and pedal, {backend}: set up again after {:.2} s at worst, \
          let go after {:.2} s at worst (guest's clock, with the script's own slowness); \
          {whole} set-ups heard from their first byte",
         worst(&set_up),
@@ -142,10 +140,35 @@ fn in_and_out_under_a_held_chord(guest: &Guest) {
     );
 }
 
+fn assert_all_ended(receiver: &Receiver, notes: usize) {
+    assert_eq!(receiver.notes.len(), notes);
+    assert_eq!(receiver.orphans, []);
+    assert!(receiver.stuck().is_empty(), "{:?}", receiver.stuck());
+    assert!(receiver.sounding().is_empty(), "{:?}", receiver.sounding());
+}
+
+fn stopped_under_a_held_chord_through_midir(guest: &Guest) {
+    let log = guest.text("midir.log");
+    println!("{log}");
+    assert_eq!(guest.text("midir.exit").trim(), "0", "{log}");
+    let organ = hear_raw(&guest.bytes("midir.ear.last"));
+    assert_eq!(organ.notes.len(), CHORD.len());
+    assert_in_tune(&organ, 0, &CHORD);
+    assert_plain(&organ);
+    let bells = hear_lines(guest, "midir.bells.txt");
+    assert_eq!(bells.notes.len(), CHORD.len() * (unplugs().0 + 1));
+    assert_plain(&bells);
+    let status: serde_json::Value = serde_json::from_str(&guest.text("midir.json")).expect("JSON");
+    assert_eq!(status["backend"], "midir");
+}
+
 fn news_lost_in_a_flood_then_killed_then_stopped(guest: &Guest) {
-    let (log, again) = (guest.text("ports.log"), guest.text("again.log"));
+    let (log, again) = (guest.text("alsa.log"), guest.text("again.log"));
     println!("{log}{again}");
-    let bytes = guest.bytes("ear.flood");
+    // The bells heard a note before and one after the flood.
+    let bells = hear_lines(guest, "alsa.bells_before_kill.txt");
+    assert_all_ended(&bells, CHORD.len() * unplugs().0 + 2);
+    let bytes = guest.bytes("alsa.ear.flood");
     // One note after the flood, the chord before the kill, the chord after it.
     let onsets: Vec<usize> = (0..bytes.len() - 2)
         .filter(|at| bytes[*at] & 0xF0 == 0x90 && bytes[at + 2] == 100)
