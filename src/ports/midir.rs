@@ -16,6 +16,7 @@
 //! * A bundle is a write for each message; a long system exclusive message may be refused, and is then left out.
 
 pub mod desk;
+mod look;
 mod wire;
 
 use super::clock::Clock;
@@ -208,7 +209,7 @@ impl Midir {
             length,
             ..
         } = *packet;
-        // A connection is handed over before it is made, so one that is not known now is closed.
+        // What is not known even now is closed, or not quite open.
         if !self.heard.contains(&connection) {
             self.see_to_connections(now);
             if !self.heard.contains(&connection) {

@@ -3,12 +3,13 @@
 //! Ports are known by what midir calls them and by its name for where they are, so an address here is a place in a list
 //! that only grows.
 
+use super::look::{Known, broken, look, open_input, open_output, split};
 use super::{Done, End, Ends, Feed};
 use crate::limits::SYNTHS_MAX;
 use crate::ports::hotplug::PEERS_MAX;
 use crate::ports::names::{Address, Port, Wanted, Wish};
 use crate::ports::{Broken, Patchbay, Ring};
-use midir::{Ignore, MidiIO, MidiInput, MidiInputConnection, MidiOutput, MidiOutputConnection};
+use midir::{Ignore, MidiInput, MidiInputConnection, MidiOutput, MidiOutputConnection};
 use rtrb::{Consumer, Producer};
 use std::panic::{AssertUnwindSafe, catch_unwind};
 use std::sync::{Mutex, MutexGuard, PoisonError};
@@ -38,13 +39,6 @@ struct State {
     done: Producer<Done>,
     closing: Consumer<MidiOutputConnection>,
     sockets_said: bool,
-}
-
-/// A port as midir knows it.
-#[derive(Clone, Debug, PartialEq, Eq)]
-struct Known {
-    id: String,
-    name: String,
 }
 
 /// A connection.
@@ -136,7 +130,7 @@ impl Desk {
         let input = match end {
             End::Keyboard(index) => Some(self.hear(state, index, number, known.as_ref())?),
             End::Synth(index) => {
-                let output = feed_output(&self.synths[index], known.as_ref())?;
+                let output = open_output(&self.synths[index], known.as_ref())?;
                 self.hand_over(state, Done::Output(index, output));
                 self.hand_over(state, Done::Joined(end, number));
                 None
@@ -161,10 +155,6 @@ impl Desk {
         let name = &self.keyboards[index];
         let mut input = MidiInput::new(name).map_err(broken)?;
         input.ignore(Ignore::Sysex);
-        let port = known.map(|known| find(&input, &known.id)).transpose()?;
-        // The loop has to know of it before the first note comes.
-        let end = End::Keyboard(index);
-        self.hand_over(state, Done::Joined(end, number));
         let feed = self.feed.clone();
         let mut hurried = false;
         let callback = move |_: u64, bytes: &[u8], (): &mut ()| {
@@ -174,15 +164,12 @@ impl Desk {
             feed.take(index, number, bytes);
         };
         // midir fails where the system has no room for one of its clocks.
-        let opened = catch_unwind(AssertUnwindSafe(|| match &port {
-            Some(port) => input.connect(port, name, callback, ()).map_err(broken),
-            None => open_input(input, name, callback),
+        let opened = catch_unwind(AssertUnwindSafe(|| {
+            open_input(input, known, name, callback)
         }));
-        let opened = opened.unwrap_or_else(|_| Err(broken("the system is full")));
-        if opened.is_err() {
-            self.hand_over(state, Done::Left(end, number));
-        }
-        opened
+        let opened = opened.unwrap_or_else(|_| Err(broken("the system is full")))?;
+        self.hand_over(state, Done::Joined(End::Keyboard(index), number));
+        Ok(opened)
     }
 
     /// Closes connections. The loop is told first: what held notes is let go at once.
@@ -242,8 +229,8 @@ impl Patchbay for Desk {
     fn ports(&self) -> Vec<Port> {
         let mut state = self.state();
         while state.closing.pop().is_ok() {}
-        let senders = look(&state.inputs);
-        let hearers = look(&state.outputs);
+        let senders = look(&state.inputs, midir::MidiInputPort::id);
+        let hearers = look(&state.outputs, midir::MidiOutputPort::id);
         let only_hearers = hearers.iter().filter(|known| !senders.contains(known));
         let ports: Vec<Port> = senders
             .iter()
@@ -319,95 +306,6 @@ fn end_of(from: Address, to: Address) -> (End, Address) {
     }
 }
 
-fn look<M: MidiIO>(all: &M) -> Vec<Known>
-where
-    M::Port: Id,
-{
-    let ports = all.ports();
-    let known = ports.iter().filter_map(|port| {
-        Some(Known {
-            id: port.id(),
-            name: all.port_name(port).ok()?, // gone again already, otherwise
-        })
-    });
-    known.collect()
-}
-
-/// What inputs and outputs of midir have in common, and do not say.
-trait Id {
-    fn id(&self) -> String;
-}
-
-impl Id for midir::MidiInputPort {
-    fn id(&self) -> String {
-        midir::MidiInputPort::id(self)
-    }
-}
-
-impl Id for midir::MidiOutputPort {
-    fn id(&self) -> String {
-        midir::MidiOutputPort::id(self)
-    }
-}
-
-fn find<M: MidiIO>(all: &M, id: &str) -> Result<M::Port, Broken>
-where
-    M::Port: Id,
-{
-    let mut ports = all.ports().into_iter();
-    let port = ports.find(|port| port.id() == id);
-    port.ok_or_else(|| broken("it has gone"))
-}
-
-fn feed_output(name: &str, known: Option<&Known>) -> Result<MidiOutputConnection, Broken> {
-    let output = MidiOutput::new(name).map_err(broken)?;
-    match known {
-        Some(known) => {
-            let port = find(&output, &known.id)?;
-            output.connect(&port, name).map_err(broken)
-        }
-        None => open_output(output, name),
-    }
-}
-
-#[cfg(unix)]
-fn open_output(output: MidiOutput, name: &str) -> Result<MidiOutputConnection, Broken> {
-    use midir::os::unix::VirtualOutput;
-    output.create_virtual(name).map_err(broken)
-}
-
-#[cfg(unix)]
-fn open_input(
-    input: MidiInput,
-    name: &str,
-    callback: impl FnMut(u64, &[u8], &mut ()) + Send + 'static,
-) -> Result<MidiInputConnection<()>, Broken> {
-    use midir::os::unix::VirtualInput;
-    input.create_virtual(name, callback, ()).map_err(broken)
-}
-
-#[cfg(not(unix))]
-fn open_output(_: MidiOutput, _: &str) -> Result<MidiOutputConnection, Broken> {
-    Err(no_ports_of_ours())
-}
-
-#[cfg(not(unix))]
-fn open_input(
-    _: MidiInput,
-    _: &str,
-    _: impl FnMut(u64, &[u8], &mut ()) + Send + 'static,
-) -> Result<MidiInputConnection<()>, Broken> {
-    Err(no_ports_of_ours())
-}
-
-#[cfg(not(unix))]
-fn no_ports_of_ours() -> Broken {
-    Broken {
-        wrong: "This system has no `port: virtual`".to_string(),
-        right: "name a port that is there".to_string(),
-    }
-}
-
 /// `trued` on another backend, or `trued keyboard keys` through midir.
 fn is_of(device: &str, family: &str) -> bool {
     let rest = device.strip_prefix(family);
@@ -423,43 +321,9 @@ fn hurry() {
     let _ = crate::ports::system::hurry();
 }
 
-/// Device and port. On Linux midir puts both in one name, and behind it where the port is.
-fn split(known: &Known) -> (&str, &str) {
-    let name = known.name.strip_suffix(&known.id).unwrap_or(&known.name);
-    let name = name.trim_end();
-    name.split_once(':').unwrap_or(("", name))
-}
-
-fn broken(error: impl std::fmt::Display) -> Broken {
-    Broken {
-        wrong: format!("midir refused ({error})"),
-        right: "look with `trued ports` whether it is there".to_string(),
-    }
-}
-
 #[cfg(test)]
 mod tests {
     use super::*;
-
-    fn device_and_port(id: &str, name: &str) -> (String, String) {
-        let (id, name) = (id.to_string(), name.to_string());
-        let known = Known { id, name };
-        let (device, port) = split(&known);
-        (device.to_string(), port.to_string())
-    }
-
-    #[test]
-    fn names_with_and_without_a_device() {
-        let both = |device: &str, port: &str| (device.to_string(), port.to_string());
-        assert_eq!(
-            device_and_port("24:0", "Wharf Keys:Wharf Keys MIDI 1 24:0"),
-            both("Wharf Keys", "Wharf Keys MIDI 1")
-        );
-        assert_eq!(
-            device_and_port("-1837", "Wharf Keys"),
-            both("", "Wharf Keys")
-        );
-    }
 
     #[test]
     fn what_is_trueds_own() {
