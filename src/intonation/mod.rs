@@ -1,21 +1,25 @@
 //! What a key means in the chord now sounding.
 //!
-//! **What this room is**: the methods by which a song's tuning meets its harmony ([`Method`]).
-//! **Start reading at** [`Method`].
+//! **What this room is**: the methods by which a song's tuning meets its harmony ([`Method`]), and one harmonic context
+//! that follows what is played ([`Harmony`]).
+//! **Start reading at** [`Harmony`], then `place.rs` (where a chord is put) and `shapes.rs` (its exact intervals).
 //! **May know** `pitch/`, `tuning/`, `time`, `limits`.
-//! **Owns**: `fixed` is the tuning at rest, exactly.
-//! **Not here**: which channel carries the result (`engine/`). Methods that follow the chord are described and checked
-//! by the stage file but not played yet.
+//! **Owns**: `fixed` is the tuning at rest, exactly. All keys of a pitch class stand alike. A note that has sounded
+//! beyond the settle window never jumps.
+//! **Not here**: which channel carries the result (`engine/`), how it is written (`stage/`).
 
+mod candidates;
+mod chord;
+mod harmony;
+mod lattice;
 mod pitch_classes;
+mod place;
 pub mod root;
+mod settings;
+mod shapes;
 
+pub use chord::Chord;
+pub use harmony::{Harmony, Sevenths, Standing};
 pub use pitch_classes::PitchClasses;
-
-/// How a song's notes are placed.
-#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
-pub enum Method {
-    /// Every key sounds what its tuning says, always.
-    #[default]
-    Fixed,
-}
+pub use settings::{Method, Ratios, Settings};
+pub use shapes::Shapes;

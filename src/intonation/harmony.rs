@@ -1,0 +1,474 @@
+//! One harmonic context: which keys sound, where each pitch class of theirs stands, and where it is bound.
+//!
+//! All keys of a pitch class stand alike, so a context is twelve places. A place moves in two ways: it jumps while its
+//! note is younger than the settle window, and glides after.
+
+mod motion;
+
+use super::candidates::{Candidates, is_dominant};
+use super::chord::Chord;
+use super::pitch_classes::PitchClasses;
+use super::place::{self, Member};
+use super::root;
+use super::settings::{Method, Ratios, Settings};
+use super::shapes::{CORE_MAX, Shapes};
+use crate::limits::KEYS;
+use crate::pitch::Interval;
+use crate::time::{Span, Time};
+use crate::tuning::Key;
+
+/// A note under a pedal counts half after so long, and after twice that is no longer part of the chord.
+const FADE: Span = Span::from_millis(700);
+/// A held note weighs twice as much after so long, and no more than four times after thrice that.
+const ROCK: Span = Span::from_millis(12_000);
+/// What ended so shortly ago was part of the chord before.
+const JUST: Span = Span::from_millis(100);
+/// So long a dominant chord is remembered without its root.
+const ROOTLESS: Span = Span::from_millis(1_000);
+
+/// The state of one key.
+#[derive(Clone, Copy, Default)]
+struct KeyState {
+    /// Notes of it that are held.
+    held: u8,
+    /// Of these, the ones that are not counted in the harmony.
+    uncounted: u8,
+    /// A released note of it rings on under a pedal.
+    rings: bool,
+}
+
+/// One pitch class. Places in microcents from equal.
+#[derive(Clone, Copy)]
+struct Place {
+    /// Keys of it that are held and counted; that are held; that sound at all.
+    counted: u8,
+    held: u8,
+    sounding: u8,
+    now: i64,
+    target: i64,
+    /// Where the tuning at rest puts it.
+    rest: i64,
+    /// Since when it has sounded.
+    since: Time,
+    /// When it last ceased to be held and counted.
+    let_go: Option<Time>,
+    /// Where it stood when it left the settle window, and at the last event: what limits its motion.
+    began: i64,
+    before: i64,
+    /// When it last moved by a step.
+    stepped: Option<Time>,
+}
+
+impl Place {
+    const NEW: Place = Place {
+        counted: 0,
+        held: 0,
+        sounding: 0,
+        now: 0,
+        target: 0,
+        rest: 0,
+        since: Time::START,
+        let_go: None,
+        began: 0,
+        before: 0,
+        stepped: None,
+    };
+}
+
+/// How large dominant sevenths are.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Sevenths {
+    /// 7/4.
+    Harmonic,
+    /// 5-limit.
+    Plain,
+}
+
+/// How a context stands, for displays.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub struct Standing {
+    pub chord: Chord,
+    /// Where the root stands from equal; nothing where there is none.
+    pub anchor: Option<Interval>,
+    /// How far what sounds stands from rest, on average.
+    pub drift: Interval,
+}
+
+/// One harmonic context.
+#[derive(Clone)]
+pub struct Harmony {
+    method: Method,
+    keys: [KeyState; KEYS],
+    places: [Place; 12],
+    chord: Chord,
+    /// The player holds the root by hand.
+    locked: bool,
+    /// In place of the song's own.
+    sevenths: Option<Sevenths>,
+    /// The root on which a harmonic seventh stands.
+    septimal: Option<u8>,
+    /// A note has been struck since the chord was last placed, not only let go.
+    struck: bool,
+    changed: bool,
+    /// When the chord last changed, and how far it has returned since.
+    event_at: Time,
+    returned_at: Time,
+    returned: i64,
+}
+
+impl Harmony {
+    pub fn new() -> Harmony {
+        Harmony {
+            method: Method::Fixed,
+            keys: [KeyState::default(); KEYS],
+            places: [Place::NEW; 12],
+            chord: Chord::default(),
+            locked: false,
+            sevenths: None,
+            septimal: None,
+            struck: false,
+            changed: false,
+            event_at: Time::START,
+            returned_at: Time::START,
+            returned: 0,
+        }
+    }
+
+    /// Begins anew: what sounds now is no anchor, memory or harmony for what comes.
+    pub fn begin(&mut self, method: Method) {
+        *self = Harmony {
+            method,
+            ..Harmony::new()
+        };
+    }
+
+    pub fn is_adaptive(&self) -> bool {
+        self.method != Method::Fixed
+    }
+
+    /// Whether something has happened since it was last solved.
+    pub fn is_due(&self) -> bool {
+        self.changed
+    }
+
+    /// Holds the root that is now, or another; `free` lets it go.
+    pub fn hold_root(&mut self, root: Option<u8>) {
+        self.chord.root = root.map(|root| root % 12).or(self.chord.root);
+        self.locked = self.chord.root.is_some();
+        self.changed = true;
+    }
+
+    pub fn free_root(&mut self) {
+        self.locked = false;
+        self.struck = true;
+        self.changed = true;
+    }
+
+    /// `None`: as the song says.
+    pub fn set_sevenths(&mut self, sevenths: Option<Sevenths>) {
+        self.sevenths = sevenths;
+    }
+
+    /// A key goes down, which at rest stands so far from equal. Its place is known after [`Harmony::solve`].
+    pub fn press(&mut self, now: Time, key: Key, rest: Interval, counted: bool) {
+        let state = &mut self.keys[key.number() as usize];
+        let place = &mut self.places[key.pitch_class() as usize];
+        if place.sounding == 0 {
+            place.since = now;
+            place.stepped = None;
+            if place.let_go.is_none() {
+                place.now = rest.microcents();
+            }
+        }
+        place.sounding += (state.held == 0 && !state.rings) as u8;
+        place.held += (state.held == 0) as u8;
+        place.counted += (counted && state.held == state.uncounted) as u8;
+        state.rings = false;
+        state.held = state.held.saturating_add(1);
+        state.uncounted += !counted as u8;
+        place.rest = rest.microcents();
+        self.struck |= counted;
+        self.changed = true;
+    }
+
+    /// A note of a key ends; `rings`: a pedal keeps it sounding.
+    pub fn release(&mut self, now: Time, key: Key, counted: bool, rings: bool) {
+        let state = &mut self.keys[key.number() as usize];
+        let place = &mut self.places[key.pitch_class() as usize];
+        if state.held == 0 {
+            return;
+        }
+        state.held -= 1;
+        state.uncounted = state.uncounted.saturating_sub(!counted as u8);
+        if counted && state.held == state.uncounted {
+            place.counted -= 1;
+            if place.counted == 0 {
+                place.let_go = Some(now);
+            }
+        }
+        if state.held == 0 {
+            state.rings = rings;
+            place.held -= 1;
+            place.sounding -= !rings as u8;
+        }
+        self.changed = true;
+    }
+
+    /// The pedal is up: what only it held has ended.
+    pub fn damp(&mut self) {
+        for (number, state) in self.keys.iter_mut().enumerate().filter(|(_, s)| s.rings) {
+            state.rings = false;
+            self.places[number % 12].sounding -= 1;
+            self.changed = true;
+        }
+    }
+
+    /// Where a pitch class stands now, from equal.
+    pub fn offset(&self, class: u8) -> Interval {
+        Interval::from_microcents(self.places[class as usize % 12].now)
+    }
+
+    pub fn standing(&self) -> Standing {
+        Standing {
+            chord: self.chord,
+            anchor: self.chord.root.map(|root| self.offset(root)),
+            drift: Interval::from_microcents(self.drift(|place| place.now)),
+        }
+    }
+
+    /// Finds the place of everything that sounds, for all that has happened at this instant.
+    pub fn solve(&mut self, now: Time, shapes: &Shapes) {
+        if !std::mem::take(&mut self.changed) {
+            return;
+        }
+        let Some(settings) = self.method.settings().copied() else {
+            return;
+        };
+        self.note_event(now);
+        let chord = self.sounding_chord(now);
+        let struck = std::mem::take(&mut self.struck);
+        // What is left of a chord as it is let go is no new chord.
+        if struck && !self.locked {
+            let bass = self.bass(chord);
+            self.chord.root = bass.and_then(|bass| root::root(chord, bass, self.chord.root));
+        }
+        if chord.is_empty() {
+            self.chord = Chord {
+                root: self.chord.root.filter(|_| self.locked),
+                ..Chord::default()
+            };
+        } else {
+            self.place_chord(now, chord, &settings, shapes);
+        }
+        self.jump(now, &settings);
+        self.glide(now);
+    }
+
+    /// The pitch classes that are the harmony now.
+    fn sounding_chord(&self, now: Time) -> PitchClasses {
+        let lasts = |at: Time| now.since(at).nanos() < 2 * FADE.nanos();
+        let counts = |place: &Place| {
+            place.counted > 0
+                || place.held == 0 && place.sounding > 0 && place.let_go.is_some_and(lasts)
+        };
+        (0..12u8)
+            .filter(|class| counts(&self.places[*class as usize]))
+            .collect()
+    }
+
+    fn bass(&self, chord: PitchClasses) -> Option<u8> {
+        let sounds = |(number, state): &(usize, &KeyState)| {
+            (state.held > state.uncounted || state.rings) && chord.has(*number as u8)
+        };
+        let lowest = self.keys.iter().enumerate().find(sounds);
+        lowest.map(|(number, _)| number as u8 % 12)
+    }
+
+    fn place_chord(
+        &mut self,
+        now: Time,
+        chord: PitchClasses,
+        settings: &Settings,
+        shapes: &Shapes,
+    ) {
+        let core = self.core(chord);
+        self.septimal = self.septimal_root(now, core, settings);
+        let candidates = Candidates::of(
+            core,
+            &settings.ratios,
+            self.chord.root,
+            self.septimal,
+            shapes,
+        );
+        let mut members = [Member::default(); CORE_MAX];
+        for (member, class) in members.iter_mut().zip(candidates.classes()) {
+            *member = self.member(now, *class, settings);
+        }
+        let members = &mut members[..candidates.classes().len()];
+        self.without_leash(now, members, settings);
+        let limit = settings.drift_limit.map(Interval::microcents);
+        let placed = place::place(members, &candidates, limit);
+        for (member, at) in members.iter().zip(placed.at) {
+            self.places[member.class as usize].target = at;
+        }
+        self.attach(now, core, members, &placed.at, settings);
+        self.chord.count = if candidates.exact {
+            members.len() as u8
+        } else {
+            0
+        };
+        self.chord.points = placed.candidate.points;
+        self.chord.classes = [0; CORE_MAX];
+        for (class, member) in self.chord.classes.iter_mut().zip(members.iter()) {
+            *class = member.class;
+        }
+    }
+
+    /// At most as many pitch classes as there are shapes for: the bass, the root, and of the others those with most
+    /// keys, held ones first, the longer the better.
+    fn core(&self, chord: PitchClasses) -> PitchClasses {
+        let mut core = chord;
+        let bass = self.bass(chord);
+        while core.count() > CORE_MAX {
+            let strength = |class: &u8| {
+                let place = &self.places[*class as usize];
+                let stays = Some(*class) == bass || Some(*class) == self.chord.root;
+                (stays, place.counted, std::cmp::Reverse(place.since))
+            };
+            let Some(weakest) = core.iter().min_by_key(strength) else {
+                break;
+            };
+            core = core.without(weakest);
+        }
+        core
+    }
+
+    /// The root over which the seventh is to be 7/4, if the chord is a dominant and its seventh is free to be so: one
+    /// that is held, or struck again, keeps the size it has.
+    fn septimal_root(&self, now: Time, core: PitchClasses, settings: &Settings) -> Option<u8> {
+        let sevenths = self.sevenths.unwrap_or(match settings.ratios {
+            Ratios::PureWith7 => Sevenths::Harmonic,
+            _ => Sevenths::Plain,
+        });
+        let was = self.septimal;
+        let lingers = |root: &u8| {
+            let let_go = self.places[*root as usize].let_go;
+            core.has(*root) || let_go.is_some_and(|at| now.since(at) < ROOTLESS)
+        };
+        let remembered = was.filter(lingers).filter(|root| is_dominant(core, *root));
+        let of_chord = |root: &u8| core.has(*root) && is_dominant(core, *root);
+        let root = remembered.or(self.chord.root.filter(of_chord))?;
+        let seventh = &self.places[(root as usize + 10) % 12];
+        let is_old = seventh.since < now && now.since(seventh.since) >= settings.settle;
+        let again = seventh.let_go.is_some_and(|at| now.since(at) <= JUST);
+        let keeps = is_old || again;
+        let is_free = sevenths == Sevenths::Harmonic && !keeps;
+        (is_free || was == Some(root) && keeps).then_some(root)
+    }
+
+    fn member(&self, now: Time, class: u8, settings: &Settings) -> Member {
+        let place = &self.places[class as usize];
+        let age = now.since(place.since);
+        let sounds_on = place.sounding > 0 && age > Span::ZERO;
+        let is_old = sounds_on && age >= settings.settle;
+        let pull = match place.let_go {
+            _ if is_old && place.counted > 0 => {
+                let age = age.nanos().min(3 * ROCK.nanos());
+                place::HELD + (place::HELD as u64 * age / ROCK.nanos()) as i64
+            }
+            Some(at) if is_old => fading(place::HELD, now.since(at), FADE),
+            _ if sounds_on => place::YOUNG,
+            Some(at) => fading(place::REMEMBERED, now.since(at), settings.memory),
+            None => 0,
+        };
+        Member {
+            class,
+            keys: place.counted.max(1) as i64,
+            rest: place.rest,
+            was: place.now,
+            pull,
+            held: is_old.then(|| reach(place, settings)),
+        }
+    }
+
+    /// Without a leash only common tones place a chord: those that sound, else those of the chord just before.
+    fn without_leash(&self, now: Time, members: &mut [Member], settings: &Settings) {
+        if settings.drift_limit.is_some() {
+            return;
+        }
+        let sounds = |m: &Member| self.places[m.class as usize].since < now;
+        let any_sounds = members.iter().any(sounds);
+        for member in members.iter_mut().filter(|m| !sounds(m)) {
+            let let_go = self.places[member.class as usize].let_go;
+            let just = let_go.is_some_and(|at| now.since(at) <= JUST);
+            member.pull = if just && !any_sounds { place::HELD } else { 0 };
+        }
+    }
+
+    /// What sounds beyond the shape goes with it, each as well as it can; what only rings on is left alone.
+    fn attach(
+        &mut self,
+        now: Time,
+        core: PitchClasses,
+        members: &[Member],
+        at: &[i64],
+        settings: &Settings,
+    ) {
+        let drift = place::away(members, &at[..members.len()]);
+        for class in (0..12u8).filter(|class| !core.has(*class)) {
+            let place = &self.places[class as usize];
+            if place.held == 0 {
+                self.places[class as usize].target = place.now;
+                continue;
+            }
+            let mut target = place::attach(class, members, at, drift, place.rest);
+            if let Some((low, high)) = self.member(now, class, settings).held {
+                target = target.clamp(low, high);
+                if (target - place.now).abs() < place::DEAD_BAND {
+                    target = place.now;
+                }
+            }
+            self.places[class as usize].target = target;
+        }
+    }
+
+    /// How far what is held and counted stands from rest, on average.
+    fn drift(&self, of: impl Fn(&Place) -> i64) -> i64 {
+        let (mut away, mut keys) = (0, 0);
+        for place in self.places.iter().filter(|place| place.counted > 0) {
+            away += (of(place) - place.rest) * place.counted as i64;
+            keys += place.counted as i64;
+        }
+        away / keys.max(1)
+    }
+}
+
+impl Default for Harmony {
+    fn default() -> Harmony {
+        Harmony::new()
+    }
+}
+
+/// How far a held note may be moved now, down and up: so much from where it is, twice that from where it began.
+fn reach(place: &Place, settings: &Settings) -> (i64, i64) {
+    let Some(limit) = settings.hold_limit.map(Interval::microcents) else {
+        return (i64::MIN / 4, i64::MAX / 4);
+    };
+    let low = (place.now - limit).max(place.began - 2 * limit);
+    let high = (place.now + limit).min(place.began + 2 * limit);
+    (low.min(place.now), high.max(place.now))
+}
+
+/// A weight after some time: `e` times less for each `fade`, to within a tenth.
+fn fading(weight: i64, since: Span, fade: Span) -> i64 {
+    if fade == Span::ZERO {
+        return 0;
+    }
+    // e^-x = 2^-(x log2 e); between whole powers of two a straight line is near enough.
+    let x = since.nanos() as i128 * 1_443 * 1_024 / 1_000 / fade.nanos() as i128;
+    if x >= 20 * 1_024 {
+        return 0;
+    }
+    let whole = weight >> (x / 1_024);
+    whole - whole * (x % 1_024) as i64 / 2_048
+}

@@ -1,0 +1,100 @@
+//! How places move: young notes at once, held ones by a cent at a time, a chord that stands on slowly home.
+
+use super::{Harmony, Place};
+use crate::intonation::place::DEAD_BAND;
+use crate::intonation::settings::Settings;
+use crate::pitch::Interval;
+use crate::time::{Span, Time};
+
+/// A glide goes by steps of one cent: each is a bend on the wire.
+const STEP: i64 = 1_000_000;
+/// A chord that has stood so long begins to return.
+const STANDS: Span = Span::from_millis(1_000);
+
+impl Harmony {
+    /// From here on held notes are measured against where they stand now.
+    pub(super) fn note_event(&mut self, now: Time) {
+        for place in &mut self.places {
+            place.before = place.now;
+        }
+        self.event_at = now;
+        self.returned_at = now;
+        self.returned = 0;
+    }
+
+    /// Notes younger than the settle window go where they are bound at once.
+    pub(super) fn jump(&mut self, now: Time, settings: &Settings) {
+        for place in self.places.iter_mut().filter(|place| place.sounding > 0) {
+            if place.since == now || now.since(place.since) < settings.settle {
+                place.now = place.target;
+                place.began = place.target;
+                place.before = place.target;
+            }
+        }
+    }
+
+    /// To be called once [`Harmony::due_at`] has come: moves what is bound elsewhere by a step.
+    pub fn glide(&mut self, now: Time) {
+        let Some(settings) = self.method.settings().copied() else {
+            return;
+        };
+        self.go_home(now, &settings);
+        let Some(step) = step_span(settings.glide_per_s) else {
+            return;
+        };
+        for place in self.places.iter_mut().filter(|place| glides(place)) {
+            if place.stepped.is_none_or(|at| at + step <= now) {
+                place.now += (place.target - place.now).clamp(-STEP, STEP);
+                place.stepped = Some(now);
+            }
+        }
+    }
+
+    /// When something moves next.
+    pub fn due_at(&self) -> Option<Time> {
+        let settings = self.method.settings()?;
+        let step = step_span(settings.glide_per_s)?;
+        let gliding = self.places.iter().filter(|place| glides(place));
+        let next = gliding.map(|place| place.stepped.map_or(self.event_at, |at| at + step));
+        next.chain(self.home_at(settings)).min()
+    }
+
+    /// When a chord that stands is to take its next step home.
+    fn home_at(&self, settings: &Settings) -> Option<Time> {
+        let step = step_span(settings.return_per_s)?;
+        settings.drift_limit?;
+        let may = settings
+            .hold_limit
+            .is_none_or(|limit| self.returned < limit.microcents());
+        let is_away = self.drift(|place| place.target).abs() > DEAD_BAND;
+        (may && is_away).then_some((self.event_at + STANDS).max(self.returned_at + step))
+    }
+
+    fn go_home(&mut self, now: Time, settings: &Settings) {
+        if self.home_at(settings).is_none_or(|at| at > now) {
+            return;
+        }
+        let step = STEP.min(self.drift(|place| place.target).abs());
+        let step = step * -self.drift(|place| place.target).signum();
+        let limit = settings
+            .hold_limit
+            .map_or(i64::MAX / 4, Interval::microcents);
+        for place in self.places.iter_mut().filter(|place| place.held > 0) {
+            let (low, high) = (place.before - limit, place.before + limit);
+            place.target =
+                (place.target + step).clamp(low.min(place.target), high.max(place.target));
+        }
+        self.returned += STEP;
+        self.returned_at = now;
+    }
+}
+
+fn glides(place: &Place) -> bool {
+    place.sounding > 0 && place.target != place.now
+}
+
+/// How long a step takes at a speed; `None` where nothing moves.
+fn step_span(per_s: Interval) -> Option<Span> {
+    let speed = per_s.microcents();
+    (speed > 0).then(|| Span::from_nanos(STEP as u64 * 1_000_000_000 / speed as u64))
+}
