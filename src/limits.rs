@@ -11,6 +11,8 @@ pub const SYNTHS_MAX: usize = 8;
 pub const PARTS_MAX: usize = 16;
 /// Keys held down at once, over all keyboards and layers. Pedal-held notes do not count: their note-off is out.
 pub const VOICES_MAX: usize = 256;
+/// Presses of one instant that can wait for each other to be one chord.
+pub const WAITING_PRESSES_MAX: usize = 64;
 /// Songs in a set (a program change reaches 128 of them; cues reach all).
 pub const SONGS_MAX: usize = 512;
 /// Controls held at once that may become long presses.

@@ -1,5 +1,6 @@
 //! What one channel of a receiver sounds, and what it has been told.
 
+use super::following::Class;
 use crate::midi::controller;
 use crate::pitch::Interval;
 use crate::pitch::word::Bend;
@@ -65,6 +66,9 @@ pub(super) struct Channel {
     pub offset: Interval,
     /// The pitch nudge that is in the offset.
     pub nudge: Interval,
+    /// What moves its notes, and where that stood when they were last moved.
+    pub follows: Option<Class>,
+    pub stood: Interval,
     /// The offset as a bend word.
     pub word: Bend,
     pub due: Due,
@@ -87,6 +91,8 @@ impl Channel {
         last_key: None,
         offset: Interval::ZERO,
         nudge: Interval::ZERO,
+        follows: None,
+        stood: Interval::ZERO,
         word: Bend::CENTRE,
         due: Due::Nothing,
         bend: None,

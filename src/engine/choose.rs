@@ -1,6 +1,7 @@
 //! Which channel a new note takes.
 
 use super::channel::{Channel, Rest};
+use super::following::Class;
 use super::plan::{PartId, Steal};
 use super::synth::Synth;
 use super::voices::Voices;
@@ -20,6 +21,8 @@ pub(super) struct Want {
     pub offset: Interval,
     /// The pitch nudge that is in it.
     pub nudge: Interval,
+    /// What will move it.
+    pub follows: Option<Class>,
     /// How many different bends the tuning can ask for.
     pub groups: u8,
     /// Its number is already held at this very bend.
@@ -38,6 +41,8 @@ pub(super) struct Choice {
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub(super) enum Cost {
     Nothing,
+    /// It will be moved with what rings there.
+    Along,
     /// A tail will be bent.
     Tail,
     /// What rings on the channel has to be ended first.
@@ -59,6 +64,8 @@ enum Wish {
     Spare,
     BeyondTail,
     InTail,
+    /// Sounding at this very bend, but it will be moved differently.
+    Along,
     UnderPedal,
     Held,
 }
@@ -101,11 +108,12 @@ fn wish(
     let must_part = voices
         .iter()
         .any(|v| v.synth == synth.id && v.channel == number && v.number == want.number);
+    let moved_alike = channel.follows == want.follows;
     let ringing = matches!(rest, Rest::Held | Rest::Pedal | Rest::Tail(_));
     let may_share = synth.rig.share || (this_key && rest != Rest::Held);
     let oldest_first = channel.released_at.map_or(0, Time::nanos);
     Some(match rest {
-        _ if ringing && this_bend && may_share && !must_part => {
+        _ if ringing && this_bend && may_share && !must_part && moved_alike => {
             (Wish::Shared, !this_key as u64, Cost::Nothing)
         }
         Rest::Quiet(_) if this_key => (Wish::LastPlayedThisKey, 0, Cost::Nothing),
@@ -118,7 +126,12 @@ fn wish(
             (Wish::Spare, oldest_first, Cost::Nothing)
         }
         Rest::Quiet(_) => (Wish::BeyondTail, oldest_first, Cost::Nothing),
-        _ if this_bend && must_part && synth.rig.share => (Wish::Doubled, 0, Cost::Nothing),
+        Rest::Held | Rest::Pedal if this_bend && !moved_alike && synth.rig.share => {
+            (Wish::Along, oldest_first, Cost::Along)
+        }
+        _ if this_bend && must_part && moved_alike && synth.rig.share => {
+            (Wish::Doubled, 0, Cost::Nothing)
+        }
         Rest::Tail(_) if synth.rig.keeps_pitch() => (Wish::InTail, oldest_first, Cost::Nothing),
         Rest::Tail(_) => (Wish::InTail, oldest_first, Cost::Tail),
         Rest::Pedal => (Wish::UnderPedal, oldest_first, Cost::Steal),

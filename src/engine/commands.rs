@@ -2,13 +2,11 @@
 
 use super::Engine;
 use super::channel::{Rest, UNSAID};
-use super::dialect::on_members;
 use super::plan::SynthId;
 use super::synth::PEDALS;
-use super::traffic::{Command, Onset, Weight};
+use super::traffic::{Command, Weight};
 use crate::midi::{controller, status};
-use crate::pitch::word::Bend;
-use crate::pitch::{Interval, Pitch};
+use crate::pitch::Interval;
 use crate::time::{Span, Time};
 
 /// `next` and `back` are deaf to a second press within this time: footswitches bounce.
@@ -54,6 +52,7 @@ impl Engine {
     }
 
     pub(super) fn follow(&mut self, now: Time, command: Command) {
+        self.play_chord();
         if self.goal(command).is_some() {
             self.armed.forget_songs();
         }
@@ -124,55 +123,25 @@ impl Engine {
         }
     }
 
-    /// Brings what a key or pedal holds on a channel to where the nudge puts it: one bend for all of it.
+    /// Brings what a key or pedal holds on a channel to where the nudge puts it.
     fn move_held(&mut self, now: Time, id: SynthId, number: u8) {
-        let Some((part_id, part)) = self.part_of(id, number).filter(|(_, part)| part.tune) else {
-            return;
-        };
-        let synth = &mut self.synths[id.index()];
-        let wheel = if on_members(&synth.rig, &part) {
-            self.parts[part_id.index()].wheel
-        } else {
-            Interval::ZERO
-        };
-        let (range, tail, keeps_pitch) = (
-            synth.rig.bend_range,
-            synth.rig.tail,
-            synth.rig.keeps_pitch(),
-        );
-        let channel = synth.channel(number);
-        let held = matches!(
-            channel.rest(now, tail, keeps_pitch),
-            Rest::Held | Rest::Pedal
-        );
-        if !held || channel.nudge == self.nudge {
-            return;
-        }
-        channel.offset += self.nudge - channel.nudge;
-        channel.nudge = self.nudge;
-        let offset = channel.offset;
-        channel.word = Bend::encode(offset, range).0;
-        let (bend, clipped) = Bend::encode(offset + wheel, range);
-        self.out.counters.clipped += clipped as u64;
-        if synth.bend(number, bend, Weight::Owed, &mut self.out) {
-            self.out.counters.bends += 1;
-        }
-        let sent = synth.channel(number).word.decode(range);
-        for voice in self.voices.iter() {
-            if voice.synth == id && voice.channel == number {
-                self.out.moved(Onset {
-                    part: voice.part,
-                    keyboard: voice.keyboard,
-                    key: voice.key,
-                    velocity: voice.velocity,
-                    synth: id,
-                    channel: number,
-                    number: voice.number,
-                    target: Pitch::of_key(voice.number) + offset,
-                    sent: Pitch::of_key(voice.number) + sent,
-                });
+        let is_tuned = self.part_of(id, number).is_some_and(|(_, part)| part.tune);
+        if is_tuned && self.is_held(now, id, number) {
+            let channel = self.synths[id.index()].channel(number);
+            let by = self.nudge - channel.nudge;
+            channel.nudge = self.nudge;
+            if by != Interval::ZERO {
+                self.move_channel(id, number, by, Weight::Owed);
             }
         }
+    }
+
+    /// Whether a key or pedal holds a note that still follows its channel's bend.
+    pub(super) fn is_held(&self, now: Time, id: SynthId, number: u8) -> bool {
+        let synth = &self.synths[id.index()];
+        let channel = &synth.channels[number as usize];
+        let rest = channel.rest(now, synth.rig.tail, synth.rig.keeps_pitch());
+        matches!(rest, Rest::Held | Rest::Pedal)
     }
 
     /// Note-offs for all that is open, then pedals up.
@@ -187,6 +156,7 @@ impl Engine {
             self.end(now, &voice, 64, None);
         }
         self.lift_all_pedals(now);
+        self.damp_harmonies(now);
     }
 
     fn lift_all_pedals(&mut self, now: Time) {

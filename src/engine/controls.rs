@@ -137,6 +137,7 @@ impl Engine {
     }
 
     fn pedal_up(&mut self, now: Time, index: usize, part: &PartPlan, number: u8) {
+        self.damp_harmonies(now);
         let synth = &mut self.synths[part.to.index()];
         for member in members(&synth.rig, part).iter() {
             let channel = synth.channel(member);

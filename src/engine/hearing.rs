@@ -57,6 +57,14 @@ impl Engine {
         };
         let keyboard = &self.plan.keyboards[self.plays_as(id).index()];
         let is_heard = keyboard.channels.has(channel);
+        let waits = match message {
+            Message::NoteOn { .. } => false,
+            Message::NoteOff { key, .. } => self.is_waiting(hand, key),
+            _ => true,
+        };
+        if waits {
+            self.play_chord();
+        }
         if let Message::NoteOff { key, velocity, .. } = message {
             self.source(hand).keys &= !(1 << key);
             self.note_silence(now);

@@ -15,6 +15,7 @@ mod commands;
 mod controls;
 mod cues;
 mod dialect;
+mod following;
 mod hearing;
 mod held;
 mod keyboard;
@@ -39,13 +40,15 @@ pub use traffic::{
     TonicBy, Weight,
 };
 
-use crate::limits::{KEYBOARDS_MAX, PARTS_MAX, SYNTHS_MAX};
+use crate::intonation::{Harmony, Method, Shapes};
+use crate::limits::{KEYBOARDS_MAX, PARTS_MAX, SYNTHS_MAX, WAITING_PRESSES_MAX};
 use crate::pitch::{Interval, Pitch};
 use crate::time::Time;
 use crate::tuning::Tuning;
 use armed::Armed;
 use by_hand::ByHand;
 use cues::Presses;
+use following::{HARMONIES, Waiting};
 use held::Held;
 use keyboard::{Keyboard, Source};
 use lasting::Lasting;
@@ -86,6 +89,13 @@ pub struct Engine {
     out: Outbox,
     armed: Armed,
     presses: Presses,
+    shapes: Shapes,
+    /// The stage's own first, then one for each part.
+    harmonies: Vec<Harmony>,
+    /// Presses of this instant that wait for their chord.
+    waiting: Vec<Waiting>,
+    /// Since when something waits for the harmony to be solved.
+    chord_at: Option<Time>,
     strikes: u64,
     sends_due: bool,
     stepped_at: Option<Time>,
@@ -101,6 +111,9 @@ struct Playing {
     by_hand: ByHand,
     reference: Pitch,
     transpose_keys: i8,
+    method: Method,
+    /// The middle of what its keys stand from equal.
+    level: Interval,
 }
 
 impl Playing {
@@ -111,6 +124,8 @@ impl Playing {
             by_hand: (*song.by_hand).clone(), // arrays too
             reference: song.reference,
             transpose_keys: song.transpose_keys,
+            method: song.method,
+            level: following::level(&song.tuning),
         }
     }
 }
@@ -167,6 +182,10 @@ impl Engine {
             out: Outbox::new(),
             armed: Armed::new(),
             presses: Presses::new(),
+            shapes: Shapes::new(),
+            harmonies: harmonies(plan.set[0].method),
+            waiting: Vec::with_capacity(WAITING_PRESSES_MAX),
+            chord_at: None,
             strikes: 0,
             stepped_at: None,
             stopping: false,
@@ -179,6 +198,9 @@ impl Engine {
     /// Cannot fail; bad bytes are counted.
     pub fn handle_input(&mut self, now: Time, input: Input<'_>) {
         self.tick(now);
+        if !matches!(input, Input::Midi { .. }) {
+            self.play_chord();
+        }
         match input {
             Input::Midi { keyboard, bytes } => self.bytes_in(now, keyboard, bytes),
             Input::KeyboardLost(keyboard) => self.let_go(now, keyboard),
@@ -212,6 +234,7 @@ impl Engine {
                 self.say_gestures_left_out(now, id);
             }
         }
+        self.glide(now);
         self.fire_long(now);
         self.when_silent(now);
         self.send_song(now);
@@ -223,11 +246,13 @@ impl Engine {
     /// again, unless the plan says that edits count at once. A synth whose rig changed takes it on once silent.
     pub fn handle_plan(&mut self, now: Time, plan: Box<Plan>) -> Box<Plan> {
         self.tick(now);
+        self.play_chord();
         self.swap_plan(now, plan)
     }
 
     /// Drain to `None` before time moves on.
     pub fn poll_output(&mut self) -> Option<Output<'_>> {
+        self.play_chord();
         self.out.take()
     }
 
@@ -236,7 +261,9 @@ impl Engine {
         let synths = self.synths.iter().take(self.plan.synths.len());
         let sensing = self.keyboards.iter().filter_map(Keyboard::gone_at);
         let due = synths.filter_map(|synth| synth.due_at(self.stopping));
-        sensing.chain(due).chain(self.presses.due_at()).min()
+        let glides = self.harmonies.iter().filter_map(Harmony::due_at);
+        let due = sensing.chain(due).chain(self.presses.due_at());
+        due.chain(glides).min()
     }
 
     pub fn report(&self) -> Report {
@@ -250,6 +277,7 @@ impl Engine {
             transpose_keys: self.transpose_keys(),
             transposed: self.transposed,
             plain: self.plain,
+            standing: self.harmonies[0].standing(),
             tonic,
             tonic_moved: self.in_force.tonic.is_some(),
             tonic_from_home,
@@ -264,6 +292,7 @@ impl Engine {
     }
 
     fn tick(&mut self, now: Time) {
+        self.play_chord_before(now);
         for synth in &mut self.synths {
             synth.wire.tick(now);
         }
@@ -339,6 +368,12 @@ impl SynthSet {
             .filter(move |index| self.0 >> index & 1 == 1)
             .filter_map(SynthId::new)
     }
+}
+
+fn harmonies(method: Method) -> Vec<Harmony> {
+    let mut harmony = Harmony::new();
+    harmony.begin(method);
+    vec![harmony; HARMONIES]
 }
 
 fn wheel_semitones(plan: &Plan, id: KeyboardId) -> u8 {

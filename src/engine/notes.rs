@@ -3,6 +3,7 @@
 use super::beforehand::bend_for;
 use super::choose::{Choice, Cost, Want, choose};
 use super::dialect::{self, on_members};
+use super::following::Followed;
 use super::outbox::Bundle;
 use super::part::owner_of;
 use super::plan::{KeyboardId, PartId, PartPlan, SynthId};
@@ -40,11 +41,13 @@ impl Luggage {
 
 /// A key press on its way to a part.
 #[derive(Clone, Copy)]
-struct Press {
-    hand: Hand,
-    key: Key,
+pub(super) struct Press {
+    pub hand: Hand,
+    pub key: Key,
     velocity: u8,
     luggage: Luggage,
+    /// One for each key press.
+    strike: u64,
 }
 
 impl Engine {
@@ -60,12 +63,15 @@ impl Engine {
             key,
             velocity,
             luggage,
+            strike: self.strikes,
         };
         for index in 0..self.plan.parts.len() {
             let part = self.plan.parts[index];
             if self.feeds(&part, hand) && (part.keys.0..=part.keys.1).contains(&key) {
                 let id = PartId::new(index).expect("a plan keeps to its limits");
-                self.start(now, id, &part, &press);
+                if !self.wait_for_chord(now, id, &part, &press) {
+                    self.start(now, id, &part, &press, None);
+                }
             }
         }
         for synth in self.drum_synths(hand).iter() {
@@ -73,20 +79,34 @@ impl Engine {
         }
     }
 
-    fn start(&mut self, now: Time, id: PartId, part: &PartPlan, press: &Press) {
-        let Some(target) = self.target(part, press.key) else {
-            self.out.counters.silent += 1;
-            return;
-        };
-        let Some(number) = target.nearest_key() else {
-            self.out.counters.silent += 1;
-            return;
-        };
+    /// Whether nothing new may sound there now.
+    pub(super) fn refuses(&self, part: &PartPlan) -> bool {
         let synth = &self.synths[part.to.index()];
-        if !synth.up || synth.tight || self.stopping || self.voices.full() {
+        !synth.up || synth.tight || self.stopping || self.voices.full()
+    }
+
+    /// Starts a note; tells whether it sounds.
+    pub(super) fn start(
+        &mut self,
+        now: Time,
+        id: PartId,
+        part: &PartPlan,
+        press: &Press,
+        followed: Option<Followed>,
+    ) -> bool {
+        let target = match followed {
+            Some(followed) => Some(self.followed_target(part, followed)),
+            None => self.target(part, press.key),
+        };
+        let Some((target, number)) = target.and_then(|at| Some((at, at.nearest_key()?))) else {
+            self.out.counters.silent += 1;
+            return false;
+        };
+        if self.refuses(part) {
             self.out.counters.refused += 1;
-            return;
+            return false;
         }
+        let synth = &self.synths[part.to.index()];
         let wheel = if on_members(&synth.rig, part) {
             self.parts[id.index()].wheel
         } else {
@@ -108,29 +128,49 @@ impl Engine {
             number,
             offset,
             nudge: self.nudge_of(part),
+            follows: followed.map(Followed::class),
             groups: self.playing.tuning.groups(),
             doubles: self.voices.iter().any(is_double),
             wheel,
         };
-        match choose(&want, synth, &self.voices, now) {
-            Some(choice) => {
-                self.make_room(now, part.to, choice);
-                self.sound(now, part, press, &want, choice.channel);
-            }
-            None => self.out.counters.refused += 1,
-        }
+        let Some(choice) = choose(&want, synth, &self.voices, now) else {
+            self.out.counters.refused += 1;
+            return false;
+        };
+        self.make_room(now, part.to, choice);
+        self.sound(now, part, press, &want, choice, followed);
+        true
     }
 
-    /// Where the song puts a key of a part; `None` where it is silent.
+    /// The key after all transpositions.
+    pub(super) fn moved_key(&self, part: &PartPlan, key: Key) -> Option<Key> {
+        key.moved(part.transpose_keys as i32 + self.transpose_keys() as i32)
+    }
+
+    /// Where the song's tuning puts a key at rest; `None` where it is silent.
+    pub(super) fn rest(&self, moved: Key) -> Option<Pitch> {
+        self.playing.tuning.pitch(moved)
+    }
+
+    /// Where the song puts a key of a part that follows no harmony; `None` where it is silent.
     pub(super) fn target(&self, part: &PartPlan, key: Key) -> Option<Pitch> {
-        let moved = key.moved(part.transpose_keys as i32 + self.transpose_keys() as i32)?;
+        let moved = self.moved_key(part, key)?;
         let equal = Pitch::of_key(moved.number());
         let pitch = match (part.tune, self.plain) {
             (false, _) => equal,
             (true, true) => equal + self.plan.plain_offset,
-            (true, false) => self.playing.tuning.pitch(moved)?,
+            (true, false) => self.rest(moved)?,
         };
         Some(pitch + part.offset + self.nudge_of(part))
+    }
+
+    /// Where the harmony puts a key of a part.
+    fn followed_target(&self, part: &PartPlan, followed: Followed) -> Pitch {
+        let harmony = &self.harmonies[followed.harmony as usize];
+        Pitch::of_key(followed.key.number())
+            + harmony.offset(followed.key.pitch_class())
+            + part.offset
+            + self.nudge_of(part)
     }
 
     /// Untuned parts are not nudged either.
@@ -145,6 +185,7 @@ impl Engine {
     fn make_room(&mut self, now: Time, id: SynthId, choice: Choice) {
         match choice.cost {
             Cost::Nothing => {}
+            Cost::Along => self.out.counters.moved_along += 1,
             Cost::Tail => self.out.counters.tails_cut += 1,
             Cost::Steal => {
                 self.out.counters.stolen += 1;
@@ -162,7 +203,16 @@ impl Engine {
     }
 
     /// Tells a chosen channel all that must be in force, then starts the note on it.
-    fn sound(&mut self, now: Time, part: &PartPlan, press: &Press, want: &Want, number: u8) {
+    fn sound(
+        &mut self,
+        now: Time,
+        part: &PartPlan,
+        press: &Press,
+        want: &Want,
+        choice: Choice,
+        followed: Option<Followed>,
+    ) {
+        let number = choice.channel;
         self.say_what_a_note_needs(now, part.to, number);
         let portamento_from = press
             .luggage
@@ -180,7 +230,14 @@ impl Engine {
         bend_for(synth, want, number, pressure, &mut bundle, &mut self.out);
         bundle.add(&[status::NOTE_ON | number, want.number, press.velocity]);
         synth.send(Weight::Note, bundle.bytes(), &mut self.out);
-        synth.channel(number).take(now, want.key);
+        let channel = synth.channel(number);
+        channel.take(now, want.key);
+        if choice.cost != Cost::Along {
+            channel.follows = want.follows;
+        }
+        if let Some(class) = channel.follows {
+            channel.stood = self.harmonies[class.harmony as usize].offset(class.class);
+        }
         self.out.counters.notes += 1;
         self.out.onset(Onset {
             part: want.part,
@@ -192,10 +249,12 @@ impl Engine {
             number: want.number,
             target: want.target(),
             sent: Pitch::of_key(want.number) + word.decode(range),
+            standing: followed.map(|f| self.standing(f)),
         });
         let voice = self.voice(press, part.to, number, want.number);
         self.voices.add(Voice {
             part: want.part,
+            followed,
             ..voice
         });
     }
@@ -212,9 +271,10 @@ impl Engine {
             keyboard: press.hand.keyboard,
             heard_on: press.hand.channel,
             key: press.key,
-            strike: self.strikes,
+            strike: press.strike,
             down: true,
             latched: false,
+            followed: None,
             drum: false,
         }
     }
@@ -306,11 +366,13 @@ impl Engine {
         if voice.drum {
             return;
         }
+        let follows_on = (damper || sostenuto) && !synth.rig.keeps_pitch();
         let channel = synth.channel(voice.channel);
         channel.held = channel.held.saturating_sub(1);
         channel.released_at = Some(now);
         channel.damper |= damper;
         channel.sostenuto |= sostenuto;
+        self.leave_harmony(now, voice, follows_on);
         if voice.pressure > 0
             && let Some((id, part)) = owner
         {

@@ -176,6 +176,20 @@ impl Pass {
     };
 }
 
+/// How a part stands to the harmony.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub enum Follow {
+    /// Its notes are the harmony, with those of all parts of this kind, and go with it.
+    #[default]
+    Harmony,
+    /// Its notes go with the harmony but do not make it: a melody.
+    Uncounted,
+    /// It has a harmony of its own.
+    Own,
+    /// Its notes stand where the tuning puts them and are not counted: a drone.
+    Nothing,
+}
+
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct PartPlan {
     /// `None`: every keyboard.
@@ -193,6 +207,8 @@ pub struct PartPlan {
     pub pass: Pass,
     /// False: plays plain twelve-equal at A4 = 440 Hz, whatever the song.
     pub tune: bool,
+    /// How it stands to the harmony, in songs that follow one.
+    pub follow: Follow,
     /// This part shares an MPE manager with another, so its pedals are played by late note-offs instead.
     pub late_offs: bool,
 }

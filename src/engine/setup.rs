@@ -22,7 +22,9 @@ impl Engine {
                 synth.piece_at = None;
                 synth.again_at = None;
                 synth.channels = [Channel::NEW; CHANNELS];
-                while self.voices.take(|v| v.synth == id).is_some() {}
+                while let Some(voice) = self.voices.take(|v| v.synth == id) {
+                    self.leave_harmony(now, &voice, false);
+                }
             }
             Link::Up | Link::Back => {
                 synth.up = true;

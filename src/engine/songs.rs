@@ -23,6 +23,7 @@ impl Engine {
         self.playing = Playing::of(song);
         self.sends_due = !song.sends.is_empty();
         self.begin_told();
+        self.begin_harmony();
         for synth in self.synths.iter_mut().take(self.plan.synths.len()) {
             synth.repeat_when_silent = true;
         }
@@ -94,11 +95,13 @@ impl Engine {
         self.find_armed_again(&old);
         self.song = place.unwrap_or(self.song.min(self.plan.set.len() - 1));
         if place.is_none() || self.plan.edits_at_once {
+            let method = self.playing.method;
             self.playing = Playing::of(&self.plan.set[self.song]);
             if place.is_none() {
                 self.begin_told();
             }
             self.retell();
+            self.begin_harmony_if_changed(method, place.is_none());
         }
         self.let_go_of_edited(now);
         for index in 0..self.plan.synths.len() {

@@ -2,6 +2,7 @@
 
 use super::by_hand::NameId;
 use super::plan::{KeyboardId, PartId, SynthId};
+use crate::intonation::Standing;
 use crate::pitch::{Interval, Pitch};
 use crate::tuning::{Key, Letter};
 
@@ -207,6 +208,8 @@ pub struct Onset {
     pub target: Pitch,
     /// Where number and tuning bend put it.
     pub sent: Pitch,
+    /// How the harmony stands that it follows.
+    pub standing: Option<Standing>,
 }
 
 /// What gave way, and how often. All start at 0 and only grow.
@@ -220,6 +223,8 @@ pub struct Counters {
     pub stolen: u64,
     /// Tails bent because no other channel was left.
     pub tails_cut: u64,
+    /// Notes that share a channel with others that the harmony moves differently, because none was free.
+    pub moved_along: u64,
     /// Keys that are silent in the tuning, or out of reach.
     pub silent: u64,
     /// New notes refused (outbox short, no voice left, synth away, or `steal: none`).
@@ -269,6 +274,8 @@ pub struct Report {
     pub alone: u16,
     /// By pitch class: black keys that are the second of their two names.
     pub second_names: [Option<Letter>; 12],
+    /// How the stage's harmony stands.
+    pub standing: Standing,
     /// Keys held (voices whose note-off is still to come).
     pub voices: u16,
     pub counters: Counters,

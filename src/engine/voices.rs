@@ -1,5 +1,6 @@
 //! Notes whose note-off is still to come.
 
+use super::following::Followed;
 use super::plan::{KeyboardId, PartId, SynthId};
 use crate::limits::VOICES_MAX;
 use crate::tuning::Key;
@@ -23,6 +24,8 @@ pub(super) struct Voice {
     pub down: bool,
     /// Latched by the sostenuto pedal.
     pub latched: bool,
+    /// What it is to the harmony, if it follows it.
+    pub followed: Option<Followed>,
     /// Passed through untouched on a drum channel.
     pub drum: bool,
 }

@@ -1,4 +1,4 @@
-//! `intonation`: the method by which a song's tuning meets its harmony. Checked here; only `fixed` is played yet.
+//! `intonation`: the method by which a song's tuning meets its harmony, and its knobs.
 
 use super::advice::Findings;
 use super::complaint::Complaints;
@@ -6,7 +6,9 @@ use super::node::{At, Node};
 use super::placing::twelve_to_the_octave;
 use super::tunings::TuningText;
 use super::values::choice;
-use crate::intonation::Method;
+use crate::intonation::{Method, Ratios, Settings};
+use crate::pitch::Interval;
+use crate::time::Span;
 
 #[derive(Clone, Copy, PartialEq)]
 enum Way {
@@ -21,14 +23,17 @@ const METHODS: [(&str, Way); 3] = [
     ("least-squares", Way::LeastSquares),
 ];
 
-/// A word, or a map with `method` and its limits.
+/// A word, or a map with `method` and its knobs.
 pub fn read(at: Option<&At<'_>>, described: Option<&TuningText>, found: &mut Findings) -> Method {
     let Some(at) = at else {
         return Method::Fixed;
     };
-    let way = match at.node {
+    let (way, settings) = match at.node {
         Node::Map(_) => settings(at, &mut found.complaints),
-        _ => choice(at, &METHODS, &mut found.complaints),
+        _ => {
+            let way = choice(at, &METHODS, &mut found.complaints);
+            (way, Settings::DEFAULT)
+        }
     };
     let Some(way) = way.filter(|way| *way != Way::Fixed) else {
         return Method::Fixed;
@@ -48,16 +53,23 @@ pub fn read(at: Option<&At<'_>>, described: Option<&TuningText>, found: &mut Fin
             ),
             "write `intonation: fixed`, or choose another tuning",
         );
+        return Method::Fixed;
     }
-    found.not_played(format!("`intonation: {name}`"));
-    Method::Fixed
+    match way {
+        Way::Fixed => Method::Fixed,
+        Way::ChordRoot => Method::ChordRoot(settings),
+        Way::LeastSquares => Method::LeastSquares(settings),
+    }
 }
 
-fn settings(at: &At<'_>, complaints: &mut Complaints) -> Option<Way> {
-    let mut fields = at.fields(
+fn settings(at: &At<'_>, complaints: &mut Complaints) -> (Option<Way>, Settings) {
+    let mut settings = Settings::DEFAULT;
+    let Some(mut fields) = at.fields(
         "a method, or a map such as `{method: chord-root}`",
         complaints,
-    )?;
+    ) else {
+        return (None, settings);
+    };
     let way = match fields.take("method") {
         Some(at) => choice(&at, &METHODS, complaints),
         None => {
@@ -70,36 +82,52 @@ fn settings(at: &At<'_>, complaints: &mut Complaints) -> Option<Way> {
         }
     };
     if let Some(at) = fields.take("ratios") {
-        ratios(&at, complaints);
+        settings.ratios = ratios(&at, complaints).unwrap_or_default();
     }
-    const LIMITS: [(&str, &str, i64); 6] = [
-        ("drift_limit_cents", "cents", 100),
-        ("return_cents_per_s", "cents a second", 100),
-        ("settle_ms", "milliseconds", 1000),
-        ("hold_limit_cents", "cents", 100),
-        ("glide_cents_per_s", "cents a second", 1000),
-        ("memory_s", "seconds", 60),
-    ];
-    for (name, unit, most) in LIMITS {
-        if let Some(at) = fields.take(name) {
-            limit(&at, name, unit, most, complaints);
-        }
+    let mut knob = |name: &'static str, unit: &str, most: i64| {
+        let at = fields.take(name)?;
+        limit(&at, name, unit, most, complaints)
+    };
+    let cents = |number: f64| Interval::from_microcents((number * 1e6).round() as i64);
+    let span = |seconds: f64| Span::from_nanos((seconds * 1e9).round() as u64);
+    if let Some(limit) = knob("drift_limit_cents", "cents", 100) {
+        settings.drift_limit = limit.map(cents);
+    }
+    if let Some(Some(speed)) = knob("return_cents_per_s", "cents a second", 100) {
+        settings.return_per_s = cents(speed);
+    }
+    if let Some(Some(millis)) = knob("settle_ms", "milliseconds", 1000) {
+        settings.settle = span(millis / 1e3);
+    }
+    if let Some(limit) = knob("hold_limit_cents", "cents", 100) {
+        settings.hold_limit = limit.map(cents);
+    }
+    if let Some(Some(speed)) = knob("glide_cents_per_s", "cents a second", 1000) {
+        settings.glide_per_s = cents(speed);
+    }
+    if let Some(Some(seconds)) = knob("memory_s", "seconds", 60) {
+        settings.memory = span(seconds);
     }
     fields.finish(complaints);
-    way
+    (way, settings)
 }
 
-/// A number that need not be whole, from 0; `none` takes a limit in cents away.
-fn limit(at: &At<'_>, name: &str, unit: &str, most: i64, complaints: &mut Complaints) {
+/// A number that need not be whole, from 0; `none` (here `Some(None)`) takes a limit in cents away.
+fn limit(
+    at: &At<'_>,
+    name: &str,
+    unit: &str,
+    most: i64,
+    complaints: &mut Complaints,
+) -> Option<Option<f64>> {
     let free = name.ends_with("limit_cents");
-    let good = match at.node {
-        Node::Number(text) => text
-            .parse::<f64>()
-            .is_ok_and(|number| (0.0..=most as f64).contains(&number)),
-        Node::Text(text) => free && text == "none",
-        _ => false,
+    let number = match at.node {
+        Node::Number(text) => text.parse::<f64>().ok().map(Some),
+        Node::Text(text) if free && text == "none" => Some(None),
+        _ => None,
     };
-    if !good {
+    let good = number.filter(|n| n.is_none_or(|n| (0.0..=most as f64).contains(&n)));
+    if good.is_none() {
         let none = if free { ", or none" } else { "" };
         complaints.add(
             &at.trail,
@@ -107,13 +135,14 @@ fn limit(at: &At<'_>, name: &str, unit: &str, most: i64, complaints: &mut Compla
             format!("write {unit} from 0 to {most}{none}"),
         );
     }
+    good
 }
 
 /// `pure`, `pure-with-7`, or twelve ratios above the root.
-fn ratios(at: &At<'_>, complaints: &mut Complaints) {
+fn ratios(at: &At<'_>, complaints: &mut Complaints) -> Option<Ratios> {
     let Node::List(items) = at.node else {
-        let _ = choice(at, &[("pure", ()), ("pure-with-7", ())], complaints);
-        return;
+        let sets = [("pure", Ratios::Pure), ("pure-with-7", Ratios::PureWith7)];
+        return choice(at, &sets, complaints);
     };
     if items.len() != 12 {
         complaints.add(
@@ -121,8 +150,12 @@ fn ratios(at: &At<'_>, complaints: &mut Complaints) {
             format!("a set of ratios has twelve, here are {}", items.len()),
             "write one for each key above the root, beginning with 1/1; or pure, or pure-with-7",
         );
+        return None;
     }
-    for item in at.items() {
-        let _ = super::values::interval(&item, complaints);
+    let mut offsets = [Interval::ZERO; 12];
+    for (semitones, item) in at.items().iter().enumerate() {
+        let stands = super::values::interval(item, complaints)?;
+        offsets[semitones] = stands - Interval::SEMITONE * semitones as i64;
     }
+    Some(Ratios::Own(offsets))
 }

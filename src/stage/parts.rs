@@ -2,10 +2,10 @@
 
 use super::advice::Findings;
 use super::complaint::{Complaints, Trail};
-use super::node::At;
+use super::node::{At, Node};
 use super::rig::{Rig, keyboard_named, synth_named};
 use super::values::{channels, choice, interval, key_range};
-use crate::engine::plan::{ChannelSet, KeyboardId, Pass, SynthId};
+use crate::engine::plan::{ChannelSet, Follow, KeyboardId, Pass, SynthId};
 use crate::limits::PARTS_MAX;
 use crate::pitch::Interval;
 use crate::tuning::Key;
@@ -22,6 +22,7 @@ pub struct Part {
     pub offset: Interval,
     pub pass: Pass,
     pub tune: bool,
+    pub follow: Follow,
 }
 
 /// Without `parts`, every key of every keyboard plays the first synth.
@@ -36,6 +37,7 @@ pub fn whole_keyboard() -> Part {
         offset: Interval::ZERO,
         pass: Pass::ALL,
         tune: true,
+        follow: Follow::Harmony,
     }
 }
 
@@ -94,16 +96,33 @@ fn part(at: &At<'_>, rig: &Rig, found: &mut Findings) -> Option<Part> {
     if let Some(at) = fields.take("tune") {
         part.tune = at.flag(complaints).unwrap_or(true);
     }
-    let follow = fields.take("follow").and_then(|at| at.flag(complaints));
+    if let Some(at) = fields.take("follow") {
+        part.follow = follow(&at, complaints);
+    }
     let mono = fields.take("mono").and_then(|at| at.flag(complaints));
     fields.finish(complaints);
-    if follow == Some(false) {
-        found.not_played("`follow: no` of a part");
-    }
     if mono == Some(true) {
         found.not_played("`mono: yes` of a part");
     }
     Some(part)
+}
+
+/// How it stands to the harmony: `yes`, `no`, `own`, `uncounted`.
+fn follow(at: &At<'_>, complaints: &mut Complaints) -> Follow {
+    if let Node::Flag(flag) = at.node {
+        return if *flag {
+            Follow::Harmony
+        } else {
+            Follow::Nothing
+        };
+    }
+    let words = [
+        ("yes", Follow::Harmony),
+        ("no", Follow::Nothing),
+        ("own", Follow::Own),
+        ("uncounted", Follow::Uncounted),
+    ];
+    choice(at, &words, complaints).unwrap_or_default()
 }
 
 /// Keys up or down: at most five octaves.

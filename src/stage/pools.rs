@@ -40,6 +40,7 @@ pub fn allot(parts: &[Part], rig: &Rig, complaints: &mut Complaints) -> Vec<Part
             offset: part.offset,
             pass: part.pass,
             tune: part.tune,
+            follow: part.follow,
             late_offs: shares_manager(part.to, parts, rig),
         })
         .collect()

@@ -88,6 +88,7 @@ pub fn part(synths: &[SynthPlan]) -> PartPlan {
         offset: Interval::ZERO,
         pass: Pass::ALL,
         tune: true,
+        follow: trued::engine::plan::Follow::Harmony,
         late_offs: false,
     }
 }
