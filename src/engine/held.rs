@@ -125,11 +125,15 @@ impl Engine {
     /// Another tuning, the same hands.
     pub(super) fn retell(&mut self) {
         let told = self.folded();
+        let turned = self.plain != told.plain;
         self.nudge = told.nudge;
         self.plain = told.plain;
         self.transposed = told.transposed;
         self.in_force = told;
         self.playing.retune(&told);
+        if turned {
+            self.begin_harmony();
+        }
     }
 
     /// What is latched, with what is held on top.

@@ -4,6 +4,7 @@
 
 use super::Playing;
 use super::by_hand::ByHand;
+use super::following::level;
 use super::traffic::{Command, InflectTo, Inflected, Nudge, Place, TonicBy};
 use crate::limits::{INFLECT_MAX_CENTS, KEYS, NUDGE_MAX_CENTS};
 use crate::pitch::{Interval, Pitch};
@@ -268,5 +269,6 @@ impl Playing {
     pub(super) fn retune(&mut self, told: &Lasting) {
         let pitch = |number: usize| self.pitch(told, Key::new(number as u8)?);
         self.tuning = Tuning::new(std::array::from_fn(pitch));
+        self.level = level(&self.tuning);
     }
 }

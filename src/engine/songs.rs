@@ -101,7 +101,9 @@ impl Engine {
                 self.begin_told();
             }
             self.retell();
-            self.begin_harmony_if_changed(method, place.is_none());
+            if place.is_none() || self.playing.method != method {
+                self.begin_harmony();
+            }
         }
         self.let_go_of_edited(now);
         for index in 0..self.plan.synths.len() {

@@ -4,6 +4,7 @@
 //! note is younger than the settle window, and glides after.
 
 mod motion;
+mod sounding;
 
 use super::candidates::{Candidates, is_dominant};
 use super::chord::Chord;
@@ -15,12 +16,11 @@ use super::shapes::{CORE_MAX, Shapes};
 use crate::limits::KEYS;
 use crate::pitch::Interval;
 use crate::time::{Span, Time};
-use crate::tuning::Key;
 
 /// A note under a pedal counts half after so long, and after twice that is no longer part of the chord.
 const FADE: Span = Span::from_millis(700);
 /// A held note weighs twice as much after so long, and no more than four times after thrice that.
-const ROCK: Span = Span::from_millis(12_000);
+const ROCK: Span = Span::from_millis(4_000);
 /// What ended so shortly ago was part of the chord before.
 const JUST: Span = Span::from_millis(100);
 /// So long a dominant chord is remembered without its root.
@@ -169,60 +169,6 @@ impl Harmony {
         self.sevenths = sevenths;
     }
 
-    /// A key goes down, which at rest stands so far from equal. Its place is known after [`Harmony::solve`].
-    pub fn press(&mut self, now: Time, key: Key, rest: Interval, counted: bool) {
-        let state = &mut self.keys[key.number() as usize];
-        let place = &mut self.places[key.pitch_class() as usize];
-        if place.sounding == 0 {
-            place.since = now;
-            place.stepped = None;
-            if place.let_go.is_none() {
-                place.now = rest.microcents();
-            }
-        }
-        place.sounding += (state.held == 0 && !state.rings) as u8;
-        place.held += (state.held == 0) as u8;
-        place.counted += (counted && state.held == state.uncounted) as u8;
-        state.rings = false;
-        state.held = state.held.saturating_add(1);
-        state.uncounted += !counted as u8;
-        place.rest = rest.microcents();
-        self.struck |= counted;
-        self.changed = true;
-    }
-
-    /// A note of a key ends; `rings`: a pedal keeps it sounding.
-    pub fn release(&mut self, now: Time, key: Key, counted: bool, rings: bool) {
-        let state = &mut self.keys[key.number() as usize];
-        let place = &mut self.places[key.pitch_class() as usize];
-        if state.held == 0 {
-            return;
-        }
-        state.held -= 1;
-        state.uncounted = state.uncounted.saturating_sub(!counted as u8);
-        if counted && state.held == state.uncounted {
-            place.counted -= 1;
-            if place.counted == 0 {
-                place.let_go = Some(now);
-            }
-        }
-        if state.held == 0 {
-            state.rings = rings;
-            place.held -= 1;
-            place.sounding -= !rings as u8;
-        }
-        self.changed = true;
-    }
-
-    /// The pedal is up: what only it held has ended.
-    pub fn damp(&mut self) {
-        for (number, state) in self.keys.iter_mut().enumerate().filter(|(_, s)| s.rings) {
-            state.rings = false;
-            self.places[number % 12].sounding -= 1;
-            self.changed = true;
-        }
-    }
-
     /// Where a pitch class stands now, from equal.
     pub fn offset(&self, class: u8) -> Interval {
         Interval::from_microcents(self.places[class as usize % 12].now)
@@ -264,26 +210,6 @@ impl Harmony {
         self.glide(now);
     }
 
-    /// The pitch classes that are the harmony now.
-    fn sounding_chord(&self, now: Time) -> PitchClasses {
-        let lasts = |at: Time| now.since(at).nanos() < 2 * FADE.nanos();
-        let counts = |place: &Place| {
-            place.counted > 0
-                || place.held == 0 && place.sounding > 0 && place.let_go.is_some_and(lasts)
-        };
-        (0..12u8)
-            .filter(|class| counts(&self.places[*class as usize]))
-            .collect()
-    }
-
-    fn bass(&self, chord: PitchClasses) -> Option<u8> {
-        let sounds = |(number, state): &(usize, &KeyState)| {
-            (state.held > state.uncounted || state.rings) && chord.has(*number as u8)
-        };
-        let lowest = self.keys.iter().enumerate().find(sounds);
-        lowest.map(|(number, _)| number as u8 % 12)
-    }
-
     fn place_chord(
         &mut self,
         now: Time,
@@ -322,25 +248,6 @@ impl Harmony {
         for (class, member) in self.chord.classes.iter_mut().zip(members.iter()) {
             *class = member.class;
         }
-    }
-
-    /// At most as many pitch classes as there are shapes for: the bass, the root, and of the others those with most
-    /// keys, held ones first, the longer the better.
-    fn core(&self, chord: PitchClasses) -> PitchClasses {
-        let mut core = chord;
-        let bass = self.bass(chord);
-        while core.count() > CORE_MAX {
-            let strength = |class: &u8| {
-                let place = &self.places[*class as usize];
-                let stays = Some(*class) == bass || Some(*class) == self.chord.root;
-                (stays, place.counted, std::cmp::Reverse(place.since))
-            };
-            let Some(weakest) = core.iter().min_by_key(strength) else {
-                break;
-            };
-            core = core.without(weakest);
-        }
-        core
     }
 
     /// The root over which the seventh is to be 7/4, if the chord is a dominant and its seventh is free to be so: one

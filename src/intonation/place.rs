@@ -129,7 +129,8 @@ fn strain(members: &[Member], at: &[i64]) -> i64 {
     let (mut motion, mut away) = (0, 0);
     for (member, at) in members.iter().zip(at) {
         if member.held.is_some() {
-            motion += (at - member.was).abs() * member.keys;
+            // What has long been sounding weighs more, as it pulls more.
+            motion += (at - member.was).abs() / 1_000 * member.keys * member.pull / (HELD / 1_000);
         }
         away += (at - member.rest).abs() * member.keys;
     }

@@ -8,6 +8,8 @@ mod cues;
 mod determinism;
 /// Other places of keys, latched, held and by the line.
 mod inflections;
+/// Chords that are pure, and what of them moves.
+mod harmony;
 /// Keyboards and synths that go and come back, panic, a short outbox.
 mod lost;
 /// Mode messages, Reset All Controllers.

@@ -1,7 +1,7 @@
 //! Scripts in, transcripts out: a small language so that a test reads like a score.
 //!
 //! A line is a time in milliseconds and what happens then:
-//! `0 on C4 100` · `500 off C4` · `0 pedal down` · `0 sostenuto up` · `0 wheel 16383` · `0 send F0 7D 01 F7` (raw bytes) ·
+//! `0 on C4 100` · `0 chord C4 E4 G4` (struck as one) · `500 off C4` · `0 pedal down` · `0 sostenuto up` · `0 wheel 16383` · `0 send F0 7D 01 F7` (raw bytes) ·
 //! `0 cc 82 127` · `0 program 3` (as on the wire) · `0 tell pitch +1 c` (a rig of a stage file) ·
 //! `0 song 2` · `0 next` · `0 back` · `0 panic` · `0 resend` · `0 end` · `0 stop` · `0 lost` (the keyboard) ·
 //! `0 synth down` (`up`, `back`, `tight`, `easy`) · `0 wait`. `second` before a gesture: from the other keyboard.
@@ -40,6 +40,10 @@ impl Rig {
         match words {
             ["wait"] => {}
             ["on", name, velocity] => self.midi(keyboard, &[0x90, key(name), number(velocity)]),
+            ["chord", names @ ..] => {
+                let on = |name: &&str| [0x90, key(name), 100];
+                self.midi(keyboard, &names.iter().flat_map(on).collect::<Vec<u8>>());
+            }
             ["off", name] => self.midi(keyboard, &[0x80, key(name), 64]),
             ["pedal", to] => self.midi(keyboard, &[0xB0, 64, place(to)]),
             ["sostenuto", to] => self.midi(keyboard, &[0xB0, 66, place(to)]),

@@ -1,0 +1,103 @@
+//! What sounds: keys that go down and up, pedals, and which pitch classes are the chord.
+
+use super::{FADE, Harmony, KeyState, Place};
+use crate::intonation::pitch_classes::PitchClasses;
+use crate::intonation::shapes::CORE_MAX;
+use crate::pitch::Interval;
+use crate::time::Time;
+use crate::tuning::Key;
+
+impl Harmony {
+    /// A key goes down, which at rest stands so far from equal. Its place is known after [`Harmony::solve`].
+    pub fn press(&mut self, now: Time, key: Key, rest: Interval, counted: bool) {
+        let state = &mut self.keys[key.number() as usize];
+        let place = &mut self.places[key.pitch_class() as usize];
+        if place.sounding == 0 {
+            place.since = now;
+            place.stepped = None;
+            if place.let_go.is_none() {
+                place.now = rest.microcents();
+            }
+        }
+        place.sounding += (state.held == 0 && !state.rings) as u8;
+        place.held += (state.held == 0) as u8;
+        place.counted += (counted && state.held == state.uncounted) as u8;
+        state.rings = false;
+        state.held = state.held.saturating_add(1);
+        state.uncounted += !counted as u8;
+        place.rest = rest.microcents();
+        self.struck |= counted;
+        self.changed = true;
+    }
+
+    /// A note of a key ends; `rings`: a pedal keeps it sounding.
+    pub fn release(&mut self, now: Time, key: Key, counted: bool, rings: bool) {
+        let state = &mut self.keys[key.number() as usize];
+        let place = &mut self.places[key.pitch_class() as usize];
+        if state.held == 0 {
+            return;
+        }
+        state.held -= 1;
+        state.uncounted = state.uncounted.saturating_sub(!counted as u8);
+        if counted && state.held == state.uncounted {
+            place.counted -= 1;
+            if place.counted == 0 {
+                place.let_go = Some(now);
+            }
+        }
+        if state.held == 0 {
+            state.rings = rings;
+            place.held -= 1;
+            place.sounding -= !rings as u8;
+        }
+        self.changed = true;
+    }
+
+    /// The pedal is up: what only it held has ended.
+    pub fn damp(&mut self) {
+        for (number, state) in self.keys.iter_mut().enumerate().filter(|(_, s)| s.rings) {
+            state.rings = false;
+            self.places[number % 12].sounding -= 1;
+            self.changed = true;
+        }
+    }
+
+    /// The pitch classes that are the harmony now.
+    pub(super) fn sounding_chord(&self, now: Time) -> PitchClasses {
+        let lasts = |at: Time| now.since(at).nanos() < 2 * FADE.nanos();
+        let counts = |place: &Place| {
+            place.counted > 0
+                || place.held == 0 && place.sounding > 0 && place.let_go.is_some_and(lasts)
+        };
+        (0..12u8)
+            .filter(|class| counts(&self.places[*class as usize]))
+            .collect()
+    }
+
+    pub(super) fn bass(&self, chord: PitchClasses) -> Option<u8> {
+        let sounds = |(number, state): &(usize, &KeyState)| {
+            (state.held > state.uncounted || state.rings) && chord.has(*number as u8)
+        };
+        let lowest = self.keys.iter().enumerate().find(sounds);
+        lowest.map(|(number, _)| number as u8 % 12)
+    }
+
+    /// At most as many pitch classes as there are shapes for: the bass, the root, and of the others those with most
+    /// keys, held ones first, the longer the better.
+    pub(super) fn core(&self, chord: PitchClasses) -> PitchClasses {
+        let mut core = chord;
+        let bass = self.bass(chord);
+        while core.count() > CORE_MAX {
+            let strength = |class: &u8| {
+                let place = &self.places[*class as usize];
+                let stays = Some(*class) == bass || Some(*class) == self.chord.root;
+                (stays, place.counted, std::cmp::Reverse(place.since))
+            };
+            let Some(weakest) = core.iter().min_by_key(strength) else {
+                break;
+            };
+            core = core.without(weakest);
+        }
+        core
+    }
+}
