@@ -6,10 +6,10 @@ mod black_keys;
 mod cues;
 /// Two runs of one script; a stream in portions.
 mod determinism;
-/// Other places of keys, latched, held and by the line.
-mod inflections;
 /// Chords that are pure, and what of them moves.
 mod harmony;
+/// Other places of keys, latched, held and by the line.
+mod inflections;
 /// Keyboards and synths that go and come back, panic, a short outbox.
 mod lost;
 /// Mode messages, Reset All Controllers.

@@ -166,7 +166,6 @@ fn songs_cues_and_lamps() {
     );
     // What no engine plays yet is said, each once.
     for what in [
-        "`intonation: chord-root`",
         "`parts` of a song of its own (Two manuals)",
         "cue 6: what it does",
         "lamp 1",
