@@ -3,7 +3,9 @@
 use super::status::cents;
 use crate::engine::plan::NameId;
 use crate::engine::{Place, Report};
+use crate::intonation::{Sevenths, Standing};
 use crate::pitch::Interval;
+use crate::tuning::Letter;
 use serde_json::{Value, json};
 
 type Names = [(NameId, String)];
@@ -22,8 +24,18 @@ pub fn sentences(report: &Report, names: &Names) -> Vec<String> {
             out.push(format!("The tonic is {tonic}{far}."));
         }
     }
+    if report.root_held
+        && let Some(root) = report.standing.chord.root
+    {
+        out.push(format!("The root is held on {}.", Letter::usual(root)));
+    }
+    match report.sevenths {
+        Some(Sevenths::Harmonic) => out.push("Sevenths are harmonic, 7/4.".to_string()),
+        Some(Sevenths::Plain) => out.push("Sevenths are plain.".to_string()),
+        None => {}
+    }
     if report.waits_for_key {
-        out.push("The next key will be the tonic.".to_string());
+        out.push("The next key is waited for: it names the tonic or the root.".to_string());
     }
     for (key, place, nudge) in report.off_home() {
         let place = match place {
@@ -78,4 +90,20 @@ pub fn black_keys(report: &Report) -> Value {
 fn name(id: NameId, names: &Names) -> &str {
     let known = names.iter().find(|(known, _)| *known == id);
     known.map_or("another place", |(_, name)| name)
+}
+
+/// The chord that sounds now, for a line of its own; `None` where no harmony is followed, or nothing sounds.
+pub fn chord(standing: &Standing) -> Option<String> {
+    let root = Letter::usual(standing.chord.root?);
+    let shape = shape(standing).map_or(String::new(), |shape| format!(", {shape}"));
+    let drift = cents(standing.drift);
+    Some(format!(
+        "The chord stands on {root}{shape}, {drift:+.1} c from rest."
+    ))
+}
+
+/// `4:5:6`.
+pub fn shape(standing: &Standing) -> Option<String> {
+    let numbers: Vec<String> = standing.chord.ratio().map(|n| n.to_string()).collect();
+    (!numbers.is_empty()).then(|| numbers.join(":"))
 }

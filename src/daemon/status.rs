@@ -77,6 +77,7 @@ impl Status {
     /// Everything on one screen, a sentence a line.
     pub fn text(&self, uptime_s: u64) -> String {
         let mut lines = self.sentences();
+        lines.extend(by_hand::chord(&self.report.standing));
         let priority = if self.real_time {
             "with real-time priority."
         } else {
@@ -121,6 +122,11 @@ impl Status {
             "waits_for_key": self.report.waits_for_key,
             "inflections": by_hand::inflections(&self.report, &self.places),
             "black_keys": by_hand::black_keys(&self.report),
+            "root": self.report.standing.chord.root,
+            "shape": by_hand::shape(&self.report.standing),
+            "anchor_cents": self.report.standing.anchor.map(cents),
+            "drift_cents": cents(self.report.standing.drift),
+            "root_held": self.report.root_held,
             "songs": self.titles.len(),
             "keyboards": devices(&self.keyboards),
             "synths": devices(&self.synths),

@@ -42,7 +42,10 @@ pub fn outcome(command: Command, before: &Report, now: &Status) -> Result<String
         | Command::BlackKey(_)
         | Command::Tonic { .. }
         | Command::TonicNextKey(_)
-        | Command::TonicHome => by_hand(command, before, now),
+        | Command::TonicHome
+        | Command::Root(_)
+        | Command::RootNextKey
+        | Command::Sevenths(_) => by_hand(command, before, now),
         Command::Home => Ok(format!("as it begins: {}", now.song_shown())),
         Command::Fresh => Ok(format!("as if started anew: {}", now.song_shown())),
         Command::Panic => Ok("all is silenced, and every synth set up again".to_string()),
@@ -80,6 +83,9 @@ fn by_hand(command: Command, before: &Report, now: &Status) -> Result<String, St
         }
         Command::BlackKey(name) => {
             format!("no black key may be {name} or something else in {song}")
+        }
+        Command::Root(_) | Command::RootNextKey | Command::Sevenths(_) => {
+            format!("no harmony is followed (`intonation: fixed`) in {song}")
         }
         Command::Turn(_) => format!("there is no such turn in {song}"),
         _ => format!("that key has no such place, or is as far from it as it goes, in {song}"),

@@ -77,6 +77,9 @@ fn begins_a_song(command: Command) -> bool {
         | Command::Tonic { .. }
         | Command::TonicNextKey(_)
         | Command::TonicHome
+        | Command::Root(_)
+        | Command::RootNextKey
+        | Command::Sevenths(_)
         | Command::Home
         | Command::Ask(_)
         | Command::Panic

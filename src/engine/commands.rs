@@ -2,6 +2,7 @@
 
 use super::Engine;
 use super::channel::{Rest, UNSAID};
+use super::next_key::Names;
 use super::plan::SynthId;
 use super::synth::PEDALS;
 use super::traffic::{Command, Weight};
@@ -70,12 +71,15 @@ impl Engine {
             | Command::InflectHome
             | Command::Turn(_)
             | Command::BlackKey(_)
+            | Command::Root(_)
+            | Command::Sevenths(_)
             | Command::Tonic { .. } => self.latch_told(now, command),
             Command::TonicHome => {
                 self.next_key = None;
                 self.latch_told(now, command);
             }
-            Command::TonicNextKey(by) => self.wait_for_key(by, None),
+            Command::TonicNextKey(by) => self.wait_for_key(Names::Tonic(by), None),
+            Command::RootNextKey => self.wait_for_key(Names::Root, None),
             Command::Home => self.begin_again(now, self.song),
             Command::Fresh => {
                 self.latched.nudge = Interval::ZERO;

@@ -1,5 +1,6 @@
 //! Cues: what a player does, how long it is held, and what that makes happen.
 
+use super::next_key::Names;
 use super::plan::{Act, CuePlan, Gesture, Press};
 use super::traffic::Command;
 use super::{Engine, Hand};
@@ -172,8 +173,13 @@ impl Engine {
                 return;
             }
         };
-        if let Command::TonicNextKey(by) = command {
-            self.wait_for_key(by, Some((cue, hand)));
+        let names = match command {
+            Command::TonicNextKey(by) => Some(Names::Tonic(by)),
+            Command::RootNextKey => Some(Names::Root),
+            _ => None,
+        };
+        if let Some(names) = names {
+            self.wait_for_key(names, Some((cue, hand)));
         } else if cue.held {
             self.hold(now, hand, cue.gesture, command);
         } else if cue.at_quiet {

@@ -4,9 +4,10 @@
 //! moves on, something else comes in, or the driver asks for output.
 
 use super::dialect::on_members;
+use super::lasting::Lasting;
 use super::notes::Press;
 use super::plan::{Follow, PartId, PartPlan, SynthId};
-use super::traffic::{Onset, Weight};
+use super::traffic::{Onset, RootTo, Weight};
 use super::voices::Voice;
 use super::{Engine, Hand};
 use crate::limits::{KEYS, PARTS_MAX};
@@ -186,6 +187,20 @@ impl Engine {
             for channel in &mut synth.channels {
                 channel.follows = None;
             }
+        }
+    }
+
+    /// What is told of root and sevenths.
+    pub(super) fn tell_harmony(&mut self, before: &Lasting, told: &Lasting, anew: bool) {
+        for harmony in &mut self.harmonies {
+            if anew || before.root != told.root {
+                match told.root {
+                    RootTo::Hold => harmony.hold_root(None),
+                    RootTo::At(class) => harmony.hold_root(Some(class)),
+                    RootTo::Free => harmony.free_root(),
+                }
+            }
+            harmony.set_sevenths(told.sevenths);
         }
     }
 

@@ -126,6 +126,7 @@ impl Engine {
     pub(super) fn retell(&mut self) {
         let told = self.folded();
         let turned = self.plain != told.plain;
+        let before = self.in_force;
         self.nudge = told.nudge;
         self.plain = told.plain;
         self.transposed = told.transposed;
@@ -134,6 +135,7 @@ impl Engine {
         if turned {
             self.begin_harmony();
         }
+        self.tell_harmony(&before, &told, turned);
     }
 
     /// What is latched, with what is held on top.

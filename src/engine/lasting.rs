@@ -5,7 +5,8 @@
 use super::Playing;
 use super::by_hand::ByHand;
 use super::following::level;
-use super::traffic::{Command, InflectTo, Inflected, Nudge, Place, TonicBy};
+use super::traffic::{Command, InflectTo, Inflected, Nudge, Place, RootTo, TonicBy};
+use crate::intonation::{Method, Sevenths};
 use crate::limits::{INFLECT_MAX_CENTS, KEYS, NUDGE_MAX_CENTS};
 use crate::pitch::{Interval, Pitch};
 use crate::tuning::{Key, Scale, Tonic, Tuning};
@@ -20,6 +21,9 @@ pub(super) struct Lasting {
     pub transposed: Option<i8>,
     /// In place of the song's own.
     pub tonic: Option<Tonic>,
+    pub root: RootTo,
+    /// In place of the song's own.
+    pub sevenths: Option<Sevenths>,
     /// By pitch class.
     pub places: [Place; 12],
     pub trims: [Interval; 12],
@@ -43,6 +47,8 @@ impl Lasting {
             plain: false,
             transposed: None,
             tonic: None,
+            root: RootTo::Free,
+            sevenths: None,
             places: song.begin_with,
             trims: [Interval::ZERO; 12],
             alone: [None; KEYS],
@@ -103,6 +109,14 @@ impl Lasting {
             Command::TonicHome => {
                 self.tonic = None;
                 return playing.by_hand.turning.is_some();
+            }
+            Command::Root(to) => {
+                self.root = to;
+                return playing.method != Method::Fixed;
+            }
+            Command::Sevenths(sevenths) => {
+                self.sevenths = Some(sevenths);
+                return playing.method != Method::Fixed;
             }
             _ => return false,
         }

@@ -37,7 +37,7 @@ mod wire;
 pub use plan::{KeyboardId, PartId, Plan, SynthId};
 pub use traffic::{
     Ask, Command, Counters, InflectTo, Inflected, Input, Link, Nudge, Onset, Output, Place, Report,
-    TonicBy, Weight,
+    RootTo, TonicBy, Weight,
 };
 
 use crate::intonation::{Harmony, Method, Shapes};
@@ -277,6 +277,8 @@ impl Engine {
             transpose_keys: self.transpose_keys(),
             transposed: self.transposed,
             plain: self.plain,
+            root_held: !matches!(self.in_force.root, RootTo::Free),
+            sevenths: self.in_force.sevenths,
             standing: self.harmonies[0].standing(),
             tonic,
             tonic_moved: self.in_force.tonic.is_some(),

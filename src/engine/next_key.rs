@@ -1,17 +1,25 @@
-//! Words that wait for the next key: `tonic next-key`. That key names something and is silent, unless the cue passes it on.
+//! Words that wait for the next key: `tonic next-key`, `root next-key`. That key names something and is silent, unless the cue passes it on.
 
 use super::cues::Heard;
 use super::plan::{CuePlan, Gesture};
-use super::traffic::TonicBy;
+use super::traffic::{Command, RootTo, TonicBy};
 use super::{Engine, Hand};
+use crate::intonation::Method;
 use crate::pitch::Interval;
 use crate::time::Time;
 use crate::tuning::{Key, Letter, Tonic};
 
+/// What the next key names.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(super) enum Names {
+    Tonic(TonicBy),
+    Root,
+}
+
 /// What the next key is for.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub(super) struct Wait {
-    by: TonicBy,
+    names: Names,
     /// The key sounds as well.
     pass: bool,
     /// The control it was asked by; `None` if it was told.
@@ -21,13 +29,17 @@ pub(super) struct Wait {
 }
 
 impl Engine {
-    pub(super) fn wait_for_key(&mut self, by: TonicBy, cue: Option<(&CuePlan, Hand)>) {
-        if self.playing.by_hand.turning.is_none() {
+    pub(super) fn wait_for_key(&mut self, names: Names, cue: Option<(&CuePlan, Hand)>) {
+        let has_it = match names {
+            Names::Tonic(_) => self.playing.by_hand.turning.is_some(),
+            Names::Root => self.playing.method != Method::Fixed,
+        };
+        if !has_it {
             self.out.counters.ignored += 1;
             return;
         }
         self.next_key = Some(Wait {
-            by,
+            names,
             pass: cue.is_some_and(|(cue, _)| cue.pass),
             asked_by: cue.map(|(cue, hand)| (hand, cue.gesture)),
             while_held: cue.is_some_and(|(cue, _)| cue.held),
@@ -47,9 +59,14 @@ impl Engine {
             return false;
         }
         self.next_key = None;
-        if !self.latched.move_tonic(tonic, wait.by, &self.playing) {
-            self.out.counters.ignored += 1;
-        }
+        let done = match wait.names {
+            Names::Tonic(by) => self.latched.move_tonic(tonic, by, &self.playing),
+            Names::Root => {
+                let root = Command::Root(RootTo::At(tonic.pitch_class()));
+                self.latched.take(root, &self.playing)
+            }
+        };
+        self.out.counters.ignored += !done as u64;
         self.put_in_force(now, false);
         if !wait.pass {
             self.source(hand).named |= 1 << key.number();

@@ -2,7 +2,7 @@
 
 use super::by_hand::NameId;
 use super::plan::{KeyboardId, PartId, SynthId};
-use crate::intonation::Standing;
+use crate::intonation::{Sevenths, Standing};
 use crate::pitch::{Interval, Pitch};
 use crate::tuning::{Key, Letter};
 
@@ -82,6 +82,12 @@ pub enum Command {
     TonicNextKey(TonicBy),
     /// Back to the song's own.
     TonicHome,
+    /// The harmony keeps its root, or finds it again by itself.
+    Root(RootTo),
+    /// It is the next key that goes down.
+    RootNextKey,
+    /// How large dominant sevenths are, in place of the song's own.
+    Sevenths(Sevenths),
     /// The song as it begins, not plain. The pitch nudge stays.
     Home,
     /// As if started anew: the first song, and nothing left of what was nudged, moved or armed.
@@ -97,6 +103,16 @@ pub enum Command {
     /// Going away: as `End`, and once the last tail has died each synth is left as its plan says.
     /// `Report::stopped` tells when nothing more will come.
     Stop,
+}
+
+/// What the root of the harmony does.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum RootTo {
+    /// Stays what it is now.
+    Hold,
+    /// Is this pitch class.
+    At(u8),
+    Free,
 }
 
 /// Where a pitch nudge goes.
@@ -274,6 +290,10 @@ pub struct Report {
     pub alone: u16,
     /// By pitch class: black keys that are the second of their two names.
     pub second_names: [Option<Letter>; 12],
+    /// The root is held by hand.
+    pub root_held: bool,
+    /// Dominant sevenths are so by hand.
+    pub sevenths: Option<Sevenths>,
     /// How the stage's harmony stands.
     pub standing: Standing,
     /// Keys held (voices whose note-off is still to come).

@@ -11,6 +11,8 @@ use crate::time::Time;
 pub struct Recording {
     pub sent: Vec<Sent>,
     pub notes: Vec<Sounded>,
+    /// Sounding notes that were moved, in order.
+    pub moved: Vec<(Time, Onset)>,
     /// When the score ends.
     pub end: Time,
     pub counters: Counters,
@@ -69,6 +71,7 @@ pub fn play(plan: Box<Plan>, score: &Score<'_>, song: u16, keyboard: usize) -> R
         song: 0,
         sent: Vec::new(),
         notes: Vec::new(),
+        moved: Vec::new(),
         open: Vec::new(),
     };
     player.begin(song, synths.len());
@@ -101,6 +104,7 @@ pub fn play(plan: Box<Plan>, score: &Score<'_>, song: u16, keyboard: usize) -> R
     Recording {
         sent: player.sent,
         notes: player.notes,
+        moved: player.moved,
         end,
         counters: player.engine.report().counters,
         synths,
@@ -114,6 +118,7 @@ struct Player<'a> {
     song: u16,
     sent: Vec<Sent>,
     notes: Vec<Sounded>,
+    moved: Vec<(Time, Onset)>,
     /// Notes whose note-off is still to come, oldest first.
     open: Vec<usize>,
 }
@@ -160,7 +165,8 @@ impl Player<'_> {
                     });
                     close(&mut self.open, &mut self.notes, synth, bytes, time);
                 }
-                Output::Moved(_) | Output::Ask(_) => {} // no desk here
+                Output::Moved(onset) => self.moved.push((time, onset)),
+                Output::Ask(_) => {} // no desk here
                 Output::Onset(onset) => {
                     self.open.push(self.notes.len());
                     self.notes.push(Sounded {
@@ -232,6 +238,10 @@ impl Recording {
         (
             counters.stolen,
             "notes were ended early: the synth has too few channels for so many pitches at once",
+        ),
+        (
+            counters.moved_along,
+            "notes went along with others that the harmony moves differently: the synth has too few channels",
         ),
         (
             counters.tails_cut,

@@ -4,14 +4,15 @@ use super::expression::Mistake;
 use super::node::nearest;
 use super::told::Told;
 use super::values::one_of;
-use super::words::{PitchNudge, TonicMove, Words};
+use super::words::{PitchNudge, Root, TonicMove, Words};
 use crate::engine::plan::SynthId;
-use crate::engine::{Ask, Command, InflectTo, Nudge, Place};
+use crate::engine::{Ask, Command, InflectTo, Nudge, Place, RootTo};
+use crate::intonation::Sevenths;
 use crate::limits::{INFLECT_MAX_CENTS, NUDGE_MAX_CENTS};
 use crate::pitch::{Interval, Log, Pitch};
 
 /// The words that are played.
-pub const PLAYED: &str = "next, back, song, pitch, transpose, tonic, inflect, turn, black-key, plain, home, resend, panic, fresh, reload and \
+pub const PLAYED: &str = "next, back, song, pitch, transpose, tonic, inflect, turn, black-key, root, sevenths, plain, home, resend, panic, fresh, reload and \
      stop";
 
 /// What an evening calls its songs and synths, in their order.
@@ -74,9 +75,12 @@ impl Names<'_> {
             Words::BlackKey(name) => {
                 Command::BlackKey(self.told.black_key(*name).map_err(Refusal::Wrong)?)
             }
-            Words::Root(_) | Words::Sevenths { .. } | Words::Keep => {
-                return Err(Refusal::NotPlayed);
-            }
+            Words::Root(Root::Hold) => Command::Root(RootTo::Hold),
+            Words::Root(Root::Free) => Command::Root(RootTo::Free),
+            Words::Root(Root::NextKey) => Command::RootNextKey,
+            Words::Sevenths { harmonic: true } => Command::Sevenths(Sevenths::Harmonic),
+            Words::Sevenths { harmonic: false } => Command::Sevenths(Sevenths::Plain),
+            Words::Keep => return Err(Refusal::NotPlayed),
         })
     }
 

@@ -12,6 +12,7 @@ use crate::pitch::word::{Bend, BendRange};
 /// Sends bytes at milliseconds to a synth and listens.
 fn sound(drums: ChannelSet, sent: &[(u64, Vec<u8>)], end_ms: u64) -> Stereo {
     let recording = Recording {
+        moved: Vec::new(),
         sent: sent
             .iter()
             .map(|(ms, bytes)| Sent {
