@@ -21,6 +21,9 @@ mod unisons;
 /// Every form of a cue with every action, against a small model of its own.
 mod cue_forms;
 
+/// Songs that follow the harmony, played as densely as hands can.
+mod dense;
+
 /// A counting allocator: the engine takes nothing from the heap once it is made.
 mod no_alloc;
 

@@ -351,9 +351,9 @@ fn words_that_cannot_be_followed_say_why() {
             "a nudge goes an octave up or down at most, as in `pitch +1 c`",
         ),
         (
-            "root hold",
+            "keep",
             "these words are understood but not played by this version",
-            "it plays next, back, song, pitch, transpose, tonic, inflect, turn, black-key, plain, home, resend, panic, fresh, reload and stop",
+            "it plays next, back, song, pitch, transpose, tonic, inflect, turn, black-key, root, sevenths, plain, home, resend, panic, fresh, reload and stop",
         ),
     ] {
         let parsed = Words::parse(words).expect(words);
