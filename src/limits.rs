@@ -77,3 +77,6 @@ pub const OWED_BYTES: usize = SYSEX_BYTES_MAX;
 const _: () =
     assert!(OWED_ITEMS + 1024 <= WAITING_ITEMS && OWED_BYTES + SYSEX_BYTES_MAX <= WAITING_BYTES);
 const _: () = assert!(OWED_ITEMS * 3 <= OWED_BYTES && WAITING_BYTES <= u32::MAX as usize);
+
+/// Combinations of just sizes that least squares tries for one chord.
+pub const TRIALS_MAX: usize = 256;

@@ -12,6 +12,7 @@ mod candidates;
 mod chord;
 mod harmony;
 mod lattice;
+pub mod least_squares;
 mod pitch_classes;
 mod place;
 pub mod root;

@@ -15,5 +15,8 @@ mod tables;
 /// Roots of chords, against published models and a harmony book.
 mod roots;
 
+/// Chords placed by least squares, against numpy.
+mod least_squares;
+
 /// Chorales in tunings that follow the chord, against published figures.
 mod adaptive;

@@ -128,9 +128,8 @@ fn file_name(words: &[&str]) -> String {
 }
 
 fn export(words: &[&str], out: &Path) {
-    let script = Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/outside/adaptive/export.py");
-    let output = Command::new(python(&script))
-        .arg(&script)
+    let output = Command::new(python())
+        .arg(script())
         .args(words)
         .arg(out)
         .output()
@@ -139,12 +138,16 @@ fn export(words: &[&str], out: &Path) {
     assert!(output.status.success(), "export.py {words:?}: {said}");
 }
 
+fn script() -> PathBuf {
+    Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/outside/adaptive/export.py")
+}
+
 /// The one that `tests/setup` made or found.
-fn python(script: &Path) -> PathBuf {
+pub fn python() -> PathBuf {
     let target = Path::new(env!("CARGO_TARGET_TMPDIR")).parent();
     let own = target.expect("a target folder").join("music21/bin/python");
     let ready = |python: &PathBuf| {
-        let check = Command::new(python).arg(script).arg("check").output();
+        let check = Command::new(python).arg(script()).arg("check").output();
         check.is_ok_and(|output| output.status.success())
     };
     [own, "python3".into()]

@@ -24,3 +24,5 @@ mod score;
 mod score_tests;
 /// The table as people read it.
 mod table;
+
+pub use corpus::python;
