@@ -5,6 +5,7 @@
 
 mod motion;
 mod sounding;
+pub(super) mod springs;
 
 use super::candidates::{Candidates, is_dominant};
 use super::chord::Chord;
@@ -204,7 +205,10 @@ impl Harmony {
                 ..Chord::default()
             };
         } else {
-            self.place_chord(now, chord, &settings, shapes);
+            match self.method {
+                Method::LeastSquares(_) => self.stretch(now, chord, &settings, shapes),
+                _ => self.place_chord(now, chord, &settings, shapes),
+            }
         }
         self.jump(now, &settings);
         self.glide(now);

@@ -34,6 +34,15 @@ pub struct Tone {
     pub anchor: Option<(Interval, Weight)>,
 }
 
+impl Tone {
+    pub const SILENT: Tone = Tone {
+        class: 0,
+        keys: 0,
+        rest: Interval::ZERO,
+        anchor: None,
+    };
+}
+
 /// Where the tones stand.
 #[derive(Clone, Copy, Debug)]
 pub struct Solution {

@@ -186,7 +186,7 @@ fn ease(members: &[Member], shape: &[i64], at: &mut [i64]) {
 }
 
 /// The limit of drift goes before purity: newcomers give way first, then held notes as far as they may.
-fn keep_within(members: &[Member], at: &mut [i64], limit: i64) {
+pub fn keep_within(members: &[Member], at: &mut [i64], limit: i64) {
     let keys: i64 = members.iter().map(|m| m.keys).sum();
     for held_too in [false, true] {
         let away = away(members, at);

@@ -6,7 +6,9 @@
 //! is made small, so that most intervals are exact and one dissonance carries the comma; small errors already cost
 //! (Vos 1986).
 
+use super::harmony::springs::DISSONANCE;
 use super::lattice::Point;
+use super::least_squares::Targets;
 use super::pitch_classes::PitchClasses;
 
 /// Pitch classes that are tuned as one shape; any more are attached to it.
@@ -72,6 +74,9 @@ pub struct Shapes {
     /// By pitch-class set: where its shapes begin and how many, and how far up the chord stands from the one they were
     /// made for.
     index: Vec<Entry>,
+    /// The sizes that least squares pulls towards.
+    pub(super) five_limit: Targets,
+    pub(super) seven_limit: Targets,
 }
 
 #[derive(Clone, Copy, Default)]
@@ -87,6 +92,8 @@ impl Shapes {
         let mut shapes = Shapes {
             all: Vec::new(),
             index: vec![Entry::default(); 1 << 12],
+            five_limit: Targets::five_limit(DISSONANCE),
+            seven_limit: Targets::with_sevens(DISSONANCE),
         };
         let mut work = Work::default();
         for bits in 1u16..1 << 12 {

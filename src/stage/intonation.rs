@@ -55,10 +55,6 @@ pub fn read(at: Option<&At<'_>>, described: Option<&TuningText>, found: &mut Fin
         );
         return Method::Fixed;
     }
-    if way == Way::LeastSquares {
-        found.not_played("`intonation: least-squares`");
-        return Method::Fixed;
-    }
     match way {
         Way::Fixed => Method::Fixed,
         Way::ChordRoot => Method::ChordRoot(settings),
