@@ -8,7 +8,13 @@ pub mod stand;
 mod hostile;
 
 /// A supervisor: what it hears and when.
-mod supervisor;
+pub mod supervisor;
+
+/// The binary from its first word to its last: readiness, reloads, signals, exit codes, a bad file at the start.
+mod evening;
+
+/// Daemons of one name that start at one moment.
+mod racing;
 
 /// The unit file, looked at by systemd's own tools.
 mod unit;
@@ -107,7 +113,7 @@ fn status_in_sentences_and_as_an_object() {
     assert!(
         about_itself.starts_with("trued has been up for ")
             && about_itself.ends_with(
-                " s on alsa, without real-time priority: notes may be late on a busy machine."
+                " s on loopback, without real-time priority: notes may be late on a busy machine."
             ),
         "{text}"
     );

@@ -305,6 +305,55 @@ fn a_panic_inside_a_cycle_silences_every_channel_and_keeps_the_engine() {
     assert_eq!(score.ending(), Some(Ending::Panicked));
 }
 
+/// A wire that carries times: when each message was meant to leave.
+#[derive(Default)]
+struct Timed {
+    now: Time,
+    sent: Vec<Time>,
+}
+
+impl Wire for Timed {
+    fn write(&mut self, _synth: usize, bytes: &[u8]) -> usize {
+        self.sent.push(self.now);
+        bytes.len()
+    }
+
+    fn at(&mut self, time: Time) {
+        self.now = self.now.max(time);
+    }
+}
+
+#[test]
+fn a_deadline_in_the_middle_of_a_cycle_has_its_own_time() {
+    let stand = stand();
+    let mut player = Player::new(stand.slot.clone());
+    let (mut wire, mut inbox) = (Timed::default(), Inbox::new());
+    let mut outboxes = outbox::outboxes(1);
+    let mut cycle = |to: Time, inbox: &mut Inbox, wire: &mut Timed| {
+        let mut outlet = Outlet {
+            outboxes: &mut outboxes,
+            wire,
+        };
+        player.run(to, inbox, &mut outlet);
+        inbox.clear();
+    };
+    // A synth that came back is set up once more after two seconds (limits::SETTLE_MS), whether something comes in later
+    // in that cycle or nothing does.
+    for (back, later) in [(1, false), (3_001, true)] {
+        inbox.add_synth(at(back), 0, Link::Down);
+        inbox.add_synth(at(back), 0, Link::Back);
+        for millis in back..back + 1_990 {
+            cycle(at(millis), &mut inbox, &mut wire);
+        }
+        wire.sent.clear();
+        if later {
+            inbox.add_midi(at(back + 2_200), 0, &[0x90, 64, 100]);
+        }
+        cycle(at(back + 2_300), &mut inbox, &mut wire);
+        assert_eq!(wire.sent.first(), Some(&at(back + 2_000)), "later: {later}");
+    }
+}
+
 /// A wire that is full now and then, and keeps nothing.
 struct Narrow {
     takes: usize,

@@ -11,7 +11,7 @@ use super::status::Device;
 use crate::engine::Ask;
 use crate::ports::names::{Address, Choice, Port, Wanted, choose};
 use crate::ports::{Broken, Link, Patchbay, Tally};
-use crate::time::Span;
+use crate::time::{Span, Time};
 use rtrb::Consumer;
 use signal_hook::consts::SIGHUP;
 use signal_hook::iterator::Signals;
@@ -19,10 +19,9 @@ use std::sync::Arc;
 use std::sync::atomic::{AtomicBool, Ordering};
 use tracing::{error, info, warn};
 
-/// How often the desk looks up. Nothing that sounds waits for it.
-const LOOK: Span = Span::from_millis(50);
-/// Looks until a connection that was refused is tried again: about a second.
-const LOOKS_TO_RETRY: u32 = 20;
+/// After how long a connection that was refused is tried again: a JACK client that has ports but is not yet active takes
+/// none, and nobody says when it is.
+const RETRY: Span = Span::from_millis(250);
 
 pub struct Desk {
     pub rig: RigWanted,
@@ -44,7 +43,7 @@ impl Desk {
         let mut changes = 0;
         let mut losses = (0, 0);
         let mut loops = 0;
-        let mut looks = 0;
+        let mut tried_at = Time::START;
         while !self.done.load(Ordering::Acquire) {
             for signal in self.signals.pending() {
                 match signal {
@@ -56,10 +55,9 @@ impl Desk {
             if self.see_to_edits() {
                 (changes, losses) = (0, (0, 0));
             }
-            let now = self.tally.changes.load(Ordering::Relaxed);
-            looks += 1;
-            if now != changes || self.patch.refused && looks >= LOOKS_TO_RETRY {
-                (changes, looks) = (now, 0);
+            let (seen, now) = (self.tally.changes.load(Ordering::Relaxed), self.edits.now());
+            if seen != changes || self.patch.is_refused() && now.since(tried_at) >= RETRY {
+                (changes, tried_at) = (seen, now);
                 self.reconnect();
             }
             let now = self.tally.loops.load(Ordering::Relaxed);
@@ -68,7 +66,9 @@ impl Desk {
                 self.patch.cut_loops(&self.rig);
             }
             losses = self.log_losses(losses);
-            for asked in self.front.look(LOOK, &mut self.orders) {
+            self.front.status.real_time = self.tally.real_time.load(Ordering::Relaxed);
+            self.front.status.server = self.tally.server();
+            for asked in self.front.look(self.edits.patience(), &mut self.orders) {
                 self.edits.ask(asked);
             }
             self.remember();
@@ -107,18 +107,17 @@ impl Desk {
     }
 
     pub(super) fn reconnect(&mut self) {
-        let before = self.patch.choice.clone();
+        let before = self.patch.connected();
         let ports = self.patch.connect(&self.rig);
-        let (keyboards, synths) = self.rig.devices(&self.patch.choice, &ports);
+        let now = self.patch.connected();
+        let (keyboards, synths) = self.rig.devices(&now, &ports);
         self.front.status.keyboards = keyboards;
         for (synth, before) in synths.into_iter().zip(&mut self.front.status.synths) {
             let linked = before.linked;
             *before = Device { linked, ..synth };
         }
-        if (&before.keyboards, &before.synths)
-            != (&self.patch.choice.keyboards, &self.patch.choice.synths)
-        {
-            let rig = self.rig.describe("is", &self.patch.choice, &ports);
+        if (&before.keyboards, &before.synths) != (&now.keyboards, &now.synths) {
+            let rig = self.rig.describe("is", &now, &ports);
             info!("ports have changed: {}", rig.join("; "));
         }
     }
@@ -177,8 +176,10 @@ pub struct Patch {
     pub synths: Vec<Address>,
     /// Said once each.
     pub said: Vec<String>,
-    /// Not every connection could be made.
-    pub refused: bool,
+    /// Connections that could not be made.
+    pub refused: Vec<(Address, Address)>,
+    /// Something else was refused.
+    pub again: bool,
 }
 
 impl Patch {
@@ -195,21 +196,39 @@ impl Patch {
             .flat_map(|(from, own)| from.iter().map(move |from| (*from, *own)))
             .chain(synths.filter_map(|(to, own)| Some((*own, (*to)?))))
             .collect();
-        self.refused = false;
+        self.refused.clear();
+        self.again = false;
         if let Err(broken) = self.patchbay.offer(&rig.keyboards, &rig.synths) {
-            self.refused = true;
+            self.again = true;
             self.say(broken.to_string());
         }
         for (from, to) in ways {
             // Also what we take for connected: it may have gone and come back between two looks.
             if let Err(Broken { wrong, .. }) = self.patchbay.connect(from, to) {
-                self.refused = true;
+                self.refused.push((from, to));
                 let shown = |address| self.patchbay.shown(address);
                 let (from, to) = (shown(from), shown(to));
                 self.say(format!("{from} cannot be connected to {to}: {wrong}"));
             }
         }
         ports
+    }
+
+    /// Not all is as it should be, so it is tried again.
+    pub fn is_refused(&self) -> bool {
+        self.again || !self.refused.is_empty()
+    }
+
+    /// What is chosen and has been connected.
+    pub fn connected(&self) -> Choice {
+        let mut choice = self.choice.clone();
+        for (from, own) in choice.keyboards.iter_mut().zip(&self.keyboards) {
+            from.retain(|from| !self.refused.contains(&(*from, *own)));
+        }
+        for (to, own) in choice.synths.iter_mut().zip(&self.synths) {
+            *to = to.filter(|to| !self.refused.contains(&(*own, *to)));
+        }
+        choice
     }
 
     /// Undoes connections that bring our own notes back to us, and says so each time. The score thread has not heard a

@@ -11,7 +11,7 @@ use super::socket::ClientId;
 use crate::ports::clock::Clock;
 use crate::ports::names::{Address, Choice};
 use crate::ports::{Broken, Ring, Tally};
-use crate::time::Time;
+use crate::time::{Span, Time};
 use std::sync::Arc;
 use std::sync::mpsc::{Receiver, Sender, channel};
 use tracing::warn;
@@ -20,6 +20,8 @@ use tracing::warn;
 pub struct Edits {
     pub reload: Reload,
     clock: Clock,
+    /// The supervisor has been told that a reload is under way.
+    told: bool,
     /// Whoever waits to hear what has become of a reload.
     asked: Vec<ClientId>,
     wanted: Sender<RigWanted>,
@@ -46,6 +48,7 @@ impl Edits {
         let edits = Edits {
             reload,
             clock,
+            told: false,
             asked: Vec::new(),
             wanted,
             opened,
@@ -59,6 +62,11 @@ impl Edits {
 
     pub fn now(&self) -> Time {
         self.clock.now()
+    }
+
+    /// How long the next look may wait.
+    pub fn patience(&self) -> Span {
+        self.reload.patience(self.clock.now())
     }
 
     /// Reads the files at the next look, and answers when that is done.
@@ -98,19 +106,32 @@ impl Desk {
     /// Sees to edits of the stage file. True if the ports are others now.
     pub(super) fn see_to_edits(&mut self) -> bool {
         let now = self.edits.clock.now();
+        if self.edits.reload.begins(now) {
+            self.tell_reloading();
+        }
         let others = match self.edits.reload.look(now) {
             Todo::Nothing => false,
             Todo::Ring => {
+                self.tell_reloading();
                 self.orders.ring();
                 false
             }
             Todo::InForce(moved) => self.in_force(&moved),
         };
-        self.front.status.complaint = self.edits.reload.complaint();
+        self.edits.reload.show(&mut self.front.status);
         if self.edits.reload.is_settled() {
+            if std::mem::take(&mut self.edits.told) {
+                self.front.ready();
+            }
             self.answer();
         }
         others
+    }
+
+    fn tell_reloading(&mut self) {
+        if !std::mem::replace(&mut self.edits.told, true) {
+            self.front.reloading();
+        }
     }
 
     fn answer(&mut self) {
@@ -144,7 +165,7 @@ impl Desk {
         };
         (self.patch, self.tally) = (patch, tally);
         self.orders.ring_at(bell);
-        let (_, synths) = self.rig.devices(&self.patch.choice, &[]);
+        let (_, synths) = self.rig.devices(&self.patch.connected(), &[]);
         self.front.status.synths = synths;
         self.reconnect();
         true

@@ -8,13 +8,13 @@ use super::systemd::Systemd;
 use super::tell::outcome;
 use crate::engine::{Ask, Command, Report};
 use crate::ports::clock::Clock;
+use crate::ports::system::{Bell, readable, wait};
 use crate::stage::Stage;
 use crate::stage::expression::Mistake;
 use crate::stage::words::Words;
 use crate::time::{Span, Time};
 use rtrb::Consumer;
 use std::sync::Arc;
-use std::time::Duration;
 use tracing::info;
 
 /// How long an order may take before whoever gave it is told that the score thread does not answer.
@@ -29,11 +29,15 @@ pub struct Front {
     pub status: Status,
     /// What `tell` goes by.
     stage: Arc<Stage>,
+    /// Ends a wait early.
+    bell: Bell,
     /// As those who follow know it.
     shown: Status,
     shown_at: Time,
     socket: Option<Socket>,
     systemd: Systemd,
+    /// The end has begun; nothing else is said to the supervisor.
+    stopping: bool,
     pulses: Consumer<Pulse>,
     obeyed: u64,
     /// Plans that the score had taken over by then.
@@ -61,6 +65,7 @@ impl Front {
         socket: Option<Socket>,
         systemd: Systemd,
         pulses: Consumer<Pulse>,
+        bell: Bell,
     ) -> Front {
         let clock = Clock::start();
         let began = clock.now();
@@ -69,8 +74,10 @@ impl Front {
             shown_at: began,
             status,
             stage,
+            bell,
             socket,
             systemd,
+            stopping: false,
             pulses,
             obeyed: 0,
             plans: 0,
@@ -81,10 +88,12 @@ impl Front {
         }
     }
 
-    /// Ports are open, the engine waits.
+    /// Ports are open, the engine waits; or a reload is over.
     pub fn ready(&mut self) {
-        self.systemd.status(&self.status.line());
-        self.systemd.ready();
+        if !self.stopping {
+            self.systemd.status(&self.status.line());
+            self.systemd.ready();
+        }
     }
 
     /// Another text of the stage file is in force from now on.
@@ -98,18 +107,26 @@ impl Front {
 
     /// The stage file is being read again; `ready` follows.
     pub fn reloading(&self) {
-        self.systemd.reloading();
+        if !self.stopping {
+            self.systemd.reloading();
+        }
     }
 
     /// Begins the end.
     pub fn stop(&mut self, orders: &mut Orders) {
-        info!("stopping: notes off, then tails die away");
-        self.systemd.stopping();
+        self.say_stopping();
         // A full queue holds a stop already, or nobody takes it.
         let _ = orders.give(Command::Stop);
     }
 
-    /// One look: waits until somebody asks something or the time is over, then answers. Gives whoever asked for a
+    fn say_stopping(&mut self) {
+        if !std::mem::replace(&mut self.stopping, true) {
+            info!("stopping: notes off, then tails die away");
+            self.systemd.stopping();
+        }
+    }
+
+    /// One look: waits until somebody asks something, the bell rings or the time is over, then answers. Gives whoever asked for a
     /// reload; they wait for `answer`.
     pub fn look(&mut self, at_most: Span, orders: &mut Orders) -> Vec<ClientId> {
         // Nothing rings here when an order has been followed.
@@ -119,9 +136,11 @@ impl Front {
             SOON
         };
         match &mut self.socket {
-            Some(socket) => socket.wait(at_most),
-            None => std::thread::sleep(Duration::from_nanos(at_most.nanos())),
+            Some(socket) => socket.wait(&self.bell, at_most),
+            // Waited too short is a look too many.
+            None => drop(wait(&mut [readable(self.bell.fd())], Some(at_most))),
         }
+        self.bell.hush();
         self.take_pulses();
         self.answer_waiting();
         let requests = self.socket.as_mut().map_or(Vec::new(), Socket::requests);
@@ -163,6 +182,7 @@ impl Front {
         while let Ok(pulse) = self.pulses.pop() {
             self.status.report = pulse.report;
             (self.obeyed, self.plans) = (pulse.obeyed, pulse.plans);
+            (self.status.waited, self.status.dropped) = (pulse.waited, pulse.dropped);
             self.alive = true;
         }
         if self.alive && self.systemd.ping(self.clock.now()) {
@@ -182,8 +202,7 @@ impl Front {
         let command = match self.stage.resolve(&words).map_err(wrong)? {
             Command::Ask(Ask::Reload) => return Ok(Some(client)),
             Command::Ask(Ask::Stop) => {
-                self.systemd.stopping();
-                info!("told to stop");
+                self.say_stopping();
                 Command::Stop
             }
             command => command,

@@ -11,6 +11,7 @@ use crate::ports::names::{Choice, Wanted};
 use crate::ports::{Backend, Broken, Ring, Tally, system};
 use std::panic::resume_unwind;
 use std::sync::Arc;
+use std::sync::atomic::Ordering;
 use tracing::info;
 
 /// What carries the MIDI.
@@ -82,7 +83,8 @@ impl Ports {
                 .collect(),
             synths: (0..synths.len()).map(|n| alsa.synth_address(n)).collect(),
             said: Vec::new(),
-            refused: false,
+            again: false,
+            refused: Vec::new(),
         };
         Ok((Ports::Alsa(alsa), patch))
     }
@@ -95,7 +97,8 @@ impl Ports {
             keyboards: (0..keyboards).map(|n| desk.keyboard_address(n)).collect(),
             synths: (0..synths).map(|n| desk.synth_address(n)).collect(),
             patchbay: Box::new(desk),
-            refused: false,
+            again: false,
+            refused: Vec::new(),
             said: Vec::new(),
         };
         (Ports::Jack(jack), patch)
@@ -116,7 +119,8 @@ impl Ports {
             synths: (0..synths.len()).map(|n| desk.synth_address(n)).collect(),
             patchbay: Box::new(desk),
             said: Vec::new(),
-            refused: false,
+            again: false,
+            refused: Vec::new(),
         };
         Ok((Ports::Midir(midir), patch))
     }
@@ -156,35 +160,30 @@ impl Ports {
         }
     }
 
-    /// Lets the calling thread, which is to play, run before all ordinary ones. Says whether it does.
-    pub fn hurry(&self) -> bool {
-        let hurried = match self {
-            Ports::Alsa(_) => system::hurry(),
-            // The server decides for the thread that it gives us, and does not tell; this one only waits.
-            Ports::Jack(_) => return false,
-            // A thread such as those that will play.
-            Ports::Midir(_) => match std::thread::spawn(system::hurry).join() {
-                Ok(hurried) => hurried,
-                Err(_) => return false,
-            },
-        };
-        if let Err(error) = &hurried {
-            info!("no real-time priority ({error}): notes may be late on a busy machine");
-        }
-        hurried.is_ok()
-    }
-
     /// Plays the score until it leaves. The calling thread becomes the score thread where the backend has none.
     ///
     /// # Errors
     /// The ports are gone for good.
     pub fn play(&mut self, slot: &Arc<Slot>) -> Result<(), Broken> {
         match self {
-            Ports::Alsa(alsa) => alsa.run(&mut Player::new(slot.clone())),
+            Ports::Alsa(alsa) => {
+                hurry(&alsa.tally());
+                alsa.run(&mut Player::new(slot.clone()))
+            }
+            // The server decides for the thread that it gives us.
             Ports::Jack(jack) => jack.run(&|| Box::new(Player::new(slot.clone()))),
             Ports::Midir(midir) => play_beside(midir, slot),
         }
     }
+}
+
+/// Lets the calling thread, which is to play, run before all ordinary ones.
+fn hurry(tally: &Tally) {
+    let hurried = system::hurry();
+    if let Err(error) = &hurried {
+        info!("no real-time priority ({error}): notes may be late on a busy machine");
+    }
+    tally.real_time.store(hurried.is_ok(), Ordering::Relaxed);
 }
 
 /// On a thread of its own that asks for priority like those of the callbacks, whatever a unit file gave to this one: a
@@ -192,8 +191,7 @@ impl Ports {
 fn play_beside(midir: &mut Midir, slot: &Arc<Slot>) -> Result<(), Broken> {
     std::thread::scope(|scope| {
         let score = scope.spawn(|| {
-            // Said already, if it may not.
-            let _ = system::hurry();
+            hurry(&midir.tally());
             midir.run(&mut Player::new(slot.clone()))
         });
         score.join().unwrap_or_else(|panic| resume_unwind(panic))

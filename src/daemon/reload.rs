@@ -6,15 +6,21 @@
 use super::rig::{Moved, RigWanted};
 use super::score::Handover;
 use super::state::{Boot, Keeper};
+use super::status::Status;
 use crate::engine::Plan;
 use crate::stage::Stage;
 use crate::stage::complaint::Complaint;
-use crate::stage::watch::Watch;
-use crate::time::Time;
+use crate::stage::watch::{Wake, Watch};
+use crate::time::{Span, Time};
 use rtrb::{Consumer, Producer};
 use std::path::{Path, PathBuf};
 use std::sync::{Arc, Mutex, PoisonError};
 use tracing::{info, warn};
+
+/// How often to look when nothing happens.
+const LOOK: Span = Span::from_millis(50);
+/// How often to look whether a plan is in force.
+const SOON: Span = Span::from_millis(2);
 
 /// How the stage file stands, for status.
 #[derive(Clone, Debug, Default, PartialEq, Eq)]
@@ -59,19 +65,22 @@ pub struct Reload {
     next: Option<Stage>,
     under_way: Option<Moved>,
     asked: bool,
+    /// The files are to be read at this look.
+    due: bool,
     news: Arc<Mutex<StageNews>>,
 }
 
 impl Reload {
     /// `boot`: what plays already. Its file may have been bad; then that is told as with any edit.
-    pub fn new(boot: Boot, handing: Handing, now: Time) -> Reload {
+    /// `wake`: called when it is time for a look.
+    pub fn new(boot: Boot, handing: Handing, now: Time, wake: Wake) -> Reload {
         let news = StageNews {
             file: boot.path.clone(),
             from_copy: !boot.complaints.is_empty(),
             ..StageNews::default()
         };
         let mut reload = Reload {
-            watch: Watch::new(&boot.stage.files, now),
+            watch: Watch::new(&boot.stage.files, now, wake),
             path: boot.path,
             keeper: boot.keeper,
             handing,
@@ -79,6 +88,7 @@ impl Reload {
             next: None,
             under_way: None,
             asked: false,
+            due: false,
             news: Arc::new(Mutex::new(news)),
         };
         match boot.complaints.is_empty() {
@@ -88,9 +98,15 @@ impl Reload {
         reload
     }
 
-    /// For whoever answers questions about the daemon.
     pub fn news(&self) -> Arc<Mutex<StageNews>> {
         self.news.clone()
+    }
+
+    /// For whoever answers questions about the daemon.
+    pub fn show(&self, status: &mut Status) {
+        status.complaint = self.complaint();
+        let news = self.news.lock().unwrap_or_else(PoisonError::into_inner);
+        (status.from_copy, status.reloads) = (news.from_copy, news.reloads);
     }
 
     /// What is in force, or about to be.
@@ -112,7 +128,7 @@ impl Reload {
 
     /// Whether all that was asked for has been read, and is in force if it is good.
     pub fn is_settled(&self) -> bool {
-        !self.asked && self.next.is_none() && self.under_way.is_none()
+        !self.asked && !self.due && self.next.is_none() && self.under_way.is_none()
     }
 
     /// SIGHUP or `tell reload`: the files are read at the next look, whether they have changed or not.
@@ -120,10 +136,25 @@ impl Reload {
         self.asked = true;
     }
 
-    /// To be called a few times a second.
+    /// Whether a reload begins: the files have changed, or somebody has asked. To be called before each look.
+    pub fn begins(&mut self, now: Time) -> bool {
+        let begins = self.watch.is_due(now) || self.asked;
+        self.due = begins || self.watch.tries_again(now);
+        begins
+    }
+
+    /// How long the next look may wait.
+    pub fn patience(&self, now: Time) -> Span {
+        let read_in = self.watch.due_at().map(|due| due.since(now));
+        let back_in = self.under_way.as_ref().map(|_| SOON);
+        let soonest = [read_in, back_in].into_iter().flatten().min();
+        soonest.unwrap_or(LOOK).min(LOOK)
+    }
+
+    /// To be called a few times a second, and when `wake` was.
     pub fn look(&mut self, now: Time) -> Todo {
-        let asked = std::mem::take(&mut self.asked);
-        if self.watch.is_due(now) || asked {
+        if std::mem::take(&mut self.due) {
+            let asked = std::mem::take(&mut self.asked);
             self.read(asked, now);
         }
         if let Some(remark) = self.watch.remark() {
@@ -179,6 +210,7 @@ impl Reload {
         let was_bad = !news.complaints.is_empty();
         news.complaints.clear();
         news.bad_since = None;
+        news.from_copy &= !same;
         match (same, was_bad, asked) {
             (true, true, _) => info!("the stage file is again as it is being played"),
             (true, false, true) => info!("the stage file is as it is being played"),

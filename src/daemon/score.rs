@@ -1,8 +1,10 @@
 //! The score: an engine and its queues, and what is done with them in one cycle.
 
 mod edits;
+mod pulse;
 
 pub use edits::Handover;
+pub use pulse::Pulse;
 
 use crate::engine::{self, Ask, Command, Engine, Input, KeyboardId, Output, Report, SynthId};
 use crate::limits::{CHANNELS, KEYBOARDS_MAX, SYNTHS_MAX};
@@ -38,16 +40,6 @@ pub enum News {
     },
 }
 
-/// How things stand, for the desk: a copy after each cycle, and so a sign of life.
-#[derive(Clone, Copy, Debug)]
-pub struct Pulse {
-    pub report: Report,
-    /// Commands followed since the beginning.
-    pub obeyed: u64,
-    /// Plans taken over since the beginning: places in the set are by the last of them.
-    pub plans: u64,
-}
-
 /// Why a score came to its end.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Ending {
@@ -72,10 +64,6 @@ const CHOKED: Span = Span::from_millis(1_000);
 /// How long a port that has lost messages is left alone once it reads again: the kernel throws a queue that ran over
 /// away at its reader's next read, with whatever has come in until then.
 const EMPTIED: Span = Span::from_millis(60);
-/// How often the desk hears from us even if nothing happens.
-const BEAT: Span = Span::from_millis(250);
-/// How soon a pulse for which there was no room is tried again.
-const PULSE_AGAIN: Span = Span::from_millis(20);
 
 /// The engine with its queues. Lives in a [`Slot`], so that no backend that dies takes it along.
 pub struct Score {
@@ -86,7 +74,7 @@ pub struct Score {
     edits: Option<edits::Edits>,
     /// A plan has come that needs other ports, for so many synths.
     ports_due: Option<usize>,
-    pulses: Option<Producer<Pulse>>,
+    pulses: pulse::Pulses,
     obeyed: u64,
     plans_taken: u64,
     song: u16,
@@ -115,7 +103,7 @@ impl Score {
             news,
             edits: None,
             ports_due: None,
-            pulses: None,
+            pulses: pulse::Pulses::default(),
             obeyed: 0,
             plans_taken: 0,
             up: [false; SYNTHS_MAX],
@@ -123,15 +111,6 @@ impl Score {
             reopen_at: [None; SYNTHS_MAX],
             give_up_at: None,
             ending: None,
-        }
-    }
-
-    /// Says after each cycle how things stand, and at least four times a second.
-    #[must_use]
-    pub fn with_pulses(self, pulses: Producer<Pulse>) -> Score {
-        Score {
-            pulses: Some(pulses),
-            ..self
         }
     }
 
@@ -166,19 +145,8 @@ impl Score {
         self.take_plan(to, outlet);
         self.reopen(to, outlet);
         self.tell_song();
-        let pulse_at = self.beat(to);
+        let pulse_at = self.beat(to, outlet);
         self.next(to, pulse_at, outlet)
-    }
-
-    /// Gives a pulse; says when the next one is due.
-    fn beat(&mut self, now: Time) -> Option<Time> {
-        let pulse = Pulse {
-            report: self.engine.report(),
-            obeyed: self.obeyed,
-            plans: self.plans_taken,
-        };
-        let went = self.pulses.as_mut()?.push(pulse).is_ok();
-        Some(now + if went { BEAT } else { PULSE_AGAIN })
     }
 
     fn take_in(&mut self, time: Time, what: What<'_>, outlet: &mut Outlet<'_>) {
@@ -253,9 +221,10 @@ impl Score {
 
     /// Sends all that the engine has to say, and tells it when a port runs short.
     fn drain(&mut self, now: Time, outlet: &mut Outlet<'_>) {
-        outlet.at(now);
         loop {
             while let Some(output) = self.engine.poll_output() {
+                // Only now: a deadline before this time may be still to come.
+                outlet.at(now);
                 match output {
                     Output::Send {
                         synth,

@@ -20,15 +20,16 @@
 //! on. Who does not read loses the connection once [`UNREAD_BYTES`] wait for it. There are at most [`CLIENTS`]; one more
 //! and the oldest that only listens or dawdles goes.
 
-use crate::ports::system::{readable, wait};
+use crate::ports::system::{Bell, lock, readable, wait};
 use crate::time::Span;
 use libc::{POLLERR, POLLHUP, POLLOUT, pollfd};
-use std::fs;
+use std::fs::{self, File};
 use std::io::{self, ErrorKind, Read, Write};
 use std::os::fd::AsRawFd;
 use std::os::unix::fs::{FileTypeExt, MetadataExt, PermissionsExt};
 use std::os::unix::net::{UnixListener, UnixStream};
 use std::path::{Path, PathBuf};
+use std::time::Duration;
 
 /// The longest line that can be asked.
 pub const LINE_BYTES: usize = 1_024;
@@ -38,6 +39,9 @@ pub const UNREAD_BYTES: usize = 64 * 1_024;
 pub const CLIENTS: usize = 32;
 /// New connections in one look, so that a flood of them does not hold the desk.
 const ACCEPTS: usize = 64;
+/// Others who start need the folder for a moment each; two seconds are enough for many.
+const LOCK_TRIES: u32 = 400;
+const LOCK_PAUSE: Duration = Duration::from_millis(5);
 
 /// Who asked. Never used twice.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -92,8 +96,10 @@ impl Socket {
     /// # Errors
     /// A living daemon has it, or it cannot be made there.
     pub fn open(path: &Path) -> Result<Socket, Unopened> {
+        // From looking who is there until we listen, nobody else of us is at it: else two that start at one moment could
+        // both find a dead daemon's socket, and the second would remove that of the first.
+        let _alone = alone_in(path.parent()).map_err(Unopened::Failed)?;
         remove_dead(path)?;
-        // Two that start at this very moment: the second finds the place taken here.
         let listener = UnixListener::bind(path).map_err(|error| match error.kind() {
             ErrorKind::AddrInUse => Unopened::Taken,
             _ => Unopened::Failed(error),
@@ -116,8 +122,8 @@ impl Socket {
         &self.path
     }
 
-    /// Returns once somebody asks or can be written to, or when the time is over.
-    pub fn wait(&mut self, at_most: Span) {
+    /// Returns once somebody asks or can be written to, the bell rings, or the time is over.
+    pub fn wait(&mut self, bell: &Bell, at_most: Span) {
         let more = self.clients.iter().any(Client::has_line);
         let at_most = if more { Span::ZERO } else { at_most };
         let client_fd = |client: &Client| pollfd {
@@ -129,12 +135,12 @@ impl Socket {
             },
             revents: 0,
         };
-        let mut fds = vec![readable(self.listener.as_raw_fd())];
+        let mut fds = vec![readable(self.listener.as_raw_fd()), readable(bell.fd())];
         fds.extend(self.clients.iter().map(client_fd));
         if wait(&mut fds, Some(at_most)).is_err() {
             return; // the next look tells who is there
         }
-        for (client, fd) in self.clients.iter_mut().zip(&fds[1..]) {
+        for (client, fd) in self.clients.iter_mut().zip(&fds[2..]) {
             client.gone |= fd.revents & POLLERR != 0;
             client.gone |= client.ended && fd.revents & POLLHUP != 0;
         }
@@ -233,6 +239,21 @@ impl Drop for Socket {
             let _ = fs::remove_file(&self.path);
         }
     }
+}
+
+/// Nobody else of us opens a socket in this folder as long as the file lives. The folder itself is locked, so nothing is
+/// left behind.
+fn alone_in(folder: Option<&Path>) -> io::Result<File> {
+    let folder = folder.filter(|folder| !folder.as_os_str().is_empty());
+    let file = File::open(folder.unwrap_or(Path::new(".")))?;
+    for _ in 0..LOCK_TRIES {
+        if lock(&file)? {
+            return Ok(file);
+        }
+        std::thread::sleep(LOCK_PAUSE);
+    }
+    let text = "its folder has been locked for long by somebody else";
+    Err(io::Error::other(text))
 }
 
 /// Makes room where a dead daemon's socket lies; leaves alone what is alive or no socket at all.

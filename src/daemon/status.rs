@@ -4,6 +4,7 @@ use super::by_hand;
 use crate::engine::Report;
 use crate::engine::plan::NameId;
 use crate::pitch::Interval;
+use crate::ports::Server;
 use crate::stage::Stage;
 use serde_json::{Value, json};
 use std::path::Path;
@@ -21,6 +22,10 @@ pub struct Status {
     pub complaint: Option<String>,
     /// What was taken up from before the restart, or why nothing was; until something changes.
     pub resumed: Option<String>,
+    /// That text is the copy of the last good one, because the file was bad when the daemon started.
+    pub from_copy: bool,
+    /// Good edits that came into force.
+    pub reloads: u64,
     /// Titles in the order of the set.
     pub titles: Vec<String>,
     /// What the places of keys are called.
@@ -31,7 +36,11 @@ pub struct Status {
     /// Lost before the engine saw it.
     pub overruns: u64,
     pub too_long: u64,
+    /// Cycles after which something waited for a full port, and what was left out because it stayed full.
+    pub waited: u64,
+    pub dropped: u64,
     pub real_time: bool,
+    pub server: Server,
 }
 
 /// A keyboard or synth of the stage file.
@@ -54,15 +63,17 @@ pub enum Waits {
 }
 
 impl Status {
-    /// As an evening begins, on the ALSA sequencer and with nothing connected yet.
-    pub fn of(stage: &Stage, name: &str, file: &Path, report: Report) -> Status {
+    /// As an evening begins, with nothing connected yet.
+    pub fn of(stage: &Stage, name: &str, backend: &str, file: &Path, report: Report) -> Status {
         Status {
             name: name.to_string(),
-            backend: "alsa".to_string(),
+            backend: backend.to_string(),
             stage: stage.name.clone(),
             file: file.display().to_string(),
             complaint: None,
             resumed: None,
+            from_copy: false,
+            reloads: 0,
             titles: stage.set.iter().map(|song| song.title.clone()).collect(),
             places: stage.place_names(),
             keyboards: Vec::new(),
@@ -70,7 +81,10 @@ impl Status {
             report,
             overruns: 0,
             too_long: 0,
+            waited: 0,
+            dropped: 0,
             real_time: false,
+            server: Server::default(),
         }
     }
 
@@ -111,6 +125,8 @@ impl Status {
             "file": self.file,
             "complaint": self.complaint,
             "resumed": self.resumed,
+            "from_copy": self.from_copy,
+            "reloads": self.reloads,
             "song": song(now),
             "next": song(now + 1),
             "armed": self.report.armed_song.and_then(|place| song(usize::from(place))),
@@ -135,6 +151,7 @@ impl Status {
             "counters": counters,
             "uptime_s": uptime_s,
             "real_time": self.real_time,
+            "trouble": self.trouble(),
         })
     }
 
@@ -164,8 +181,11 @@ impl Status {
         } else {
             ""
         };
+        let trouble = self
+            .trouble()
+            .map_or(String::new(), |trouble| format!("; {trouble}"));
         format!(
-            "{}; {}, {}{complaint}",
+            "{}; {}, {}{complaint}{trouble}",
             self.song_shown(),
             count(&self.keyboards, "keyboards"),
             count(&self.synths, "synths")
@@ -179,13 +199,27 @@ impl Status {
         format!("song {} of {}: {title}", place + 1, self.titles.len())
     }
 
+    /// What is wrong with the way to all ports.
+    fn trouble(&self) -> Option<&'static str> {
+        match self.server {
+            Server::Runs => None,
+            Server::Absent => Some("no JACK server answers; waiting for one"),
+            Server::StandsStill => {
+                Some("the JACK server stands still; nothing is heard or sent until it goes on")
+            }
+        }
+    }
+
     /// Each stands for a thing that can change by itself.
     fn sentences(&self) -> Vec<String> {
         let mut out = vec![format!("{} is the stage, from {}.", self.stage, self.file)];
+        out.extend(self.trouble().map(|trouble| format!("Trouble: {trouble}.")));
         if let Some(complaint) = &self.complaint {
-            out.push(format!(
-                "The file has mistakes, so an earlier text plays: {complaint}"
-            ));
+            let plays = match self.from_copy {
+                true => "the copy kept of its last good text plays",
+                false => "an earlier text plays",
+            };
+            out.push(format!("The file has mistakes, so {plays}: {complaint}"));
         }
         let next = match self.titles.get(usize::from(self.report.song) + 1) {
             Some(title) => format!("Next comes {title}."),
@@ -262,6 +296,16 @@ impl Status {
                 self.overruns,
             ),
             counter("too_long", "Messages too long and left out", self.too_long),
+            counter(
+                "waited",
+                "Cycles after which messages waited for a full port",
+                self.waited,
+            ),
+            counter(
+                "dropped",
+                "Messages left out because a port stayed full",
+                self.dropped,
+            ),
         ]
     }
 }

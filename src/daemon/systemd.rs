@@ -1,8 +1,9 @@
 //! What a supervisor is told, in systemd's words: that we are ready, what we are doing, that we are alive.
 //!
 //! The protocol is one datagram of `NAME=value` lines to the socket named in `$NOTIFY_SOCKET` (manual page sd_notify(3)).
-//! Without that variable nothing is said. Deliberately absent: `MONOTONIC_USEC`, which only `Type=notify-reload` reads.
+//! Without that variable nothing is said.
 
+use crate::ports::clock::monotonic_micros;
 use crate::time::{Span, Time};
 use std::ffi::{OsStr, OsString};
 use std::os::linux::net::SocketAddrExt;
@@ -44,8 +45,10 @@ impl Systemd {
         self.say("READY=1");
     }
 
+    /// `ready` follows. The time is for `Type=notify-reload`, which wants to know which reload is meant.
     pub fn reloading(&self) {
-        self.say("RELOADING=1");
+        let micros = monotonic_micros();
+        self.say(&format!("RELOADING=1\nMONOTONIC_USEC={micros}"));
     }
 
     pub fn stopping(&self) {

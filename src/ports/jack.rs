@@ -1,41 +1,46 @@
 //! JACK: one client, a port of ours for each keyboard and synth, the score in the server's process callback.
 //!
 //! The library is loaded when this backend is chosen and not before. A server may come, go and come again: in
-//! between, the calling thread runs cycles without ports, so that time and the desk's commands go on.
+//! between, the calling thread runs cycles without ports, so that time and the desk's commands go on. It does the same
+//! while a server stands still (`alone.rs`).
 
+mod alone;
+mod asking;
 pub mod desk;
 mod frames;
 mod gate;
 mod notices;
+mod opener;
 mod process;
 
 use super::clock::Clock;
-use super::hotplug::End;
 use super::outbox::{Outbox, outboxes};
 use super::system::{Bell, readable, wait};
-use super::{Broken, Cycle, Inbox, Link, Next, Outlet, Tally, Wire};
+use super::{Broken, Cycle, Inbox, Next, Server, Tally};
 use crate::time::{Span, Time};
+use asking::Asked;
 use gate::Gate;
-use jack::{AsyncClient, Client, ClientOptions, LoggerType, MidiIn, MidiOut};
+use jack::{AsyncClient, Client, LoggerType, MidiIn, MidiOut};
 use notices::Notices;
+use opener::{Names, Opener};
 use process::Process;
 use std::sync::atomic::{AtomicBool, AtomicU64, Ordering};
+use std::sync::mpsc::RecvTimeoutError;
 use std::sync::{Arc, Mutex, PoisonError};
 use std::time::Duration;
-use tracing::{error, info, warn};
+use tracing::{error, warn};
 
 /// How soon a server that has gone is looked for again, at first and at last.
 const FIRST_LOOK: Span = Span::from_millis(100);
 const LAST_LOOK: Span = Span::from_millis(500);
 /// A library's thread that has lost its server is given so long to notice, before it is taken down.
 const SETTLE: Duration = Duration::from_millis(50);
-/// Changes of connections between two cycles.
-const CHANGES: usize = 1024;
-
+/// How long a server that does not answer is waited for before we go on without an answer.
+const ANSWER: Duration = Duration::from_millis(2_000);
 type Active = AsyncClient<Notices, Process>;
 
 /// The client, while there is one: shared with the desk, which asks it for ports and connects them.
-type Place = Arc<Mutex<Option<Active>>>;
+type Place = Arc<Mutex<Option<Arc<Active>>>>;
 
 /// What makes a cycle for each client; what it knows must lie elsewhere, because it dies with the client.
 pub type MakeCycle<'a> = &'a dyn Fn() -> Box<dyn Cycle + Send>;
@@ -46,8 +51,14 @@ type Ports = (Vec<jack::Port<MidiIn>>, Vec<jack::Port<MidiOut>>);
 /// What one client's threads tell the thread that keeps it.
 struct Shared {
     gate: Gate,
+    /// Somebody else has the score: the callback only keeps its ports clear.
+    lent: AtomicBool,
     /// The end of the last cycle, in nanoseconds.
     reached: AtomicU64,
+    /// Times that the server has called us.
+    beats: AtomicU64,
+    /// Not 0: the score has been played without the server until then, in nanoseconds, and comes to the callback.
+    resume_at: AtomicU64,
     /// The score has left, and what it said last is out.
     left: AtomicBool,
     /// The server has gone.
@@ -59,10 +70,10 @@ struct Shared {
 /// The backend.
 pub struct Jack {
     name: String,
-    keyboards: Vec<String>,
-    synths: Vec<String>,
+    names: Names,
     /// Opened, not active yet.
     waiting: Option<Client>,
+    opener: Opener,
     place: Place,
     clock: Clock,
     now: Time,
@@ -101,11 +112,16 @@ impl Jack {
             wrong: format!("The system gives no event descriptor ({error})"),
             right: "raise the limit of open files".to_string(),
         })?;
+        let mut opener = Opener::new(name, bell.clone());
+        opener.ask();
         Ok(Jack {
-            waiting: open_client(name),
+            waiting: opener.client(ANSWER),
+            opener,
             name: name.to_string(),
-            keyboards: keyboards.to_vec(),
-            synths: synths.to_vec(),
+            names: Names {
+                keyboards: keyboards.to_vec(),
+                synths: synths.to_vec(),
+            },
             place: Place::default(),
             now: clock.now(),
             clock,
@@ -121,14 +137,14 @@ impl Jack {
         self.waiting.is_some()
     }
 
-    /// How many keyboards and synths.
     /// The score's time.
     pub fn clock(&self) -> Clock {
         self.clock
     }
 
+    /// How many keyboards and synths.
     pub fn counts(&self) -> (usize, usize) {
-        (self.keyboards.len(), self.synths.len())
+        (self.names.keyboards.len(), self.names.synths.len())
     }
 
     /// Ends a wait, so that what the desk has sent is looked for; a running server looks each cycle anyway.
@@ -142,10 +158,10 @@ impl Jack {
 
     pub fn desk(&self) -> desk::Desk {
         desk::Desk::new(
-            self.place.clone(),
+            (self.place.clone(), self.tally.clone()),
             &self.name,
-            &self.keyboards,
-            &self.synths,
+            &self.names.keyboards,
+            &self.names.synths,
         )
     }
 
@@ -156,19 +172,20 @@ impl Jack {
     pub fn run(&mut self, make: MakeCycle<'_>) -> Result<(), Broken> {
         let mut cycle = make();
         if self.waiting.is_none() {
-            warn!("no JACK server runs; waiting for one");
+            warn!("no JACK server answers; waiting for one");
         }
         let mut look = FIRST_LOOK;
         loop {
-            let client = self.waiting.take().or_else(|| open_client(&self.name));
-            if let Some(client) = client {
-                if self.serve(client, make())? == Over::Left {
+            if let Some(client) = self.waiting.take() {
+                if self.serve(client, make(), cycle.as_mut())? == Over::Left {
                     return Ok(());
                 }
                 error!("the JACK server has gone; waiting for one to come back");
                 self.say_lost();
                 look = FIRST_LOOK;
             }
+            self.tally.set_server(Server::Absent);
+            self.opener.ask();
             if self.alone(cycle.as_mut(), look)? == Next::Leave {
                 return Ok(());
             }
@@ -176,56 +193,56 @@ impl Jack {
         }
     }
 
-    /// One client, from its activation to its end.
-    fn serve(&mut self, client: Client, cycle: Box<dyn Cycle + Send>) -> Result<Over, Broken> {
+    /// One client, from its activation to its end. `cycle` goes to its callback; `own` plays until that is called, and
+    /// while the server stands still.
+    fn serve(
+        &mut self,
+        client: Client,
+        cycle: Box<dyn Cycle + Send>,
+        own: &mut dyn Cycle,
+    ) -> Result<Over, Broken> {
         let shared = Arc::new(Shared {
             gate: Gate::default(),
+            lent: AtomicBool::new(true),
             reached: AtomicU64::new(self.now.nanos()),
+            beats: AtomicU64::new(0),
+            resume_at: AtomicU64::new(0),
             left: AtomicBool::new(false),
             dead: AtomicBool::new(false),
             bell: self.bell.clone(),
             tally: self.tally.clone(),
         });
-        let Some((keyboards, synths)) = self.register(&client) else {
-            return self.refused(&client);
+        let (names, theirs) = (self.names.clone(), shared.clone());
+        let activate = move || opener::activate(client, &names, cycle, theirs);
+        let asked = Asked::begin("activator", Some(self.bell.clone()), activate);
+        let Some(asked) = asked else {
+            return Ok(Over::ServerGone);
         };
-        let ends = (0..keyboards.len()).map(End::Keyboard);
-        let raw = keyboards.iter().map(|port| port.raw() as usize);
-        let mut ports: Vec<(End, usize)> = ends.zip(raw).collect();
-        let ends = (0..synths.len()).map(End::Synth);
-        ports.extend(ends.zip(synths.iter().map(|port| port.raw() as usize)));
-
-        let (changes_in, changes) = rtrb::RingBuffer::new(CHANGES);
-        let notices = Notices::new(ports, changes_in, shared.clone());
-        self.now = self.now.max(self.clock.now());
-        let time = (self.now, client.sample_rate());
-        let process = Process::new(cycle, (keyboards, synths), time, changes, shared.clone());
-        info!(
-            "client {} of a JACK server at {} Hz, {} frames a cycle",
-            client.name(),
-            client.sample_rate(),
-            client.buffer_size()
-        );
-        match client.activate_async(notices, process) {
-            Ok(active) => *lock(&self.place) = Some(active),
-            Err(_) => return Ok(Over::ServerGone),
-        }
-        self.tally.changes.fetch_add(1, Ordering::Relaxed);
-        let over = self.watch(&shared);
+        let active = loop {
+            match asked.answer(Duration::ZERO) {
+                Ok(Ok(active)) => break active,
+                Ok(Err(Some(broken))) => return Err(broken),
+                Ok(Err(None)) | Err(RecvTimeoutError::Disconnected) => return Ok(Over::ServerGone),
+                Err(RecvTimeoutError::Timeout) => {}
+            }
+            if self.alone(own, alone::SOON)? == Next::Leave {
+                return Ok(Over::Left);
+            }
+        };
+        *lock(&self.place) = Some(Arc::new(active));
+        self.hand_over(&shared);
+        let over = self.watch(&shared, own);
         self.close(&shared);
         over
     }
 
-    fn watch(&self, shared: &Shared) -> Result<Over, Broken> {
-        loop {
-            if shared.left.load(Ordering::Acquire) {
-                return Ok(Over::Left);
-            }
-            if shared.dead.load(Ordering::Acquire) {
-                return Ok(Over::ServerGone);
-            }
-            self.wait(None)?;
-        }
+    /// From now on the callback plays.
+    fn hand_over(&mut self, shared: &Shared) {
+        self.tally.set_server(Server::Runs);
+        self.now = self.now.max(self.clock.now());
+        shared.resume_at.store(self.now.nanos(), Ordering::Release);
+        shared.lent.store(false, Ordering::Release);
+        self.tally.changes.fetch_add(1, Ordering::Relaxed);
     }
 
     /// Takes the client down, with nobody inside its callback.
@@ -236,68 +253,13 @@ impl Jack {
         if shared.dead.load(Ordering::Acquire) {
             std::thread::sleep(SETTLE);
         }
-        drop(lock(&self.place).take());
+        if let Some(client) = lock(&self.place).take() {
+            asking::ask("closer", ANSWER, move || drop(client));
+        }
         let reached = Time::from_nanos(shared.reached.load(Ordering::Acquire));
         self.now = self.now.max(reached);
+        self.tally.real_time.store(false, Ordering::Relaxed);
         self.tally.changes.fetch_add(1, Ordering::Relaxed);
-    }
-
-    /// One port each. A synth that is called like a keyboard is told apart.
-    fn register(&self, client: &Client) -> Option<Ports> {
-        let keyboards = self.keyboards.iter();
-        let keyboards: Result<_, _> = keyboards
-            .map(|name| client.register_port(&desk::short(name), MidiIn::default()))
-            .collect();
-        let synths = desk::synth_names(&self.keyboards, &self.synths).into_iter();
-        let synths: Result<_, _> = synths
-            .map(|name| client.register_port(&name, MidiOut::default()))
-            .collect();
-        Some((keyboards.ok()?, synths.ok()?))
-    }
-
-    /// A server that gives us a client but no ports: dying perhaps, else full.
-    fn refused(&self, client: &Client) -> Result<Over, Broken> {
-        if client.register_port("probe", MidiIn::default()).is_err() {
-            return Ok(Over::ServerGone);
-        }
-        Err(Broken {
-            wrong: "The JACK server refuses a port's name".to_string(),
-            right: "give every keyboard and synth a short name of its own".to_string(),
-        })
-    }
-
-    /// The server took with it whatever was connected.
-    fn say_lost(&mut self) {
-        self.now = self.now.max(self.clock.now());
-        for keyboard in 0..self.keyboards.len() {
-            self.inbox.add_keyboard_lost(self.now, keyboard);
-        }
-        for synth in 0..self.synths.len() {
-            self.inbox.add_synth(self.now, synth, Link::Down);
-        }
-    }
-
-    /// Cycles without ports, for so long.
-    fn alone(&mut self, cycle: &mut dyn Cycle, span: Span) -> Result<Next, Broken> {
-        let until = self.clock.now() + span;
-        loop {
-            self.now = self.now.max(self.clock.now());
-            let mut outlet = Outlet {
-                outboxes: &mut self.outboxes,
-                wire: &mut Nowhere,
-            };
-            let next = cycle.run(self.now, &mut self.inbox, &mut outlet);
-            self.inbox.clear();
-            let Next::Wait(deadline) = next else {
-                return Ok(Next::Leave);
-            };
-            let now = self.clock.now();
-            if now >= until {
-                return Ok(next);
-            }
-            let then = deadline.map_or(until, |deadline| deadline.min(until));
-            self.wait(Some(then.since(now)))?;
-        }
     }
 
     fn wait(&self, at_most: Option<Span>) -> Result<(), Broken> {
@@ -310,23 +272,7 @@ impl Jack {
     }
 }
 
-/// A way for bytes while there is no server.
-struct Nowhere;
-
-impl Wire for Nowhere {
-    fn write(&mut self, _: usize, bytes: &[u8]) -> usize {
-        bytes.len()
-    }
-}
-
-/// `None` if no server answers. One is never started.
-fn open_client(name: &str) -> Option<Client> {
-    let name = name.replace('\0', " ");
-    let opened = Client::new(&name, ClientOptions::NO_START_SERVER);
-    opened.ok().map(|(client, _)| client)
-}
-
 /// A thread that failed with the client in its hands has not harmed it.
-fn lock(place: &Place) -> std::sync::MutexGuard<'_, Option<Active>> {
+fn lock(place: &Place) -> std::sync::MutexGuard<'_, Option<Arc<Active>>> {
     place.lock().unwrap_or_else(PoisonError::into_inner)
 }

@@ -31,7 +31,7 @@ use names::{Address, Port, Wanted};
 pub use outbox::{Outlet, Room, Weight, Wire};
 
 use crate::time::Time;
-use std::sync::atomic::AtomicU64;
+use std::sync::atomic::{AtomicBool, AtomicU8, AtomicU64, Ordering};
 
 /// One unit of the score thread's work. Must not block, allocate, lock or log.
 pub trait Cycle {
@@ -85,7 +85,7 @@ pub trait Ring: Send {
     fn ring(&self);
 }
 
-/// Counts that the desk reads while a loop runs.
+/// What the desk reads while a loop runs: mostly counts.
 #[derive(Debug, Default)]
 pub struct Tally {
     /// Ports that came, went or changed, or may have: time to look for devices again.
@@ -96,6 +96,33 @@ pub struct Tally {
     pub too_long: AtomicU64,
     /// Times that our own notes came back to us and were not heard.
     pub loops: AtomicU64,
+    /// The thread that plays runs before all ordinary ones.
+    pub real_time: AtomicBool,
+    server: AtomicU8,
+}
+
+/// How it stands with the server that a backend's ports belong to. One that is part of the system always runs.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub enum Server {
+    #[default]
+    Runs,
+    Absent,
+    /// It is there, and gives us no cycles.
+    StandsStill,
+}
+
+impl Tally {
+    pub fn server(&self) -> Server {
+        match self.server.load(Ordering::Relaxed) {
+            0 => Server::Runs,
+            1 => Server::Absent,
+            _ => Server::StandsStill,
+        }
+    }
+
+    pub fn set_server(&self, server: Server) {
+        self.server.store(server as u8, Ordering::Relaxed);
+    }
 }
 
 /// The desk's view of a backend's ports, and its hand to connect them.

@@ -102,6 +102,11 @@ impl Outlet<'_> {
         self.outboxes.iter().any(|outbox| !outbox.is_empty())
     }
 
+    /// Messages and bundles dropped for want of room, by all that is here.
+    pub fn dropped(&self) -> u64 {
+        self.outboxes.iter().map(Outbox::dropped).sum()
+    }
+
     /// The room at a synth, if it has changed since this was last asked.
     pub fn room_news(&mut self, synth: usize) -> Option<Room> {
         self.outboxes.get_mut(synth)?.room_news()

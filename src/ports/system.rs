@@ -1,4 +1,5 @@
-//! The few things that the system only gives to unsafe code: a wait with a fine deadline, a bell to end it, priority, and who we are.
+//! The few things that the system only gives to unsafe code: a wait with a fine deadline, a bell to end it, priority,
+//! a lock, the machine's count of microseconds, and who we are.
 
 use super::Ring;
 use crate::time::Span;
@@ -28,6 +29,12 @@ impl Bell {
     pub fn ring(&self) {
         // It can only fail if it has been rung 2^64 times unheard.
         let _ = (&*self.0).write(&1u64.to_ne_bytes());
+    }
+
+    /// Rings it, whoever has it.
+    pub fn ringer(&self) -> Arc<dyn Fn() + Send + Sync> {
+        let bell = self.clone();
+        Arc::new(move || bell.ring())
     }
 
     /// Makes it silent again.
@@ -113,6 +120,34 @@ pub fn is_hurried() -> bool {
     // SAFETY: 0 means the calling thread; no memory is touched.
     let policy = unsafe { libc::sched_getscheduler(0) };
     policy >= 0 && policy & !libc::SCHED_RESET_ON_FORK != libc::SCHED_OTHER
+}
+
+/// Keeps everybody else who asks out of what this file or folder stands for, until it is closed. False: somebody is
+/// inside.
+///
+/// # Errors
+/// It cannot be locked at all.
+pub fn lock(file: &File) -> io::Result<bool> {
+    // SAFETY: the descriptor is open as long as `file` is borrowed; no memory is touched.
+    if unsafe { libc::flock(file.as_raw_fd(), libc::LOCK_EX | libc::LOCK_NB) } == 0 {
+        return Ok(true);
+    }
+    let error = io::Error::last_os_error();
+    match error.kind() {
+        io::ErrorKind::WouldBlock | io::ErrorKind::Interrupted => Ok(false),
+        _ => Err(error),
+    }
+}
+
+/// The machine's own count of microseconds, CLOCK_MONOTONIC, which other programs go by too.
+pub(super) fn monotonic_micros() -> u64 {
+    let mut time = libc::timespec {
+        tv_sec: 0,
+        tv_nsec: 0,
+    };
+    // SAFETY: `time` lives through the call. It cannot fail: the clock is always there.
+    unsafe { libc::clock_gettime(libc::CLOCK_MONOTONIC, &mut time) };
+    time.tv_sec as u64 * 1_000_000 + time.tv_nsec as u64 / 1_000
 }
 
 /// The number of the user we act for.

@@ -13,6 +13,7 @@ use notify::{Event, RecommendedWatcher, RecursiveMode, Watcher};
 use std::fs::Metadata;
 use std::os::unix::fs::MetadataExt;
 use std::path::{Path, PathBuf};
+use std::sync::Arc;
 use std::sync::mpsc::{Receiver, Sender, channel};
 use std::time::{Duration, UNIX_EPOCH};
 
@@ -35,6 +36,9 @@ struct Folder {
     born: Option<Duration>,
 }
 
+/// Called when the system has told of something, on a thread of its own: time for [`Watch::is_due`].
+pub type Wake = Arc<dyn Fn() + Send + Sync>;
+
 /// The files, and what is known of them.
 pub struct Watch {
     files: Vec<PathBuf>,
@@ -44,6 +48,7 @@ pub struct Watch {
     listener: Option<RecommendedWatcher>,
     heard: Receiver<Heard>,
     tell: Sender<Heard>,
+    wake: Wake,
     decide: Decide,
     deaf: Deaf,
 }
@@ -67,8 +72,8 @@ enum Heard {
 }
 
 impl Watch {
-    /// The first look finds them all changed, so that nothing is missed that happened since they were read.
-    pub fn new(files: &[PathBuf], now: Time) -> Watch {
+    /// At the first look they are to be read once more, so that nothing is missed that happened since they were read.
+    pub fn new(files: &[PathBuf], now: Time, wake: Wake) -> Watch {
         let (tell, heard) = channel();
         let mut watch = Watch {
             files: Vec::new(),
@@ -77,10 +82,12 @@ impl Watch {
             listener: None,
             heard,
             tell,
+            wake,
             decide: Decide::new(now),
             deaf: Deaf::No,
         };
-        watch.follow(files, true);
+        watch.follow(files, false);
+        watch.know();
         watch
     }
 
@@ -101,7 +108,7 @@ impl Watch {
         }
     }
 
-    /// Whether the files are to be read now. What is seen of them then counts as known.
+    /// Whether the files have changed and are to be read now. What is seen of them then counts as known.
     pub fn is_due(&mut self, now: Time) -> bool {
         while let Ok(heard) = self.heard.try_recv() {
             match heard {
@@ -117,11 +124,30 @@ impl Watch {
         }
         let due = self.decide.is_due(now);
         if due {
-            // Before reading: what changes while we read is seen at the next look.
-            self.arm();
-            self.decide.know(self.prints());
+            self.know();
         }
         due
+    }
+
+    /// To be asked after `is_due`: whether to read again what could not be used. What was missing may be a file that
+    /// nobody watches.
+    pub fn tries_again(&mut self, now: Time) -> bool {
+        let again = self.decide.tries_again(now);
+        if again {
+            self.know();
+        }
+        again
+    }
+
+    /// When `is_due` is to be asked again, if the system says nothing until then.
+    pub fn due_at(&self) -> Option<Time> {
+        self.decide.due_at()
+    }
+
+    /// Before reading: what changes while we read is seen at the next look.
+    fn know(&mut self) {
+        self.arm();
+        self.decide.know(self.prints());
     }
 
     /// Something to be told, once: the system does not tell us of changes.
@@ -152,9 +178,14 @@ impl Watch {
         if wanted == self.folders {
             return;
         }
-        let tell = self.tell.clone();
-        // Nobody listens any more when this fails.
-        let handler = move |event| sort(event, &mut |heard| drop(tell.send(heard)));
+        let (tell, wake) = (self.tell.clone(), self.wake.clone());
+        let handler = move |event| {
+            sort(event, &mut |heard| {
+                // Nobody listens any more when this fails.
+                drop(tell.send(heard));
+                wake();
+            });
+        };
         match notify::recommended_watcher(handler) {
             Ok(mut listener) => {
                 let listen = |folder: &Folder| {

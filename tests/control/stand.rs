@@ -164,7 +164,14 @@ impl Stand {
             outboxes: outboxes(1),
         };
         let stage = Arc::new(stage);
-        let mut front = Front::new(stage, status, Some(open(path).unwrap()), systemd, pulses);
+        let mut front = Front::new(
+            stage,
+            status,
+            Some(open(path).unwrap()),
+            systemd,
+            pulses,
+            Bell::new().unwrap(),
+        );
         let mut orders = Orders::new(commands_in, Box::new(bell.clone()));
         front.ready();
         let desk = shared.clone();
@@ -247,7 +254,13 @@ impl Drop for Stand {
 }
 
 fn status(stage: &Stage, engine: &Engine) -> Status {
-    let mut status = Status::of(stage, "trued", Path::new("stage.yaml"), engine.report());
+    let mut status = Status::of(
+        stage,
+        "trued",
+        "loopback",
+        Path::new("stage.yaml"),
+        engine.report(),
+    );
     let device = |name: &str, waits, linked| Device {
         name: name.to_string(),
         ports: Vec::new(),

@@ -7,10 +7,10 @@ use std::time::Duration;
 use trued::daemon::systemd::Systemd;
 use trued::time::Span;
 
-struct Supervisor(UnixDatagram);
+pub struct Supervisor(UnixDatagram);
 
 impl Supervisor {
-    fn at(path: &std::path::Path) -> Supervisor {
+    pub fn at(path: &std::path::Path) -> Supervisor {
         let socket = UnixDatagram::bind(path).unwrap();
         socket.set_nonblocking(true).unwrap();
         Supervisor(socket)
@@ -23,10 +23,34 @@ impl Supervisor {
         Some(String::from_utf8(buffer[..count].to_vec()).expect("UTF-8"))
     }
 
-    fn waits_for(&self, wanted: &str) {
+    /// Gives what was heard before it.
+    pub fn waits_for(&self, wanted: &str) -> Vec<String> {
+        let mut before = Vec::new();
         patiently(wanted, || {
-            std::iter::from_fn(|| self.next()).any(|heard| heard == wanted)
+            let mut heard = std::iter::from_fn(|| self.next());
+            heard.any(|heard| {
+                let is = heard == wanted;
+                before.push(heard);
+                is
+            })
         });
+        before.pop();
+        before
+    }
+
+    /// The first that fits.
+    pub fn waits_for_some(&self, what: &str, fits: impl Fn(&str) -> bool) -> String {
+        let mut found = None;
+        patiently(what, || {
+            found = std::iter::from_fn(|| self.next()).find(|heard| fits(heard));
+            found.is_some()
+        });
+        found.expect("it came")
+    }
+
+    /// What has been heard and not been asked for yet.
+    pub fn everything(&self) -> Vec<String> {
+        std::iter::from_fn(|| self.next()).collect()
     }
 
     fn pings(&self) -> usize {

@@ -9,6 +9,7 @@ fn unit(folder: &Folder) -> String {
     let text = std::fs::read_to_string(shipped).expect("the unit file");
     assert!(text.contains("\nExecStart=/usr/bin/trued run /etc/trued/stage.yaml\n"));
     let path = folder.at("trued.service");
+    assert!(text.contains("\nExecReload=/usr/bin/trued tell reload\n"));
     let here = text.replace("/usr/bin/trued", env!("CARGO_BIN_EXE_trued"));
     std::fs::write(&path, here).unwrap();
     path.to_str().expect("UTF-8").to_string()

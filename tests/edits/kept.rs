@@ -6,7 +6,7 @@ use std::path::Path;
 use std::time::Duration;
 use trued::daemon::state::Boot;
 
-const GIVE_UP: Duration = Duration::from_secs(20);
+const GIVE_UP: Duration = Duration::from_secs(60);
 
 const STAGE: &str = "stage: Kept
 rig: rig.yaml

@@ -13,13 +13,14 @@ use trued::daemon::{Player, Score, Slot};
 use trued::engine::{Counters, Engine};
 use trued::ports::clock::Clock;
 use trued::ports::outbox::outboxes;
+use trued::ports::system::{Bell, readable, wait};
 use trued::ports::{Cycle, Inbox, Link, Next, Outlet, Wire};
 use trued::time::Time;
 
-/// How often the desk looks, as in the daemon.
-const LOOK: Duration = Duration::from_millis(50);
 /// Strange on purpose, so that a range never told is heard at once.
 const RANGE_AT_POWER_ON: u8 = 7;
+/// How long a set-up is waited for.
+const SET_UP: Duration = Duration::from_secs(60);
 pub const TAIL: Duration = Duration::from_millis(50);
 
 pub struct Stand {
@@ -62,7 +63,8 @@ impl Stand {
         let (old_in, old) = rtrb::RingBuffer::new(2);
         let engine = Engine::new(boot.stage.plan());
         let score = Score::new(engine, 1, commands_out, news_in).with_plans(plans_out, old_in);
-        let reload = Reload::new(boot, Handing { plans, old }, clock.now());
+        let bell = Bell::new().expect("a descriptor");
+        let reload = Reload::new(boot, Handing { plans, old }, clock.now(), bell.ringer());
         let heard = Receiver::new(Kind::Plain, TAIL, RANGE_AT_POWER_ON);
         let (keys, keys_out) = channel::<Vec<u8>>();
         let mut stand = Stand {
@@ -75,7 +77,7 @@ impl Stand {
             done: Arc::default(),
             threads: Vec::new(),
         };
-        let desk = desk(stand.reload.clone(), clock, keys, stand.done.clone());
+        let desk = desk(stand.reload.clone(), bell, clock, keys, stand.done.clone());
         let mut player = Player::new(stand.slot.clone());
         let mut port = Port {
             clock,
@@ -87,8 +89,13 @@ impl Stand {
             drop((commands, news_out));
         };
         stand.threads = vec![std::thread::spawn(desk), std::thread::spawn(score)];
-        // Set-up is said in pieces; what follows counts from when it is over.
-        std::thread::sleep(Duration::from_millis(500));
+        // Set-up is said in pieces, the last channel last; what follows counts from when it is over.
+        let told = |stand: &Stand| {
+            let heard = stand.heard.lock().expect("no panic there");
+            heard.range_cents(15) != 100.0 * f64::from(RANGE_AT_POWER_ON)
+        };
+        assert!(stand.wait(SET_UP, told), "it is set up");
+        std::thread::sleep(Duration::from_millis(100));
         stand
     }
 
@@ -130,17 +137,23 @@ impl Stand {
 /// What the daemon's desk does with edits.
 fn desk(
     reload: Arc<Mutex<Reload>>,
+    bell: Bell,
     clock: Clock,
-    bell: Sender<Vec<u8>>,
+    score: Sender<Vec<u8>>,
     done: Arc<AtomicBool>,
 ) -> impl FnOnce() {
     move || {
         while !done.load(Ordering::Acquire) {
-            let todo = reload.lock().expect("no panic there").look(clock.now());
-            if todo == Todo::Ring {
-                bell.send(Vec::new()).expect("the score runs");
-            }
-            std::thread::sleep(LOOK);
+            let patience = {
+                let mut reload = reload.lock().expect("no panic there");
+                reload.begins(clock.now());
+                if reload.look(clock.now()) == Todo::Ring {
+                    score.send(Vec::new()).expect("the score runs");
+                }
+                reload.patience(clock.now())
+            };
+            wait(&mut [readable(bell.fd())], Some(patience)).expect("a wait");
+            bell.hush();
         }
     }
 }

@@ -2,13 +2,14 @@
 
 use super::{as_vim_does, folder, rename_over, swap_link};
 use std::path::{Path, PathBuf};
+use std::sync::Arc;
 use std::time::{Duration, Instant};
 use trued::ports::clock::Clock;
 use trued::stage::watch::Watch;
 
 /// How long a change is waited for. What the system tells comes after 0.1 s, what a look finds after 1.1 s at most;
 /// more only where the machine is busy.
-const GIVE_UP: Duration = Duration::from_secs(20);
+const GIVE_UP: Duration = Duration::from_secs(60);
 
 struct Watched {
     watch: Watch,
@@ -18,15 +19,17 @@ struct Watched {
 impl Watched {
     fn new(files: &[PathBuf]) -> Watched {
         let clock = Clock::start();
-        let watch = Watch::new(files, clock.now());
+        let watch = Watch::new(files, clock.now(), Arc::new(|| ()));
         let mut watched = Watched { watch, clock };
-        // The first look finds everything new, once.
+        // At the first look they are to be read once more.
         watched.wait();
+        watched.watch.follow(files, true);
         watched
     }
 
     fn is_due(&mut self) -> bool {
-        self.watch.is_due(self.clock.now())
+        let now = self.clock.now();
+        self.watch.is_due(now) || self.watch.tries_again(now)
     }
 
     /// Waits for the next change.

@@ -3,35 +3,58 @@
 //! JACK knows ports by name, so an address here is a place in a list of names that only grows: a port that comes back
 //! has the address it had.
 
-use super::{Place, lock};
+use super::{Place, asking, lock};
 use crate::ports::names::{Address, Port};
-use crate::ports::{Broken, Patchbay};
+use crate::ports::{Broken, Patchbay, Server, Tally};
 use jack::{Client, Error, PortFlags};
-use std::sync::{Mutex, PoisonError};
+use std::sync::atomic::{AtomicBool, Ordering};
+use std::sync::{Arc, Mutex, PoisonError};
+use std::time::Duration;
 
 /// Addresses of our own ports, whatever the server calls our client today.
 const OUR_KEYBOARDS: i32 = -1;
 const OUR_SYNTHS: i32 = -2;
+/// How long the desk waits for an answer of the server.
+const ANSWER: Duration = Duration::from_millis(500);
 const MIDI: &str = "8 bit raw midi";
 
 /// A look at all MIDI ports of the server, while there is one.
 pub struct Desk {
     place: Place,
+    tally: Arc<Tally>,
     /// Clients of this name are trued's as well: another one that runs.
     family: String,
     keyboards: Vec<String>,
     synths: Vec<String>,
     names: Mutex<Vec<String>>,
+    /// A question to the server has not been answered yet.
+    asked: Arc<AtomicBool>,
+}
+
+/// A question under way.
+struct Asked(Arc<AtomicBool>);
+
+impl Drop for Asked {
+    fn drop(&mut self) {
+        self.0.store(false, Ordering::Release);
+    }
 }
 
 impl Desk {
-    pub(super) fn new(place: Place, family: &str, keyboards: &[String], synths: &[String]) -> Desk {
+    pub(super) fn new(
+        (place, tally): (Place, Arc<Tally>),
+        family: &str,
+        keyboards: &[String],
+        synths: &[String],
+    ) -> Desk {
         Desk {
             place,
+            tally,
             family: family.to_string(),
             keyboards: keyboards.iter().map(|name| short(name)).collect(),
             synths: synth_names(keyboards, synths),
             names: Mutex::default(),
+            asked: Arc::default(),
         }
     }
 
@@ -81,6 +104,44 @@ impl Desk {
         }
     }
 
+    /// Lets the server connect two ports or take them apart, unless they are as wanted already: that is known without
+    /// asking it, and it may stand still.
+    fn change(
+        &self,
+        from: Address,
+        to: Address,
+        joined: bool,
+        ask: fn(&Client, &str, &str) -> Result<(), Broken>,
+    ) -> Result<(), Broken> {
+        // Without a server there is nothing to connect, and nothing to complain of but the server.
+        let Some(active) = lock(&self.place).clone() else {
+            return Ok(());
+        };
+        let client = active.as_client();
+        let names = self.full_name(client, from).zip(self.full_name(client, to));
+        let Some((from, to)) = names else {
+            return Ok(());
+        };
+        let port = client.port_by_name(&from);
+        if port.and_then(|port| port.is_connected_to(&to).ok()) == Some(joined) {
+            return Ok(());
+        }
+        let no_answer = || Broken {
+            wrong: "the JACK server does not answer".to_string(),
+            right: "it is asked again; if it does not go on, start it anew".to_string(),
+        };
+        // One that is kept is enough.
+        if self.tally.server() == Server::StandsStill || self.asked.swap(true, Ordering::AcqRel) {
+            return Err(no_answer());
+        }
+        let asked = Asked(self.asked.clone());
+        let answer = asking::ask("patcher", ANSWER, move || {
+            let _asked = asked;
+            ask(active.as_client(), &from, &to)
+        });
+        answer.unwrap_or_else(|| Err(no_answer()))
+    }
+
     fn full_name(&self, client: &Client, address: Address) -> Option<String> {
         let place = address.port as usize;
         let ours = |names: &[String]| Some(format!("{}:{}", client.name(), names.get(place)?));
@@ -116,33 +177,23 @@ impl Patchbay for Desk {
     }
 
     fn connect(&self, from: Address, to: Address) -> Result<(), Broken> {
-        let place = lock(&self.place);
-        // Without a server there is nothing to connect, and nothing to complain of but the server.
-        let Some(client) = place.as_ref().map(|active| active.as_client()) else {
-            return Ok(());
-        };
-        let names = self.full_name(client, from).zip(self.full_name(client, to));
-        let Some((from, to)) = names else {
-            return Ok(());
-        };
-        match client.connect_ports_by_name(&from, &to) {
-            Ok(()) | Err(Error::PortAlreadyConnected(..)) => Ok(()),
-            Err(_) => Err(Broken {
-                wrong: "JACK refused".to_string(),
-                right: "look with jack_lsp -c whether both are there".to_string(),
-            }),
-        }
+        self.change(from, to, true, |client, from, to| {
+            match client.connect_ports_by_name(from, to) {
+                Ok(()) | Err(Error::PortAlreadyConnected(..)) => Ok(()),
+                Err(_) => Err(Broken {
+                    wrong: "JACK refused".to_string(),
+                    right: "look with jack_lsp -c whether both are there".to_string(),
+                }),
+            }
+        })
     }
 
     fn disconnect(&self, from: Address, to: Address) -> Result<(), Broken> {
-        let place = lock(&self.place);
-        if let Some(client) = place.as_ref().map(|active| active.as_client())
-            && let Some((from, to)) = self.full_name(client, from).zip(self.full_name(client, to))
-        {
+        self.change(from, to, false, |client, from, to| {
             // Refused only where the two are not connected, which is as good.
-            let _ = client.disconnect_ports_by_name(&from, &to);
-        }
-        Ok(())
+            let _ = client.disconnect_ports_by_name(from, to);
+            Ok(())
+        })
     }
 }
 

@@ -1,6 +1,7 @@
 //! What runs in the server's process callback: one cycle of the score, each thing at its frame.
 //!
-//! Nothing here allocates, locks, logs or makes a system call, but for the one ring of the bell at the very end.
+//! Nothing here allocates, locks, logs or makes a system call, but for a question about priority at the very beginning
+//! and the one ring of the bell at the very end.
 
 use super::frames::Frames;
 use super::{Ports, Shared};
@@ -8,7 +9,7 @@ use crate::limits::{KEYBOARDS_MAX, SYNTHS_MAX};
 use crate::ports::hotplug::Change;
 use crate::ports::message::cut;
 use crate::ports::outbox::{Outbox, outboxes};
-use crate::ports::{Cycle, Inbox, Next, Outlet, Tally, Wire};
+use crate::ports::{Cycle, Inbox, Link, Next, Outlet, Tally, Wire, system};
 use crate::time::Time;
 use jack::{Client, Control, MidiIn, MidiIter, MidiOut, MidiWriter, Port, ProcessScope, RawMidi};
 use rtrb::Consumer;
@@ -22,7 +23,8 @@ const EMPTY_CYCLES: u32 = 4;
 pub struct Process {
     synths: Vec<Port<MidiOut>>,
     player: Rounds,
-    /// When this server's time begins on our clock, and how many frames it has in a second.
+    /// When this server's time begins on our clock, which whoever hands the score over says, and how many frames it has
+    /// in a second.
     zero: Time,
     rate: u32,
     frames: Option<Frames>,
@@ -42,6 +44,8 @@ struct Rounds {
     /// Which keyboard the device on each seat plays. The server mixes what is joined to one port, so all of them are one
     /// to the engine, and when one goes all let go.
     seats: [usize; KEYBOARDS_MAX],
+    /// Synths that have somebody who hears them.
+    linked: [bool; SYNTHS_MAX],
 }
 
 impl Process {
@@ -49,7 +53,7 @@ impl Process {
     pub fn new(
         cycle: Box<dyn Cycle + Send>,
         (keyboards, synths): Ports,
-        (zero, rate): (Time, u32),
+        rate: u32,
         changes: Consumer<Change>,
         shared: Arc<Shared>,
     ) -> Process {
@@ -62,9 +66,10 @@ impl Process {
                 outboxes: outboxes(synths.len()),
                 tally: shared.tally.clone(),
                 seats: std::array::from_fn(|seat| seat),
+                linked: [false; SYNTHS_MAX],
             },
             synths,
-            zero,
+            zero: Time::START,
             rate,
             frames: None,
             shared,
@@ -74,6 +79,19 @@ impl Process {
 
     fn play(&mut self, scope: &ProcessScope) {
         let count = scope.last_frame_time();
+        let resume_at = self.shared.resume_at.swap(0, Ordering::Acquire);
+        if resume_at > 0 {
+            // Until then time went on by another clock.
+            self.zero = Time::from_nanos(resume_at);
+            self.frames = None;
+        }
+        if self.frames.is_none() {
+            let real_time = system::is_hurried();
+            self.player
+                .tally
+                .real_time
+                .store(real_time, Ordering::Relaxed);
+        }
         let first = || Frames::new(self.rate, self.zero, count);
         let frames = self.frames.get_or_insert_with(first);
         frames.begin(count, scope.n_frames());
@@ -93,7 +111,7 @@ impl Process {
             }
             return;
         }
-        let next = self.player.run(&mut wire, scope);
+        let next = self.player.run(&mut wire, scope, resume_at > 0);
         self.left = (next == Next::Leave).then_some(0);
         let reached = frames.end().nanos();
         self.shared.reached.store(reached, Ordering::Release);
@@ -102,14 +120,22 @@ impl Process {
 
 impl Rounds {
     /// All that has come in this cycle; in several rounds, should it be more than the inbox holds.
-    fn run(&mut self, wire: &mut FrameWire<'_>, scope: &ProcessScope) -> Next {
+    ///
+    /// `resumes`: the server had stood still, and the score has been told that all is lost.
+    fn run(&mut self, wire: &mut FrameWire<'_>, scope: &ProcessScope, resumes: bool) -> Next {
         let frames = wire.frames;
         let mut outlet = Outlet {
             outboxes: &mut self.outboxes,
             wire,
         };
-        outlet.retry();
         let start = frames.time(0);
+        if resumes {
+            for synth in (0..SYNTHS_MAX).filter(|synth| self.linked[*synth]) {
+                outlet.forget(synth);
+                self.inbox.add_synth(start, synth, Link::Back);
+            }
+        }
+        outlet.retry();
         while self.inbox.has_room()
             && let Ok(change) = self.changes.pop()
         {
@@ -124,7 +150,12 @@ impl Rounds {
                     self.inbox.add_keyboard_lost(start, keyboard);
                 }
                 Change::Loop { .. } => {}
-                Change::Synth(synth, link) => self.inbox.add_synth(start, synth, link),
+                Change::Synth(synth, link) => {
+                    if let Some(linked) = self.linked.get_mut(synth) {
+                        *linked = link != Link::Down;
+                    }
+                    self.inbox.add_synth(start, synth, link);
+                }
             }
         }
         let mut sources = Sources::new(&self.keyboards, scope);
@@ -153,8 +184,16 @@ impl Rounds {
 impl jack::ProcessHandler for Process {
     fn process(&mut self, _: &Client, scope: &ProcessScope) -> Control {
         let shared = self.shared.clone();
+        shared.beats.fetch_add(1, Ordering::AcqRel);
         if let Some(_inside) = shared.gate.enter() {
-            self.play(scope);
+            if shared.lent.load(Ordering::Acquire) {
+                // Else what they hold from the last cycle would go out again.
+                for port in &mut self.synths {
+                    let _ = port.writer(scope);
+                }
+            } else {
+                self.play(scope);
+            }
         }
         Control::Continue
     }

@@ -4,7 +4,7 @@ use super::Print;
 use crate::time::{Span, Time};
 
 /// A file is read once nothing has been heard of it for so long: editors write in several strokes.
-const QUIET: Span = Span::from_millis(100);
+const QUIET: Span = Span::from_millis(50);
 /// Whoever writes without a pause is not waited for longer than this.
 const PATIENCE: Span = Span::from_millis(1_000);
 /// Between two looks.
@@ -63,17 +63,24 @@ impl Decide {
         self.good = good;
     }
 
+    /// When what was touched may be read, if nothing more is heard of it.
+    pub fn due_at(&self) -> Option<Time> {
+        let (first, last) = self.touched?;
+        Some((last + QUIET).min(first + PATIENCE))
+    }
+
     /// True once for each change.
     pub fn is_due(&mut self, now: Time) -> bool {
-        let again = !self.good && self.looked_at == now;
-        let due = match self.touched {
-            Some((first, last)) => now.since(last) >= QUIET || now.since(first) >= PATIENCE,
-            None => again,
-        };
+        let due = self.due_at().is_some_and(|at| at <= now);
         if due {
             self.touched = None;
         }
         due
+    }
+
+    /// Nothing has changed, for all we know; but what was read could not be used, and this is a look.
+    pub fn tries_again(&self, now: Time) -> bool {
+        !self.good && self.looked_at == now && self.touched.is_none()
     }
 }
 
@@ -98,26 +105,27 @@ mod tests {
     #[test]
     fn strokes_that_follow_each_other_are_one_edit() {
         let mut decide = Decide::new(at(0));
-        for stroke in [10, 60, 120] {
+        for stroke in [10, 40, 85] {
             decide.touched(at(stroke));
-            assert!(!decide.is_due(at(stroke + 40)));
+            assert!(!decide.is_due(at(stroke + 20)));
         }
-        assert!(!decide.is_due(at(219)));
-        assert!(decide.is_due(at(220)));
-        assert!(!decide.is_due(at(220)), "once");
+        assert_eq!(decide.due_at(), Some(at(135)));
+        assert!(!decide.is_due(at(134)));
+        assert!(decide.is_due(at(135)));
+        assert!(!decide.is_due(at(135)), "once");
     }
 
     #[test]
     fn a_writer_without_pause_is_read_in_between() {
         let mut decide = Decide::new(at(0));
         let mut read = Vec::new();
-        for now in (0..2_500).step_by(50) {
+        for now in (0..2_500).step_by(25) {
             decide.touched(at(now));
             if decide.is_due(at(now)) {
                 read.push(now);
             }
         }
-        assert_eq!(read, [1_000, 2_050]);
+        assert_eq!(read, [1_000, 2_025]);
     }
 
     #[test]
@@ -130,7 +138,7 @@ mod tests {
         assert!(!decide.is_due(at(1_500)), "nothing has changed");
         decide.looked(at(2_000), vec![print(6), None]);
         assert!(!decide.is_due(at(2_000)), "it may still be being written");
-        assert!(decide.is_due(at(2_100)));
+        assert!(decide.is_due(at(2_050)));
         decide.looked(at(3_000), vec![print(6), print(1)]);
         assert!(decide.is_due(at(3_100)), "a file that was missing is there");
         decide.looked(at(4_000), vec![print(6), None]);
@@ -142,12 +150,12 @@ mod tests {
         let mut decide = Decide::new(at(0));
         decide.settled(false);
         decide.looked(at(1_000), vec![]);
-        assert!(decide.is_due(at(1_000)));
-        assert!(!decide.is_due(at(1_050)));
+        assert!(decide.tries_again(at(1_000)) && !decide.is_due(at(1_000)));
+        assert!(!decide.tries_again(at(1_050)));
         decide.looked(at(2_000), vec![]);
-        assert!(decide.is_due(at(2_000)));
+        assert!(decide.tries_again(at(2_000)));
         decide.settled(true);
         decide.looked(at(3_000), vec![]);
-        assert!(!decide.is_due(at(3_000)));
+        assert!(!decide.tries_again(at(3_000)));
     }
 }

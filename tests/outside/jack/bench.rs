@@ -1,184 +1,14 @@
-//! A JACK server, trued, and a player and a recorder around it.
+//! A player and a recorder around trued.
 
+use super::processes::wait_for;
 use crate::support::receiver::Receiver;
 use jack::{
     AsyncClient, Client, ClientOptions, Control, MidiIn, MidiOut, Port, ProcessScope, RawMidi,
 };
 use std::cell::RefCell;
-use std::path::PathBuf;
-use std::process::{Child, Command, Stdio};
 use std::sync::Arc;
 use std::sync::atomic::{AtomicBool, AtomicU64, Ordering};
-use std::time::{Duration, Instant};
-
-const SERVER: &str = "JACK_DEFAULT_SERVER";
-/// For whatever has to happen on a busy machine.
-const PATIENCE: Duration = Duration::from_secs(30);
-
-/// Runs a test of `outside::jack` once more, in a process with a server name of its own; there, does the work.
-pub fn in_a_process_of_its_own(test: &str, work: fn()) {
-    let is_there = std::env::var(SERVER).is_ok_and(|name| name.starts_with("trued-test-"));
-    if is_there {
-        return work();
-    }
-    let server = format!("trued-test-{}-{}", std::process::id(), &test[..8]);
-    let name = format!("outside::jack::{test}");
-    let out = Command::new(std::env::current_exe().expect("this test"))
-        .args([&name, "--exact", "--nocapture"])
-        .env(SERVER, server)
-        .output()
-        .expect("a second process");
-    let text = |bytes: &[u8]| String::from_utf8_lossy(bytes).into_owned();
-    let (stdout, stderr) = (text(&out.stdout), text(&out.stderr));
-    println!("{stdout}");
-    assert!(stdout.contains("1 passed"), "{stdout}\n{stderr}");
-}
-
-pub fn wait_for(what: &str, mut is_there: impl FnMut() -> bool) {
-    let began = Instant::now();
-    while !is_there() {
-        assert!(began.elapsed() < PATIENCE, "waited too long for {what}");
-        std::thread::sleep(Duration::from_millis(10));
-    }
-}
-
-/// jackd, with real-time priority where that is allowed.
-pub struct Server(Child);
-
-impl Server {
-    pub fn start(period: u32) -> Server {
-        jack::set_logger(jack::LoggerType::None);
-        Server::try_start(&["-R", "-P", "60"], period)
-            .or_else(|| Server::try_start(&["-r"], period))
-            .expect("jackd starts")
-    }
-
-    fn try_start(priority: &[&str], period: u32) -> Option<Server> {
-        let name = std::env::var(SERVER).expect("set for this process");
-        let child = Command::new("jackd")
-            .args(["-n", &name])
-            .args(priority)
-            .args([
-                "-S",
-                "-d",
-                "dummy",
-                "-r",
-                "48000",
-                "-p",
-                &period.to_string(),
-            ])
-            .stdout(Stdio::null())
-            .stderr(Stdio::null())
-            .spawn()
-            .expect("jackd (tests/setup --tests installs it)");
-        let mut server = Server(child);
-        let began = Instant::now();
-        while began.elapsed() < PATIENCE {
-            if Client::new("probe", ClientOptions::NO_START_SERVER).is_ok() {
-                return Some(server);
-            }
-            if server.0.try_wait().expect("a child").is_some() {
-                return None;
-            }
-            std::thread::sleep(Duration::from_millis(50));
-        }
-        None
-    }
-
-    /// As if it had crashed.
-    pub fn kill(&mut self) {
-        self.0.kill().expect("it runs");
-        self.0.wait().expect("it ends");
-    }
-}
-
-impl Drop for Server {
-    fn drop(&mut self) {
-        // SIGTERM, so that it clears away what it shared.
-        let _ = Command::new("kill").arg(self.0.id().to_string()).status();
-        let _ = self.0.wait();
-    }
-}
-
-/// trued on the test's server.
-pub struct Trued {
-    child: RefCell<Child>,
-    folder: PathBuf,
-}
-
-impl Trued {
-    pub fn start(stage: &str) -> Trued {
-        let folder = folder_with(stage);
-        let log = std::fs::File::create(folder.join("log")).expect("a file");
-        let child = command(&folder, "jack").stderr(log).spawn().expect("trued");
-        let trued = Trued {
-            child: RefCell::new(child),
-            folder,
-        };
-        wait_for("trued to be ready", || trued.log().contains("ready: "));
-        trued
-    }
-
-    pub fn log(&self) -> String {
-        std::fs::read_to_string(self.folder.join("log")).unwrap_or_default()
-    }
-
-    /// The same process from start to end, and a clean one.
-    pub fn stop_cleanly(self) {
-        let mut child = self.child.borrow_mut();
-        assert!(
-            child.try_wait().expect("a child").is_none(),
-            "{}",
-            self.log()
-        );
-        let pid = child.id().to_string();
-        assert!(
-            Command::new("kill")
-                .arg(pid)
-                .status()
-                .expect("kill")
-                .success()
-        );
-        let status = child.wait().expect("it ends");
-        println!("{}", self.log());
-        assert!(status.success(), "{status}");
-    }
-
-    /// Exit code and words of `--backend auto`.
-    pub fn run_auto(stage: &str) -> (Option<i32>, String) {
-        let folder = folder_with(stage);
-        let out = command(&folder, "auto").output().expect("trued");
-        let _ = std::fs::remove_dir_all(folder);
-        let words = String::from_utf8_lossy(&out.stderr).into_owned();
-        (out.status.code(), words)
-    }
-}
-
-impl Drop for Trued {
-    fn drop(&mut self) {
-        let child = self.child.get_mut();
-        let _ = child.kill();
-        let _ = child.wait();
-        let _ = std::fs::remove_dir_all(&self.folder);
-    }
-}
-
-fn folder_with(stage: &str) -> PathBuf {
-    let name = std::env::var(SERVER).expect("set for this process");
-    let folder = std::env::temp_dir().join(name);
-    std::fs::create_dir_all(&folder).expect("a folder");
-    std::fs::write(folder.join("stage.yaml"), stage).expect("a file");
-    folder
-}
-
-fn command(folder: &std::path::Path, backend: &str) -> Command {
-    let mut command = Command::new(env!("CARGO_BIN_EXE_trued"));
-    command.env("XDG_STATE_HOME", folder);
-    command.arg("run").arg(folder.join("stage.yaml"));
-    command.args(["--backend", backend, "--socket"]);
-    command.arg(folder.join("socket"));
-    command
-}
+use std::time::Duration;
 
 /// A short message at a frame.
 #[derive(Clone, Copy, Debug)]
@@ -278,6 +108,29 @@ impl jack::NotificationHandler for Xruns {
     }
 }
 
+impl Prepared {
+    pub fn activate(self) -> Bench {
+        let ((player, playing), (recorder, recording)) = (self.player, self.recorder);
+        let xruns = Arc::new(AtomicU64::new(0));
+        let player = player.activate_async((), playing).expect("active");
+        let recorder = recorder
+            .activate_async(Xruns(xruns.clone()), recording)
+            .expect("active");
+        let client = recorder.as_client();
+        client
+            .connect_ports_by_name("Player:out", "recorder:direct")
+            .expect("connected");
+        Bench {
+            player,
+            recorder,
+            score: RefCell::new(self.score),
+            heard: RefCell::new(self.heard),
+            done: self.done,
+            xruns,
+        }
+    }
+}
+
 /// `Player:out` to `recorder:direct` by a connection, to `recorder:through` by trued.
 pub struct Bench {
     player: AsyncClient<(), Playing>,
@@ -288,8 +141,21 @@ pub struct Bench {
     xruns: Arc<AtomicU64>,
 }
 
+/// Clients with all their ports, not active yet.
+pub struct Prepared {
+    player: (Client, Playing),
+    recorder: (Client, Recording),
+    score: rtrb::Producer<Event>,
+    heard: [rtrb::Consumer<Event>; 2],
+    done: Arc<AtomicBool>,
+}
+
 impl Bench {
     pub fn open() -> Bench {
+        Bench::prepare().activate()
+    }
+
+    pub fn prepare() -> Prepared {
         let open = |name| {
             Client::new(name, ClientOptions::NO_START_SERVER)
                 .expect("a server")
@@ -298,10 +164,7 @@ impl Bench {
         let (score, score_out) = rtrb::RingBuffer::new(100_000);
         let (heard_direct, direct) = rtrb::RingBuffer::new(200_000);
         let (heard_through, through) = rtrb::RingBuffer::new(200_000);
-        let (done, xruns) = (
-            Arc::new(AtomicBool::new(false)),
-            Arc::new(AtomicU64::new(0)),
-        );
+        let done = Arc::new(AtomicBool::new(false));
         let player = open("Player");
         let playing = Playing {
             out: player
@@ -322,21 +185,12 @@ impl Bench {
             through: port("through"),
             heard: [heard_direct, heard_through],
         };
-        let player = player.activate_async((), playing).expect("active");
-        let recorder = recorder
-            .activate_async(Xruns(xruns.clone()), recording)
-            .expect("active");
-        let client = recorder.as_client();
-        client
-            .connect_ports_by_name("Player:out", "recorder:direct")
-            .expect("connected");
-        Bench {
-            player,
-            recorder,
-            score: RefCell::new(score),
-            heard: RefCell::new([direct, through]),
+        Prepared {
+            player: (player, playing),
+            recorder: (recorder, recording),
+            score,
+            heard: [direct, through],
             done,
-            xruns,
         }
     }
 
@@ -347,7 +201,7 @@ impl Bench {
         });
     }
 
-    fn connections(&self, port: &str) -> usize {
+    pub fn connections(&self, port: &str) -> usize {
         let port = self.player.as_client().port_by_name(port);
         port.and_then(|port| port.connected_count().ok())
             .unwrap_or(0)
