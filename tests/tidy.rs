@@ -50,7 +50,15 @@ const ARROWS: &[(&str, &[&str])] = &[
     (
         "daemon",
         &[
-            "ports", "stage", "engine", "midi", "pitch", "time", "limits",
+            "ports",
+            "stage",
+            "engine",
+            "midi",
+            "intonation",
+            "tuning",
+            "pitch",
+            "time",
+            "limits",
         ],
     ),
     (

@@ -3,7 +3,7 @@
 //! **What this room is**: two threads. The score thread runs a backend's loop, and in it one [`Player`] cycle after
 //! another: keyboards in, engine, synths out. The desk thread does all else: signals, connecting ports, the log.
 //! **Start reading at** [`run::play`], then `score.rs`.
-//! **May know** `ports/`, `stage/`, `engine/`, `time`, `limits`.
+//! **May know** `ports/`, `stage/`, `engine/`, and for what it shows `intonation/`, `tuning/`, `pitch/`; `midi/`, `time`, `limits`.
 //! **Owns** signal-hook and rtrb, and what is said on the control socket (`socket.rs`). The score thread never blocks,
 //! logs, locks, parses or waits for the desk; between the two there are only queues that neither can hold up.
 //! **Not here**: how bytes get in and out (`ports/`), what is made of them (`engine/`).
