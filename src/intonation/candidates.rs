@@ -73,7 +73,7 @@ impl Candidates {
         let found = shapes.of(core);
         self.classes[..self.width].copy_from_slice(found.classes());
         for shape in found.shapes {
-            self.add(shape.points, 0);
+            self.add(*shape, 0);
         }
     }
 
@@ -87,13 +87,13 @@ impl Candidates {
             let at_root = found.classes().iter().position(|class| *class == root);
             let mut points = [Point::default(); CORE_MAX];
             let mut place = 0;
-            for (class, point) in found.classes().iter().zip(&shape.points) {
+            for (class, point) in found.classes().iter().zip(shape) {
                 if core.has(*class) {
                     (points[place], self.classes[place]) = (*point, *class);
                     place += 1;
                 }
             }
-            points[width - 1] = shape.points[at_root.unwrap_or(0)].plus(SEVENTH);
+            points[width - 1] = shape[at_root.unwrap_or(0)].plus(SEVENTH);
             self.classes[width - 1] = seventh;
             self.add(points, 1 << (width - 1));
         }

@@ -15,10 +15,9 @@ use super::pitch_classes::PitchClasses;
 pub const CORE_MAX: usize = 6;
 /// Shapes kept for one chord.
 pub const KEPT_MAX: usize = 12;
-/// Shapes that err by more than this for each pitch class beyond the best are not kept.
-const SLACK: i64 = 6_000_000 * 4;
-/// Of unfinished shapes so many are followed up, those that err least.
-const FOLLOWED_MAX: usize = 200;
+/// Every chord that is no transposition of one above it, by its pitch classes: its shapes, best first, each the fifths
+/// and thirds of its points. Worked out by `shapes/make.rs`, whose test says that it still is what comes of it.
+const TABLE: &str = include_str!("shapes.txt");
 
 /// Ways to make an interval of so many semitones exact: 5-limit, and nothing wilder than 45/32.
 const EXACT: [&[Point]; 12] = [
@@ -44,14 +43,8 @@ pub const fn quarters(semitones: u8) -> i64 {
     }
 }
 
-/// One way to tune a chord.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
-pub struct Shape {
-    /// Of the chord's pitch classes, in the order of [`Found::classes`].
-    pub points: [Point; CORE_MAX],
-    /// Sum of its intervals' errors, dissonances a quarter, in microcents.
-    pub cost: i64,
-}
+/// One way to tune a chord: the points of its pitch classes, in the order of [`Found::classes`].
+pub type Shape = [Point; CORE_MAX];
 
 /// The shapes of one chord, best first.
 #[derive(Clone, Copy)]
@@ -68,7 +61,7 @@ impl Found<'_> {
     }
 }
 
-/// All shapes, by chord. Built once; transpositions of a chord share theirs.
+/// All shapes, by chord; transpositions of a chord share theirs.
 pub struct Shapes {
     all: Vec<Shape>,
     /// By pitch-class set: where its shapes begin and how many, and how far up the chord stands from the one they were
@@ -87,7 +80,7 @@ struct Entry {
 }
 
 impl Shapes {
-    /// The only allocation.
+    /// The only allocation: reads the table.
     pub fn new() -> Shapes {
         let mut shapes = Shapes {
             all: Vec::new(),
@@ -95,27 +88,36 @@ impl Shapes {
             five_limit: Targets::five_limit(DISSONANCE),
             seven_limit: Targets::with_sevens(DISSONANCE),
         };
-        let mut work = Work::default();
-        for bits in 1u16..1 << 12 {
-            let set = PitchClasses::from_bits(bits);
-            let (home, up) = lowest_turn(set);
-            if set.count() > CORE_MAX {
-                continue;
-            }
-            if home == set {
-                let first = shapes.all.len() as u16;
-                work.shapes_of(set, &mut shapes.all);
-                shapes.index[bits as usize] = Entry {
-                    first,
-                    count: (shapes.all.len() - first as usize) as u8,
-                    up: 0,
-                };
-            } else {
-                let entry = shapes.index[home.bits() as usize];
-                shapes.index[bits as usize] = Entry { up, ..entry };
-            }
+        for line in TABLE.lines().filter(|line| !line.starts_with('#')) {
+            shapes
+                .take(line)
+                .expect("the table is whole, as its test says");
         }
         shapes
+    }
+
+    /// One chord and its transpositions.
+    fn take(&mut self, line: &str) -> Option<()> {
+        let (chord, written) = line.split_once(':')?;
+        let first = self.all.len() as u16;
+        for shape in written.split('|') {
+            let mut points = [Point::default(); CORE_MAX];
+            for (point, written) in points.iter_mut().zip(shape.split_whitespace()) {
+                let (fifths, thirds) = written.split_once(',')?;
+                *point = Point::new(fifths.parse().ok()?, thirds.parse().ok()?);
+            }
+            self.all.push(points);
+        }
+        let count = (self.all.len() - first as usize) as u8;
+        let classes = chord.split_whitespace();
+        let home: PitchClasses = classes.filter_map(|class| class.parse().ok()).collect();
+        for up in 0..12 {
+            let entry = &mut self.index[home.raised(up).bits() as usize];
+            if entry.count == 0 {
+                *entry = Entry { first, count, up };
+            }
+        }
+        Some(())
     }
 
     /// The shapes of a chord of one to [`CORE_MAX`] pitch classes.
@@ -141,103 +143,6 @@ impl Default for Shapes {
     }
 }
 
-/// The transposition of a chord with the smallest number, and how far up from it the chord stands.
-fn lowest_turn(set: PitchClasses) -> (PitchClasses, u8) {
-    (0..12)
-        .map(|up| (set.above(up), up))
-        .min_by_key(|(turned, up)| (turned.bits(), *up))
-        .expect("there are twelve")
-}
-
-/// A chord partly placed.
-#[derive(Clone, Copy, PartialEq, Eq, PartialOrd, Ord)]
-struct Partly {
-    placed: u8,
-    points: [Point; CORE_MAX],
-    cost: i64,
-}
-
-/// What is being worked on; kept from chord to chord to spare allocations.
-#[derive(Default)]
-struct Work {
-    level: Vec<Partly>,
-    next: Vec<Partly>,
-}
-
-impl Work {
-    /// Places one pitch class after another, each exactly above or below one that stands already.
-    fn shapes_of(&mut self, set: PitchClasses, all: &mut Vec<Shape>) {
-        let mut classes = [0u8; CORE_MAX];
-        let count = set.count();
-        for (place, class) in classes.iter_mut().zip(set.iter()) {
-            *place = class;
-        }
-        let classes = &classes[..count];
-        self.level.clear();
-        self.level.push(Partly {
-            placed: 1,
-            points: [Point::default(); CORE_MAX],
-            cost: 0,
-        });
-        for _ in 1..count {
-            self.next.clear();
-            for partly in &self.level {
-                spread(partly, classes, &mut self.next);
-            }
-            self.next.sort_unstable();
-            self.next.dedup();
-            self.next.sort_by_key(|partly| partly.cost);
-            self.next.truncate(FOLLOWED_MAX);
-            std::mem::swap(&mut self.level, &mut self.next);
-        }
-        self.level
-            .sort_unstable_by_key(|partly| (partly.cost, spread_of(partly), *partly));
-        let best = self.level[0].cost;
-        let kept = self.level.iter().take(KEPT_MAX);
-        let kept = kept.filter(|partly| partly.cost <= best + SLACK * count as i64);
-        all.extend(kept.map(|partly| Shape {
-            points: partly.points,
-            cost: partly.cost / 4,
-        }));
-    }
-}
-
-/// How wide a shape lies on the lattice: of equally good ones the compact is preferred (Honingh 2008).
-fn spread_of(partly: &Partly) -> i32 {
-    let points = partly.points.iter();
-    points
-        .map(|p| p.fifths as i32 * p.fifths as i32 + 2 * p.thirds as i32 * p.thirds as i32)
-        .sum()
-}
-
-fn spread(partly: &Partly, classes: &[u8], next: &mut Vec<Partly>) {
-    let is_placed = |index: usize| partly.placed >> index & 1 == 1;
-    for new in (0..classes.len()).filter(|index| !is_placed(*index)) {
-        for old in (0..classes.len()).filter(|index| is_placed(*index)) {
-            let semitones = (classes[new] + 12 - classes[old]) % 12;
-            for step in EXACT[semitones as usize] {
-                let mut more = *partly;
-                more.points[new] = partly.points[old].plus(*step);
-                more.placed |= 1 << new;
-                more.cost += cost_of(new, &more, partly.placed, classes);
-                next.push(more);
-            }
-        }
-    }
-}
-
-/// What a new pitch class adds in errors, in quarters of microcents.
-fn cost_of(new: usize, partly: &Partly, others: u8, classes: &[u8]) -> i64 {
-    let others = (0..classes.len()).filter(|index| others >> index & 1 == 1);
-    others
-        .map(|other| {
-            let semitones = (classes[new] + 12 - classes[other]) % 12;
-            let stands = partly.points[new].minus(partly.points[other]).offset();
-            quarters(semitones) * error(semitones, stands.microcents())
-        })
-        .sum()
-}
-
 /// How far an interval of so many semitones, standing so far from equal, is from its nearest exact size; microcents.
 pub fn error(semitones: u8, offset: i64) -> i64 {
     let sizes = exact(semitones);
@@ -261,3 +166,6 @@ pub const fn pull(semitones: u8) -> i64 {
         _ => 1,
     }
 }
+
+#[cfg(test)]
+mod make;
