@@ -2,7 +2,7 @@
 //! main thread for other ports where the devices are not those of before.
 
 use super::desk::{Desk, Patch};
-use super::open::Ports;
+use super::open::{OurEnds, Ports};
 use super::reload::{Reload, Todo};
 use super::rig::{Moved, Moves, RigWanted};
 use super::run::Evening;
@@ -24,21 +24,26 @@ pub struct Edits {
     told: bool,
     /// Whoever waits to hear what has become of a reload.
     asked: Vec<ClientId>,
-    wanted: Sender<RigWanted>,
+    wanted: Sender<(RigWanted, Moved)>,
     opened: Receiver<Opened>,
 }
 
 /// The main thread's side.
 pub struct Turn {
-    wanted: Receiver<RigWanted>,
+    wanted: Receiver<(RigWanted, Moved)>,
     opened: Sender<Opened>,
 }
 
-/// Ports that were opened in place of others.
-struct Opened {
-    patch: Patch,
-    bell: Box<dyn Ring>,
-    tally: Arc<Tally>,
+/// Ports for another rig.
+enum Opened {
+    /// Opened in place of those before.
+    Others {
+        patch: Patch,
+        bell: Box<dyn Ring>,
+        tally: Arc<Tally>,
+    },
+    /// The same, but for devices that came or went.
+    Rearranged(OurEnds),
 }
 
 impl Edits {
@@ -88,16 +93,22 @@ impl Turn {
                 return Ok(());
             }
             // Fails only where the desk has failed; then there is nobody to connect anything.
-            let Ok(rig) = self.wanted.recv() else {
+            let Ok((rig, moved)) = self.wanted.recv() else {
                 return Ok(());
             };
-            let clock = ports.clock();
-            drop(ports);
-            let (others, patch) = Ports::open(evening.asked, &rig, &evening.name, clock)?;
-            ports = others;
-            let (bell, tally) = (ports.bell(), ports.tally());
+            let opened = match ports.rearrange(&rig, &moved)? {
+                Some(ends) => Opened::Rearranged(ends),
+                None => {
+                    let clock = ports.clock();
+                    drop(ports);
+                    let (others, patch) = Ports::open(evening.asked, &rig, &evening.name, clock)?;
+                    ports = others;
+                    let (bell, tally) = (ports.bell(), ports.tally());
+                    Opened::Others { patch, bell, tally }
+                }
+            };
             // As above.
-            let _ = self.opened.send(Opened { patch, bell, tally });
+            let _ = self.opened.send(opened);
         }
     }
 }
@@ -159,16 +170,32 @@ impl Desk {
             return false;
         }
         // The main thread waits for this, unless it is about to end; then it answers nothing.
-        let _ = self.edits.wanted.send(self.rig.clone());
-        let Ok(Opened { patch, bell, tally }) = self.edits.opened.recv() else {
+        self.patch.part(moved);
+        let wanted = (self.rig.clone(), moved.clone());
+        let _ = self.edits.wanted.send(wanted);
+        let Ok(opened) = self.edits.opened.recv() else {
             return false;
         };
-        (self.patch, self.tally) = (patch, tally);
-        self.orders.ring_at(bell);
+        let before = std::mem::take(&mut self.front.status.synths);
+        let others = match opened {
+            Opened::Others { patch, bell, tally } => {
+                (self.patch, self.tally) = (patch, tally);
+                self.orders.ring_at(bell);
+                true
+            }
+            Opened::Rearranged(ends) => {
+                (self.patch.keyboards, self.patch.synths) = ends;
+                false
+            }
+        };
         let (_, synths) = self.rig.devices(&self.patch.connected(), &[]);
         self.front.status.synths = synths;
+        let devices = self.front.status.synths.iter_mut().zip(before);
+        for ((now, before), renewed) in devices.zip(moved.synths.renewed(&self.rig.synths)) {
+            now.linked = !others && renewed.same && before.linked;
+        }
         self.reconnect();
-        true
+        others
     }
 }
 
@@ -178,11 +205,11 @@ impl Patch {
         let old = std::mem::take(&mut self.choice);
         let keyboards = old.keyboards.iter().zip(&self.keyboards).enumerate();
         let from_keyboards = keyboards
-            .filter(|(place, _)| moved.keyboards.gone.has(*place))
+            .filter(|(place, _)| !moved.keyboards.stays(*place))
             .flat_map(|(_, (from, own))| from.iter().map(move |from| (*from, *own)));
         let synths = old.synths.iter().zip(&self.synths).enumerate();
         let to_synths = synths
-            .filter(|(place, _)| moved.synths.gone.has(*place))
+            .filter(|(place, _)| !moved.synths.stays(*place))
             .filter_map(|(_, (to, own))| Some((*own, (*to)?)));
         let ways: Vec<(Address, Address)> = from_keyboards.chain(to_synths).collect();
         for (from, to) in ways {

@@ -1,13 +1,13 @@
 //! Which ports an evening is played on: opens the backend that was asked for, or the one that is there.
 
 use super::desk::Patch;
-use super::rig::RigWanted;
+use super::rig::{Moved, RigWanted};
 use super::score::{Player, Slot};
 use crate::ports::alsa::{Alsa, desk::Desk as Sequencer};
 use crate::ports::clock::Clock;
 use crate::ports::jack::Jack;
 use crate::ports::midir::Midir;
-use crate::ports::names::{Choice, Wanted};
+use crate::ports::names::{Address, Choice, Wanted};
 use crate::ports::{Backend, Broken, Ring, Tally, system};
 use std::panic::resume_unwind;
 use std::sync::Arc;
@@ -20,6 +20,9 @@ pub enum Ports {
     Jack(Jack),
     Midir(Midir),
 }
+
+/// Our own ports, keyboards' and synths', in the order of the stage file.
+pub type OurEnds = (Vec<Address>, Vec<Address>);
 
 /// Which backend is asked for.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -75,13 +78,12 @@ impl Ports {
         alsa.keep_time(clock);
         let mut sequencer = Sequencer::open(client_name)?;
         sequencer.add_ours(alsa.client());
+        let (keyboards, synths) = our_ends(&alsa, keyboards.len(), synths.len());
         let patch = Patch {
             patchbay: Box::new(sequencer),
             choice: Choice::default(),
-            keyboards: (0..keyboards.len())
-                .map(|n| alsa.keyboard_address(n))
-                .collect(),
-            synths: (0..synths.len()).map(|n| alsa.synth_address(n)).collect(),
+            keyboards,
+            synths,
             said: Vec::new(),
             again: false,
             refused: Vec::new(),
@@ -123,6 +125,25 @@ impl Ports {
             refused: Vec::new(),
         };
         Ok((Ports::Midir(midir), patch))
+    }
+
+    /// Whether devices that stay as they are keep their ports when others come or go.
+    pub fn keep(&self) -> bool {
+        matches!(self, Ports::Alsa(_))
+    }
+
+    /// Takes on another rig, if that is possible without opening everything anew.
+    ///
+    /// # Errors
+    /// There is no room for one more port.
+    pub fn rearrange(&mut self, rig: &RigWanted, moved: &Moved) -> Result<Option<OurEnds>, Broken> {
+        let Ports::Alsa(alsa) = self else {
+            return Ok(None);
+        };
+        let keyboards = moved.keyboards.renewed(&rig.keyboards);
+        let synths = moved.synths.renewed(&rig.synths);
+        alsa.rearrange(&keyboards, &synths)?;
+        Ok(Some(our_ends(alsa, keyboards.len(), synths.len())))
     }
 
     /// What it is called in `--backend` and in status.
@@ -184,6 +205,12 @@ fn hurry(tally: &Tally) {
         info!("no real-time priority ({error}): notes may be late on a busy machine");
     }
     tally.real_time.store(hurried.is_ok(), Ordering::Relaxed);
+}
+
+fn our_ends(alsa: &Alsa, keyboards: usize, synths: usize) -> OurEnds {
+    let keyboards = (0..keyboards).map(|n| alsa.keyboard_address(n));
+    let synths = (0..synths).map(|n| alsa.synth_address(n));
+    (keyboards.collect(), synths.collect())
 }
 
 /// On a thread of its own that asks for priority like those of the callbacks, whatever a unit file gave to this one: a

@@ -67,6 +67,8 @@ pub struct Reload {
     asked: bool,
     /// The files are to be read at this look.
     due: bool,
+    /// Whether ports of devices that stay are the same after an edit of the others.
+    keeps_ports: bool,
     news: Arc<Mutex<StageNews>>,
 }
 
@@ -89,6 +91,7 @@ impl Reload {
             under_way: None,
             asked: false,
             due: false,
+            keeps_ports: false,
             news: Arc::new(Mutex::new(news)),
         };
         match boot.complaints.is_empty() {
@@ -96,6 +99,15 @@ impl Reload {
             false => reload.is_bad(&boot.complaints, now),
         }
         reload
+    }
+
+    /// Devices that stay as they are play on while others come or go: the backend can do so.
+    #[must_use]
+    pub fn keeping_ports(self, keeps_ports: bool) -> Reload {
+        Reload {
+            keeps_ports,
+            ..self
+        }
     }
 
     pub fn news(&self) -> Arc<Mutex<StageNews>> {
@@ -247,6 +259,7 @@ impl Reload {
             keyboards: moved.keyboards.gone,
             synths: moved.synths.gone,
             ports: moved.renamed(),
+            all: moved.renamed() && !self.keeps_ports,
         };
         // Nothing is under way, so there is room.
         if self.handing.plans.push(handover).is_err() {

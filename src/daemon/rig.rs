@@ -2,6 +2,7 @@
 
 use super::status::{Device, Waits};
 use crate::limits::{KEYBOARDS_MAX, SYNTHS_MAX};
+use crate::ports::hotplug::Renewed;
 use crate::ports::names::{Address, Choice, Port, Wanted, Wish};
 use crate::stage::{self, Stage};
 
@@ -60,6 +61,8 @@ pub struct Moves {
     pub from: Vec<Option<usize>>,
     /// Places of the old rig where the new one has another device, or one that wants another port.
     pub gone: Places,
+    /// For each device of the new rig its place in the old one by name, whatever port it wanted.
+    pub by_name: Vec<Option<usize>>,
     /// Not the same names in the same order.
     renamed: bool,
 }
@@ -104,6 +107,25 @@ impl Moved {
 }
 
 impl Moves {
+    /// Whether the device of this place in the old rig is in the new one and wants the same port.
+    pub fn stays(&self, place: usize) -> bool {
+        self.from.contains(&Some(place))
+    }
+
+    /// The devices of the new rig, as ports are to know them.
+    pub fn renewed(&self, rig: &[Wanted]) -> Vec<Renewed> {
+        let by_name = self.by_name.iter().copied().enumerate();
+        let renewed = rig
+            .iter()
+            .zip(by_name)
+            .map(|(wanted, (place, from))| Renewed {
+                name: wanted.name.clone(),
+                from,
+                same: from == Some(place) && !self.gone.has(place),
+            });
+        renewed.collect()
+    }
+
     fn between(old: &[Wanted], new: &[Wanted]) -> Moves {
         let from = |wanted: &Wanted| old.iter().position(|known| known == wanted);
         let mut gone = Places::default();
@@ -114,8 +136,10 @@ impl Moves {
         }
         let names = |rig: &[Wanted]| rig.iter().map(|wanted| wanted.name.clone()).collect();
         let (before, after): (Vec<String>, Vec<String>) = (names(old), names(new));
+        let by_name = |wanted: &Wanted| old.iter().position(|known| known.name == wanted.name);
         Moves {
             from: new.iter().map(from).collect(),
+            by_name: new.iter().map(by_name).collect(),
             gone,
             renamed: before != after,
         }
@@ -218,6 +242,14 @@ mod tests {
         ]);
         let moved = Moved::between(&old, &more);
         assert!(moved.renamed() && moved.synths.gone.is_empty());
+        let same = |renewed: &Renewed| (renewed.from, renewed.same);
+        let renewed: Vec<_> = moved
+            .synths
+            .renewed(&more.synths)
+            .iter()
+            .map(same)
+            .collect();
+        assert_eq!(renewed, [(Some(0), true), (Some(1), true), (None, false)]);
         assert_eq!(moved.synths.from, [Some(0), Some(1), None]);
     }
 

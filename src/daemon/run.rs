@@ -96,6 +96,7 @@ pub fn play(boot: Boot, evening: &Evening) -> Result<(), Trouble> {
     (status.keyboards, status.synths) = rig.devices(&connected, &there);
     let bell = Bell::new().map_err(Trouble::System)?;
     let reload = Reload::new(boot, Handing { plans, old }, clock.now(), bell.ringer());
+    let reload = reload.keeping_ports(ports.keep());
     reload.show(&mut status);
     let systemd = Systemd::from_environment();
     let mut front = Front::new(reload.stage(), status, socket, systemd, pulses_out, bell);

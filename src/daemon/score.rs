@@ -168,7 +168,7 @@ impl Score {
             What::Synth { synth, link } => {
                 let lost = link == ports::Link::Down;
                 // What waits for a port that has gone, or had choked, is of no use to the one that comes.
-                if lost || self.reopen_at[synth].take().is_some() {
+                if self.reopen_at[synth].take().is_some() || lost {
                     outlet.forget(synth);
                 }
                 if !lost && !self.up[synth] {

@@ -6,7 +6,7 @@ mod reader;
 mod wire;
 
 use super::clock::Clock;
-use super::hotplug::Hotplug;
+use super::hotplug::{Hotplug, Renewed};
 use super::names::Address;
 use super::outbox::{Outbox, RETRY, outboxes};
 use super::system::{Bell, readable, wait};
@@ -52,16 +52,11 @@ impl Alsa {
             .set_input_buffer_size(SYSEX_BYTES_MAX as u32)
             .map_err(broken)?;
         let client = seq.client_id().map_err(broken)?;
-        let make = |names: &[String], can: PortCap| {
-            let kind = PortType::MIDI_GENERIC | PortType::APPLICATION;
-            names
-                .iter()
-                .map(|name| seq.create_simple_port(&text(name), can, kind))
-                .collect::<Result<Vec<i32>, alsa::Error>>()
-                .map_err(broken)
+        let make = |names: &[String], can: PortCap| -> Result<Vec<i32>, Broken> {
+            names.iter().map(|name| port(&seq, name, can)).collect()
         };
-        let keyboards = make(keyboards, PortCap::WRITE | PortCap::SUBS_WRITE)?;
-        let synths = make(synths, PortCap::READ | PortCap::SUBS_READ)?;
+        let keyboards = make(keyboards, HEARS)?;
+        let synths = make(synths, SENDS)?;
         hear_announcements(&seq, client)?;
         let bell = Bell::new().map_err(|error| Broken {
             wrong: format!("The system gives no event descriptor ({error})"),
@@ -117,6 +112,40 @@ impl Alsa {
             client: self.client,
             port: self.synths[index],
         }
+    }
+
+    /// Takes on another rig: devices keep their ports with all that is connected there, new ones get one. Those that
+    /// stay as they are play on. Not while the loop runs.
+    ///
+    /// # Errors
+    /// The sequencer has no room for more ports.
+    pub fn rearrange(&mut self, keyboards: &[Renewed], synths: &[Renewed]) -> Result<(), Broken> {
+        assert!(keyboards.len() <= KEYBOARDS_MAX && synths.len() <= SYNTHS_MAX);
+        let seq = &self.seq;
+        let fit = |old: &[i32], new: &[Renewed], can: PortCap| -> Result<Vec<i32>, Broken> {
+            let kept = |renewed: &Renewed| renewed.from.and_then(|from| old.get(from).copied());
+            for number in old {
+                if !new.iter().any(|renewed| kept(renewed) == Some(*number)) {
+                    seq.delete_port(*number).map_err(broken)?;
+                }
+            }
+            let ports = new.iter();
+            ports
+                .map(|renewed| kept(renewed).map_or_else(|| port(seq, &renewed.name, can), Ok))
+                .collect()
+        };
+        self.keyboards = fit(&self.keyboards, keyboards, HEARS)?;
+        self.synths = fit(&self.synths, synths, SENDS)?;
+        let mut old = std::mem::take(&mut self.outboxes).into_iter();
+        for synth in synths {
+            let outbox = old.next().filter(|_| synth.same);
+            self.outboxes.push(outbox.unwrap_or_default());
+        }
+        let (now, inbox, tally) = (self.clock.now(), &mut self.inbox, &self.tally);
+        (self.hotplug).rearrange(keyboards, synths, &mut |change| {
+            reader::put(change, now, inbox, tally);
+        });
+        Ok(())
     }
 
     /// Takes in what has come until there is no more, or no more room.
@@ -201,6 +230,16 @@ impl Backend for Alsa {
             };
         }
     }
+}
+
+/// What others may do with a keyboard's port, and with a synth's.
+const HEARS: PortCap = PortCap::WRITE.union(PortCap::SUBS_WRITE);
+const SENDS: PortCap = PortCap::READ.union(PortCap::SUBS_READ);
+
+fn port(seq: &Seq, name: &str, can: PortCap) -> Result<i32, Broken> {
+    let kind = PortType::MIDI_GENERIC | PortType::APPLICATION;
+    seq.create_simple_port(&text(name), can, kind)
+        .map_err(broken)
 }
 
 /// A port that hears what the system says about ports.

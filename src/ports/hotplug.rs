@@ -58,6 +58,16 @@ pub struct Hotplug {
     settled: bool,
 }
 
+/// A device of a new rig, as far as it was in the old one.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub struct Renewed {
+    pub name: String,
+    /// Its place in the old rig, by name.
+    pub from: Option<usize>,
+    /// It has the same place and wants the same port: it is not to notice anything.
+    pub same: bool,
+}
+
 /// A device that plays as a keyboard.
 #[derive(Clone, Copy, Debug)]
 struct Sitting {
@@ -140,6 +150,47 @@ impl Hotplug {
             if !self.sitting[..index].iter().any(|s| s.seat == seat) {
                 tell(Change::Seat { seat, keyboard });
             }
+        }
+    }
+
+    /// Another rig, whose devices keep the ports they had in the old one. All that others held is let go already.
+    pub fn rearrange(
+        &mut self,
+        keyboards: &[Renewed],
+        synths: &[Renewed],
+        tell: &mut dyn FnMut(Change),
+    ) {
+        self.keyboards = keyboards.len();
+        let mut moved = Vec::new();
+        for place in (0..self.sitting.len()).rev() {
+            let Sitting {
+                peer,
+                keyboard,
+                seat,
+            } = self.sitting[place];
+            let to = keyboards.iter().position(|k| k.from == Some(keyboard));
+            let same = to.is_some_and(|to| keyboards[to].same);
+            // A seat beyond the keyboards may have become the seat of one more.
+            if same && (seat == keyboard || seat >= self.keyboards) {
+                continue;
+            }
+            self.sitting.remove(place);
+            if same {
+                tell(Change::KeyboardLost { seat });
+            }
+            moved.extend(to.map(|to| (to, peer)));
+        }
+        for (keyboard, peer) in moved.into_iter().rev() {
+            self.sit_down(keyboard, peer, tell);
+        }
+        let mut old = std::mem::take(&mut self.synths);
+        for (index, synth) in synths.iter().enumerate() {
+            let peers = synth.from.and_then(|from| old.get_mut(from));
+            let peers = peers.map_or_else(|| Vec::with_capacity(PEERS_MAX), std::mem::take);
+            if !synth.same && !peers.is_empty() {
+                tell(Change::Synth(index, Link::Back));
+            }
+            self.synths.push(peers);
         }
     }
 

@@ -1,6 +1,8 @@
 //! trued on a real ALSA sequencer: `aplaymidi` plays into it, `aseqdump` hears it (both of alsa-utils), a Debian kernel
 //! carries the MIDI. What was heard is judged by the independent receiver of `tests/support`.
 
+/// Edits of the stage file that change devices.
+mod edits;
 /// What is played into the guest, as MIDI files.
 mod files;
 /// The virtual machine and what it leaves.
@@ -127,15 +129,17 @@ fn on_a_real_sequencer() {
     std::fs::write(folder.join("plugged.yaml"), PLUGGED).unwrap();
     std::fs::write(folder.join("layer.yaml"), LAYER).unwrap();
     plugging::write(&folder);
+    edits::write(&folder);
     files::write_run(&folder.join("run.mid"), RUN);
     files::write_run(&folder.join("few.mid"), FEW);
     files::write_flood(&folder.join("flood.mid"));
     let played = files::write_evening(&folder.join("evening.mid"));
     files::write_held(&folder.join("held.mid"));
-    let guest = Guest::run(folder);
+    let guest = Guest::run(folder, 400 + 10 * plugging::unplugs().0);
     assert_eq!(guest.text("missing.txt"), "", "{}", guest.text("ports.log"));
     two_thousand_notes_in_two_tunings_and_a_clean_stop(&guest, &played);
     plugging::judge(&guest);
+    edits::judge(&guest);
     a_synth_that_does_not_read_holds_nobody_up(&guest);
     what_ports_says(&guest);
 }

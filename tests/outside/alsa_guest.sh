@@ -30,6 +30,7 @@ card=$(ls /dev/snd | sed -n 's/^midiC\([0-9]*\)D0$/\1/p')
 keys=/dev/snd/midiC${card}D0 organ=/dev/snd/midiC${card}D1
 driver=/sys/bus/platform/drivers/snd_virmidi
 . /guest/alsa_ports.sh
+. /guest/alsa_edits.sh
 
 # Third: one of two synths stops reading in the middle of a run of notes, then reads again.
 /guest/trued run /guest/layer.yaml 2> /out/layer.log &

@@ -12,9 +12,16 @@ await() { # await WHAT COMMAND...: until it is true; what never comes ends the g
   done
 }
 lines() { [ "$(grep -c "$2" "$3")" -ge "$1" ]; } # lines COUNT PATTERN FILE: at least so many
-onsets() { # onsets COUNT FILE: at least so many note-ons of velocity 100 among raw bytes
-  [ "$(hexdump -v -e '1/1 " %02x"' "$2" 2> /dev/null | grep -o " 9[0-9a-f] .. 64" | wc -l)" -ge "$1" ]
+raw() { # raw KIND COUNT FILE: at least so many of 8 (note-offs) or 9 (note-ons of velocity 100) among raw bytes
+  found=$(hexdump -v -e '1/1 "%d\n"' "$3" 2> /dev/null | awk -v kind="$1" '
+    $1 > 127 {status = int($1 / 16); got = 0; next}
+    {got++}
+    got == 2 || status == 12 || status == 13 {got = 0; if (status == kind && (kind == 8 || $1 == 100)) count++}
+    END {print count + 0}')
+  [ "$found" -ge "$2" ]
 }
+onsets() { raw 9 "$@"; } # onsets COUNT FILE
+offs() { raw 8 "$@"; } # offs COUNT FILE
 linked() { # linked PORT: the kernel says that what the port of this name sends reaches somebody
   awk -v port="\"$1\"" '/^ *Port/ {name = $0} /Connecting To/ && name ~ port {found = 1} END {exit !found}' /proc/asound/seq/clients
 }

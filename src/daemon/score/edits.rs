@@ -18,6 +18,8 @@ pub struct Handover {
     pub synths: Places,
     /// Our own ports have to be others: the loop has to end, and to begin again with them.
     pub ports: bool,
+    /// None of them stays: everything is let go.
+    pub all: bool,
 }
 
 /// Where new plans come from, and where old ones go to be dropped.
@@ -66,16 +68,19 @@ impl Score {
     }
 
     fn let_go(&mut self, now: Time, handover: &Handover, outlet: &mut Outlet<'_>) {
-        for keyboard in (0..KEYBOARDS_MAX).filter_map(KeyboardId::new) {
-            if handover.ports || handover.keyboards.has(keyboard.index()) {
-                self.engine.handle_input(now, Input::KeyboardLost(keyboard));
+        for seat in 0..KEYBOARDS_MAX {
+            if (handover.all || handover.keyboards.has(self.seats[seat]))
+                && let Some(seat) = KeyboardId::new(seat)
+            {
+                self.engine.handle_input(now, Input::KeyboardLost(seat));
             }
         }
         for synth in 0..self.synths {
-            if handover.ports || handover.synths.has(synth) {
+            if handover.all || handover.synths.has(synth) {
                 self.link(now, synth, engine::Link::Going);
                 self.drain(now, outlet);
                 self.link(now, synth, engine::Link::Down);
+                self.up[synth] = false;
                 // Where nothing is connected otherwise, nobody else says that the way is free again.
                 self.reopen_at[synth] = (!handover.ports).then_some(now + CHOKED);
             }

@@ -92,14 +92,7 @@ impl Reader<'_> {
     /// Puts what the hot-plug state makes of something into the inbox.
     fn tell<T>(&mut self, act: impl FnOnce(&mut Hotplug, &mut dyn FnMut(Change)) -> T) -> T {
         let (inbox, now, tally) = (&mut *self.inbox, self.now, self.tally);
-        act(self.hotplug, &mut |change| match change {
-            Change::Seat { seat, keyboard } => inbox.add_seat(now, seat, keyboard),
-            Change::KeyboardLost { seat } => inbox.add_keyboard_lost(now, seat),
-            Change::Synth(synth, link) => inbox.add_synth(now, synth, link),
-            Change::Loop { .. } => {
-                tally.loops.fetch_add(1, Ordering::Relaxed);
-            }
-        })
+        act(self.hotplug, &mut |change| put(change, now, inbox, tally))
     }
 
     /// The kernel has thrown away what we had not read: note-offs among it, perhaps, and comings and goings. Every key
@@ -128,5 +121,17 @@ impl Reader<'_> {
             count += 1;
         }
         self.tell(|hotplug, tell| hotplug.agree(end, &peers[..count], tell));
+    }
+}
+
+/// Puts a change into the inbox.
+pub fn put(change: Change, now: Time, inbox: &mut Inbox, tally: &Tally) {
+    match change {
+        Change::Seat { seat, keyboard } => inbox.add_seat(now, seat, keyboard),
+        Change::KeyboardLost { seat } => inbox.add_keyboard_lost(now, seat),
+        Change::Synth(synth, link) => inbox.add_synth(now, synth, link),
+        Change::Loop { .. } => {
+            tally.loops.fetch_add(1, Ordering::Relaxed);
+        }
     }
 }

@@ -226,3 +226,71 @@ fn after_lost_notices_the_truth_is_agreed_on() {
         ]
     );
 }
+
+#[test]
+fn in_another_rig_what_stays_does_not_notice() {
+    let mut hotplug = Hotplug::new(OURS, 2, 2);
+    let (keys, pads) = (End::Keyboard(0), End::Keyboard(1));
+    let (organ, bells) = (End::Synth(0), End::Synth(1));
+    run(
+        &mut hotplug,
+        &[
+            Notice::Joined(keys, A),
+            Notice::Joined(keys, B),
+            Notice::Joined(pads, C),
+            Notice::Joined(organ, A),
+            Notice::Joined(bells, B),
+        ],
+    );
+    let renewed = |from, same| Renewed {
+        name: String::new(),
+        from,
+        same,
+    };
+    let mut changes = Vec::new();
+    // The pads are gone, and the keys have a new one behind them; the bells come first now, then the organ, then another.
+    let keyboards = [renewed(Some(0), true), renewed(None, false)];
+    let synths = [
+        renewed(Some(1), false),
+        renewed(Some(0), false),
+        renewed(None, false),
+    ];
+    hotplug.rearrange(&keyboards, &synths, &mut |change| changes.push(change));
+    let back = |synth| Change::Synth(synth, Link::Back);
+    assert_eq!(changes, [back(0), back(1)]);
+    assert_eq!(hear(&mut hotplug, 0, B), (Some(7), vec![]));
+    assert_eq!(hear(&mut hotplug, 1, C), (Some(1), vec![seat(1, 1)]));
+    let gone = [Notice::PortGone(B), Notice::PortGone(A)];
+    assert_eq!(
+        run(&mut hotplug, &gone),
+        [
+            lost(7),
+            Change::Synth(0, Link::Down),
+            lost(0),
+            Change::Synth(1, Link::Down)
+        ]
+    );
+}
+
+#[test]
+fn a_seat_that_a_new_keyboard_needs_is_given_up() {
+    let mut hotplug = Hotplug::new(OURS, 1, 0);
+    let keys = End::Keyboard(0);
+    run(
+        &mut hotplug,
+        &[Notice::Joined(keys, A), Notice::Joined(keys, B)],
+    );
+    let keyboards: Vec<Renewed> = (0..KEYBOARDS_MAX)
+        .map(|place| Renewed {
+            name: String::new(),
+            from: (place == 0).then_some(0),
+            same: place == 0,
+        })
+        .collect();
+    let mut changes = Vec::new();
+    hotplug.rearrange(&keyboards, &[], &mut |change| changes.push(change));
+    // All seats are taken by keyboards now, so that the second device shares the first one's.
+    assert_eq!(changes, [lost(7)]);
+    assert_eq!(hear(&mut hotplug, 0, B), (Some(0), vec![]));
+    assert_eq!(hear(&mut hotplug, 7, C), (Some(7), vec![seat(7, 7)]));
+}

@@ -1,5 +1,6 @@
 //! One virtual machine for all: boots, runs the scripts beside this folder, and gives back what they left.
 
+use super::edits;
 use std::path::{Path, PathBuf};
 use std::process::Command;
 
@@ -10,7 +11,8 @@ pub struct Guest {
 }
 
 impl Guest {
-    pub fn run(folder: PathBuf) -> Guest {
+    /// It is stopped after so long.
+    pub fn run(folder: PathBuf, timeout_s: usize) -> Guest {
         for tool in ["qemu-system-x86_64", "busybox", "cpio", "aseqdump"] {
             let found = Command::new("sh")
                 .args(["-c", &format!("command -v {tool}")])
@@ -37,9 +39,14 @@ impl Guest {
             .arg(here.join("alsa_guest.sh"))
             .arg(&out)
             .arg(env!("CARGO_BIN_EXE_trued"))
-            .args(files.map(|file| folder.join(file)))
-            .arg(here.join("alsa_ports.sh"))
-            .env("VM_TIMEOUT_S", "400")
+            .args(
+                files
+                    .iter()
+                    .chain(&edits::FILES)
+                    .map(|file| folder.join(file)),
+            )
+            .args(["alsa_ports.sh", "alsa_edits.sh"].map(|script| here.join(script)))
+            .env("VM_TIMEOUT_S", timeout_s.to_string())
             .output()
             .expect("bash runs");
         let guest = Guest { out, folder };

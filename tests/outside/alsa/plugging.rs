@@ -38,9 +38,10 @@ const PROMISED_S: f64 = 1.0;
 const BUSY_S: f64 = 5.0;
 
 /// The chord of the script: C E G, all at velocity 100.
-const CHORD: [u8; 3] = [60, 64, 67];
+pub const CHORD: [u8; 3] = [60, 64, 67];
 
-fn unplugs() -> (usize, bool) {
+/// How often, and whether the promise is to be held to.
+pub fn unplugs() -> (usize, bool) {
     match std::env::var("UNPLUGS") {
         Ok(text) => (text.parse().expect("UNPLUGS is a number"), true),
         Err(_) => (UNPLUGS, false),
@@ -73,7 +74,7 @@ fn hear(range: u8, messages: impl Iterator<Item = Vec<u8>>) -> Receiver {
     receiver
 }
 
-fn hear_lines(guest: &Guest, file: &str) -> Receiver {
+pub fn hear_lines(guest: &Guest, file: &str) -> Receiver {
     hear(STRANGE, guest.text(file).lines().filter_map(bytes_of))
 }
 
@@ -83,12 +84,12 @@ fn from_the_start(bytes: &[u8]) -> bool {
 }
 
 /// What a synth heard through its raw port. An ear that came too late for part of the set-up is told the range.
-fn hear_raw(bytes: &[u8]) -> Receiver {
+pub fn hear_raw(bytes: &[u8]) -> Receiver {
     let range = if from_the_start(bytes) { STRANGE } else { 2 };
     hear(range, std::iter::once(bytes.to_vec()))
 }
 
-fn assert_in_tune(receiver: &Receiver, first: usize, keys: &[u8]) {
+pub fn assert_in_tune(receiver: &Receiver, first: usize, keys: &[u8]) {
     for (note, key) in receiver.notes[first..].iter().zip(keys) {
         let (heard, wanted) = (note.onset_cents(), wanted_cents(*key, 0));
         let off = (heard - wanted).abs();
