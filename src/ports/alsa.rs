@@ -1,5 +1,6 @@
 //! The Linux sequencer: one client, one port of ours for each keyboard and synth, one loop.
 
+mod deaf;
 pub mod desk;
 mod events;
 mod reader;
@@ -10,7 +11,7 @@ use super::hotplug::{Hotplug, Renewed};
 use super::names::Address;
 use super::outbox::{Outbox, RETRY, outboxes};
 use super::system::{Bell, readable, wait};
-use super::{Backend, Broken, Cycle, Inbox, Next, Outlet, Tally};
+use super::{Backend, Broken, Cycle, Inbox, Link, Next, Outlet, Tally};
 use crate::limits::{KEYBOARDS_MAX, SYNTHS_MAX, SYSEX_BYTES_MAX};
 use crate::time::{Span, Time};
 use alsa::poll::{Descriptors, pollfd};
@@ -33,6 +34,7 @@ pub struct Alsa {
     hotplug: Hotplug,
     inbox: Inbox,
     outboxes: Vec<Outbox>,
+    deaf: deaf::Deaf,
     clock: Clock,
     bell: Bell,
     tally: Arc<Tally>,
@@ -66,6 +68,7 @@ impl Alsa {
             hotplug: Hotplug::new(client, keyboards.len(), synths.len()),
             inbox: Inbox::new(),
             outboxes: outboxes(synths.len()),
+            deaf: deaf::Deaf::new(),
             clock: Clock::start(),
             seq,
             client,
@@ -136,6 +139,7 @@ impl Alsa {
         };
         self.keyboards = fit(&self.keyboards, keyboards, HEARS)?;
         self.synths = fit(&self.synths, synths, SENDS)?;
+        self.deaf = deaf::Deaf::new();
         let mut old = std::mem::take(&mut self.outboxes).into_iter();
         for synth in synths {
             let outbox = old.next().filter(|_| synth.same);
@@ -180,6 +184,7 @@ impl Alsa {
             seq: &self.seq,
             ports: &self.synths,
             hotplug: &self.hotplug,
+            missed: 0,
         };
         let mut outlet = Outlet {
             outboxes: &mut self.outboxes,
@@ -188,7 +193,13 @@ impl Alsa {
         outlet.retry();
         let next = cycle.run(now, &mut self.inbox, &mut outlet);
         self.inbox.clear();
-        (next, outlet.is_waiting())
+        let waiting = outlet.is_waiting();
+        for (synth, port) in self.synths.iter().enumerate() {
+            if wire.missed >> synth & 1 == 1 {
+                (self.deaf).find(now, &self.seq, *port, synth, &self.hotplug);
+            }
+        }
+        (next, waiting)
     }
 }
 
@@ -216,6 +227,10 @@ impl Backend for Alsa {
             if reading == Reading::Done {
                 self.hotplug.settle();
             }
+            let inbox = &mut self.inbox;
+            (self.deaf).look(now, &self.seq, &self.synths, &self.hotplug, &mut |synth| {
+                inbox.add_synth(now, synth, Link::Back);
+            });
             let (next, waiting) = self.turn(now, cycle);
             let Next::Wait(deadline) = next else {
                 return Ok(());
@@ -225,7 +240,8 @@ impl Backend for Alsa {
                 Reading::More => Some(Span::ZERO),
                 Reading::Done => {
                     let retry = waiting.then_some(RETRY);
-                    deadline.map(until).into_iter().chain(retry).min()
+                    let due = deadline.into_iter().chain(self.deaf.due_at());
+                    due.map(until).chain(retry).min()
                 }
             };
         }

@@ -93,9 +93,9 @@ impl Hotplug {
         self.settled = true;
     }
 
-    /// How many ports hear a synth's port.
-    pub fn hearers(&self, synth: usize) -> usize {
-        self.synths.get(synth).map_or(0, Vec::len)
+    /// The ports that hear a synth's port.
+    pub fn hearing(&self, synth: usize) -> &[Address] {
+        self.synths.get(synth).map_or(&[], Vec::as_slice)
     }
 
     /// The seat of what plays into a keyboard's port. One that has never joined sits down now: a program may send

@@ -96,5 +96,6 @@ await "a note all the same" onsets 10 /out/edits.organ
 kill -TERM $trued
 wait $trued
 echo $? > /out/edits.exit
-sleep 0.3 # what is still on its way to the ears
+await "the last at the organ, edits" left_plain /out/edits.organ
+await "the last at the chimes" heard_all /out/edits.chimes.txt
 kill $organ_ear $flute_ear $chimes

@@ -1,25 +1,25 @@
 # In the guest. First: aplaymidi -> trued -> aseqdump, then SIGTERM while a chord and a pedal are held.
 export NO_COLOR=1
-UNPLUGS=$(cat /guest/unplugs)
-ready() { for _ in $(seq 100); do grep -q "$1" "$2" && return; sleep 0.1; done; echo "never: $1" >> /out/missing.txt; }
+read -r UNPLUGS NOTES FEW < /guest/counts
+. /guest/alsa_waits.sh
 
 /guest/trued run /guest/stage.yaml 2> /out/trued.log &
 trued=$!
-ready ready: /out/trued.log
+await "ready" lines 1 ready: /out/trued.log
 aseqdump -p trued:1 > /out/heard.txt &
 dump=$!
-ready "organ is set up" /out/trued.log
-sleep 0.5
+await "the organ" lines 1 "organ is set up" /out/trued.log
 aplaymidi -p trued:0 -d 0 /guest/evening.mid || exit 3
-sleep 1
+await "the evening" lines $NOTES "Note on" /out/heard.txt
 aplaymidi -p trued:0 -d 0 /guest/held.mid &
 held=$!
-sleep 2
+await "the held chord" lines $((NOTES + 4)) "Note on" /out/heard.txt
+sleep 0.3 # its wheel
 kill -TERM $trued
 wait $trued
 echo $? > /out/trued.exit
 kill $held
-sleep 0.5
+await "the last of the evening" heard_all /out/heard.txt
 kill $dump
 
 # Second: raw MIDI ports found by name, that come and go.
@@ -33,35 +33,63 @@ driver=/sys/bus/platform/drivers/snd_virmidi
 . /guest/alsa_edits.sh
 
 # Third: one of two synths stops reading in the middle of a run of notes, then reads again.
-/guest/trued run /guest/layer.yaml 2> /out/layer.log &
+log=/out/layer.log
+/guest/trued run /guest/layer.yaml 2> $log &
 trued=$!
-ready ready: /out/layer.log
+await "both synths" lines 1 ready: $log
 aseqdump -p trued:1 > /out/stuck.txt &
 stuck=$!
 aseqdump -p trued:2 > /out/free.txt &
 free=$!
-ready "organ is set up" /out/layer.log
-ready "bells is set up" /out/layer.log
-sleep 0.5
+await "the organ of both" lines 1 "organ is set up" $log
+await "the bells of both" lines 1 "bells is set up" $log
+await "the organ is quiet" lines 1 " 15, controller 123" /out/stuck.txt
 kill -STOP $stuck
 aplaymidi -p trued:0 -d 0 /guest/run.mid
 kill -CONT $stuck
-ready "organ did not read" /out/layer.log
-sleep 1
+await "the loss" lines 1 "organ did not read" $log
+await "the organ is quiet again" lines 2 " 15, controller 123" /out/stuck.txt
+before=$(grep -c "Note off" /out/stuck.txt)
 aplaymidi -p trued:0 -d 0 /guest/few.mid
-sleep 0.5
+await "a few notes more" lines $((before + FEW)) "Note off" /out/stuck.txt
 kill -TERM $trued
 wait $trued
 echo $? > /out/layer.exit
-sleep 0.3
+await "the last of the organ" heard_all /out/stuck.txt
+await "the last of the bells" heard_all /out/free.txt
 kill $stuck $free
 
-# Fourth: gestures, from the same raw port.
+# Fourth: the same where two hear one port, and one of them stops reading.
+log=/out/pair.log
+/guest/trued run /guest/layer.yaml 2> $log &
+trued=$!
+await "the pair's synths" lines 1 ready: $log
+aseqdump -p trued:1 > /out/slow.txt &
+slow=$!
+await "the first of the pair is quiet" lines 1 " 15, controller 123" /out/slow.txt
+aseqdump -p trued:1 > /out/quick.txt &
+quick=$!
+await "the second of the pair is set up" lines 1 " 15, controller 100, value 127" /out/quick.txt
+kill -STOP $slow
+aplaymidi -p trued:0 -d 0 /guest/run.mid
+kill -CONT $slow
+await "the first of the pair is quiet again" lines 2 " 15, controller 123" /out/slow.txt
+before=$(grep -c "Note off" /out/slow.txt)
+aplaymidi -p trued:0 -d 0 /guest/few.mid
+await "a few notes more at the first" lines $((before + FEW)) "Note off" /out/slow.txt
+kill -TERM $trued
+wait $trued
+echo $? > /out/pair.exit
+await "the last of the first" heard_all /out/slow.txt
+await "the last of the second" heard_all /out/quick.txt
+kill $slow $quick
+
+# Fifth: gestures, from the same raw port.
 /guest/trued ports --watch /guest/plugged.yaml > /out/watch.txt 2> /out/watch.log &
 watch=$!
-ready "press a pedal" /out/watch.log
+await "the watch" lines 1 "press a pedal" /out/watch.log
 printf '\260\122\177\260\122\000\317\004' > $keys
-sleep 0.5
+await "both gestures" lines 2 "do: next" /out/watch.txt
 kill $watch
 
 # Last: without a sequencer.

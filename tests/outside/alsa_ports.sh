@@ -1,41 +1,4 @@
 # In the guest, after alsa_guest.sh has set $keys, $organ and $driver: ports that come and go, stops of all kinds, loops.
-# Every wait is for something to be seen; nothing counts on how long the guest takes.
-now() { read up rest < /proc/uptime; echo "${up%.*}${up#*.}"; } # hundredths of a second
-await() { # await WHAT COMMAND...: until it is true; what never comes ends the guest, for all else would only wait too
-  what=$1
-  shift
-  tries=0
-  until "$@"; do
-    tries=$((tries + 1))
-    [ $tries -lt 600 ] || { echo "never: $what" | tee -a /out/missing.txt; exit 4; }
-    sleep 0.02
-  done
-}
-lines() { [ "$(grep -c "$2" "$3")" -ge "$1" ]; } # lines COUNT PATTERN FILE: at least so many
-raw() { # raw KIND COUNT FILE: at least so many of 8 (note-offs) or 9 (note-ons of velocity 100) among raw bytes
-  found=$(hexdump -v -e '1/1 "%d\n"' "$3" 2> /dev/null | awk -v kind="$1" '
-    $1 > 127 {status = int($1 / 16); got = 0; next}
-    {got++}
-    got == 2 || status == 12 || status == 13 {got = 0; if (status == kind && (kind == 8 || $1 == 100)) count++}
-    END {print count + 0}')
-  [ "$found" -ge "$2" ]
-}
-onsets() { raw 9 "$@"; } # onsets COUNT FILE
-offs() { raw 8 "$@"; } # offs COUNT FILE
-linked() { # linked PORT: the kernel says that what the port of this name sends reaches somebody
-  awk -v port="\"$1\"" '/^ *Port/ {name = $0} /Connecting To/ && name ~ port {found = 1} END {exit !found}' /proc/asound/seq/clients
-}
-address() { # address PORT: client and number of the port of this name
-  awk -v port="\"$1\"" '/^Client/ {client = $2} /^ *Port/ && $0 ~ port {print client ":" $2 + 0; exit}' /proc/asound/seq/clients
-}
-unplug() { echo snd_virmidi.0 > $driver/unbind; }
-plug() { echo snd_virmidi.0 > $driver/bind; }
-listen() { # listen FILE: from the moment the port is there, until it goes; $! is the ear
-  (until [ -e $organ ]; do :; done; exec cat $organ) > "$1" 2> /dev/null &
-}
-chord='\260\100\177\220\074\144\220\100\144\220\103\144' # pedal, C E G
-single='\220\100\144'
-
 # Nothing plugged in at the start; then in and out, again and again, under a held chord and pedal. The organ goes and
 # comes with the keyboard; the bells, a port of our own, stay and hear what becomes of the notes.
 in_and_out() { # in_and_out BACKEND PORT: trued goes on running as $trued; $bells hears its bells, at PORT
@@ -84,7 +47,8 @@ await "the chord before the stop, midir" onsets 3 /out/midir.ear.last
 kill -TERM $trued
 wait $trued
 echo $? > /out/midir.exit
-sleep 0.3 # what is still on its way to the ears
+await "the last at the organ, midir" left_plain /out/midir.ear.last
+await "the last at the bells, midir" heard_all /out/midir.bells.txt
 kill $ear $bells
 
 in_and_out alsa bells
@@ -128,7 +92,7 @@ await "a chord after the kill" onsets 7 /out/alsa.ear.flood
 kill -INT $trued # Ctrl-C
 wait $trued
 echo $? > /out/again.exit
-sleep 0.3 # what is still on its way to the ear
+await "the last at the organ, after the kill" left_plain /out/alsa.ear.flood
 kill $ear $bells
 
 # Several keyboards as one: each has its hands and its half-said messages to itself.
@@ -174,5 +138,5 @@ aconnect -l > /out/connections.txt
 kill -TERM $trued
 wait $trued
 echo $? > /out/many.exit
-sleep 0.3
+await "the last of many" heard_all /out/many.txt
 kill $dump

@@ -14,6 +14,8 @@ pub struct SeqWire<'a> {
     /// Our port number for each synth.
     pub ports: &'a [i32],
     pub hotplug: &'a Hotplug,
+    /// Synths of which one hearer of several was full and went without something, bit 0 = the first.
+    pub missed: u8,
 }
 
 impl Wire for SeqWire<'_> {
@@ -57,7 +59,7 @@ impl SeqWire<'_> {
     }
 
     /// Writes the buffer out; says how many of its bytes are done with.
-    fn drain(&self, synth: usize, loaded: &[u8]) -> usize {
+    fn drain(&mut self, synth: usize, loaded: &[u8]) -> usize {
         let size = buffer_size(loaded);
         let left = match self.seq.drain_output() {
             Ok(left) => left as usize,
@@ -72,7 +74,8 @@ impl SeqWire<'_> {
         let taken = bytes_in(loaded, size - left);
         // One of several receivers is full and the others have heard this message: they must not hear it again, so
         // the full one goes without.
-        let heard_by_others = self.hotplug.hearers(synth) > 1;
+        let heard_by_others = self.hotplug.hearing(synth).len() > 1;
+        self.missed |= u8::from(heard_by_others) << synth;
         taken
             + if heard_by_others {
                 first(&loaded[taken..])

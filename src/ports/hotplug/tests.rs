@@ -120,7 +120,7 @@ fn a_synth_is_up_at_the_start_and_back_later() {
         ),
         [Change::Synth(0, Link::Down), Change::Synth(0, Link::Back)]
     );
-    assert_eq!(hotplug.hearers(0), 1);
+    assert_eq!(hotplug.hearing(0), [A]);
 }
 
 #[test]

@@ -131,13 +131,13 @@ pub fn write_held(path: &Path) {
     track.save(path);
 }
 
-/// Notes one after another.
+/// Notes one after another, so slowly that a reader on a busy machine keeps up.
 pub fn write_run(path: &Path, notes: usize) {
     let mut track = Track::default();
     for n in 0..notes {
         let key = 48 + (n * 7 % 36) as u8;
-        track.add(2, 0, on(key, 1 + (n % 127) as u8));
-        track.add(2, 0, off(key));
+        track.add(5, 0, on(key, 1 + (n % 127) as u8));
+        track.add(5, 0, off(key));
     }
     track.save(path);
 }

@@ -28,7 +28,7 @@ impl Guest {
             "ports.yaml",
             "many.yaml",
             "layer.yaml",
-            "unplugs",
+            "counts",
             "evening.mid",
             "held.mid",
             "run.mid",
@@ -45,7 +45,9 @@ impl Guest {
                     .chain(&edits::FILES)
                     .map(|file| folder.join(file)),
             )
-            .args(["alsa_ports.sh", "alsa_edits.sh"].map(|script| here.join(script)))
+            .args(
+                ["alsa_waits.sh", "alsa_ports.sh", "alsa_edits.sh"].map(|script| here.join(script)),
+            )
             .env("VM_TIMEOUT_S", timeout_s.to_string())
             .output()
             .expect("bash runs");

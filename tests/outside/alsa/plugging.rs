@@ -51,7 +51,6 @@ pub fn unplugs() -> (usize, bool) {
 pub fn write(folder: &Path) {
     std::fs::write(folder.join("ports.yaml"), PORTS).unwrap();
     std::fs::write(folder.join("many.yaml"), MANY).unwrap();
-    std::fs::write(folder.join("unplugs"), unplugs().0.to_string()).unwrap();
 }
 
 pub fn judge(guest: &Guest) {
