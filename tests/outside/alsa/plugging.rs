@@ -32,7 +32,7 @@ set:
 "#;
 
 /// How often the card is pulled out; by the variable UNPLUGS, for a longer run.
-const UNPLUGS: usize = 8;
+const UNPLUGS: usize = 5;
 /// The bound that a player is promised, and what a virtual machine on a busy computer may take for the same work.
 const PROMISED_S: f64 = 1.0;
 const BUSY_S: f64 = 5.0;
