@@ -1,4 +1,4 @@
-//! How the table of shapes is made. `UPDATE=1 cargo test --lib shapes` writes it anew.
+//! How the table of shapes is made. Where it differs, `cargo test --lib shapes::make` shows what it should be.
 
 use super::{CORE_MAX, EXACT, KEPT_MAX, Shape, Shapes, TABLE, error, quarters};
 use crate::intonation::lattice::Point;
@@ -129,14 +129,8 @@ fn table() -> String {
 #[test]
 fn the_table_is_what_comes_of_it() {
     let made = table();
-    if std::env::var_os("UPDATE").is_some() {
-        let path = concat!(env!("CARGO_MANIFEST_DIR"), "/src/intonation/shapes.txt");
-        std::fs::write(path, &made).expect("a file to write");
-    }
-    assert_eq!(made.lines().count(), TABLE.lines().count());
-    for (made, written) in made.lines().zip(TABLE.lines()) {
-        assert_eq!(made, written);
-    }
+    // The core reaches no files, so what differs is to be copied by hand.
+    assert!(made == TABLE, "{made}");
 }
 
 // The templates of least weighted error, as published with the method (adaptive tables): major 4:5:6, minor 10:12:15,
