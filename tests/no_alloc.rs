@@ -5,11 +5,16 @@ use crate::support::plans;
 use std::alloc::{GlobalAlloc, Layout, System};
 use std::cell::Cell;
 use std::hint::black_box;
-use trued::engine::plan::{Act, ChannelSet, CuePlan, Dialect, Gesture, Press};
-use trued::engine::{Ask, Command, Engine, Input, KeyboardId, Link, Nudge, Plan, SynthId};
+use std::path::Path;
+use trued::engine::plan::{Act, ChannelSet, CuePlan, Dialect, Gesture, NameId, Press, SongPlan};
+use trued::engine::{
+    Ask, Command, Engine, InflectTo, Inflected, Input, KeyboardId, Link, Nudge, Place, Plan,
+    SynthId, TonicBy,
+};
 use trued::pitch::Interval;
+use trued::stage::Stage;
 use trued::time::{Span, Time};
-use trued::tuning::Key;
+use trued::tuning::{Key, Letter};
 
 /// Counts every call to the heap, for the thread that makes it.
 struct Counting;
@@ -64,9 +69,18 @@ pub fn heap_calls_so_far() -> u64 {
 const LONG: Span = Span::from_millis(100);
 const INPUTS: usize = 100_000;
 
-/// Two synths, one of each dialect, a layer on both, cues, three songs.
+/// A song with everything that can be changed by hand.
+fn by_hand() -> SongPlan {
+    let text = "tunings: {just: {like: five-limit-scale, also: {E: {low: 350 c}}, turns: {lower: {E: low}}}}\n\
+                set: [{song: A, tuning: just, by_line: {E: {up: low, down: home}}, black_keys: [G# or Ab]}]\n";
+    let stage = Stage::parse(Path::new("by-hand.yaml"), text).expect("good");
+    stage.plan().set.remove(0)
+}
+
+/// Two synths, one of each dialect, a layer on both, cues, four songs.
 fn evening() -> Plan {
     let songs = vec![
+        by_hand(),
         plans::song("equal", plans::equal()),
         plans::song(
             "crooked",
@@ -96,6 +110,16 @@ fn evening() -> Plan {
         act: Act::SongByProgram,
         held: false,
         pass: false,
+    });
+    plan.cues.push(CuePlan {
+        from: None,
+        channels: ChannelSet::ALL,
+        gesture: Gesture::Controller(66),
+        press: Press::Down,
+        at_quiet: false,
+        act: Act::Command(Command::InflectHome),
+        held: true,
+        pass: true,
     });
     for (gesture, press, command) in [
         (Gesture::Controller(7), Press::Down, Command::Next),
@@ -142,6 +166,23 @@ fn random_input<'a>(dice: &mut Dice, bytes: &'a mut [u8; 4096]) -> Input<'a> {
                 held_too: false,
             },
             Command::Transpose(Some(2)),
+            Command::Inflect {
+                key: Inflected::Everywhere(4),
+                to: InflectTo::Place(Place::Named(NameId::of("low"))),
+            },
+            Command::Inflect {
+                key: Inflected::Alone(Key::C4),
+                to: InflectTo::By(Interval::from_cents(3)),
+            },
+            Command::InflectHome,
+            Command::Turn(NameId::of("lower")),
+            Command::BlackKey(Letter::usual(8)),
+            Command::Tonic {
+                to: Letter::A,
+                by: TonicBy::Pivot,
+            },
+            Command::TonicNextKey(TonicBy::Equal),
+            Command::TonicHome,
             Command::Plain,
             Command::Home,
             Command::Fresh,

@@ -106,6 +106,11 @@ impl Engine {
         cues.any(|cue| !cue.pass && self.is_for(cue, hand, heard))
     }
 
+    pub(super) fn has_cue(&self, hand: Hand, heard: Heard) -> bool {
+        let mut cues = self.plan.cues.iter();
+        cues.any(|cue| self.is_for(cue, hand, heard))
+    }
+
     /// Runs the cues on a gesture.
     pub(super) fn cue(&mut self, now: Time, hand: Hand, heard: Heard) {
         if let Heard::Up(gesture) = heard {
@@ -178,12 +183,12 @@ impl Engine {
             Command::RootNextKey => Some(Names::Root),
             _ => None,
         };
-        if let Some(names) = names {
+        if cue.at_quiet {
+            self.arm(now, command);
+        } else if let Some(names) = names {
             self.wait_for_key(names, Some((cue, hand)));
         } else if cue.held {
             self.hold(now, hand, cue.gesture, command);
-        } else if cue.at_quiet {
-            self.arm(now, command);
         } else {
             self.command(now, command);
         }

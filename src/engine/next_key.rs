@@ -48,14 +48,14 @@ impl Engine {
 
     /// A key goes down. Tells whether it only named something, so that it is not played.
     pub(super) fn names_by_key(&mut self, now: Time, hand: Hand, key: Key) -> bool {
+        self.source(hand).named &= !(1 << key.number());
         let Some(wait) = self.next_key else {
             return false;
         };
-        let gesture = Gesture::Note(key);
         let Some(tonic) = self.as_tuned(hand, key) else {
             return false;
         };
-        if self.takes(hand, Heard::Down(gesture)) || wait.asked_by == Some((hand, gesture)) {
+        if self.has_cue(hand, Heard::Down(Gesture::Note(key))) {
             return false;
         }
         self.next_key = None;
