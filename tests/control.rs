@@ -92,6 +92,62 @@ fn tell_does_it_and_says_what_was_done() {
 }
 
 #[test]
+fn what_the_hands_have_changed_is_said_and_what_a_song_has_not_is_refused() {
+    let folder = Folder::new("hands");
+    let stand = Stand::begin(&folder.at("trued.sock"));
+    let socket = stand.socket();
+    let tell = |words: &str| {
+        let mut arguments = vec!["tell", "--socket", &socket];
+        arguments.extend(words.split(' '));
+        trued(&folder, &arguments)
+    };
+    for (words, says) in [
+        (
+            "inflect D low",
+            "that key has no such place, or is as far from it as it goes, in song 1",
+        ),
+        (
+            "tonic D",
+            "the tuning goes by letter: its keys keep their pitches whatever the tonic",
+        ),
+        (
+            "black-key Ab",
+            "give the song both names, as in `black_keys: [G# or Ab]`",
+        ),
+        ("turn saba", "no tuning has a turn `saba`"),
+    ] {
+        let (code, out, err) = tell(words);
+        assert_eq!((code, out.as_str()), (64, ""), "{words}");
+        assert!(err.contains(says), "{words}: {err}");
+    }
+    let done = |words: &str, text: &str| {
+        assert_eq!(tell(words), (0, format!("{text}\n"), String::new()));
+    };
+    done("song 3", "song 3 of 3: Harbour tag");
+    done("inflect D low", "D is at low.");
+    done("inflect E +5 c", "D is at low. E is +5.0 c from its place.");
+    done(
+        "inflect D4 -2 c",
+        "D is at low. E is +5.0 c from its place. Some D go alone.",
+    );
+    // G is 3/2 where A is 5/3: A at 440 Hz would put it 9/8 below, a comma lower.
+    let moved = "The tonic is G, +21.5 c from home. E is +5.0 c from its place. Some D go alone.";
+    done("tonic G pivot", moved);
+    let (_, text, _) = trued(&folder, &["status", "--json", "--socket", &socket]);
+    let object: serde_json::Value = serde_json::from_str(&text).expect("JSON");
+    assert_eq!(
+        object["tonic"],
+        serde_json::json!({"key": "G", "from_home_cents": 21.506})
+    );
+    assert_eq!(
+        object["inflections"],
+        serde_json::json!([{"key": "E", "place": "home", "nudge_cents": 5.0}])
+    );
+    done("inflect home", "The tonic is G, +21.5 c from home.");
+    done("tonic home", "nothing is changed by hand");
+}
+
+#[test]
 fn status_in_sentences_and_as_an_object() {
     let folder = Folder::new("status");
     let stand = Stand::begin(&folder.at("trued.sock"));

@@ -8,8 +8,8 @@
 //! logs, locks, parses or waits for the desk; between the two there are only queues that neither can hold up.
 //! **Not here**: how bytes get in and out (`ports/`), what is made of them (`engine/`).
 
-#[cfg(target_os = "linux")]
 mod by_hand;
+#[cfg(target_os = "linux")]
 mod desk;
 #[cfg(target_os = "linux")]
 mod edits;

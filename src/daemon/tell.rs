@@ -65,7 +65,7 @@ fn by_hand(command: Command, before: &Report, now: &Status) -> Result<String, St
     if now.report.counters.ignored == before.counters.ignored {
         let changed = by_hand::sentences(&now.report, &now.places);
         return Ok(match changed.is_empty() {
-            true => "every key is at home".to_string(),
+            true => "nothing is changed by hand".to_string(),
             false => changed.join(" "),
         });
     }

@@ -214,9 +214,21 @@ impl Lasting {
         tonic.is_some()
     }
 
-    /// By pitch class: its place and how far it was nudged from there.
-    pub fn shown(&self) -> [(Place, Interval); 12] {
-        std::array::from_fn(|key| (self.places[key], self.trims[key]))
+    /// By pitch class: its place and how far it was nudged from there. A place that the key has only under another
+    /// tonic is none now.
+    pub fn shown(&self, song: &ByHand) -> [(Place, Interval); 12] {
+        let tonic = self.tonic_key(song).pitch_class();
+        std::array::from_fn(|key| {
+            let has = |name| {
+                song.other_place((key as u8 + 12 - tonic) % 12, name)
+                    .is_some()
+            };
+            let place = match self.places[key] {
+                Place::Named(name) if !has(name) => Place::Home,
+                place => place,
+            };
+            (place, self.trims[key])
+        })
     }
 
     /// Pitch classes some of whose keys go alone, one bit each.

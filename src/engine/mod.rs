@@ -284,7 +284,7 @@ impl Engine {
             tonic_moved: self.in_force.tonic.is_some(),
             tonic_from_home,
             waits_for_key: self.next_key.is_some(),
-            places: self.in_force.shown(),
+            places: self.in_force.shown(&self.playing.by_hand),
             alone: self.in_force.shown_alone(),
             second_names: self.second_names(),
             voices: self.voices.len() as u16,

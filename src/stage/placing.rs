@@ -9,7 +9,7 @@ use super::songs::Desk;
 use super::tunings::{Reference, TuningText};
 use super::values::{self, choice, key, letter};
 use crate::engine::plan::TwoNames;
-use crate::pitch::{Hertz, Log};
+use crate::pitch::{Hertz, Interval, Log};
 use crate::tuning::{Key, Letter, Pin, Placement, Scale, TuneError, Tuning};
 use std::sync::Arc;
 
@@ -138,6 +138,14 @@ pub fn read(
         Some(written) => Some(written?),
         None => None,
     };
+    for names in two_names.iter().flatten() {
+        if names.apart == Interval::ZERO {
+            desk.found.advise(format!(
+                "{} and {} are one pitch in {}: as either the key sounds the same",
+                names.first, names.second, described.name
+            ));
+        }
+    }
     let placement = described.placement(tonic, turned_to, reference);
     let mut names = scale.names(&placement);
     if let (Scale::FromTonic(_), Some(at)) = (&scale, &black_at) {

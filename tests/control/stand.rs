@@ -24,10 +24,11 @@ pub const STAGE: &str = "\
 stage: Three songs
 keyboards: {keys: {port: '*Keys*'}}
 synths: {organ: {port: virtual}}
+tunings: {just: {like: five-limit-scale, also: {D: {low: 10/9}}}}
 set:
   - {song: Lantern hymn, tuning: quarter-comma-meantone}
   - {song: Ballad, tuning: equal-12}
-  - {song: Harbour tag, tuning: vallotti}
+  - {song: Harbour tag, tuning: just}
 ";
 
 /// Waits for something that must come; the machine may be slow and busy.
