@@ -24,10 +24,11 @@ pub fn sentences(report: &Report, names: &Names) -> Vec<String> {
             out.push(format!("The tonic is {tonic}{far}."));
         }
     }
-    if report.root_held
-        && let Some(root) = report.standing.chord.root
-    {
-        out.push(format!("The root is held on {}.", Letter::usual(root)));
+    if report.root_held {
+        out.push(match report.standing.chord.root {
+            Some(root) => format!("The root is held on {}.", Letter::usual(root)),
+            None => "The root of the next chord will be held.".to_string(),
+        });
     }
     match report.sevenths {
         Some(Sevenths::Harmonic) => out.push("Sevenths are harmonic, 7/4.".to_string()),
@@ -95,10 +96,14 @@ fn name(id: NameId, names: &Names) -> &str {
 /// The chord that sounds now, for a line of its own; `None` where no harmony is followed, or nothing sounds.
 pub fn chord(standing: &Standing) -> Option<String> {
     let root = Letter::usual(standing.chord.root?);
+    let anchor = cents(standing.anchor?);
     let shape = shape(standing).map_or(String::new(), |shape| format!(", {shape}"));
-    let drift = cents(standing.drift);
+    let drift = match cents(standing.drift) {
+        near if near.abs() < 0.05 => "at rest".to_string(),
+        far => format!("{far:+.1} c from rest"),
+    };
     Some(format!(
-        "The chord stands on {root}{shape}, {drift:+.1} c from rest."
+        "The chord stands on {root} ({anchor:+.1} c from equal){shape}, {drift}."
     ))
 }
 
@@ -107,3 +112,6 @@ pub fn shape(standing: &Standing) -> Option<String> {
     let numbers: Vec<String> = standing.chord.ratio().map(|n| n.to_string()).collect();
     (!numbers.is_empty()).then(|| numbers.join(":"))
 }
+
+#[cfg(test)]
+mod tests;

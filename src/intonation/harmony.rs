@@ -152,10 +152,10 @@ impl Harmony {
         self.changed
     }
 
-    /// Holds the root that is now, or another; `free` lets it go.
+    /// Holds the root that is now, or another; in silence, that of the next chord. `free` lets it go.
     pub fn hold_root(&mut self, root: Option<u8>) {
         self.chord.root = root.map(|root| root % 12).or(self.chord.root);
-        self.locked = self.chord.root.is_some();
+        self.locked = true;
         self.changed = true;
     }
 
@@ -195,7 +195,7 @@ impl Harmony {
         let chord = self.sounding_chord(now);
         let struck = std::mem::take(&mut self.struck);
         // What is left of a chord as it is let go is no new chord.
-        if struck && !self.locked {
+        if struck && (!self.locked || self.chord.root.is_none()) {
             let bass = self.bass(chord);
             self.chord.root = bass.and_then(|bass| root::root(chord, bass, self.chord.root));
         }

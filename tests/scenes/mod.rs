@@ -18,6 +18,8 @@ mod modes;
 mod pedals;
 /// Poly pressure, CC88 and CC84.
 mod prefixes;
+/// Root and sevenths by hand.
+mod root;
 /// A new song under a ringing chord; one that waits for silence.
 mod songs;
 /// Too many pitches for the channels there are.
