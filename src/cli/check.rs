@@ -107,7 +107,13 @@ fn stage_text(stage: &Stage) -> String {
                 &mut text,
                 format_args!("  {}  {} (as {})", index + 1, song.title, first + 1),
             ),
-            None => song_text(&mut text, index + 1, song, outlook::crowding(&plan, index)),
+            None => {
+                let more = [
+                    outlook::intonation(&plan, index),
+                    outlook::crowding(&plan, index),
+                ];
+                song_text(&mut text, index + 1, song, more.into_iter().flatten());
+            }
         }
     }
     text.push_str("\nkeyboards\n");
@@ -130,7 +136,7 @@ fn stage_text(stage: &Stage) -> String {
     text
 }
 
-fn song_text(text: &mut String, number: usize, song: &Song, crowding: Option<String>) {
+fn song_text(text: &mut String, number: usize, song: &Song, more: impl Iterator<Item = String>) {
     let about = song.tuning_about.as_deref();
     let about = about.map_or(String::new(), |about| format!(": {about}"));
     line(text, format_args!("  {number}  {}", song.title));
@@ -144,8 +150,8 @@ fn song_text(text: &mut String, number: usize, song: &Song, crowding: Option<Str
             line(text, format_args!("     in {named}: {pair}"));
         }
     }
-    if let Some(crowding) = crowding {
-        line(text, format_args!("     {crowding}"));
+    for more in more {
+        line(text, format_args!("     {more}"));
     }
 }
 
@@ -182,7 +188,12 @@ fn stage_json(stage: &Stage) -> Value {
     let plan = stage.plan();
     let songs = stage.set.iter().enumerate();
     let songs: Vec<Value> = songs
-        .map(|(index, song)| song_json(song, outlook::crowding(&plan, index)))
+        .map(|(index, song)| {
+            let mut told = song_json(song);
+            told["intonation"] = outlook::intonation(&plan, index).into();
+            told["crowding"] = outlook::crowding(&plan, index).into();
+            told
+        })
         .collect();
     let synths = stage.synths.iter().zip(outlook::synths(&plan));
     let synths: Vec<Value> = synths
@@ -203,7 +214,7 @@ fn stage_json(stage: &Stage) -> Value {
     })
 }
 
-fn song_json(song: &Song, crowding: Option<String>) -> Value {
+fn song_json(song: &Song) -> Value {
     let pairs = song.pairs().into_iter().flat_map(|(key, pairs)| {
         pairs.into_iter().map(move |pair| {
             json!({
@@ -221,7 +232,6 @@ fn song_json(song: &Song, crowding: Option<String>) -> Value {
         "about": song.tuning_about,
         "c4": song.c4(),
         "circle": song.circle(),
-        "crowding": crowding,
         "pairs": pairs.collect::<Vec<Value>>(),
     })
 }

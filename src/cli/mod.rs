@@ -75,7 +75,8 @@ Volume down before the first note. Ctrl-C or SIGTERM ends it cleanly: nothing is
     #[command(after_help = "\
 Examples:
   trued check evening.yaml
-  trued check evening.yaml --defaults         with everything you did not say")]
+  trued check evening.yaml --defaults         with everything you did not say
+  trued check --defaults                      every setting, what it is unless you say, and what it does")]
     Check(check::Args),
     /// Says what every key sounds, for a song or for a tuning by name
     #[command(after_help = "\
@@ -105,6 +106,7 @@ Examples:
 Examples:
   trued tell next
   trued tell song 3
+  trued tell sevenths harmonic                from the next chord on, in a song with intonation: chord-root
   trued tell panic
   trued tell --name left back                 to the one that was started with --name left
 

@@ -133,13 +133,18 @@ fn cue(
     Some((when, plan))
 }
 
-/// A tonic to be moved where no tuning has one.
+/// A tonic to be moved where no tuning has one; the root of chords that nobody follows.
 fn unmoved(words: &Words, number: usize, scene: &Scene<'_>) -> Option<String> {
-    (matches!(words, Words::Tonic { .. }) && !scene.names.told.tonics).then(|| {
-        format!(
+    let told = scene.names.told;
+    match words {
+        Words::Tonic { .. } if !told.tonics => Some(format!(
             "cue {number} moves the tonic, and tonight's tunings all go by letter: their keys keep their pitches"
-        )
-    })
+        )),
+        Words::Root(_) | Words::Sevenths { .. } if !told.follows => Some(format!(
+            "cue {number} is about chords that are followed, and no song tonight has `intonation: chord-root`"
+        )),
+        _ => None,
+    }
 }
 
 /// Complains of a cue that cannot be `while: held`.

@@ -1,6 +1,8 @@
 //! Every default of the stage file, once: the reading code takes them from here, `check --defaults` prints them from here.
 
 use crate::engine::plan::ChannelSet;
+use crate::intonation::Settings;
+use crate::pitch::Interval;
 
 pub const DIALECT: &str = "channel-bend";
 pub const BEND_RANGE: u8 = 2;
@@ -23,14 +25,6 @@ pub const STEAL: &str = "oldest";
 pub const LONG_MS: u64 = 800;
 /// Between the pieces of a live set-up, so that a key never waits long behind one on a slow wire.
 pub const PACE_MS: u64 = 8;
-
-pub const RATIOS: &str = "pure";
-pub const DRIFT_LIMIT_CENTS: u32 = 12;
-pub const RETURN_CENTS_PER_S: u32 = 2;
-pub const SETTLE_MS: u32 = 50;
-pub const HOLD_LIMIT_CENTS: u32 = 12;
-pub const GLIDE_CENTS_PER_S: u32 = 30;
-pub const MEMORY_S: u32 = 3;
 
 /// One line of `check --defaults`.
 pub struct Default {
@@ -55,6 +49,8 @@ pub fn table() -> Vec<Default> {
         synths(&line),
         parts(&line),
         songs(&line),
+        intonation(&line),
+        cues(&line),
     ];
     sections.into_iter().flatten().collect()
 }
@@ -191,7 +187,13 @@ fn parts(line: Line<'_>) -> Vec<Default> {
             "what goes through",
         ),
         line("parts", "tune", &"yes", "no: plays untuned"),
-        line("parts", "follow", &"yes", "no: not counted in the harmony"),
+        line(
+            "parts",
+            "follow",
+            &"yes",
+            "with the harmony; no: stands at rest and is not counted; own: a harmony of its own; uncounted: goes with \
+             it and is not counted",
+        ),
         line(
             "parts",
             "mono",
@@ -212,14 +214,70 @@ fn songs(line: Line<'_>) -> Vec<Default> {
         ),
         line("songs", "pitch", &"the evening's", ""),
         line("songs", "transpose", &0, "keys up or down"),
-        line("songs", "intonation", &INTONATION, ""),
-        line("intonation", "ratios", &RATIOS, ""),
-        line("intonation", "drift_limit_cents", &DRIFT_LIMIT_CENTS, ""),
-        line("intonation", "return_cents_per_s", &RETURN_CENTS_PER_S, ""),
-        line("intonation", "settle_ms", &SETTLE_MS, ""),
-        line("intonation", "hold_limit_cents", &HOLD_LIMIT_CENTS, ""),
-        line("intonation", "glide_cents_per_s", &GLIDE_CENTS_PER_S, ""),
-        line("intonation", "memory_s", &MEMORY_S, ""),
+        line(
+            "songs",
+            "intonation",
+            &INTONATION,
+            "chord-root: every chord is pure",
+        ),
+    ]
+}
+
+/// The knobs of a method that follows the chord.
+fn intonation(line: Line<'_>) -> Vec<Default> {
+    let knobs = Settings::DEFAULT;
+    let cents = |limit: Option<Interval>| {
+        limit.map_or("none".to_string(), |limit| limit.cents().to_string())
+    };
+    vec![
+        line(
+            "intonation",
+            "ratios",
+            &"pure",
+            "pure-with-7: dominant sevenths are 4:5:6:7; or twelve of your own above the root",
+        ),
+        line(
+            "intonation",
+            "drift_limit_cents",
+            &cents(knobs.drift_limit),
+            "how far what sounds may stand from the tuning, on average: 12 alone or with voices, 5 beside fixed \
+             instruments, none: as far as its notes carry it",
+        ),
+        line(
+            "intonation",
+            "return_cents_per_s",
+            &knobs.return_per_s.cents(),
+            "how fast a chord that stays goes back to the tuning",
+        ),
+        line(
+            "intonation",
+            "settle_ms",
+            &knobs.settle.millis(),
+            "notes younger than this jump to their place as the chord fills in",
+        ),
+        line(
+            "intonation",
+            "hold_limit_cents",
+            &cents(knobs.hold_limit),
+            "how far one change may move a held note, and twice that in its life; none: as far as the chord wants",
+        ),
+        line(
+            "intonation",
+            "glide_cents_per_s",
+            &knobs.glide_per_s.cents(),
+            "how fast it is moved; 0: not at all",
+        ),
+        line(
+            "intonation",
+            "memory_s",
+            &(knobs.memory.millis() / 1e3),
+            "how long a note that has ended still draws chords to where it was",
+        ),
+    ]
+}
+
+fn cues(line: Line<'_>) -> Vec<Default> {
+    vec![
         line("cues", "from", &"every keyboard", ""),
         line("cues", "channel", &"1-16", ""),
         line("cues", "press", &"down", ""),

@@ -5,7 +5,8 @@ use super::circle::Circle;
 use super::landing::where_c4_lands;
 use super::values::spell_channels;
 use crate::engine::Plan;
-use crate::engine::plan::{Dialect, PartPlan, SynthPlan};
+use crate::engine::plan::{Dialect, Follow, PartPlan, SongPlan, SynthPlan};
+use crate::intonation::{Method, Ratios};
 use crate::pitch::word::Bend;
 use crate::pitch::{Interval, Log, Pitch};
 use crate::tuning::{Key, Letter, Pin, Tuning};
@@ -15,6 +16,8 @@ use std::sync::Arc;
 const HARSH: Interval = Interval::from_cents(30);
 /// Middle C further than this from equal surprises everybody.
 const FAR: Interval = Interval::from_cents(50);
+/// Further than this from a fixed instrument is heard as out of tune with it.
+const BESIDE_FIXED: Interval = Interval::from_cents(5);
 /// Five octaves that every keyboard has.
 const EVERY_KEYBOARD: std::ops::RangeInclusive<u8> = 36..=96;
 
@@ -125,11 +128,43 @@ impl Song {
     }
 }
 
+/// How a song follows its harmony; nothing where every key stays where its tuning puts it.
+pub fn intonation(plan: &Plan, song: usize) -> Option<String> {
+    let method = plan.set.get(song)?.method;
+    let settings = method.settings()?;
+    let named = match method {
+        Method::LeastSquares(_) => "least-squares: every chord as pure as it can be",
+        _ => "chord-root: every chord is pure",
+    };
+    let ratios = match settings.ratios {
+        Ratios::Pure => "",
+        Ratios::PureWith7 => ", dominant sevenths 4:5:6:7",
+        Ratios::Own(_) => ", by ratios of your own",
+    };
+    let near = match settings.drift_limit {
+        None => "goes as far from the tuning as its notes carry it".to_string(),
+        Some(limit) => {
+            let beside = match limit > BESIDE_FIXED {
+                true => "; beside fixed instruments write `drift_limit_cents: 5`",
+                false => "",
+            };
+            format!(
+                "stays within {} c of the tuning on average{beside}",
+                limit.cents()
+            )
+        }
+    };
+    Some(format!("{named}{ratios}; what sounds {near}"))
+}
+
 /// Where a song has more different bends within five octaves than a part has channels: what then gives way.
 pub fn crowding(plan: &Plan, song: usize) -> Option<String> {
-    let tuning = &plan.set.get(song)?.tuning;
+    let SongPlan { tuning, method, .. } = plan.set.get(song)?;
     let parts = plan.parts.iter().filter(|part| part.tune);
     let crowded = parts.filter_map(|part| {
+        if *method != Method::Fixed && part.follow != Follow::Nothing {
+            return crowded_chords(plan, part);
+        }
         let (low, high) = part.keys;
         let synth = &plan.synths[part.to.index()];
         let mut bends: Vec<u16> = Key::all()
@@ -154,6 +189,20 @@ pub fn crowding(plan: &Plan, song: usize) -> Option<String> {
         })
     });
     crowded.into_iter().next()
+}
+
+/// In a chord that is followed each pitch class is moved by itself.
+fn crowded_chords(plan: &Plan, part: &PartPlan) -> Option<String> {
+    let (low, high) = part.keys;
+    let classes = (usize::from(high.number() - low.number()) + 1).min(12);
+    let channels = part.pool.count() as usize;
+    (channels < classes).then(|| {
+        let synth = &plan.synths[part.to.index()].name;
+        format!(
+            "{channels} channels on {synth}, and chords that are followed: with more than {channels} pitch classes held \
+             at once, one goes along with another"
+        )
+    })
 }
 
 /// Keys that every keyboard has and that stand outside of what MIDI can say.

@@ -10,6 +10,7 @@ use super::tunings::{Library, Reference, TuningText};
 use super::{Song, defaults, intonation};
 use super::{inflections, parts};
 use crate::engine::plan::{ByHand, SongPlan, SynthId};
+use crate::intonation::Method;
 use crate::limits::SONGS_MAX;
 use crate::midi::status;
 use crate::tuning::{Letter, Placement, Scale, Tuning};
@@ -270,6 +271,7 @@ fn song(
         described.as_deref(),
         desk.found,
     );
+    desk.told.follows |= method != Method::Fixed;
     let by_hand = inflections::read(&mut fields, described.as_deref(), placed.as_ref(), desk);
     let sends = match fields.take("send") {
         Some(at) => sends(&at, desk),

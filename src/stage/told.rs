@@ -18,6 +18,8 @@ pub struct Told {
     black_keys: Vec<Letter>,
     /// Some song takes a tonic.
     pub tonics: bool,
+    /// Some song follows its harmony.
+    pub follows: bool,
     /// A song is written wrong, and nobody knows what it would have.
     pub unsure: bool,
 }

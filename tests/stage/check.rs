@@ -62,6 +62,24 @@ fn more_bends_than_channels_is_said() {
 }
 
 #[test]
+fn how_a_song_follows_its_harmony_is_said() {
+    let (code, out, _) = check(&["config/rehearsal.yaml"]);
+    assert_eq!(code, 0);
+    for said in [
+        "chord-root: every chord is pure; what sounds goes as far from the tuning as its notes carry it\n",
+        "chord-root: every chord is pure; what sounds stays within 12 c of the tuning on average; beside fixed instruments write \
+         `drift_limit_cents: 5`\n",
+        "chord-root: every chord is pure, dominant sevenths 4:5:6:7; what sounds stays within 12 c",
+    ] {
+        assert!(out.contains(said), "{said} in\n{out}");
+    }
+    assert_eq!(out.matches("chord-root").count(), 3, "{out}");
+    let (_, out, _) = check(&["config/rehearsal.yaml", "--json"]);
+    let songs = &json(&out)["songs"];
+    assert!(songs[0]["intonation"].is_null() && songs[5]["intonation"].is_string());
+}
+
+#[test]
 fn a_bad_file_is_told_on_stderr() {
     let (code, out, err) = check(&["tests/stage/bad/key-twice.yaml"]);
     assert_eq!((code, out.as_str()), (65, ""));

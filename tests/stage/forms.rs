@@ -175,6 +175,49 @@ fn songs_cues_and_lamps() {
 }
 
 #[test]
+fn chords_that_are_followed() {
+    let text = "
+songs:
+  Bare word:   {intonation: chord-root}
+  Map:         {tuning: five-limit-scale, tonic: D, intonation: {method: chord-root}}
+  At rest:     {intonation: {method: fixed, drift_limit_cents: 5}}
+  Every knob:
+    tuning: werckmeister-3
+    intonation:
+      method: chord-root
+      ratios: pure-with-7
+      drift_limit_cents: none
+      return_cents_per_s: 2
+      settle_ms: 50
+      hold_limit_cents: 6
+      glide_cents_per_s: 30
+      memory_s: 3
+  Own ratios:
+    intonation:
+      method: chord-root
+      ratios: [1/1, 16/15, 9/8, 6/5, 5/4, 4/3, 7/5, 3/2, 8/5, 5/3, 7/4, 15/8]
+parts:
+  - {keys: ..B2, follow: no}
+  - {keys: C3..B4, follow: yes}
+  - {keys: C5..B5, follow: uncounted}
+  - {keys: C6.., follow: own}
+cues:
+  - {when: {controller: 66}, do: root hold, while: held}
+  - {when: {controller: 67}, do: sevenths harmonic, while: held}
+  - {when: {controller: 80}, do: sevenths plain}
+  - {when: {controller: 81}, do: root next-key}
+  - {when: {controller: 82}, do: root free}
+  - {when: {controller: 83, press: either}, do: plain}
+";
+    let stage = load(text);
+    assert_eq!(stage.advice, [""; 0]);
+    assert_eq!(stage.plan().cues.len(), 6);
+    let adaptive = |song: &trued::engine::plan::SongPlan| song.method.settings().is_some();
+    let methods: Vec<bool> = stage.plan().set.iter().map(adaptive).collect();
+    assert_eq!(methods, [true, true, false, true, true]);
+}
+
+#[test]
 fn a_number_is_as_good_a_title_as_any() {
     let stage = load("songs: {1812: , 1.50: {tuning: vallotti}}\nset: [1812, 1.50, 1812]\n");
     assert_eq!(stage.set.len(), 3);

@@ -1,8 +1,10 @@
 //! What a stage file becomes for the engine.
 
 use super::load;
-use trued::engine::plan::{Act, ChannelSet, Dialect, Gesture, Press};
+use trued::engine::plan::{Act, ChannelSet, Dialect, Follow, Gesture, Press};
 use trued::engine::{Ask, Command};
+use trued::intonation::{Method, Ratios, Settings};
+use trued::pitch::Interval;
 use trued::stage::defaults;
 use trued::time::Span;
 
@@ -246,6 +248,143 @@ fn the_table_of_defaults_is_true() {
     let (said, silent) = (load(&written), load(SONG));
     assert_eq!(said.plan(), silent.plan());
     assert_eq!(said.advice, silent.advice);
+
+    let knobs = [
+        "ratios",
+        "drift_limit_cents",
+        "return_cents_per_s",
+        "settle_ms",
+        "hold_limit_cents",
+        "glide_cents_per_s",
+        "memory_s",
+    ];
+    let all = list("intonation", &knobs);
+    let song = |intonation: &str| {
+        load(&format!(
+            "set: [{{song: A song, intonation: {intonation}}}]\n"
+        ))
+        .plan()
+    };
+    let written = song(&format!("{{method: chord-root, {all}}}"));
+    assert_eq!(written, song("chord-root"), "{all}");
+}
+
+fn knobs(written: &str) -> Settings {
+    let song = format!("set: [{{song: A song, intonation: {{method: chord-root, {written}}}}}]\n");
+    let Method::ChordRoot(settings) = load(&song).plan().set[0].method else {
+        panic!("{written}");
+    };
+    settings
+}
+
+#[test]
+fn every_knob_of_the_intonation_turns_what_it_names() {
+    let cents = |cents: f64| Interval::from_microcents((cents * 1e6) as i64);
+    let plain = Settings::DEFAULT;
+    for (written, wanted) in [
+        (
+            "drift_limit_cents: none",
+            Settings {
+                drift_limit: None,
+                ..plain
+            },
+        ),
+        (
+            "drift_limit_cents: 0",
+            Settings {
+                drift_limit: Some(cents(0.0)),
+                ..plain
+            },
+        ),
+        (
+            "drift_limit_cents: 7.5",
+            Settings {
+                drift_limit: Some(cents(7.5)),
+                ..plain
+            },
+        ),
+        (
+            "hold_limit_cents: none",
+            Settings {
+                hold_limit: None,
+                ..plain
+            },
+        ),
+        (
+            "hold_limit_cents: 100",
+            Settings {
+                hold_limit: Some(cents(100.0)),
+                ..plain
+            },
+        ),
+        (
+            "return_cents_per_s: 0",
+            Settings {
+                return_per_s: cents(0.0),
+                ..plain
+            },
+        ),
+        (
+            "settle_ms: 80",
+            Settings {
+                settle: Span::from_millis(80),
+                ..plain
+            },
+        ),
+        (
+            "glide_cents_per_s: 1000",
+            Settings {
+                glide_per_s: cents(1000.0),
+                ..plain
+            },
+        ),
+        (
+            "memory_s: 0.5",
+            Settings {
+                memory: Span::from_millis(500),
+                ..plain
+            },
+        ),
+        ("ratios: pure", plain),
+        (
+            "ratios: pure-with-7",
+            Settings {
+                ratios: Ratios::PureWith7,
+                ..plain
+            },
+        ),
+    ] {
+        assert_eq!(knobs(written), wanted, "{written}");
+    }
+    // Twelve of one's own are kept as they stand from equal: 5/4 is 386.314 cents, 7/4 968.826, 350 c halfway.
+    let own = "ratios: [1/1, 16/15, 9/8, 6/5, 5/4, 4/3, 45/32, 3/2, 8/5, 5/3, 7/4, 350 c + 9/8 + 9/8 + 9/8]";
+    let Ratios::Own(offsets) = knobs(own).ratios else {
+        panic!("{own}");
+    };
+    let stands = |above: usize| 100.0 * above as f64 + offsets[above].cents();
+    for (above, wanted) in [(0, 0.0), (4, 386.314), (10, 968.826), (11, 961.730)] {
+        assert!(
+            (stands(above) - wanted).abs() < 0.001,
+            "{above}: {}",
+            stands(above)
+        );
+    }
+}
+
+#[test]
+fn a_part_goes_with_the_harmony_in_four_ways() {
+    for (written, wanted) in [
+        ("{}", Follow::Harmony),
+        ("{follow: yes}", Follow::Harmony),
+        ("{follow: true}", Follow::Harmony),
+        ("{follow: no}", Follow::Nothing),
+        ("{follow: false}", Follow::Nothing),
+        ("{follow: own}", Follow::Own),
+        ("{follow: uncounted}", Follow::Uncounted),
+    ] {
+        let plan = load(&format!("parts: [{written}]\n{SONG}")).plan();
+        assert_eq!(plan.parts[0].follow, wanted, "{written}");
+    }
 }
 
 /// Songs with one scale in one place share it.
