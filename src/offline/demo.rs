@@ -19,6 +19,7 @@ const EB4: u8 = 63;
 const E4: u8 = 64;
 const G4: u8 = 67;
 const A4: u8 = 69;
+const BB4: u8 = 70;
 
 /// When each scene begins, in seconds.
 mod at {
@@ -35,4 +36,19 @@ mod at {
     pub const AGAIN: f64 = 62.5;
     pub const NEUTRAL: f64 = 67.0;
     pub const TUNE: f64 = 72.0;
+    pub const SINKING: f64 = 78.5;
+    pub const STAYING: f64 = 91.5;
+    pub const LAST_CHORD: f64 = 104.5;
+
+    /// Of the chords that go round, five times and home.
+    pub const LAST_OF_ROUNDS: usize = 20;
+
+    /// When one of them begins, from where the rounds begin. The first and the last are long enough to be measured.
+    pub fn round(chord: usize) -> f64 {
+        match chord {
+            0 => 0.0,
+            1..=LAST_OF_ROUNDS => 1.0 + 0.5 * (chord - 1) as f64,
+            _ => round(LAST_OF_ROUNDS) + 1.5,
+        }
+    }
 }

@@ -53,7 +53,7 @@ impl Pair {
     }
 }
 
-/// How far a sounding key has moved between two stretches, in cents; from the samples of both.
+/// How far a key has moved between two stretches, ringing on or struck again, in cents; from the samples of both.
 pub fn moved_cents(
     recording: &Recording,
     sound: &Sound,
@@ -61,13 +61,11 @@ pub fn moved_cents(
     before_s: (f64, f64),
     after_s: (f64, f64),
 ) -> Option<f64> {
-    let near_hz = sounding(recording, key, (before_s.0, after_s.1))?
-        .onset
-        .sent
-        .hertz();
-    let before = sound.partial_hz(before_s, near_hz, AROUND_CENTS)?;
-    let after = sound.partial_hz(after_s, near_hz, AROUND_CENTS)?;
-    Some(cents(after, before))
+    let hz = |span_s| {
+        let near_hz = sounding(recording, key, span_s)?.onset.sent.hertz();
+        sound.partial_hz(span_s, near_hz, AROUND_CENTS)
+    };
+    Some(cents(hz(after_s)?, hz(before_s)?))
 }
 
 fn sounding(recording: &Recording, key: Key, span_s: (f64, f64)) -> Option<&Sounded> {

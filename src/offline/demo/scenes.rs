@@ -1,6 +1,6 @@
 //! What there is to hear in the built-in rehearsal, and what is measured of it.
 
-use super::{A4, C3, C4, E4, EB4, G3, G4, GS3, at};
+use super::{A4, BB4, C3, C4, E4, EB4, G3, G4, GS3, at};
 use crate::offline::measure::Sound;
 use crate::offline::moments::{Found, Pair, moved_cents};
 use crate::offline::retune::Recording;
@@ -26,6 +26,12 @@ pub enum Check {
         before_s: (f64, f64),
         after_s: (f64, f64),
     },
+    /// How far a key that is struck again stands from where it stood.
+    Again {
+        key: u8,
+        first_s: (f64, f64),
+        again_s: (f64, f64),
+    },
 }
 
 /// What was found.
@@ -37,14 +43,25 @@ pub enum Finding {
         keys: &'static [u8],
         cents: f64,
     },
+    /// Above where it stood before.
+    Again {
+        key: u8,
+        cents: f64,
+    },
 }
 
 /// Everything there is to hear, in order.
 pub fn scenes() -> Vec<Scene> {
-    [intervals(), phrases(), fifths(), change(), neutral()]
-        .into_iter()
-        .flatten()
-        .collect()
+    let all = [
+        intervals(),
+        phrases(),
+        fifths(),
+        change(),
+        neutral(),
+        rounds(),
+        last_chord(),
+    ];
+    all.into_iter().flatten().collect()
 }
 
 fn intervals() -> Vec<Scene> {
@@ -161,6 +178,56 @@ fn neutral() -> Vec<Scene> {
     ]
 }
 
+fn rounds() -> Vec<Scene> {
+    let scene = |start: f64, what, listen| {
+        // Within the first second: what stands longer may set out for home.
+        let heard = |chord| {
+            (
+                start + at::round(chord) + 0.3,
+                start + at::round(chord) + 0.95,
+            )
+        };
+        let last_s = heard(at::LAST_OF_ROUNDS);
+        let again = Check::Again {
+            key: C3,
+            first_s: heard(0),
+            again_s: last_s,
+        };
+        Scene {
+            from_s: start,
+            what,
+            listen,
+            checks: vec![again, pair(C3, E4, Some((5, 2)), last_s)],
+        }
+    };
+    vec![
+        scene(
+            at::SINKING,
+            "the chords C, Am, Dm and G five times round, then C, with nothing to hold them",
+            "every chord is pure, and each time round all of it sinks by a comma: in the end by a semitone",
+        ),
+        scene(
+            at::STAYING,
+            "the same chords, as trued plays them unless told otherwise",
+            "a leash to the tuning holds them, and nobody hears that it pulls",
+        ),
+    ]
+}
+
+fn last_chord() -> Vec<Scene> {
+    let span_s = (at::LAST_CHORD + 0.3, at::LAST_CHORD + 3.9);
+    vec![Scene {
+        from_s: at::LAST_CHORD,
+        what: "C, E, G and Bb as 4:5:6:7",
+        listen: "a seventh that wants to go nowhere",
+        checks: vec![
+            third(span_s),
+            fifth(C4, G4, span_s),
+            pair(C4, BB4, Some((7, 4)), span_s),
+        ],
+    }]
+}
+
 /// C4 and E4: the fifth partial of the one against the fourth of the other.
 fn third(span_s: (f64, f64)) -> Check {
     pair(C4, E4, Some((5, 4)), span_s)
@@ -199,6 +266,12 @@ impl Check {
                 let cents = all?.into_iter().map(f64::abs).fold(0.0, f64::max);
                 Some(Finding::Moved { keys, cents })
             }
+            Check::Again {
+                key,
+                first_s,
+                again_s,
+            } => moved_cents(recording, sound, known(key), first_s, again_s)
+                .map(|cents| Finding::Again { key, cents }),
         }
     }
 }
@@ -210,6 +283,11 @@ impl std::fmt::Display for Finding {
             Finding::Moved { keys, cents } => {
                 let names: Vec<String> = keys.iter().map(|key| known(*key).to_string()).collect();
                 write!(f, "{} moved by {cents:.2} cents", names.join(" "))
+            }
+            Finding::Again { key, cents } => {
+                let side = if *cents < 0.0 { "below" } else { "above" };
+                let (key, cents) = (known(*key), cents.abs());
+                write!(f, "the last {key} is {cents:.2} cents {side} the first")
             }
         }
     }

@@ -1,12 +1,12 @@
 //! The score of the built-in rehearsal.
 
-use super::{A4, C3, C4, E4, EB4, G3, G4, GS3, at};
+use super::{A4, BB4, C3, C4, E4, EB4, G3, G4, GS3, at};
 use crate::offline::score_file;
 
 const TICKS_PER_QUARTER: u16 = 480;
 /// At 120 quarters a minute.
 const TICKS_PER_S: f64 = 960.0;
-const LENGTH_S: f64 = 78.5;
+const LENGTH_S: f64 = 109.0;
 
 /// Songs of the stage file by number of program.
 const PLAIN: u8 = 1;
@@ -14,6 +14,9 @@ const PURE: u8 = 2;
 const MEANTONE: u8 = 3;
 const AB: u8 = 4;
 const HALFWAY: u8 = 5;
+const SINKING: u8 = 6;
+const STAYING: u8 = 7;
+const LAST_CHORD: u8 = 8;
 
 /// The phrase: when its chords begin (in half seconds) and what is in them.
 const PHRASE: [(u32, &[u8]); 11] = [
@@ -40,6 +43,14 @@ const TUNE: [(u32, u8); 8] = [
     (30, 62),
     (36, 60),
     (56, 0),
+];
+
+/// I, vi, ii and V: pure all round, they do not come back to where they began.
+const ROUND: [&[u8]; 4] = [
+    &[48, 60, 64, 67],
+    &[45, 60, 64, 69],
+    &[50, 62, 65, 69],
+    &[43, 59, 62, 67],
 ];
 
 /// The score, as a MIDI file of format 0.
@@ -74,6 +85,12 @@ pub fn score() -> Vec<u8> {
         let (from, until) = (pair[0].0 as f64 / 10.0, pair[1].0 as f64 / 10.0);
         score.chord(at::TUNE + from, until - from - 0.02, &[pair[0].1]);
     }
+    for (start, song) in [(at::SINKING, SINKING), (at::STAYING, STAYING)] {
+        score.song(start - 0.2, song);
+        score.rounds(start);
+    }
+    score.song(at::LAST_CHORD - 0.2, LAST_CHORD);
+    score.chord(at::LAST_CHORD, 4.0, &[C4, E4, G4, BB4]);
     score.finish()
 }
 
@@ -97,6 +114,20 @@ impl Writer {
         }
     }
 
+    /// What two chords have in common is struck once and held over.
+    fn rounds(&mut self, start: f64) {
+        let all = ROUND.iter().cycle().take(at::LAST_OF_ROUNDS + 1);
+        let chords: Vec<&[u8]> = all.copied().collect();
+        for (place, chord) in chords.iter().enumerate() {
+            let goes_on = |key: &u8| place > 0 && chords[place - 1].contains(key);
+            for key in chord.iter().filter(|key| !goes_on(key)) {
+                let with_it = chords[place..].iter().take_while(|c| c.contains(key));
+                let (from, until) = (at::round(place), at::round(place + with_it.count()));
+                self.chord(start + from, until - from, &[*key]);
+            }
+        }
+    }
+
     fn finish(mut self) -> Vec<u8> {
         // What ends comes before what begins at the same tick.
         self.events
@@ -107,7 +138,7 @@ impl Writer {
             .map(|(tick, _, bytes, length)| (*tick, *bytes, *length))
             .collect();
         score_file::write_new(TICKS_PER_QUARTER, "Rehearsal", &events, tick(LENGTH_S))
-            .expect("a minute of music fits into a MIDI file")
+            .expect("two minutes of music fits into a MIDI file")
     }
 }
 
