@@ -4,6 +4,7 @@ use super::support::plans;
 use std::sync::Arc;
 use trued::engine::Plan;
 use trued::engine::plan::{Act, ChannelSet, CuePlan, Dialect, Gesture, Press};
+use trued::intonation::{Method, Settings};
 use trued::offline::retune::{self, Recording};
 use trued::offline::score_file::Score;
 use trued::offline::{notes_file, picture};
@@ -239,6 +240,104 @@ fn note_lines_have_the_fields_others_read() {
     assert!((1..=16).contains(&line["channel"].as_u64().expect("a number")));
     assert!(line["root"].is_null() && line["shape"].is_null());
     assert_eq!(line["drift_cents"], 0.0);
+}
+
+/// E, G and C as hands spread them, then A minor under the held C and E, long enough to go home. Every line is held to
+/// the others: intervals to ratios, drift to the mean of what the lines themselves say.
+#[test]
+fn lines_of_a_chord_that_is_followed_have_root_shape_drift_and_what_moved() {
+    let mut plan = plan(Dialect::ChannelBend);
+    let mut song = plans::song("Followed", plans::equal());
+    song.method = Method::ChordRoot(Settings::DEFAULT);
+    plan.set = vec![song];
+    // Ticks of 20 ms.
+    let score: &[(u8, &[u8])] = &[
+        (0, &[0x90, 64, 90]),
+        (1, &[0x90, 67, 90]),
+        (1, &[0x90, 60, 90]),
+        (48, &[0x80, 67, 0]),
+        (0, &[0x90, 69, 90]),
+        (0, &[0x90, 45, 90]),
+        (125, &[0x80, 45, 0]),
+    ];
+    let (recording, _) = play(plan, &file([0, 25], &[score]), 0);
+    let written = notes_file::write(&recording);
+    let parsed = written
+        .lines()
+        .map(|line| serde_json::from_str(line).expect("JSON"));
+    let lines: Vec<serde_json::Value> = parsed.collect();
+    let number = |line: &serde_json::Value, name: &str| line[name].as_f64().expect(name);
+    let keys_of = |retune: bool| -> Vec<u64> {
+        let some = lines
+            .iter()
+            .filter(|line| line["retune"].as_bool().unwrap_or(false) == retune);
+        some.map(|line| line["key"].as_u64().expect("a key"))
+            .collect()
+    };
+    assert_eq!(keys_of(false), [64, 67, 60, 69, 45]);
+    assert!(
+        lines
+            .iter()
+            .all(|line| line.get("retune").is_none_or(|r| r == true))
+    );
+
+    let mut stands = std::collections::BTreeMap::new();
+    let mut late = 0;
+    for together in lines.chunk_by(|a, b| a["t_ms"] == b["t_ms"]) {
+        let at_ms = number(&together[0], "t_ms");
+        if at_ms >= 1000.0 {
+            stands.remove(&67);
+        }
+        for line in together {
+            let (key, target) = (
+                line["key"].as_u64().expect("a key"),
+                number(line, "target_cents"),
+            );
+            assert!((number(line, "sent_cents") - target).abs() <= 1200.0 / 8192.0 / 2.0);
+            let before = stands.insert(key, target);
+            if line["retune"] == true && at_ms > 100.0 {
+                late += 1;
+                let step = (target - before.expect("it sounded")).abs();
+                assert!(step <= 1.000_001, "no step is larger than a cent: {step}");
+            }
+        }
+        let drift: f64 = stands
+            .iter()
+            .map(|(key, target)| target - *key as f64 * 100.0)
+            .sum();
+        let drift = drift / stands.len() as f64;
+        let (root, shape) = match at_ms {
+            0.0 => (4, serde_json::Value::Null),
+            20.0 => (4, "5:6".into()),
+            at_ms if at_ms < 1000.0 => (0, "4:5:6".into()),
+            _ => (9, "10:12:15".into()),
+        };
+        for line in together {
+            assert!(
+                (number(line, "drift_cents") - drift).abs() < 1e-4,
+                "{line} but {drift}"
+            );
+            assert_eq!(
+                (&line["root"], &line["shape"]),
+                (&root.into(), &shape),
+                "{line}"
+            );
+        }
+        if at_ms == 40.0 {
+            // 5/4 and 3/2.
+            assert!(
+                (stands[&64] - stands[&60] - 386.313_714).abs() < 1e-5,
+                "{stands:?}"
+            );
+            assert!(
+                (stands[&67] - stands[&60] - 701.955_001).abs() < 1e-5,
+                "{stands:?}"
+            );
+        }
+    }
+    let jumps = keys_of(true).len() - late;
+    assert!(jumps >= 3, "E for G, and both for C: {written}");
+    assert!(late > 0, "the second chord goes home: {written}");
 }
 
 #[test]
