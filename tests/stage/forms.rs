@@ -218,6 +218,34 @@ cues:
 }
 
 #[test]
+fn words_about_chords_that_nobody_follows_are_told_of() {
+    let stage = load(
+        "cues: [{when: {controller: 66}, do: root hold}, {when: {controller: 67}, do: sevenths plain}]\n\
+         set: [{song: One}]\n",
+    );
+    let about =
+        "is about chords that are followed, and no song tonight has `intonation: chord-root`";
+    assert_eq!(
+        stage.advice,
+        [format!("cue 1 {about}"), format!("cue 2 {about}")]
+    );
+}
+
+#[test]
+fn chords_that_are_followed_want_a_channel_for_each_pitch_class() {
+    let crowding = |channels: &str| {
+        let text = format!(
+            "synths: {{organ: {{channels: {channels}}}}}\nset: [{{song: One, intonation: chord-root}}]\n"
+        );
+        trued::stage::outlook::crowding(&load(&text).plan(), 0)
+    };
+    let few = "8 channels on organ, and chords that are followed: with more than 8 pitch classes held at once, one \
+               goes along with another";
+    assert_eq!(crowding("1-8").as_deref(), Some(few));
+    assert_eq!(crowding("1-13"), None, "twelve without the drums");
+}
+
+#[test]
 fn a_number_is_as_good_a_title_as_any() {
     let stage = load("songs: {1812: , 1.50: {tuning: vallotti}}\nset: [1812, 1.50, 1812]\n");
     assert_eq!(stage.set.len(), 3);
