@@ -12,17 +12,43 @@ mod pace;
 /// Text, damage, changed sets, disks that cannot be written.
 mod record;
 
+/// Tonic, places of keys and black keys.
+mod by_hand;
+
 /// The binary: restarts, signals, `--fresh`.
 mod daemon;
 
 use std::path::Path;
 use trued::daemon::remember::record::{Evening, State};
-use trued::pitch::Interval;
+use trued::pitch::{Interval, Pitch};
+use trued::stage::Stage;
 
 const TITLES: [&str; 5] = ["Lantern hymn", "Ballad", "Lament", "Harbour tag", "Ballad"];
 
-fn titles() -> Vec<String> {
-    TITLES.map(String::from).to_vec()
+/// An evening with songs of these titles, all alike.
+fn stage_with(name: &str, titles: &[&str]) -> Stage {
+    let songs: Vec<String> = titles
+        .iter()
+        .map(|title| format!("  - {title}\n"))
+        .collect();
+    let mut book: Vec<&str> = titles.to_vec();
+    book.sort_unstable();
+    book.dedup();
+    let book: Vec<String> = book
+        .iter()
+        .map(|title| format!("  {title}: {{}}\n"))
+        .collect();
+    let text = format!(
+        "stage: {name}\nsongs:\n{}set:\n{}",
+        book.concat(),
+        songs.concat()
+    );
+    stage_of(&text)
+}
+
+fn stage_of(text: &str) -> Stage {
+    let stage = Stage::parse(Path::new("/evening/stage.yaml"), text);
+    stage.unwrap_or_else(|complaints| panic!("{complaints:?}"))
 }
 
 fn evening() -> Evening {
@@ -41,6 +67,10 @@ fn state(number: u64) -> State {
         nudge: Interval::from_microcents(number as i64 * 1_000),
         transposed: (number.is_multiple_of(3)).then_some((number % 7) as i8 - 3),
         plain: number % 2 == 1,
+        tonic: (number % 5 == 4).then(|| (62, 69, Pitch::from_microcents(number as i64))),
+        by_hand: (0..number % 4)
+            .map(|n| format!("inflect B4 +{n} c"))
+            .collect(),
     }
 }
 

@@ -82,11 +82,12 @@ impl Desk {
 
     fn remember(&mut self) {
         // Until the score has the set that we have, its song's place means nothing here.
-        if self.edits.reload.plans_in_force() != Some(self.front.plans) {
+        let plans = self.edits.reload.plans_in_force();
+        let Some((told, _)) = self.front.told.filter(|(_, taken)| plans == Some(*taken)) else {
             return;
-        }
+        };
         let status = &mut self.front.status;
-        let state = State::of(&status.report, &status.titles);
+        let state = State::of(status.report.song, &told, &status.titles, &status.places);
         if self.memory.look(self.edits.now(), &status.stage, state) {
             status.resumed = None;
         }

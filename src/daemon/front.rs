@@ -6,7 +6,7 @@ use super::socket::{ClientId, Form, Request, Socket};
 use super::status::Status;
 use super::systemd::Systemd;
 use super::tell::outcome;
-use crate::engine::{Ask, Command, Report};
+use crate::engine::{Ask, Command, Report, Told};
 use crate::ports::clock::Clock;
 use crate::ports::system::{Bell, readable, wait};
 use crate::stage::Stage;
@@ -40,8 +40,8 @@ pub struct Front {
     stopping: bool,
     pulses: Consumer<Pulse>,
     obeyed: u64,
-    /// Plans that the score had taken over by then.
-    pub plans: u64,
+    /// As of the last pulse: what was told, and the plans that the score had taken over.
+    pub told: Option<(Told, u64)>,
     /// A pulse has come since the supervisor was last told that we live.
     alive: bool,
     waiting: Vec<Waiting>,
@@ -80,7 +80,7 @@ impl Front {
             stopping: false,
             pulses,
             obeyed: 0,
-            plans: 0,
+            told: None,
             alive: false,
             waiting: Vec::new(),
             clock,
@@ -181,7 +181,8 @@ impl Front {
     fn take_pulses(&mut self) {
         while let Ok(pulse) = self.pulses.pop() {
             self.status.report = pulse.report;
-            (self.obeyed, self.plans) = (pulse.obeyed, pulse.plans);
+            self.obeyed = pulse.obeyed;
+            self.told = Some((pulse.told, pulse.plans));
             (self.status.waited, self.status.dropped) = (pulse.waited, pulse.dropped);
             self.alive = true;
         }

@@ -11,6 +11,9 @@ pub mod record;
 use super::state::number;
 use crate::engine::Command;
 use crate::limits::REMEMBERED_BYTES_MAX;
+use crate::stage::Stage;
+use crate::stage::expression::Mistake;
+use crate::stage::words::Words;
 use crate::time::Time;
 use disk::{Disk, Folder, forget, replace};
 use pace::Pace;
@@ -71,8 +74,8 @@ impl Memory {
     }
 
     /// What the last run of this evening left behind.
-    pub fn resume(&mut self, stage: &str, titles: &[String]) -> Resumed {
-        self.of.stage = stage.to_string();
+    pub fn resume(&mut self, stage: &Stage) -> Resumed {
+        self.of.stage.clone_from(&stage.name);
         let Some(folder) = &self.folder else {
             return Resumed::default();
         };
@@ -91,13 +94,14 @@ impl Memory {
             return self.not_resumed(&other);
         }
         self.pace = Pace::new(Some(bytes));
-        match state.found_in(titles) {
+        let titles: Vec<&str> = stage.set.iter().map(|song| song.title.as_str()).collect();
+        match state.found_in(&titles) {
             Some(state) if state.is_fresh() => Resumed::default(),
             Some(state) => {
                 let said = format!("resumed: {}, from before the restart", state.words());
                 info!("{said}");
                 Resumed {
-                    commands: state.commands(),
+                    commands: self.commands(&state, stage),
                     said: Some(said),
                 }
             }
@@ -106,6 +110,18 @@ impl Memory {
                 self.not_resumed(&text)
             }
         }
+    }
+
+    fn commands(&self, state: &State, stage: &Stage) -> Vec<Command> {
+        let mut commands = state.commands();
+        for words in &state.by_hand {
+            let command = Words::parse(words).and_then(|words| stage.resolve(&words));
+            match command {
+                Ok(command) => commands.push(command),
+                Err(Mistake { wrong, .. }) => warn!("not resumed: `{words}`, for {wrong}"),
+            }
+        }
+        commands
     }
 
     fn not_resumed(&self, why: &str) -> Resumed {

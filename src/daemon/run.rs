@@ -141,8 +141,7 @@ fn resume(
         memory.forget();
         return (memory, None);
     }
-    let titles: Vec<String> = stage.set.iter().map(|song| song.title.clone()).collect();
-    let Resumed { commands, said } = memory.resume(&stage.name, &titles);
+    let Resumed { commands, said } = memory.resume(stage);
     for command in commands {
         engine.handle_input(now, Input::Command(command));
         // No synth is there yet, so there is nothing that would have to be sent.

@@ -42,6 +42,7 @@ pub fn outcome(command: Command, before: &Report, now: &Status) -> Result<String
         | Command::BlackKey(_)
         | Command::Tonic { .. }
         | Command::TonicNextKey(_)
+        | Command::TonicAt(_)
         | Command::TonicHome
         | Command::Root(_)
         | Command::RootNextKey
@@ -71,16 +72,17 @@ fn by_hand(command: Command, before: &Report, now: &Status) -> Result<String, St
     }
     let song = now.song_shown();
     Err(match command {
-        Command::Tonic { .. } | Command::TonicNextKey(_) | Command::TonicHome => {
-            match now.report.tonic {
-                None => format!(
-                    "the tuning goes by letter: its keys keep their pitches whatever the tonic; {song}"
-                ),
-                Some(_) => format!(
-                    "the tonic cannot go there: a key that is needed for it is silent; {song}"
-                ),
+        Command::Tonic { .. }
+        | Command::TonicNextKey(_)
+        | Command::TonicAt(_)
+        | Command::TonicHome => match now.report.tonic {
+            None => format!(
+                "the tuning goes by letter: its keys keep their pitches whatever the tonic; {song}"
+            ),
+            Some(_) => {
+                format!("the tonic cannot go there: a key that is needed for it is silent; {song}")
             }
-        }
+        },
         Command::BlackKey(name) => {
             format!("no black key may be {name} or something else in {song}")
         }

@@ -76,6 +76,7 @@ fn begins_a_song(command: Command) -> bool {
         | Command::BlackKey(_)
         | Command::Tonic { .. }
         | Command::TonicNextKey(_)
+        | Command::TonicAt(_)
         | Command::TonicHome
         | Command::Root(_)
         | Command::RootNextKey

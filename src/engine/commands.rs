@@ -73,7 +73,8 @@ impl Engine {
             | Command::BlackKey(_)
             | Command::Root(_)
             | Command::Sevenths(_)
-            | Command::Tonic { .. } => self.latch_told(now, command),
+            | Command::Tonic { .. }
+            | Command::TonicAt(_) => self.latch_told(now, command),
             Command::TonicHome => {
                 self.next_key = None;
                 self.latch_told(now, command);

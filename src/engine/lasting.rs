@@ -106,6 +106,7 @@ impl Lasting {
             Command::Tonic { to, by } => {
                 return self.move_tonic(Scale::tonic_key(to), by, playing);
             }
+            Command::TonicAt(tonic) => return self.put_tonic(tonic, playing),
             Command::TonicHome => {
                 self.tonic = None;
                 return playing.by_hand.turning.is_some();
@@ -141,12 +142,8 @@ impl Lasting {
             InflectTo::By(further) => return self.trim(key, further),
             InflectTo::Place(place) => place,
         };
-        if let Place::Named(name) = place {
-            let tonic = self.tonic_key(&playing.by_hand).pitch_class();
-            let keys_above = (key.pitch_class() + 12 - tonic) % 12;
-            if playing.by_hand.other_place(keys_above, name).is_none() {
-                return false;
-            }
+        if self.sounded(key.pitch_class(), place, &playing.by_hand) != place {
+            return false;
         }
         match key {
             Inflected::Everywhere(pitch_class) => self.place(pitch_class, place),
@@ -158,6 +155,17 @@ impl Lasting {
             }
         }
         true
+    }
+
+    /// A place, or home where the key has none of that name under the tonic.
+    pub fn sounded(&self, pitch_class: u8, place: Place, song: &ByHand) -> Place {
+        let Place::Named(name) = place else {
+            return place;
+        };
+        let tonic = self.tonic_key(song).pitch_class();
+        let keys_above = (pitch_class + 12 - tonic) % 12;
+        let known = song.other_place(keys_above, name);
+        known.map_or(Place::Home, |_| place)
     }
 
     /// Puts all keys of a pitch class there, those that went alone too.
@@ -185,6 +193,16 @@ impl Lasting {
             *trim += further;
         }
         near
+    }
+
+    /// As `move_tonic`, to where it once was.
+    fn put_tonic(&mut self, tonic: Tonic, playing: &Playing) -> bool {
+        let turning = playing.by_hand.turning.as_ref();
+        let sounds = turning.and_then(|turning| turning.pitch(tonic, tonic.key));
+        if sounds.is_some() {
+            self.tonic = Some(tonic);
+        }
+        sounds.is_some()
     }
 
     /// Tells whether the tuning has a tonic, and it can be put there.

@@ -30,11 +30,13 @@ pub mod plan;
 mod setup;
 mod songs;
 mod synth;
+mod told;
 pub mod traffic;
 mod voices;
 mod wire;
 
 pub use plan::{KeyboardId, PartId, Plan, SynthId};
+pub use told::{Told, ToldTonic};
 pub use traffic::{
     Ask, Command, Counters, InflectTo, Inflected, Input, Link, Nudge, Onset, Output, Place, Report,
     RootTo, TonicBy, Weight,
@@ -275,7 +277,6 @@ impl Engine {
             armed: self.armed.len() as u8,
             nudge: self.nudge,
             transpose_keys: self.transpose_keys(),
-            transposed: self.transposed,
             plain: self.plain,
             root_held: !matches!(self.in_force.root, RootTo::Free),
             sevenths: self.in_force.sevenths,

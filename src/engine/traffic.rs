@@ -4,7 +4,8 @@ use super::by_hand::NameId;
 use super::plan::{KeyboardId, PartId, SynthId};
 use crate::intonation::{Sevenths, Standing};
 use crate::pitch::{Interval, Pitch};
-use crate::tuning::{Key, Letter};
+use crate::tuning::{Key, Letter, Tonic};
+use std::fmt;
 
 /// One thing that happened.
 #[derive(Clone, Copy, Debug)]
@@ -80,6 +81,8 @@ pub enum Command {
     },
     /// The same for the next key that goes down.
     TonicNextKey(TonicBy),
+    /// The tonic exactly where it once was: what is told after a restart.
+    TonicAt(Tonic),
     /// Back to the song's own.
     TonicHome,
     /// The harmony keeps its root, or finds it again by itself.
@@ -131,6 +134,15 @@ pub enum Inflected {
     /// A pitch class, in all octaves.
     Everywhere(u8),
     Alone(Key),
+}
+
+impl fmt::Display for Inflected {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        match self {
+            Inflected::Everywhere(pitch_class) => Letter::usual(*pitch_class).fmt(f),
+            Inflected::Alone(key) => key.fmt(f),
+        }
+    }
 }
 
 impl Inflected {
@@ -272,8 +284,6 @@ pub struct Report {
     pub nudge: Interval,
     /// The transposition now in force, the song's own or another. A part's comes on top.
     pub transpose_keys: i8,
-    /// The one set in place of the song's own.
-    pub transposed: Option<i8>,
     /// Twelve-equal, whatever the song says.
     pub plain: bool,
     /// The key of the tonic in force; `None` where the tuning goes by letter.

@@ -17,6 +17,7 @@ use super::shapes::{CORE_MAX, Shapes};
 use crate::limits::KEYS;
 use crate::pitch::Interval;
 use crate::time::{Span, Time};
+use std::fmt;
 
 /// A note under a pedal counts half after so long, and after twice that is no longer part of the chord.
 const FADE: Span = Span::from_millis(700);
@@ -83,6 +84,15 @@ pub enum Sevenths {
     Harmonic,
     /// 5-limit.
     Plain,
+}
+
+impl fmt::Display for Sevenths {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        f.write_str(match self {
+            Sevenths::Harmonic => "harmonic",
+            Sevenths::Plain => "plain",
+        })
+    }
 }
 
 /// How a context stands, for displays.

@@ -1,13 +1,12 @@
 //! What stands in the file, and what is made of one that is damaged, foreign, of another evening or out of date.
 
-use super::{TITLES, evening, only_file, state, titles};
+use super::{TITLES, evening, only_file, stage_of, stage_with, state};
 use crate::control::stand::Folder;
 use std::path::Path;
 use trued::daemon::remember::record::{Evening, Found, State, decode, encode};
 use trued::daemon::remember::{Memory, Resumed};
 use trued::engine::{Command, Engine, Input, Nudge};
 use trued::pitch::Interval;
-use trued::stage::Stage;
 use trued::time::Time;
 
 fn lament() -> State {
@@ -15,8 +14,7 @@ fn lament() -> State {
         place: 2,
         title: "Lament".to_string(),
         nudge: Interval::from_cents(13),
-        transposed: None,
-        plain: false,
+        ..State::default()
     }
 }
 
@@ -89,6 +87,10 @@ fn unknown_fields_are_passed_over_and_missing_ones_are_as_a_song_begins() {
         r#""title": "Lament", "pitch_microcents": "13""#,
         r#""title": "Lament", "transpose_keys": 128"#,
         r#""title": "Lament", "plain": 1"#,
+        r#""title": "Lament", "by_hand": "plain""#,
+        r#""title": "Lament", "by_hand": [1]"#,
+        r#""title": "Lament", "tonic": 62"#,
+        r#""title": "Lament", "tonic": {"key": 300, "anchor": 69, "anchor_microcents": 0}"#,
         r#""title": "Lament"} {"#,
     ] {
         assert_eq!(read(wrong), Found::Damaged, "{wrong}");
@@ -105,8 +107,7 @@ fn the_song_is_found_where_it_is_now() {
             title: title.to_string(),
             ..lament()
         };
-        let set: Vec<String> = set.iter().map(|title| title.to_string()).collect();
-        let found = state.found_in(&set)?;
+        let found = state.found_in(set)?;
         assert_eq!(found.nudge, state.nudge);
         Some(found.place)
     };
@@ -128,7 +129,7 @@ set:
   - {song: Ballad, tuning: equal-12, transpose: 3}
   - {song: Lament, tuning: equal-12}
 ";
-    let stage = Stage::parse(Path::new("stage.yaml"), text).unwrap_or_else(|all| panic!("{all:?}"));
+    let stage = stage_of(text);
     let titles: Vec<String> = stage.set.iter().map(|song| song.title.clone()).collect();
     for transposed in [None, Some(0), Some(3), Some(-2)] {
         for (place, title) in titles.iter().enumerate() {
@@ -139,14 +140,17 @@ set:
                     nudge: Interval::from_microcents(nudge),
                     transposed,
                     plain,
+                    ..State::default()
                 };
                 let mut engine = Engine::new(stage.plan());
                 for command in wanted.commands() {
                     engine.handle_input(Time::START, Input::Command(command));
                 }
-                assert_eq!(State::of(&engine.report(), &titles), wanted);
+                let place = engine.report().song;
+                assert_eq!(State::of(place, &engine.told(), &titles, &[]), wanted);
                 engine.handle_input(Time::START, Input::Command(Command::Fresh));
-                let fresh = State::of(&engine.report(), &titles);
+                let fresh = State::of(0, &engine.told(), &titles, &[]);
+                assert_eq!(engine.report().song, 0);
                 assert!(fresh.is_fresh() && fresh.commands().is_empty());
                 assert_eq!(engine.report().counters.ignored, 0);
             }
@@ -157,13 +161,14 @@ set:
 /// A daemon's memory for its whole life, without the daemon.
 fn remember(folder: &Path, daemon: &str, of: &Evening, state: &State) {
     let mut memory = Memory::new(Path::new(&of.file), daemon, Some(folder));
-    memory.resume(&of.stage, &titles());
+    memory.resume(&stage_with(&of.stage, &TITLES));
     memory.look(Time::START, &of.stage, state.clone());
     memory.finish(Time::START);
 }
 
-fn resumed(folder: &Path, daemon: &str, of: &Evening, set: &[String]) -> Resumed {
-    Memory::new(Path::new(&of.file), daemon, Some(folder)).resume(&of.stage, set)
+fn resumed(folder: &Path, daemon: &str, of: &Evening, set: &[&str]) -> Resumed {
+    let mut memory = Memory::new(Path::new(&of.file), daemon, Some(folder));
+    memory.resume(&stage_with(&of.stage, set))
 }
 
 #[test]
@@ -171,7 +176,7 @@ fn it_is_announced_and_is_of_one_stage_file_one_stage_and_one_daemon_only() {
     let folder = Folder::new("remembered-of");
     let state = folder.at("deep/er/trued");
     remember(&state, "trued", &evening(), &lament());
-    let again = resumed(&state, "trued", &evening(), &titles());
+    let again = resumed(&state, "trued", &evening(), &TITLES);
     let said = "resumed: song 3 \"Lament\", pitch +13 c, from before the restart";
     assert_eq!(again.said.as_deref(), Some(said));
     let nudge = Command::Pitch {
@@ -181,19 +186,18 @@ fn it_is_announced_and_is_of_one_stage_file_one_stage_and_one_daemon_only() {
     assert_eq!(again.commands, [Command::Song(2), nudge]);
 
     let nothing = Resumed::default();
-    assert_eq!(resumed(&state, "left", &evening(), &titles()), nothing);
+    assert_eq!(resumed(&state, "left", &evening(), &TITLES), nothing);
     let elsewhere = Evening {
         file: "/morning/stage.yaml".to_string(),
         ..evening()
     };
-    assert_eq!(resumed(&state, "trued", &elsewhere, &titles()), nothing);
+    assert_eq!(resumed(&state, "trued", &elsewhere, &TITLES), nothing);
     let refused = |stage: &str, set: &[&str], why: &str| {
-        let set: Vec<String> = set.iter().map(|title| title.to_string()).collect();
         let of = Evening {
             stage: stage.to_string(),
             ..evening()
         };
-        let resumed = resumed(&state, "trued", &of, &set);
+        let resumed = resumed(&state, "trued", &of, set);
         let said = resumed.said.unwrap_or_default();
         assert!(
             said.starts_with("not resumed: what is remembered in "),
@@ -213,7 +217,7 @@ fn damage_is_told_once_and_mended_by_the_next_writing() {
     let folder = Folder::new("remembered-damaged");
     let state = folder.at("state");
     let said = |said: &str| {
-        resumed(&state, "trued", &evening(), &titles())
+        resumed(&state, "trued", &evening(), &TITLES)
             .said
             .is_some_and(|text| text.ends_with(said))
     };
@@ -233,7 +237,7 @@ fn damage_is_told_once_and_mended_by_the_next_writing() {
     std::fs::remove_file(&file).expect("removed");
     std::fs::create_dir(&file).expect("a folder of that name");
     assert!(
-        resumed(&state, "trued", &evening(), &titles())
+        resumed(&state, "trued", &evening(), &TITLES)
             .said
             .is_some_and(|text| text.contains(" cannot be read ("))
     );
@@ -246,7 +250,7 @@ fn a_folder_that_cannot_be_written_harms_nothing() {
     // A file stands where the folder should be: nobody, not even root, can write there.
     std::fs::write(&state, "").expect("written");
     let mut memory = Memory::new(Path::new("/evening/stage.yaml"), "trued", Some(&state));
-    memory.resume("Evening", &titles());
+    memory.resume(&stage_with("Evening", &TITLES));
     for second in 0..100 {
         memory.look(
             Time::from_millis(second * 1_000),
@@ -259,7 +263,10 @@ fn a_folder_that_cannot_be_written_harms_nothing() {
     assert_eq!(std::fs::read(&state).expect("still there"), b"");
     // Nor is a place for it needed.
     let mut memory = Memory::new(Path::new("/evening/stage.yaml"), "trued", None);
-    assert_eq!(memory.resume("Evening", &titles()), Resumed::default());
+    assert_eq!(
+        memory.resume(&stage_with("Evening", &TITLES)),
+        Resumed::default()
+    );
     assert!(!memory.look(Time::START, "Evening", lament()));
     assert!(memory.look(Time::START, "Evening", super::state(1)));
     memory.finish(Time::START);

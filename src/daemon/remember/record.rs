@@ -7,8 +7,9 @@
 
 use crate::daemon::state::fnv;
 use crate::daemon::status::cents;
-use crate::engine::{Command, Nudge, Report};
-use crate::pitch::Interval;
+use crate::engine::plan::NameId;
+use crate::engine::{Command, Nudge, Told, ToldTonic};
+use crate::pitch::{Interval, Pitch};
 use serde_json::{Value, json};
 
 const HEAD: &str = "trued remembers here how things stood: version ";
@@ -34,6 +35,10 @@ pub struct State {
     /// Set in place of the song's own.
     pub transposed: Option<i8>,
     pub plain: bool,
+    /// The tonic, where its name would not put it: its key, another key, and the pitch of that.
+    pub tonic: Option<(u8, u8, Pitch)>,
+    /// The rest that was told of the song, in the words of `tell`, to be told again in this order.
+    pub by_hand: Vec<String>,
 }
 
 /// What became of a record.
@@ -46,14 +51,41 @@ pub enum Found {
 }
 
 impl State {
-    pub fn of(report: &Report, titles: &[String]) -> State {
-        let title = titles.get(usize::from(report.song));
+    /// `names`: what the places of keys are called.
+    pub fn of(place: u16, told: &Told, titles: &[String], names: &[(NameId, String)]) -> State {
+        let title = titles.get(usize::from(place));
+        let mut by_hand = Vec::new();
+        let mut tonic = None;
+        match told.tonic {
+            Some(ToldTonic::Named(name)) => by_hand.push(format!("tonic {name}")),
+            Some(ToldTonic::At(at)) => {
+                tonic = Some((at.key.number(), at.anchor.number(), at.anchor_pitch));
+            }
+            None => {}
+        }
+        let name_of = |id: NameId| {
+            let named = names.iter().find(|(known, _)| *known == id);
+            named.map(|(_, name)| name.as_str())
+        };
+        let places = told.places().filter_map(|(key, place)| {
+            let place = place.map_or(Some("home"), name_of)?;
+            Some(format!("inflect {key} {place}"))
+        });
+        by_hand.extend(places);
+        by_hand.extend(
+            told.trims()
+                .map(|(key, by)| format!("inflect {key} {}", in_cents(by))),
+        );
+        by_hand.extend(told.second_names().map(|name| format!("black-key {name}")));
+        by_hand.extend(told.sevenths.map(|which| format!("sevenths {which}")));
         State {
-            place: report.song,
+            place,
             title: title.cloned().unwrap_or_default(),
-            nudge: report.nudge,
-            transposed: report.transposed,
-            plain: report.plain,
+            nudge: told.nudge,
+            transposed: told.transposed,
+            plain: told.plain,
+            tonic,
+            by_hand,
         }
     }
 
@@ -67,7 +99,7 @@ impl State {
     }
 
     /// The same in a set that may have changed: the song is where it was, else at the nearest place with its title.
-    pub fn found_in(&self, titles: &[String]) -> Option<State> {
+    pub fn found_in(&self, titles: &[&str]) -> Option<State> {
         let places = (0u16..)
             .zip(titles)
             .filter(|(_, title)| **title == self.title);
@@ -78,7 +110,7 @@ impl State {
         })
     }
 
-    /// What brings a fresh engine here.
+    /// What brings a fresh engine here, but for what is told `by_hand` after it.
     pub fn commands(&self) -> Vec<Command> {
         let mut out = Vec::new();
         if self.place != 0 {
@@ -96,6 +128,8 @@ impl State {
         if self.plain {
             out.push(Command::Plain);
         }
+        let tonic = self.tonic;
+        out.extend(tonic.and_then(|(key, anchor, pitch)| Command::tonic_at(key, anchor, pitch)));
         out
     }
 
@@ -111,6 +145,12 @@ impl State {
         if self.plain {
             out.push("plain".to_string());
         }
+        for command in self.commands() {
+            if let Command::TonicAt(tonic) = command {
+                out.push(format!("tonic {}", tonic.key));
+            }
+        }
+        out.extend(self.by_hand.iter().cloned());
         out.join(", ")
     }
 
@@ -123,6 +163,10 @@ impl State {
             "pitch_microcents": self.nudge.microcents(),
             "transpose_keys": self.transposed,
             "plain": self.plain,
+            "tonic": self.tonic.map(|(key, anchor, pitch)| json!({
+                "key": key, "anchor": anchor, "anchor_microcents": pitch.microcents(),
+            })),
+            "by_hand": self.by_hand,
         })
     }
 
@@ -133,6 +177,18 @@ impl State {
             Some(keys) => Some(i8::try_from(keys.as_i64()?).ok()?),
             None => None,
         };
+        let tonic = match get("tonic") {
+            Some(tonic) => Some(read_tonic(tonic)?),
+            None => None,
+        };
+        let by_hand = match get("by_hand") {
+            Some(told) => {
+                let told = told.as_array()?.iter();
+                let words = told.map(|words| Some(words.as_str()?.to_string()));
+                words.collect::<Option<_>>()?
+            }
+            None => Vec::new(),
+        };
         let nudge = get("pitch_microcents").map_or(Some(0), Value::as_i64)?;
         let song = get("song").map_or(Some(1), Value::as_u64)?;
         Some(State {
@@ -141,8 +197,26 @@ impl State {
             nudge: Interval::from_microcents(nudge),
             transposed,
             plain: get("plain").map_or(Some(false), Value::as_bool)?,
+            tonic,
+            by_hand,
         })
     }
+}
+
+fn read_tonic(tonic: &Value) -> Option<(u8, u8, Pitch)> {
+    let key = |name: &str| u8::try_from(tonic.get(name)?.as_u64()?).ok();
+    let pitch = Pitch::from_microcents(tonic.get("anchor_microcents")?.as_i64()?);
+    Some((key("key")?, key("anchor")?, pitch))
+}
+
+/// To the last figure.
+fn in_cents(interval: Interval) -> String {
+    let sign = if interval < Interval::ZERO { '-' } else { '+' };
+    let microcents = interval.abs().microcents();
+    let (cents, rest) = (microcents / 1_000_000, microcents % 1_000_000);
+    let figures = format!("{cents}.{rest:06}");
+    let figures = figures.trim_end_matches('0').trim_end_matches('.');
+    format!("{sign}{figures} c")
 }
 
 pub fn encode(of: &Evening, state: &State) -> Vec<u8> {

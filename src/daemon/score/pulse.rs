@@ -1,7 +1,7 @@
 //! What the desk hears after each cycle.
 
 use super::Score;
-use crate::engine::Report;
+use crate::engine::{Report, Told};
 use crate::ports::Outlet;
 use crate::time::{Span, Time};
 use rtrb::Producer;
@@ -15,6 +15,7 @@ const PULSE_AGAIN: Span = Span::from_millis(20);
 #[derive(Clone, Copy, Debug)]
 pub struct Pulse {
     pub report: Report,
+    pub told: Told,
     /// Commands followed since the beginning.
     pub obeyed: u64,
     /// Plans taken over since the beginning: places in the set are by the last of them.
@@ -53,6 +54,7 @@ impl Score {
         pulses.dropped_before = dropped;
         let pulse = Pulse {
             report: self.engine.report(),
+            told: self.engine.told(),
             obeyed: self.obeyed,
             plans: self.plans_taken,
             waited: pulses.waited,
