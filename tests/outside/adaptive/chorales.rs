@@ -2,7 +2,7 @@
 
 use super::corpus::{Manner, Piece, Take, chorales};
 use super::peers::peer;
-use super::played::{CHANNEL_BEND, hear, plan};
+use super::played::{CHANNEL_BEND, follows_chords, hear, plan};
 use super::score::{Scores, Table};
 use super::table;
 use std::env;
@@ -29,7 +29,7 @@ pub fn score(
             planned = Some((song.clone(), plan(&song, synth)));
         }
         let (_, plan) = planned.as_ref().expect("just planned");
-        scores.add(&hear(plan, piece.touches(manner)));
+        scores.add(&hear(plan, &piece.music(manner)));
     }
     scores
 }
@@ -114,6 +114,38 @@ pub fn assert_nothing_lost(scores: &Scores) {
         lost, [0; 4],
         "notes missing, extra, stuck, or ended at a wrong time"
     );
+}
+
+#[test]
+fn chord_root_keeps_its_promises_on_chorales() {
+    if !follows_chords() {
+        return println!("chord-root is not played yet");
+    }
+    let pieces = chorales(Take::Test);
+    for manner in MANNERS {
+        let song = |_: &Piece| "tuning: equal-12, intonation: chord-root".to_string();
+        let scores = score(&pieces, manner, CHANNEL_BEND, song);
+        assert_nothing_lost(&scores);
+        for (what, ours, most) in [
+            ("V5c mean", scores.purity(Table::V5c).mean, 0.35),
+            ("V5a mean", scores.purity(Table::V5a).mean, 0.95),
+            (
+                "impure triads, %",
+                100.0 - scores.pure_triads_percent(),
+                3.0,
+            ),
+            ("late motion, 95 %", scores.late().p95, 2.8),
+            ("late motion", scores.late().max, 6.05),
+            ("motion in 20 ms", scores.fastest(), 1.2),
+            ("from rest over 8 quarters", scores.rest(), 12.0),
+            ("drift", scores.drift_peak(), 14.0),
+        ] {
+            assert!(
+                ours <= most,
+                "{manner:?}: {what} is {ours}, at most {most} is promised"
+            );
+        }
+    }
 }
 
 /// For the eye: `TAKE` is `test` or `dev`, `INTONATION` and `TUNING` are as in a stage file, `SYNTH` is `bend` or `mpe`.

@@ -1,6 +1,6 @@
 //! Chorales and analyses, read by `export.py` once and kept under `target/`.
 
-use super::keyboard::{QUARTER_S, Touch};
+use super::keyboard::{Music, QUARTER_S, Touch};
 use serde::Deserialize;
 use serde::de::DeserializeOwned;
 use std::path::{Path, PathBuf};
@@ -77,7 +77,7 @@ pub enum Manner {
 }
 
 impl Piece {
-    pub fn touches(&self, manner: Manner) -> Vec<Touch> {
+    pub fn music(&self, manner: Manner) -> Music {
         let touch = |note: &Note| {
             let [on_s, off_s] = match manner {
                 Manner::Together => [note.on, note.off].map(|at| at.quarters() * QUARTER_S),
@@ -89,7 +89,10 @@ impl Piece {
                 key: note.key,
             }
         };
-        self.notes.iter().map(touch).collect()
+        Music {
+            touches: self.notes.iter().map(touch).collect(),
+            pedal_s: Vec::new(),
+        }
     }
 }
 

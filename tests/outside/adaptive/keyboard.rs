@@ -22,17 +22,29 @@ pub struct Touch {
     pub key: u8,
 }
 
+/// What is to be played.
+#[derive(Clone, Debug, Default)]
+pub struct Music {
+    pub touches: Vec<Touch>,
+    /// The damper, down or up, in order of time.
+    pub pedal_s: Vec<(f64, bool)>,
+}
+
 /// A note as one keyboard sends it; its own velocity tells it from those around it.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub struct Stroke {
     pub on_ns: u64,
+    /// The key is let go.
     pub off_ns: u64,
+    /// Neither key nor pedal holds it any more.
+    pub end_ns: u64,
     pub key: u8,
     pub velocity: u8,
 }
 
 /// What one keyboard makes of it: a unison of two voices is one key, struck again if the second comes later.
-pub fn one_keyboard(mut touches: Vec<Touch>) -> Vec<Stroke> {
+pub fn one_keyboard(music: &Music) -> Vec<Stroke> {
+    let mut touches = music.touches.clone();
     sort(&mut touches);
     let mut merged: Vec<Touch> = Vec::new();
     let mut last_of_key = [None; 128];
@@ -55,10 +67,21 @@ pub fn one_keyboard(mut touches: Vec<Touch>) -> Vec<Stroke> {
     let stroke = |(place, touch): (usize, &Touch)| Stroke {
         on_ns: tick(touch.on_s) * TICK_NS,
         off_ns: tick(touch.off_s) * TICK_NS,
+        end_ns: end_tick(tick(touch.off_s), &music.pedal_s) * TICK_NS,
         key: touch.key,
         velocity: 1 + (place * 37 % 127) as u8,
     };
     merged.iter().enumerate().map(stroke).collect()
+}
+
+/// A release stands before a pedal of the same moment, so only a pedal from before it holds the note.
+fn end_tick(off: u64, pedal_s: &[(f64, bool)]) -> u64 {
+    let pedals = pedal_s.iter().map(|(at_s, down)| (tick(*at_s), *down));
+    let (before, after): (Vec<_>, Vec<_>) = pedals.partition(|(at, _)| *at < off);
+    match (before.last(), after.first()) {
+        (Some((_, true)), Some((lifted, _))) => *lifted,
+        _ => off,
+    }
 }
 
 fn sort(touches: &mut [Touch]) {
@@ -70,20 +93,22 @@ fn tick(at_s: f64) -> u64 {
     (at_s / QUARTER_S * TICKS_PER_QUARTER as f64).round_ties_even() as u64
 }
 
-/// The MIDI file of it. Releases stand before strokes of the same moment.
-pub fn midi(strokes: &[Stroke]) -> Vec<u8> {
-    let mut events: Vec<(u64, bool, Vec<u8>)> = Vec::new();
+/// The MIDI file of it. Of one moment, releases stand first and strokes last.
+pub fn midi(strokes: &[Stroke], pedal_s: &[(f64, bool)]) -> Vec<u8> {
+    let mut events: Vec<(u64, u8, Vec<u8>)> = Vec::new();
     for stroke in strokes {
         let (key, velocity) = (stroke.key, stroke.velocity);
-        events.push((stroke.on_ns / TICK_NS, true, vec![0x90, key, velocity]));
-        events.push((stroke.off_ns / TICK_NS, false, vec![0x80, key, 64]));
+        events.push((stroke.on_ns / TICK_NS, 2, vec![0x90, key, velocity]));
+        events.push((stroke.off_ns / TICK_NS, 0, vec![0x80, key, 64]));
     }
-    events.sort_by_key(|(tick, on, _)| (*tick, *on));
+    for (at_s, down) in pedal_s {
+        let value = if *down { 127 } else { 0 };
+        events.push((tick(*at_s), 1, vec![0xB0, 64, value]));
+    }
+    events.sort_by_key(|(tick, order, _)| (*tick, *order));
     let end = events.last().map_or(0, |(tick, ..)| *tick);
-    let sent: Vec<(u64, Vec<u8>)> = events
-        .into_iter()
-        .map(|(tick, _, bytes)| (tick, bytes))
-        .collect();
+    let sent = events.into_iter().map(|(tick, _, bytes)| (tick, bytes));
+    let sent: Vec<(u64, Vec<u8>)> = sent.collect();
     midi_file::midi_file_at(TICKS_PER_QUARTER, QUARTER_US, &sent, end)
 }
 
@@ -95,7 +120,10 @@ fn unisons_are_one_key_and_later_ones_strike_again() {
         key: 60,
     };
     let spans = |touches: Vec<Touch>| {
-        let strokes = one_keyboard(touches);
+        let strokes = one_keyboard(&Music {
+            touches,
+            pedal_s: Vec::new(),
+        });
         let ms = |ns| ns / 1_000_000;
         let spans = strokes.iter().map(|s| (ms(s.on_ns), ms(s.off_ns)));
         spans.collect::<Vec<_>>()
@@ -109,4 +137,14 @@ fn unisons_are_one_key_and_later_ones_strike_again() {
         spans(vec![touch(0.0, 1.0), touch(1.0, 2.0)]),
         [(0, 1000), (1000, 2000)]
     );
+}
+
+#[test]
+fn a_pedal_holds_what_was_let_go_after_it_went_down() {
+    let pedal_s = [(1.0, true), (2.0, false), (2.1, true), (3.0, false)];
+    let quarters = |ticks: u64| ticks as f64 * QUARTER_S / TICKS_PER_QUARTER as f64;
+    for (off_s, end_s) in [(0.9, 0.9), (1.0, 1.0), (1.5, 2.0), (2.05, 2.05), (2.5, 3.0)] {
+        let end = quarters(end_tick(tick(off_s), &pedal_s));
+        assert!((end - end_s).abs() < 1e-9, "{off_s}: {end}");
+    }
 }

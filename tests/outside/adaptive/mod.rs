@@ -9,6 +9,8 @@
 
 /// The table: chorales in fixed tunings and by the method, beside what others make of them.
 mod chorales;
+/// Piano and jazz of our own.
+mod compose;
 /// Chorales and analyses, read by `export.py`.
 mod corpus;
 /// Voices put on one keyboard, and the keyboard's MIDI.
@@ -17,6 +19,8 @@ mod keyboard;
 mod peers;
 /// A keyboard through the engine, heard by the receiver.
 mod played;
+/// Chords that walk away.
+mod pump;
 /// Roots against analyses.
 mod roots;
 /// The metrics.
@@ -24,5 +28,7 @@ mod score;
 mod score_tests;
 /// The table as people read it.
 mod table;
+/// Piano and jazz beside the chorales.
+mod textures;
 
 pub use corpus::python;

@@ -1,6 +1,6 @@
 //! A keyboard through the engine, heard by the receiver: where every note really sounded.
 
-use super::keyboard::{self, Stroke, Touch};
+use super::keyboard::{self, Music, Stroke};
 use crate::support::receiver::{Kind, Note, Receiver};
 use std::path::Path;
 use std::time::Duration;
@@ -28,10 +28,11 @@ pub fn plan(song: &str, synth: &str) -> Plan {
     *stage.plan_offline()
 }
 
-/// A key that was struck, and where it sounded while it was down.
+/// A key that was struck, and where it sounded while key or pedal held it.
 #[derive(Clone, Debug)]
 pub struct Sounding {
     pub on_ns: u64,
+    /// Neither holds it any more, or the key was struck again.
     pub off_ns: u64,
     pub key: u8,
     /// Cents from twelve-equal at the onset and from each change on.
@@ -54,13 +55,13 @@ pub struct Hearing {
     /// Notes that no key asked for.
     pub extra: usize,
     pub stuck: usize,
-    /// Notes that ended before or after their key was let go.
+    /// Notes that ended before or after key and pedal were let go.
     pub cut: usize,
 }
 
-pub fn hear(plan: &Plan, touches: Vec<Touch>) -> Hearing {
-    let strokes = keyboard::one_keyboard(touches);
-    let file = keyboard::midi(&strokes);
+pub fn hear(plan: &Plan, music: &Music) -> Hearing {
+    let strokes = keyboard::one_keyboard(music);
+    let file = keyboard::midi(&strokes, &music.pedal_s);
     let score = Score::read(&file).expect("our own file is good");
     let recording = retune::play(Box::new(plan.clone()), &score, 0, 0);
     let kind = match plan.synths[0].dialect {
@@ -82,7 +83,7 @@ fn pair(strokes: &[Stroke], receiver: &Receiver) -> Hearing {
         stuck: receiver.stuck().len(),
         ..Hearing::default()
     };
-    for stroke in strokes {
+    for (at, stroke) in strokes.iter().enumerate() {
         let equal_cents = stroke.key as f64 * 100.0;
         let off_by = |note: &Note| (note.onset_cents() - equal_cents).abs();
         let on_ns = |note: &Note| note.on.as_nanos() as u64;
@@ -98,12 +99,13 @@ fn pair(strokes: &[Stroke], receiver: &Receiver) -> Hearing {
             continue;
         };
         let note = left.remove(place);
-        let off_ns = note.off.map_or(u64::MAX, |off| off.as_nanos() as u64);
-        hearing.cut += (off_ns.abs_diff(stroke.off_ns) > SLACK_NS) as usize;
+        let end_ns = note.end.map_or(u64::MAX, |end| end.as_nanos() as u64);
+        hearing.cut += (end_ns.abs_diff(stroke.end_ns) > SLACK_NS) as usize;
+        let again = strokes[at + 1..].iter().find(|s| s.key == stroke.key);
         let path = note.pitch.iter();
         hearing.soundings.push(Sounding {
             on_ns: stroke.on_ns,
-            off_ns: stroke.off_ns,
+            off_ns: again.map_or(stroke.end_ns, |again| stroke.end_ns.min(again.on_ns)),
             key: stroke.key,
             path: path
                 .map(|(at, cents)| (at.as_nanos() as u64, cents - equal_cents))
@@ -112,4 +114,10 @@ fn pair(strokes: &[Stroke], receiver: &Receiver) -> Hearing {
     }
     hearing.extra = left.len();
     hearing
+}
+
+/// Whether the engine plays `chord-root` yet.
+pub fn follows_chords() -> bool {
+    plan("tuning: equal-12, intonation: chord-root", CHANNEL_BEND).set[0].method
+        != trued::intonation::Method::Fixed
 }

@@ -86,6 +86,7 @@ pub struct Scores {
     drift_ends: Vec<f64>,
     drift_peak: f64,
     rest: f64,
+    farthest: f64,
     fastest: f64,
     pub missing: usize,
     pub extra: usize,
@@ -116,6 +117,7 @@ impl Scores {
             drift_ends: Vec::new(),
             drift_peak: 0.0,
             rest: 0.0,
+            farthest: 0.0,
             fastest: 0.0,
             missing: 0,
             extra: 0,
@@ -164,6 +166,10 @@ impl Scores {
     }
 
     fn add_chord(&mut self, sounding: &[(u8, f64)], seconds: f64) {
+        let sum: f64 = sounding.iter().map(|(_, cents)| cents).sum();
+        self.farthest = self
+            .farthest
+            .max((sum / sounding.len().max(1) as f64).abs());
         let mut worst: f64 = 0.0;
         for (place, (low, low_cents)) in sounding.iter().enumerate() {
             for (high, high_cents) in &sounding[place + 1..] {
@@ -278,6 +284,11 @@ impl Scores {
     /// The largest mean distance from twelve-equal over any 8 quarters.
     pub fn rest(&self) -> f64 {
         self.rest
+    }
+
+    /// The largest mean distance from twelve-equal of what sounds at any moment.
+    pub fn farthest(&self) -> f64 {
+        self.farthest
     }
 
     /// The largest motion within 20 ms of a note older than 50 ms.

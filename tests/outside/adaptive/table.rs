@@ -6,7 +6,7 @@ use super::score::{Scores, Spread, Table};
 
 const METHOD_WIDTH: usize = 40;
 /// Headings as in `peers.md`, where it has them, and widths.
-const COLUMNS: [(&str, usize); 10] = [
+const COLUMNS: [(&str, usize); 11] = [
     ("V5c", 17),
     ("V5a", 17),
     ("V7a", 17),
@@ -15,7 +15,8 @@ const COLUMNS: [(&str, usize); 10] = [
     ("settling", 11),
     ("late motion", 15),
     ("drift", 18),
-    ("rest", 7),
+    ("rest", 6),
+    ("farthest", 10),
     ("fastest", 7),
 ];
 
@@ -41,6 +42,7 @@ pub fn print_ours(name: &str, scores: &Scores) {
             scores.drift_peak()
         ),
         format!("{:.1}", scores.rest()),
+        format!("{:.1}", scores.farthest()),
         format!("{:.2}", scores.fastest()),
     ];
     print_row(name, &cells);
@@ -72,7 +74,7 @@ pub fn print_peer(peer: &Peer) {
     print_row(&format!("  {}", peer.method), &bare);
 }
 
-fn print_row(name: &str, cells: &[String; 10]) {
+fn print_row(name: &str, cells: &[String; 11]) {
     let name: String = name.chars().take(METHOD_WIDTH - 2).collect();
     let cells: Vec<String> = cells
         .iter()
