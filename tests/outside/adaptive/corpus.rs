@@ -89,10 +89,7 @@ impl Piece {
                 key: note.key,
             }
         };
-        Music {
-            touches: self.notes.iter().map(touch).collect(),
-            pedal_s: Vec::new(),
-        }
+        Music::without_pedal(self.notes.iter().map(touch).collect())
     }
 }
 

@@ -30,6 +30,15 @@ pub struct Music {
     pub pedal_s: Vec<(f64, bool)>,
 }
 
+impl Music {
+    pub fn without_pedal(touches: Vec<Touch>) -> Music {
+        Music {
+            touches,
+            pedal_s: Vec::new(),
+        }
+    }
+}
+
 /// A note as one keyboard sends it; its own velocity tells it from those around it.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub struct Stroke {
@@ -120,10 +129,7 @@ fn unisons_are_one_key_and_later_ones_strike_again() {
         key: 60,
     };
     let spans = |touches: Vec<Touch>| {
-        let strokes = one_keyboard(&Music {
-            touches,
-            pedal_s: Vec::new(),
-        });
+        let strokes = one_keyboard(&Music::without_pedal(touches));
         let ms = |ns| ns / 1_000_000;
         let spans = strokes.iter().map(|s| (ms(s.on_ns), ms(s.off_ns)));
         spans.collect::<Vec<_>>()

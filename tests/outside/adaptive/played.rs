@@ -32,6 +32,8 @@ pub fn plan(song: &str, synth: &str) -> Plan {
 #[derive(Clone, Debug)]
 pub struct Sounding {
     pub on_ns: u64,
+    /// The key is let go.
+    pub let_go_ns: u64,
     /// Neither holds it any more, or the key was struck again.
     pub off_ns: u64,
     pub key: u8,
@@ -105,6 +107,7 @@ fn pair(strokes: &[Stroke], receiver: &Receiver) -> Hearing {
         let path = note.pitch.iter();
         hearing.soundings.push(Sounding {
             on_ns: stroke.on_ns,
+            let_go_ns: stroke.off_ns,
             off_ns: again.map_or(stroke.end_ns, |again| stroke.end_ns.min(again.on_ns)),
             key: stroke.key,
             path: path

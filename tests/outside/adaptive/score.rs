@@ -303,14 +303,21 @@ fn is_triad(classes: u16) -> bool {
     (0..12).any(|by| triads.contains(&turned(by)))
 }
 
+/// Where what sounds stands from twelve-equal, on average over keys and time.
+pub fn mean_between(notes: &[Sounding], from_ns: u64, to_ns: u64) -> f64 {
+    Profile::of(notes, from_ns, to_ns).mean()
+}
+
 fn sorted(mut times: Vec<u64>) -> Vec<u64> {
     times.sort_unstable();
     times.dedup();
     times
 }
 
+/// Keys going down, keys let go, and the ends of what pedals held.
 fn edges(notes: &[Sounding]) -> Vec<u64> {
-    sorted(notes.iter().flat_map(|n| [n.on_ns, n.off_ns]).collect())
+    let edges = notes.iter().flat_map(|n| [n.on_ns, n.let_go_ns, n.off_ns]);
+    sorted(edges.collect())
 }
 
 /// Each time between two neighbours of `times`, and which notes sound all through it.

@@ -9,6 +9,7 @@ fn note(key: u8, on_ms: u64, off_ms: u64, path: &[(u64, f64)]) -> Sounding {
     Sounding {
         key,
         on_ns: on_ms * MS,
+        let_go_ns: off_ms * MS,
         off_ns: off_ms * MS,
         path: path.iter().map(|(ms, cents)| (ms * MS, *cents)).collect(),
     }

@@ -1,6 +1,6 @@
 //! Piano and jazz of our own beside the chorales, by the same metrics.
 
-use super::chorales::{assert_nothing_lost, score};
+use super::chorales::{asked, assert_nothing_lost, score};
 use super::compose::{jazz, piano};
 use super::corpus::{Manner, Take, chorales};
 use super::keyboard::Music;
@@ -24,7 +24,7 @@ fn scored(pieces: &[Music], intonation: &str) -> Scores {
 fn piano_and_jazz_beside_the_chorales() {
     let (piano, jazz, bach) = (piano(), jazz(), chorales(Take::Test));
     let mut played_s = 0.0;
-    for intonation in ["fixed", "chord-root"] {
+    for intonation in ["fixed", &asked("INTONATION", "chord-root")] {
         table::print_head(&format!("intonation {intonation}, performed"));
         let song = format!("tuning: equal-12, intonation: {intonation}");
         let chorales = score(&bach, Manner::Performed, CHANNEL_BEND, |_| song.clone());
