@@ -118,9 +118,3 @@ fn pair(strokes: &[Stroke], receiver: &Receiver) -> Hearing {
     hearing.extra = left.len();
     hearing
 }
-
-/// Whether the engine plays `chord-root` yet.
-pub fn follows_chords() -> bool {
-    plan("tuning: equal-12, intonation: chord-root", CHANNEL_BEND).set[0].method
-        != trued::intonation::Method::Fixed
-}

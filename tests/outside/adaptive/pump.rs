@@ -1,7 +1,7 @@
 //! Chords that walk away: the comma pump and Benedetti's pattern, fifty times over.
 
 use super::keyboard::{Music, QUARTER_S, Touch};
-use super::played::{CHANNEL_BEND, Hearing, follows_chords, hear, plan};
+use super::played::{CHANNEL_BEND, Hearing, hear, plan};
 use super::score::{Scores, Table, mean_between};
 
 /// I vi ii V in C. Tied, C and E are held into A minor, A into D minor, D into G, G into C.
@@ -100,9 +100,6 @@ fn farthest_chord(hearing: &Hearing) -> f64 {
 
 #[test]
 fn pumps_stay_within_the_drift_limit() {
-    if !follows_chords() {
-        return println!("chord-root is not played yet");
-    }
     println!(
         "lowest key at the start of pass 0 1 2 5 10 50; the largest held motion, error of a consonance, mean of a chord that stands, mean at any moment"
     );
@@ -132,9 +129,6 @@ fn pumps_stay_within_the_drift_limit() {
 
 #[test]
 fn without_a_limit_pumps_walk_by_the_arithmetic() {
-    if !follows_chords() {
-        return println!("chord-root is not played yet");
-    }
     for (chords, comma) in [(&COMMA_PUMP, -COMMA_CENTS), (&BENEDETTI, COMMA_CENTS)] {
         let (starts, _, scores) = played(
             "{method: chord-root, drift_limit_cents: none}",
