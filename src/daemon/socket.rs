@@ -39,8 +39,8 @@ pub const UNREAD_BYTES: usize = 64 * 1_024;
 pub const CLIENTS: usize = 32;
 /// New connections in one look, so that a flood of them does not hold the desk.
 const ACCEPTS: usize = 64;
-/// Others who start need the folder for a moment each; two seconds are enough for many.
-const LOCK_TRIES: u32 = 400;
+/// Others who start need the folder for a moment each; ten seconds are enough for many on a busy machine.
+const LOCK_TRIES: u32 = 2_000;
 const LOCK_PAUSE: Duration = Duration::from_millis(5);
 
 /// Who asked. Never used twice.

@@ -37,6 +37,7 @@ const LAST_LOOK: Span = Span::from_millis(500);
 const SETTLE: Duration = Duration::from_millis(50);
 /// How long a server that does not answer is waited for before we go on without an answer.
 const ANSWER: Duration = Duration::from_millis(2_000);
+
 type Active = AsyncClient<Notices, Process>;
 
 /// The client, while there is one: shared with the desk, which asks it for ports and connects them.

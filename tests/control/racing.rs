@@ -57,6 +57,8 @@ fn of_many_daemons_that_start_at_once_one_plays() {
         codes.len() >= 5
     });
     assert_eq!(codes, [69; 5]);
-    let (code, _, err) = trued(&folder, &["tell", "--socket", "trued.sock", "next"]);
-    assert_eq!(code, 0, "{err}");
+    // It may still be opening its ports, and on a busy machine longer than `tell` waits.
+    patiently("the one that is left to follow", || {
+        trued(&folder, &["tell", "--socket", "trued.sock", "song 2"]).0 == 0
+    });
 }
