@@ -120,7 +120,7 @@ impl Shapes {
         Some(())
     }
 
-    /// The shapes of a chord of one to [`CORE_MAX`] pitch classes.
+    /// The shapes of a chord of one to six pitch classes.
     pub fn of(&self, chord: PitchClasses) -> Found<'_> {
         let entry = self.index[chord.bits() as usize];
         let first = entry.first as usize;

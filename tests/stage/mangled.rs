@@ -73,7 +73,7 @@ fn texts_made_to_hurt_are_refused_soon() {
         println!("{name}: {took:?}");
         assert!(read.is_err(), "{name}");
         // A reload while playing waits no longer than this, on a machine far slower than the one it was tried on.
-        assert!(took.as_secs() < 20, "{name} took {took:?}");
+        assert!(took.as_secs() < 60, "{name} took {took:?}");
     }
 }
 
