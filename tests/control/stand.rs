@@ -27,7 +27,7 @@ synths: {organ: {port: virtual}}
 tunings: {just: {like: five-limit-scale, also: {D: {low: 10/9}}}}
 set:
   - {song: Lantern hymn, tuning: quarter-comma-meantone}
-  - {song: Ballad, tuning: equal-12}
+  - {song: Ballad, tuning: vallotti}
   - {song: Harbour tag, tuning: just}
 ";
 
