@@ -248,3 +248,61 @@ fn the_root_outlasts_a_note_off() {
     rig.play("10 chord C4 E4 G4\n500 off C4\n600 wait");
     assert_eq!(rig.engine.report().standing.chord.root, Some(0));
 }
+
+#[test]
+fn where_limits_collide_drift_holds_first_then_held_notes_and_purity_gives_way() {
+    let mut rig = following(
+        "equal-12",
+        "{method: chord-root, drift_limit_cents: 3, hold_limit_cents: 4}",
+    );
+    // Common tones held: every round would sink by a comma, 21.5 cents.
+    let changes: [(&[u8], &[u8]); 4] = [
+        (&[50, 65, 69], &[43, 59, 67]),
+        (&[43, 59, 62], &[48, 60, 64]),
+        (&[48, 67], &[45, 69]),
+        (&[45, 60, 64], &[50, 62, 65]),
+    ];
+    let mut impure: f64 = 0.0;
+    rig.play("10 chord D3 D4 F4 A4\n900 wait");
+    for n in 0..24 {
+        let (offs, ons) = changes[n % 4];
+        let before = sounding(&rig);
+        let offs = offs.iter().flat_map(|key| [0x80, *key, 64]);
+        let ons = ons.iter().flat_map(|key| [0x90, *key, 100]);
+        rig.midi(0, &offs.chain(ons).collect::<Vec<u8>>());
+        impure = impure.max(impurity(&rig));
+        rig.until(rig.now + trued::time::Span::from_millis(900));
+        // While held notes glide the mean may be a little over for a moment.
+        let drift = rig.engine.report().standing.drift.cents();
+        assert!(drift.abs() <= 3.1, "{drift} in chord {n}");
+        for (number, stands) in sounding(&rig) {
+            let held = before.iter().find(|(held, _)| *held == number);
+            let moved = held.map_or(0.0, |(_, stood)| (stands - stood).abs());
+            assert!(moved <= 4.1, "{number} moved by {moved} in chord {n}");
+        }
+    }
+    assert!(impure > 2.0, "it was never put to the test: {impure}");
+}
+
+/// How far the worst third or fifth of a triad that sounds is from just.
+fn impurity(rig: &Rig) -> f64 {
+    let notes = sounding(rig);
+    let mut worst: f64 = 0.0;
+    for (place, low) in notes.iter().enumerate() {
+        for high in &notes[place + 1..] {
+            let (over, under) = match (high.0 - low.0) % 12 {
+                0 => (1.0, 1.0),
+                3 => (6.0, 5.0),
+                4 => (5.0, 4.0),
+                5 => (4.0, 3.0),
+                7 => (3.0, 2.0),
+                8 => (8.0, 5.0),
+                9 => (5.0, 3.0),
+                _ => continue,
+            };
+            let octaves = ((high.0 - low.0) / 12) as f64 * 1200.0;
+            worst = worst.max((high.1 - low.1 - octaves - just(over, under)).abs());
+        }
+    }
+    worst
+}
