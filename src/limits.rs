@@ -33,6 +33,8 @@ pub const LINE_KEYS: usize = 8;
 pub const REST_MS: u64 = 500;
 /// Cues in one stage file.
 pub const CUES_MAX: usize = 128;
+/// Their gestures, each key of a range counted: all are looked through at every message.
+pub const GESTURES_MAX: usize = 256;
 /// Longest system exclusive message passed on whole; longer ones are dropped and counted.
 pub const SYSEX_BYTES_MAX: usize = 64 * 1024;
 /// Room in the engine for output that one input can cause.

@@ -3,136 +3,20 @@
 //! After each gesture song, nudge, transposition, plain, tonic and what is armed agree; no note sticks; no held note moves
 //! but by `pitch ... now`; each note begins where the model's song puts it. A failure names its seed.
 
+/// What has cues, and what may stand in them.
+mod controls;
 /// What lasts, and what each key then sounds.
 mod lasting;
 
 use crate::support::dice::Dice;
 use crate::support::receiver::Hold;
 use crate::support::rig::{Rig, keyboard_id};
-use lasting::{BLACK_KEYS, Lasting, TRANSPOSED, TUNINGS};
+use controls::{ACTIONS, CONTROLS, Cue, TITLES, can_be_held, forms, some_cues, stage};
+use lasting::Lasting;
 use std::collections::{BTreeMap, BTreeSet};
 use std::time::Duration;
 use trued::engine::Input;
 use trued::time::Span;
-
-/// Controls that have cues, as a stage file writes them, with the bytes of going down and up.
-const CONTROLS: [(&str, [u8; 3], [u8; 3]); 4] = [
-    ("controller: 82", [0xB0, 82, 127], [0xB0, 82, 0]),
-    ("controller: 83", [0xB0, 83, 64], [0xB0, 83, 63]),
-    ("note: C1", [0x90, 24, 80], [0x80, 24, 64]),
-    ("note: D1", [0x90, 26, 80], [0x90, 26, 0]),
-];
-const FORMS: [&[&str]; 9] = [
-    &["down"],
-    &["up"],
-    &["either"],
-    &["long"],
-    &["down", "long"],
-    &["up", "long"],
-    &["down", "up"],
-    &["held"],
-    &["held", "long"],
-];
-/// What can be held begins here.
-const LASTING: usize = 8;
-const ACTIONS: [&str; 31] = [
-    "next",
-    "next",
-    "back",
-    "song 3",
-    "next from Third",
-    "fresh",
-    "panic",
-    "reload",
-    "pitch +5 c",
-    "pitch -30 c now",
-    "pitch home",
-    "pitch home now",
-    "transpose +2",
-    "transpose home",
-    "plain",
-    "inflect C high",
-    "inflect C4 high",
-    "inflect C4 home",
-    "inflect E low",
-    "turn both",
-    "inflect C home",
-    "inflect C +7 c",
-    "inflect home",
-    "black-key Ab",
-    "black-key G#",
-    "tonic D",
-    "tonic G pivot",
-    "tonic A equal",
-    "tonic home",
-    "tonic next-key pivot",
-    "home",
-];
-const TITLES: [&str; 4] = ["First", "Second", "Third", "Fourth"];
-
-struct Cue {
-    control: usize,
-    form: &'static str,
-    long_ms: u64,
-    action: &'static str,
-    quiet: bool,
-    pass: bool,
-}
-
-fn some_cues(dice: &mut Dice) -> Vec<Cue> {
-    let mut cues = Vec::new();
-    for control in 0..CONTROLS.len() {
-        let pass = dice.percent(25);
-        for form in dice.pick(&FORMS) {
-            cues.push(Cue {
-                control,
-                form,
-                long_ms: dice.pick(&[300, 800]),
-                action: match *form {
-                    "held" => dice.pick(&ACTIONS[LASTING..ACTIONS.len() - 1]),
-                    _ => dice.pick(&ACTIONS),
-                },
-                quiet: *form != "held" && dice.percent(40),
-                pass,
-            });
-        }
-    }
-    cues
-}
-
-fn stage(cues: &[Cue], dialect: &str) -> String {
-    let mut text = format!(
-        "keyboards: {{keys: {{port: virtual}}, pads: {{port: virtual}}}}\n\
-         synths: {{synth: {{port: virtual, dialect: {dialect}, bend_range: 12}}}}\ntunings:\n"
-    );
-    for (title, tuning) in TITLES.iter().zip(TUNINGS) {
-        text += &format!("  of {title}: {tuning}\n");
-    }
-    text += "set:\n";
-    for (title, keys) in TITLES.iter().zip(TRANSPOSED) {
-        let black_keys = if *title == "Third" { BLACK_KEYS } else { "" };
-        text +=
-            &format!("  - {{song: {title}, tuning: of {title}, transpose: {keys}{black_keys}}}\n");
-    }
-    text += "cues:\n";
-    for cue in cues {
-        let long = match cue.form {
-            "long" => format!(", long_ms: {}", cue.long_ms),
-            _ => String::new(),
-        };
-        let quiet = if cue.quiet { ", at: quiet" } else { "" };
-        let pass = if cue.pass { ", pass: yes" } else { "" };
-        let (press, held) = match cue.form {
-            "held" => (String::new(), ", while: held"),
-            form => (format!(", press: {form}"), ""),
-        };
-        text += &format!(
-            "  - {{when: {{{}{press}{long}}}, do: {}{held}{quiet}{pass}}}\n",
-            CONTROLS[cue.control].0, cue.action
-        );
-    }
-    text
-}
 
 #[derive(Clone, Copy)]
 struct Wait {
@@ -160,7 +44,11 @@ struct Model {
     hands: BTreeSet<(usize, u8, bool)>,
     asked: usize,
     moved_at: BTreeSet<u64>,
+    /// Control, form and action of every cue that has fired.
+    fired: BTreeSet<Fired>,
 }
+
+type Fired = (usize, &'static str, &'static str);
 
 impl Model {
     fn with(&self, control: usize, form: &str) -> Vec<usize> {
@@ -176,6 +64,9 @@ impl Model {
 
     fn press(&mut self, at: u64, keyboard: usize, control: usize) {
         let place = (keyboard, control);
+        if CONTROLS[control].up.is_empty() {
+            return self.fire_all(at, place, "once");
+        }
         if self.with(control, "long").is_empty() {
             self.fire_all(at, place, "down");
         }
@@ -246,6 +137,7 @@ impl Model {
 
     fn fire(&mut self, at: u64, place: (usize, usize), cue: usize) {
         let action = self.cues[cue].action;
+        self.fired.insert((place.1, self.cues[cue].form, action));
         if action == "next from Third" && self.song != 2 {
             return;
         }
@@ -286,7 +178,7 @@ impl Model {
             action if action.starts_with("inflect") => {
                 action.split(' ').take(2).collect::<Vec<_>>().join(" ")
             }
-            "tonic home" | "tonic next-key pivot" => action.to_string(),
+            "tonic home" | "tonic next-key pivot" | "root next-key" => action.to_string(),
             action => action.split(' ').next().unwrap_or_default().to_string(),
         };
         self.armed.retain(|other| kind(other) != kind(action));
@@ -338,7 +230,7 @@ impl Model {
                 self.held.clear();
             }
             "panic" => self.hands.clear(),
-            "reload" => self.asked += 1,
+            "reload" | "stop" => self.asked += 1,
             "tonic next-key pivot" => {
                 let wait = Wait {
                     sounds: false,
@@ -378,28 +270,7 @@ fn happen(dice: &mut Dice, rig: &mut Rig, model: &mut Model) {
     let at = rig.now.nanos() / 1_000_000;
     let keyboard = dice.below(2) as usize;
     match dice.below(100) {
-        0..=44 => {
-            let control = dice.below(CONTROLS.len() as u64) as usize;
-            let (_, down, up) = CONTROLS[control];
-            let is_down = model.down.contains_key(&(keyboard, control));
-            // A key that passes is played as well.
-            let hand = (keyboard, down[1], false);
-            let played = control > 1 && model.passes(control);
-            rig.midi(keyboard, if is_down { &up } else { &down });
-            if is_down {
-                model.hands.remove(&hand);
-                model.let_go(at, keyboard, control);
-            } else {
-                if played {
-                    model.hands.insert(hand);
-                }
-                model.press(at, keyboard, control);
-            }
-            // After a panic nothing is held; what is armed still waits for something to be let go.
-            if is_down || control < 2 {
-                model.when_quiet(at);
-            }
-        }
+        0..=44 => touch(dice, rig, model, keyboard),
         45..=64 => {
             let key = dice.between(45, 80) as u8;
             let hand = (keyboard, key, false);
@@ -449,6 +320,38 @@ fn happen(dice: &mut Dice, rig: &mut Rig, model: &mut Model) {
     }
 }
 
+/// A control goes down, or comes up if it is down.
+fn touch(dice: &mut Dice, rig: &mut Rig, model: &mut Model, keyboard: usize) {
+    let at = rig.now.nanos() / 1_000_000;
+    let index = dice.below(CONTROLS.len() as u64) as usize;
+    let control = &CONTROLS[index];
+    let is_down = model.down.contains_key(&(keyboard, index));
+    let bytes = if is_down { control.up } else { control.down };
+    rig.midi(keyboard, bytes);
+    // After a panic nothing is held; what is armed still waits for a key or a controller, also one before a program.
+    let stirs = |bytes: &[u8]| matches!(bytes, [0xB0 | 0x80, ..] | [0x90, _, 0]);
+    if stirs(bytes) && bytes.len() > 3 {
+        model.when_quiet(at);
+    }
+    // A key that passes is played as well.
+    let hand = control.key().map(|key| (keyboard, key, false));
+    if is_down {
+        hand.map(|hand| model.hands.remove(&hand));
+        model.let_go(at, keyboard, index);
+    } else {
+        if let Some(other) = control.lets_go {
+            model.let_go(at, keyboard, other);
+        }
+        if let Some(hand) = hand.filter(|_| model.passes(index)) {
+            model.hands.insert(hand);
+        }
+        model.press(at, keyboard, index);
+    }
+    if stirs(bytes) && bytes.len() == 3 {
+        model.when_quiet(at);
+    }
+}
+
 fn agree(rig: &Rig, model: &Model, seed: u64, text: &str) {
     let report = rig.engine.report();
     let armed_song = model.armed.iter().find(|action| changes_song(action));
@@ -456,7 +359,7 @@ fn agree(rig: &Rig, model: &Model, seed: u64, text: &str) {
     let told = model.in_force();
     let wanted = (
         model.song as u16,
-        told.nudge as f64,
+        told.nudge_microcents,
         told.transpose_keys(model.song),
         told.plain,
         told.tonic.is_some(),
@@ -467,7 +370,7 @@ fn agree(rig: &Rig, model: &Model, seed: u64, text: &str) {
     );
     let got = (
         report.song,
-        report.nudge.cents(),
+        report.nudge.microcents(),
         i32::from(report.transpose_keys),
         report.plain,
         report.tonic_moved,
@@ -479,7 +382,7 @@ fn agree(rig: &Rig, model: &Model, seed: u64, text: &str) {
     assert_eq!(got, wanted, "seed {seed} at {:?} with\n{text}", rig.now);
 }
 
-fn play(seed: u64) -> usize {
+fn play(seed: u64, fired: &mut BTreeSet<Fired>) -> usize {
     let mut dice = Dice::new(seed);
     let dialect = dice.pick(&["channel-bend", "mpe"]);
     let cues = some_cues(&mut dice);
@@ -520,6 +423,7 @@ fn play(seed: u64) -> usize {
             .any(|at| Duration::from_millis(*at) == moved.at);
         assert!(by_us, "seed {seed}: {moved:?} with\n{text}");
     }
+    fired.append(&mut model.fired);
     heard.notes.len()
 }
 
@@ -528,7 +432,24 @@ fn play(seed: u64) -> usize {
 fn every_form_of_a_cue_does_what_the_language_says() {
     let many = std::env::var("SEEDS").ok().and_then(|n| n.parse().ok());
     let seeds = 1..=many.unwrap_or(300u64);
-    let notes: usize = seeds.clone().map(play).sum();
-    println!("{} evenings of 300 gestures, {notes} notes", seeds.count());
+    let mut fired = BTreeSet::new();
+    let notes: usize = seeds.clone().map(|seed| play(seed, &mut fired)).sum();
+    println!(
+        "{} evenings of 300 gestures, {notes} notes, {} of control, form and action together",
+        seeds.count(),
+        fired.len()
+    );
     assert!(notes > 1_000);
+    // Every control, and every form, with every action.
+    for action in ACTIONS {
+        for (place, control) in CONTROLS.iter().enumerate() {
+            let met = fired.iter().any(|(c, _, a)| (*c, *a) == (place, action));
+            assert!(met, "{action} never by {:?}", control.when);
+        }
+        let forms = forms(0).into_iter().chain(["once"]);
+        for form in forms.filter(|form| *form != "held" || can_be_held(action)) {
+            let met = fired.iter().any(|(_, f, a)| (*f, *a) == (form, action));
+            assert!(met, "{action} never by {form}");
+        }
+    }
 }

@@ -104,17 +104,17 @@ fn evening() -> Plan {
     plan.cues.push(CuePlan {
         from: None,
         channels: ChannelSet::ALL,
-        gesture: Gesture::AnyProgram,
+        gesture: Gesture::ANY_PROGRAM,
         press: Press::Down,
         at_quiet: false,
-        act: Act::SongByProgram,
+        act: Act::SongByNumber,
         held: false,
         pass: false,
     });
     plan.cues.push(CuePlan {
         from: None,
         channels: ChannelSet::ALL,
-        gesture: Gesture::Controller(66),
+        gesture: Gesture::switch(66),
         press: Press::Down,
         at_quiet: false,
         act: Act::Command(Command::InflectHome),
@@ -122,9 +122,9 @@ fn evening() -> Plan {
         pass: true,
     });
     for (gesture, press, command) in [
-        (Gesture::Controller(7), Press::Down, Command::Next),
-        (Gesture::Controller(7), Press::Long(LONG), Command::Panic),
-        (Gesture::Controller(1), Press::Either, Command::Plain),
+        (Gesture::switch(7), Press::Down, Command::Next),
+        (Gesture::switch(7), Press::Long(LONG), Command::Panic),
+        (Gesture::switch(1), Press::Either, Command::Plain),
         (Gesture::Note(Key::C4), Press::Up, Command::Back),
     ] {
         plan.cues.push(CuePlan {

@@ -139,10 +139,10 @@ fn a_song_change_between_two_notes_of_one_tick_divides_them() {
     plan.cues.push(CuePlan {
         from: None,
         channels: ChannelSet::NONE.with(15),
-        gesture: Gesture::AnyProgram,
+        gesture: Gesture::ANY_PROGRAM,
         press: Press::Down,
         at_quiet: false,
-        act: Act::SongByProgram,
+        act: Act::SongByNumber,
         held: false,
         pass: false,
     });

@@ -51,6 +51,7 @@ fn alike(one: Command, other: Command) -> bool {
     match (one, other) {
         (Command::Inflect { key, .. }, Command::Inflect { key: other, .. }) => key == other,
         (Command::Turn(name), Command::Turn(other)) => name == other,
+        (Command::Ask(ask), Command::Ask(other)) => ask == other,
         (Command::BlackKey(name), Command::BlackKey(other)) => {
             name.pitch_class() == other.pitch_class()
         }

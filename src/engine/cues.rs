@@ -1,32 +1,85 @@
 //! Cues: what a player does, how long it is held, and what that makes happen.
 
 use super::next_key::Names;
-use super::plan::{Act, CuePlan, Gesture, Press};
+use super::plan::{Act, CuePlan, Gesture, Press, Values};
 use super::traffic::Command;
 use super::{Engine, Hand};
 use crate::limits::PRESSES_MAX;
 use crate::time::{Span, Time};
+use crate::tuning::Key;
 
-/// A gesture as it came.
+/// A message, as far as cues can be about it.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub(super) enum Heard {
-    Program(u8),
-    /// A key has gone down, or a controller has just risen through 64.
-    Down(Gesture),
-    /// The same let go.
-    Up(Gesture),
-    /// Another movement of a control: it does nothing, and is taken away all the same.
-    Idle(Gesture),
+    Program { number: u8, bank: [u8; 2] },
+    SongSelect(u8),
+    KeyDown(Key),
+    KeyUp(Key),
+    Moved { control: Control, from: u8, to: u8 },
+}
+
+/// What has a value that moves.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(super) enum Control {
+    Controller(u8),
+    Pressure,
+}
+
+/// What a message is to a gesture.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+enum Phase {
+    Down,
+    Up,
+    /// Another movement of the control: it does nothing, and is taken away all the same.
+    Idle,
 }
 
 impl Heard {
-    fn is(self, gesture: Gesture) -> bool {
-        match self {
-            Heard::Program(number) => {
-                gesture == Gesture::AnyProgram || gesture == Gesture::Program(number)
+    /// `None`: the message has nothing to do with the gesture.
+    fn phase(self, gesture: Gesture) -> Option<Phase> {
+        match (self, gesture) {
+            (
+                Heard::Program { number, bank },
+                Gesture::Program {
+                    number: one,
+                    bank: of,
+                },
+            ) => {
+                let is = |wanted: Option<u8>, value| wanted.is_none_or(|wanted| wanted == value);
+                (is(one, number) && is(of.msb, bank[0]) && is(of.lsb, bank[1]))
+                    .then_some(Phase::Down)
             }
-            Heard::Down(heard) | Heard::Up(heard) | Heard::Idle(heard) => heard == gesture,
+            (Heard::SongSelect(number), Gesture::SongSelect(one)) => {
+                one.is_none_or(|one| one == number).then_some(Phase::Down)
+            }
+            (Heard::KeyDown(heard), Gesture::Note(key)) => (heard == key).then_some(Phase::Down),
+            (Heard::KeyUp(heard), Gesture::Note(key)) => (heard == key).then_some(Phase::Up),
+            (Heard::Moved { control, from, to }, Gesture::Controller { number, values }) => {
+                (control == Control::Controller(number)).then(|| moved(values, from, to))
+            }
+            (Heard::Moved { control, from, to }, Gesture::Pressure(values)) => {
+                (control == Control::Pressure).then(|| moved(values, from, to))
+            }
+            _ => None,
         }
+    }
+
+    /// What `do: song` counts by.
+    fn number(self) -> Option<u8> {
+        match self {
+            Heard::Program { number, .. } | Heard::SongSelect(number) => Some(number),
+            _ => None,
+        }
+    }
+}
+
+/// Down on coming into the values, up on leaving them. A button that only ever sends one value is pressed each time.
+fn moved(values: Values, from: u8, to: u8) -> Phase {
+    let one = values.first == values.last;
+    match (values.has(from), values.has(to)) {
+        (was_in, true) if !was_in || one => Phase::Down,
+        (true, false) => Phase::Up,
+        _ => Phase::Idle,
     }
 }
 
@@ -103,55 +156,80 @@ impl Engine {
     /// Whether a cue takes a message away from the synth.
     pub(super) fn takes(&self, hand: Hand, heard: Heard) -> bool {
         let mut cues = self.plan.cues.iter();
-        cues.any(|cue| !cue.pass && self.is_for(cue, hand, heard))
+        cues.any(|cue| !cue.pass && heard.phase(cue.gesture).is_some() && self.is_for(cue, hand))
     }
 
     pub(super) fn has_cue(&self, hand: Hand, heard: Heard) -> bool {
         let mut cues = self.plan.cues.iter();
-        cues.any(|cue| self.is_for(cue, hand, heard))
+        cues.any(|cue| heard.phase(cue.gesture).is_some() && self.is_for(cue, hand))
     }
 
-    /// Runs the cues on a gesture.
+    /// Runs the cues on a message. A controller can leave the values of one and come into those of another: what is let
+    /// go comes first.
     pub(super) fn cue(&mut self, now: Time, hand: Hand, heard: Heard) {
-        if let Heard::Up(gesture) = heard {
-            self.let_go_of(now, hand, gesture);
-            self.end_wait(|by, with, held| held && (by, with) == (hand, gesture));
-        }
-        let length = self.press(now, hand, heard);
-        for index in 0..self.plan.cues.len() {
-            let cue = self.plan.cues[index];
-            if self.is_for(&cue, hand, heard) && fires(&cue, heard, length) {
-                self.fire(now, hand, &cue, heard);
+        for phase in [Phase::Up, Phase::Down] {
+            for index in 0..self.plan.cues.len() {
+                let gesture = self.plan.cues[index].gesture;
+                if heard.phase(gesture) == Some(phase) && self.is_first(index, hand) {
+                    self.gesture(now, hand, gesture, phase, heard.number());
+                }
             }
         }
     }
 
-    fn press(&mut self, now: Time, hand: Hand, heard: Heard) -> Length {
-        match heard {
-            Heard::Down(gesture) => match self.long_press(hand, gesture) {
+    /// Whether a cue is for a hand, and none before it has the same gesture.
+    fn is_first(&self, index: usize, hand: Hand) -> bool {
+        let gesture = self.plan.cues[index].gesture;
+        let mut cues = self.plan.cues[..=index].iter();
+        let first = cues.position(|cue| cue.gesture == gesture && self.is_for(cue, hand));
+        first == Some(index)
+    }
+
+    /// Runs the cues on a gesture.
+    fn gesture(
+        &mut self,
+        now: Time,
+        hand: Hand,
+        gesture: Gesture,
+        phase: Phase,
+        number: Option<u8>,
+    ) {
+        if phase == Phase::Up {
+            self.let_go_of(now, hand, gesture);
+            self.end_wait(|by, with, held| held && (by, with) == (hand, gesture));
+        }
+        let length = self.press(now, hand, gesture, phase);
+        for index in 0..self.plan.cues.len() {
+            let cue = self.plan.cues[index];
+            if cue.gesture == gesture && self.is_for(&cue, hand) && fires(&cue, phase, length) {
+                self.fire(now, hand, &cue, number);
+            }
+        }
+    }
+
+    fn press(&mut self, now: Time, hand: Hand, gesture: Gesture, phase: Phase) -> Length {
+        if phase == Phase::Down {
+            return match self.long_press(hand, gesture) {
                 None => Length::Any,
                 Some(long) if self.presses.begin(hand, gesture, now + long) => Length::Open,
                 Some(_) => {
                     self.out.counters.ignored += 1;
                     Length::Any
                 }
-            },
-            Heard::Up(gesture) => {
-                self.fire_long(now);
-                match self.presses.end(hand, gesture) {
-                    None => Length::Any,
-                    Some(held) if held.long_at.is_some() => Length::Short,
-                    Some(_) => Length::Long,
-                }
-            }
-            Heard::Program(_) | Heard::Idle(_) => Length::Any,
+            };
+        }
+        self.fire_long(now);
+        match self.presses.end(hand, gesture) {
+            None => Length::Any,
+            Some(held) if held.long_at.is_some() => Length::Short,
+            Some(_) => Length::Long,
         }
     }
 
     fn long_press(&self, hand: Hand, gesture: Gesture) -> Option<Span> {
         let mut cues = self.plan.cues.iter();
         cues.find_map(|cue| match cue.press {
-            Press::Long(long) if self.is_for(cue, hand, Heard::Idle(gesture)) => Some(long),
+            Press::Long(long) if cue.gesture == gesture && self.is_for(cue, hand) => Some(long),
             _ => None,
         })
     }
@@ -159,21 +237,21 @@ impl Engine {
     /// Presses that are still held once their time has come.
     pub(super) fn fire_long(&mut self, now: Time) {
         while let Some((hand, gesture)) = self.presses.take_due(now) {
-            let heard = Heard::Idle(gesture);
             for index in 0..self.plan.cues.len() {
                 let cue = self.plan.cues[index];
-                if matches!(cue.press, Press::Long(_)) && self.is_for(&cue, hand, heard) {
-                    self.fire(now, hand, &cue, heard);
+                let is_long = matches!(cue.press, Press::Long(_)) && cue.gesture == gesture;
+                if is_long && self.is_for(&cue, hand) {
+                    self.fire(now, hand, &cue, None);
                 }
             }
         }
     }
 
-    fn fire(&mut self, now: Time, hand: Hand, cue: &CuePlan, heard: Heard) {
-        let command = match (cue.act, heard) {
+    fn fire(&mut self, now: Time, hand: Hand, cue: &CuePlan, number: Option<u8>) {
+        let command = match (cue.act, number) {
             (Act::Command(command), _) => command,
-            (Act::SongByProgram, Heard::Program(number)) => Command::Song(number as u16),
-            (Act::SongByProgram, _) => {
+            (Act::SongByNumber, Some(number)) => Command::Song(number as u16),
+            (Act::SongByNumber, None) => {
                 self.out.counters.ignored += 1;
                 return;
             }
@@ -194,24 +272,21 @@ impl Engine {
         }
     }
 
-    fn is_for(&self, cue: &CuePlan, hand: Hand, heard: Heard) -> bool {
+    fn is_for(&self, cue: &CuePlan, hand: Hand) -> bool {
         let keyboard = self.plays_as(hand.keyboard);
-        cue.from.is_none_or(|from| from == keyboard)
-            && cue.channels.has(hand.channel)
-            && heard.is(cue.gesture)
+        cue.from.is_none_or(|from| from == keyboard) && cue.channels.has(hand.channel)
     }
 }
 
 /// Where a control has a long press too, a short one is only known when it is let go.
-fn fires(cue: &CuePlan, heard: Heard, length: Length) -> bool {
-    match (cue.press, heard) {
-        (_, Heard::Down(_)) if cue.held => true,
+fn fires(cue: &CuePlan, phase: Phase, length: Length) -> bool {
+    match (cue.press, phase) {
+        (_, Phase::Down) if cue.held => true,
         (_, _) if cue.held => false,
-        (_, Heard::Program(_)) => true,
-        (Press::Down, Heard::Down(_)) => length == Length::Any,
-        (Press::Down, Heard::Up(_)) => length == Length::Short,
-        (Press::Up, Heard::Up(_)) => length != Length::Long,
-        (Press::Either, Heard::Down(_) | Heard::Up(_)) => true,
+        (Press::Down, Phase::Down) => length == Length::Any,
+        (Press::Down, Phase::Up) => length == Length::Short,
+        (Press::Up, Phase::Up) => length != Length::Long,
+        (Press::Either, Phase::Down | Phase::Up) => true,
         _ => false,
     }
 }

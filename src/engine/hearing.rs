@@ -1,7 +1,8 @@
 //! From bytes to gestures: who hears what, what is taken by a cue, what is passed on as it came.
 
-use super::cues::Heard;
-use super::plan::{Gesture, KeyboardId};
+use super::channel::UNSAID;
+use super::cues::{Control, Heard};
+use super::plan::KeyboardId;
 use super::songs::is_reset;
 use super::synth::{PEDALS, bend_message};
 use super::traffic::Weight;
@@ -43,7 +44,7 @@ impl Engine {
             | Message::Pressure { channel, .. }
             | Message::PitchBend { channel, .. } => channel,
             Message::Sysex(bytes) => return self.sysex_in(now, id, bytes),
-            Message::Common(bytes) => return self.pass_on(id, bytes),
+            Message::Common(bytes) => return self.common_in(now, id, bytes),
             Message::RealTime(0xFE) => {
                 self.keyboards[id.index()].sensed_at = Some(now);
                 return;
@@ -76,7 +77,7 @@ impl Engine {
                 let key = Key::new(key).expect("MIDI keys are 0-127");
                 self.key_up(now, hand, key, velocity);
                 if is_heard {
-                    self.cue(now, hand, Heard::Up(Gesture::Note(key)));
+                    self.cue(now, hand, Heard::KeyUp(key));
                 }
                 return self.when_quiet(now);
             }
@@ -156,20 +157,33 @@ impl Engine {
     /// The gesture in a message, if it can be one.
     fn heard(&mut self, hand: Hand, message: Message<'_>) -> Option<Heard> {
         match message {
-            Message::Program { number, .. } => Some(Heard::Program(number)),
-            Message::Controller { number, value, .. } => {
-                let latest = &mut self.source(hand).latest[number as usize];
-                let (was_down, is_down) = (*latest >= 64, value >= 64);
-                *latest = value;
-                let control = Gesture::Controller(number);
-                Some(match (was_down, is_down) {
-                    (false, true) => Heard::Down(control),
-                    (true, false) => Heard::Up(control),
-                    _ => Heard::Idle(control),
+            Message::Program { number, .. } => {
+                let latest = self.source(hand).latest;
+                let bank = [controller::BANK_MSB, controller::BANK_LSB];
+                let bank = bank.map(|half| latest[half as usize]);
+                Some(Heard::Program {
+                    number,
+                    bank: bank.map(|half| if half == UNSAID { 0 } else { half }),
                 })
             }
-            Message::NoteOn { key, .. } => Key::new(key).map(|key| Heard::Down(Gesture::Note(key))),
-            Message::NoteOff { key, .. } => Key::new(key).map(|key| Heard::Up(Gesture::Note(key))),
+            Message::Controller { number, value, .. } => {
+                let latest = &mut self.source(hand).latest[number as usize];
+                Some(Heard::Moved {
+                    control: Control::Controller(number),
+                    from: std::mem::replace(latest, value),
+                    to: value,
+                })
+            }
+            Message::Pressure { value, .. } => {
+                let latest = &mut self.source(hand).latest_pressure;
+                Some(Heard::Moved {
+                    control: Control::Pressure,
+                    from: std::mem::replace(latest, value),
+                    to: value,
+                })
+            }
+            Message::NoteOn { key, .. } => Key::new(key).map(Heard::KeyDown),
+            Message::NoteOff { key, .. } => Key::new(key).map(Heard::KeyUp),
             _ => None,
         }
     }
@@ -203,6 +217,23 @@ impl Engine {
             for synth in self.synths_of(id).iter() {
                 self.synths[synth.index()].again_at = Some(now + Span::from_millis(RESET_MS));
             }
+        }
+    }
+
+    /// A song select may be a cue; it comes on no channel, so any will do.
+    fn common_in(&mut self, now: Time, id: KeyboardId, bytes: &[u8]) {
+        let heard = match bytes {
+            [status::SONG_SELECT, number] => Heard::SongSelect(*number),
+            _ => return self.pass_on(id, bytes),
+        };
+        let hand = Hand {
+            keyboard: id,
+            channel: 0,
+        };
+        let taken = self.takes(hand, heard);
+        self.cue(now, hand, heard);
+        if !taken {
+            self.pass_on(id, bytes);
         }
     }
 

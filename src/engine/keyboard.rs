@@ -37,8 +37,9 @@ pub(super) struct Source {
     pub velocity_low: Option<u8>,
     /// CC84, for the next note.
     pub portamento_from: Option<u8>,
-    /// Latest value of each controller, to see one rise through 64.
+    /// Latest value of each controller and of pressure, `UNSAID` before the first, to see them come into a cue's values.
     pub latest: [u8; 128],
+    pub latest_pressure: u8,
     pub bank: [u8; 2],
 }
 
@@ -64,7 +65,8 @@ impl Source {
             data_msb: 0,
             velocity_low: None,
             portamento_from: None,
-            latest: [0; 128],
+            latest: [UNSAID; 128],
+            latest_pressure: UNSAID,
             bank: [UNSAID; 2],
         }
     }

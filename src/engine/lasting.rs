@@ -111,14 +111,11 @@ impl Lasting {
                 self.tonic = None;
                 return playing.by_hand.turning.is_some();
             }
-            Command::Root(to) => {
-                self.root = to;
-                return playing.method != Method::Fixed;
+            Command::Root(_) | Command::Sevenths(_) if playing.method == Method::Fixed => {
+                return false;
             }
-            Command::Sevenths(sevenths) => {
-                self.sevenths = Some(sevenths);
-                return playing.method != Method::Fixed;
-            }
+            Command::Root(to) => self.root = to,
+            Command::Sevenths(sevenths) => self.sevenths = Some(sevenths),
             _ => return false,
         }
         true

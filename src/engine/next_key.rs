@@ -55,7 +55,7 @@ impl Engine {
         let Some(tonic) = self.as_tuned(hand, key) else {
             return false;
         };
-        if self.has_cue(hand, Heard::Down(Gesture::Note(key))) {
+        if self.has_cue(hand, Heard::KeyDown(key)) {
             return false;
         }
         self.next_key = None;

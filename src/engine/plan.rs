@@ -248,13 +248,71 @@ pub struct CuePlan {
 
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Gesture {
-    AnyProgram,
-    /// 0-127 as on the wire.
-    Program(u8),
-    /// Down from 64 up.
-    Controller(u8),
+    Program {
+        /// 0-127 as on the wire; `None` for any.
+        number: Option<u8>,
+        bank: Bank,
+    },
+    /// Song select, 0-127 as on the wire; `None` for any. It comes on no channel.
+    SongSelect(Option<u8>),
+    /// Down while its value is one of these.
+    Controller { number: u8, values: Values },
+    /// Channel pressure, likewise.
+    Pressure(Values),
     /// A key. It sounds nothing unless `pass`.
     Note(Key),
+}
+
+impl Gesture {
+    pub const ANY_PROGRAM: Gesture = Gesture::Program {
+        number: None,
+        bank: Bank::ANY,
+    };
+
+    /// A pedal or a switch: down from 64 up.
+    pub const fn switch(number: u8) -> Gesture {
+        Gesture::Controller {
+            number,
+            values: Values::SWITCH,
+        }
+    }
+
+    /// Whether it goes down and comes up again; the others are over at once.
+    pub const fn is_pressed(self) -> bool {
+        !matches!(self, Gesture::Program { .. } | Gesture::SongSelect(_))
+    }
+}
+
+/// The bank of a program change: what controllers 0 and 32 said before it, 0 where they said nothing. `None` for any.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub struct Bank {
+    pub msb: Option<u8>,
+    pub lsb: Option<u8>,
+}
+
+impl Bank {
+    pub const ANY: Bank = Bank {
+        msb: None,
+        lsb: None,
+    };
+}
+
+/// Values of a controller or of pressure, first and last, both among them.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct Values {
+    pub first: u8,
+    pub last: u8,
+}
+
+impl Values {
+    pub const SWITCH: Values = Values {
+        first: 64,
+        last: 127,
+    };
+
+    pub const fn has(self, value: u8) -> bool {
+        self.first <= value && value <= self.last
+    }
 }
 
 /// When a control fires its cue. A program change always does.
@@ -272,7 +330,7 @@ pub enum Press {
 
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Act {
-    /// The song with the number of the program.
-    SongByProgram,
+    /// The song with the number of the program or of the song select.
+    SongByNumber,
     Command(super::traffic::Command),
 }

@@ -47,4 +47,5 @@ pub mod status {
     pub const PROGRAM: u8 = 0xC0;
     pub const PRESSURE: u8 = 0xD0;
     pub const BEND: u8 = 0xE0;
+    pub const SONG_SELECT: u8 = 0xF3;
 }

@@ -67,6 +67,7 @@ fn lasts(words: &Words) -> bool {
         | Words::Transpose(_)
         | Words::Tonic { .. }
         | Words::TonicHome
+        | Words::TonicByKey(_)
         | Words::Inflect { .. }
         | Words::InflectBy { .. }
         | Words::InflectHome

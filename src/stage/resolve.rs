@@ -59,6 +59,7 @@ impl Names<'_> {
                 TonicMove::NextKey => Command::TonicNextKey(*by),
             },
             Words::TonicHome => Command::TonicHome,
+            Words::TonicByKey(_) => return Err(wrong(TONIC_ALONE.0, TONIC_ALONE.1)),
             Words::Inflect { key, place } => Command::Inflect {
                 key: *key,
                 to: InflectTo::Place(match place.as_str() {
@@ -168,6 +169,12 @@ fn inflect_by(by: Log) -> Result<Interval, Refusal> {
 const SONG_ALONE: (&str, &str) = (
     "`song` alone takes its number from a program change",
     "write `song 3`, `song TITLE`, or `when: {program: any}`",
+);
+
+/// Likewise of `tonic` alone.
+const TONIC_ALONE: (&str, &str) = (
+    "`tonic` without a key takes the one that is struck",
+    "write `tonic D`, `tonic next-key`, or `when: {notes: C1..B1}`",
 );
 
 fn wrong(wrong: impl Into<String>, right: impl Into<String>) -> Refusal {

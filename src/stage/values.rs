@@ -5,7 +5,7 @@
 use super::complaint::Complaints;
 use super::expression::Expression;
 use super::node::{At, nearest};
-use crate::engine::plan::ChannelSet;
+use crate::engine::plan::{ChannelSet, Values};
 use crate::pitch::Interval;
 use crate::tuning::{Key, Letter};
 
@@ -144,6 +144,36 @@ fn one_key_or_range(at: &At<'_>, text: &str, complaints: &mut Complaints) -> Opt
         _ => String::from("write the lowest and the highest key: C2..B3"),
     };
     complaints.add(&at.trail, format!("`{text}` is not a range of keys"), right);
+    None
+}
+
+/// `40..80`, `90..`, `..63`, or one number, all from 0 to 127.
+pub fn values(at: &At<'_>, complaints: &mut Complaints) -> Option<Values> {
+    let text = at.text("values such as 40..80", complaints)?;
+    let end = |text: &str, open: Option<u8>| match (text.trim(), open) {
+        ("", open) => open,
+        (text, _) => text.parse().ok().filter(|value| *value <= 127),
+    };
+    let ends = match text.split_once("..") {
+        Some((first, last)) => end(first, Some(0)).zip(end(last, Some(127))),
+        None => end(&text, None).map(|value| (value, value)),
+    };
+    let (wrong, right) = match ends {
+        None => (
+            format!("`{text}` names no values"),
+            String::from("values are 0 to 127: write 3, 40..80, 90.. or ..63"),
+        ),
+        Some((first, last)) if first > last => (
+            format!("`{text}` runs downwards"),
+            format!("write the lower value first: {last}..{first}"),
+        ),
+        Some((0, 127)) => (
+            format!("`{text}` takes in every value, so nothing ever comes into it"),
+            String::from("leave some out, as in 64.."),
+        ),
+        Some((first, last)) => return Some(Values { first, last }),
+    };
+    complaints.add(&at.trail, wrong, right);
     None
 }
 

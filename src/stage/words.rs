@@ -31,6 +31,8 @@ pub enum Words {
         by: TonicBy,
     },
     TonicHome,
+    /// `tonic pivot`: on the key that is struck, in cues on keys only.
+    TonicByKey(TonicBy),
     /// `inflect B half-flat`, with an octave for that key alone.
     Inflect {
         key: Inflected,
@@ -119,6 +121,7 @@ impl Words {
             | Words::Transpose(_)
             | Words::Tonic { .. }
             | Words::TonicHome
+            | Words::TonicByKey(_)
             | Words::Inflect { .. }
             | Words::InflectBy { .. }
             | Words::InflectHome
@@ -238,20 +241,28 @@ fn transpose(rest: &str) -> Option<Words> {
 }
 
 fn tonic(rest: &str) -> Result<Option<Words>, Mistake> {
+    if let Some(by) = tonic_by(rest) {
+        return Ok(Some(Words::TonicByKey(by)));
+    }
     let (to, by) = rest.split_once(' ').unwrap_or((rest, ""));
-    let by = match by.trim() {
-        "" | "absolute" => TonicBy::Absolute,
-        "pivot" => TonicBy::Pivot,
-        "equal" => TonicBy::Equal,
-        _ => return Ok(None),
+    let Some(by) = tonic_by(by.trim()) else {
+        return Ok(None);
     };
     let to = match to {
-        "" => return Ok(None),
         "home" => return Ok(Some(Words::TonicHome)),
         "next-key" => TonicMove::NextKey,
         name => TonicMove::To(letter(name)?),
     };
     Ok(Some(Words::Tonic { to, by }))
+}
+
+fn tonic_by(word: &str) -> Option<TonicBy> {
+    match word {
+        "" | "absolute" => Some(TonicBy::Absolute),
+        "pivot" => Some(TonicBy::Pivot),
+        "equal" => Some(TonicBy::Equal),
+        _ => None,
+    }
 }
 
 fn letter(name: &str) -> Result<Letter, Mistake> {
@@ -328,6 +339,8 @@ mod tests {
             "tonic D equal",
             "tonic next-key",
             "tonic next-key absolute",
+            "tonic",
+            "tonic pivot",
             "tonic home",
             "inflect B half-flat",
             "inflect B4 half-flat",

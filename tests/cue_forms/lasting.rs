@@ -54,7 +54,7 @@ fn meantone(key: i32, ab: bool) -> f64 {
 
 #[derive(Clone, Default)]
 pub struct Lasting {
-    pub nudge: i64,
+    pub nudge_microcents: i64,
     pub plain: bool,
     pub transposed: Option<i32>,
     /// Tonic key, and what it sounds if not what the reference makes of it.
@@ -70,7 +70,7 @@ pub struct Lasting {
 impl Lasting {
     pub fn begin_song(&mut self) {
         *self = Lasting {
-            nudge: self.nudge,
+            nudge_microcents: self.nudge_microcents,
             plain: self.plain,
             ..Lasting::default()
         };
@@ -78,14 +78,15 @@ impl Lasting {
 
     /// Tells whether the song has what is asked for.
     pub fn take(&mut self, song: usize, action: &str) -> bool {
-        let far = |nudge: i64| nudge.abs() > 1200;
         match action {
             "plain" => self.plain = !self.plain,
-            "pitch +5 c" if far(self.nudge + 5) => return false,
-            "pitch +5 c" => self.nudge += 5,
-            "pitch -30 c now" if far(self.nudge - 30) => return false,
-            "pitch -30 c now" => self.nudge -= 30,
-            "pitch home" | "pitch home now" => self.nudge = 0,
+            "pitch +5 c" => return self.nudge_by(5),
+            "pitch -30 c now" => return self.nudge_by(-30),
+            // Every song's reference is A4 = 440 Hz.
+            "pitch 441 Hz" => {
+                self.nudge_microcents = (cents(441.0, 440.0) * 1e6).round() as i64;
+            }
+            "pitch home" | "pitch home now" => self.nudge_microcents = 0,
             "transpose +2" => self.transposed = Some(2),
             "transpose home" => self.transposed = None,
             "inflect C high" if song == 0 || song == 2 => (self.high, self.alone) = (true, None),
@@ -101,13 +102,36 @@ impl Lasting {
             }
             "black-key Ab" if song == 2 => self.ab = true,
             "black-key G#" if song == 2 => self.ab = false,
-            "tonic D" => return self.move_tonic(song, 62, "absolute"),
-            "tonic G pivot" => return self.move_tonic(song, 67, "pivot"),
-            "tonic A equal" => return self.move_tonic(song, 69, "equal"),
             "tonic home" if song == 3 => self.tonic = None,
-            _ => return false,
+            "tonic home" => return false,
+            _ => return self.tonic_by_name(song, action),
         }
         true
+    }
+
+    /// An octave up or down at most.
+    fn nudge_by(&mut self, nudge_cents: i64) -> bool {
+        let nudge = self.nudge_microcents + nudge_cents * 1_000_000;
+        let near = nudge.abs() <= 1_200_000_000;
+        if near {
+            self.nudge_microcents = nudge;
+        }
+        near
+    }
+
+    pub fn nudge_cents(&self) -> f64 {
+        self.nudge_microcents as f64 / 1e6
+    }
+
+    /// `tonic D`, `tonic G pivot`.
+    fn tonic_by_name(&mut self, song: usize, action: &str) -> bool {
+        let Some(rest) = action.strip_prefix("tonic ") else {
+            return false;
+        };
+        let keys = [("D", 62), ("E", 64), ("F", 65), ("G", 67), ("A", 69)];
+        let (name, by) = rest.split_once(' ').unwrap_or((rest, "absolute"));
+        let key = keys.iter().find(|(known, _)| *known == name);
+        key.is_some_and(|(_, key)| self.move_tonic(song, *key, by))
     }
 
     pub fn move_tonic(&mut self, song: usize, key: i32, by: &str) -> bool {
@@ -143,7 +167,7 @@ impl Lasting {
     pub fn cents(&self, song: usize, key: u8) -> f64 {
         let moved = i32::from(key) + self.transpose_keys(song);
         if self.plain {
-            return f64::from(moved) * 100.0 + self.nudge as f64;
+            return f64::from(moved) * 100.0 + self.nudge_cents();
         }
         let high = self.alone.filter(|_| moved == 60).unwrap_or(self.high);
         let place = match moved.rem_euclid(12) {
@@ -156,6 +180,6 @@ impl Lasting {
         } else {
             0
         };
-        place + (trim + self.nudge) as f64
+        place + (trim as f64) + self.nudge_cents()
     }
 }

@@ -6,6 +6,8 @@ mod black_keys;
 mod cues;
 /// Two runs of one script; a stream in portions.
 mod determinism;
+/// Gestures besides switches and keys: values, pressure, banks, song select, ranges of keys.
+mod gestures;
 /// Chords that are pure, and what of them moves.
 mod harmony;
 /// Other places of keys, latched, held and by the line.

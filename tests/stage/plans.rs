@@ -1,7 +1,7 @@
 //! What a stage file becomes for the engine.
 
 use super::load;
-use trued::engine::plan::{Act, ChannelSet, Dialect, Follow, Gesture, Press};
+use trued::engine::plan::{Act, Bank, ChannelSet, Dialect, Follow, Gesture, Press};
 use trued::engine::{Ask, Command};
 use trued::intonation::{Method, Ratios, Settings};
 use trued::pitch::Interval;
@@ -9,6 +9,14 @@ use trued::stage::defaults;
 use trued::time::Span;
 
 const SONG: &str = "set: [{song: A song}]\n";
+
+/// A program as on the wire, of any bank.
+fn program(number: u8) -> Gesture {
+    Gesture::Program {
+        number: Some(number),
+        bank: Bank::ANY,
+    }
+}
 
 fn pools(text: &str) -> Vec<u16> {
     let stage = load(&format!("{text}{SONG}"));
@@ -117,23 +125,11 @@ fn cues_that_are_played() {
     assert_eq!(stage.advice, [""; 0]);
     let cues = stage.plan().cues;
     let acts: Vec<(Gesture, Act)> = cues.iter().map(|cue| (cue.gesture, cue.act)).collect();
-    assert_eq!(acts[0], (Gesture::AnyProgram, Act::SongByProgram));
-    assert_eq!(
-        acts[1],
-        (Gesture::Program(0), Act::Command(Command::Song(1)))
-    );
-    assert_eq!(
-        acts[2],
-        (Gesture::Program(127), Act::Command(Command::Song(0)))
-    );
-    assert_eq!(
-        acts[3],
-        (Gesture::Controller(82), Act::Command(Command::Next))
-    );
-    assert_eq!(
-        acts[4],
-        (Gesture::Controller(83), Act::Command(Command::Back))
-    );
+    assert_eq!(acts[0], (Gesture::ANY_PROGRAM, Act::SongByNumber));
+    assert_eq!(acts[1], (program(0), Act::Command(Command::Song(1))));
+    assert_eq!(acts[2], (program(127), Act::Command(Command::Song(0))));
+    assert_eq!(acts[3], (Gesture::switch(82), Act::Command(Command::Next)));
+    assert_eq!(acts[4], (Gesture::switch(83), Act::Command(Command::Back)));
     assert_eq!(acts[5].1, Act::Command(Command::Panic));
     assert!(matches!(acts[6].1, Act::Command(Command::Resend(Some(_)))));
     assert_eq!(cues[0].channels, ChannelSet(0x8000));
@@ -190,7 +186,7 @@ fn programs_may_be_counted_from_nought() {
     let text = "programs_from: 0\ncues: [{when: {program: 0}, do: next}]\n\
                 set: [{song: One, send: [{program: 127}, {controller: 7, value: 90}]}]\n";
     let plan = load(text).plan();
-    assert_eq!(plan.cues[0].gesture, Gesture::Program(0));
+    assert_eq!(plan.cues[0].gesture, program(0));
     let sent: Vec<&[u8]> = plan.set[0]
         .sends
         .iter()
