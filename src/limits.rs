@@ -9,6 +9,8 @@ pub const CHANNELS: usize = 16;
 pub const KEYBOARDS_MAX: usize = 8;
 pub const SYNTHS_MAX: usize = 8;
 pub const PARTS_MAX: usize = 16;
+/// Parts that play, and as many of songs before that still ring.
+pub const PART_PLACES: usize = 2 * PARTS_MAX;
 /// Keys held down at once, over all keyboards and layers. Pedal-held notes do not count: their note-off is out.
 pub const VOICES_MAX: usize = 256;
 /// Presses of one instant that can wait for each other to be one chord.

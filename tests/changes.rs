@@ -7,8 +7,8 @@ use crate::support::plans;
 use crate::support::receiver::Note;
 use crate::support::rig::{Rig, elapsed, keyboard_id};
 use std::time::Duration;
-use trued::engine::plan::{ChannelSet, Dialect, Leave, Steal};
-use trued::engine::{Command, Input, Link, Plan};
+use trued::engine::plan::{ChannelSet, Dialect, Leave, PartPlan, Steal};
+use trued::engine::{Command, Input, KeyboardId, Link, Plan};
 use trued::pitch::Interval;
 use trued::time::{Span, Time};
 use trued::tuning::Key;
@@ -53,11 +53,39 @@ fn a_plan(dice: &mut Dice, dialect: Dialect, range: u8) -> Plan {
         upper.pool = members.without(low);
         upper.offset = Interval::from_cents(dice.pick(&[-50, 0, 17]));
         plan.parts.push(upper);
-        for part in &mut plan.parts {
-            part.late_offs = dialect == MPE;
-        }
+    }
+    own_parts(dice, &mut plan);
+    let songs = plan.set.iter().filter_map(|song| song.parts.as_deref());
+    let shared = plan.parts.len() > 1 || songs.clone().any(|parts| parts.len() > 1);
+    let late_offs = dialect == MPE && shared;
+    let told = |part: &PartPlan| PartPlan { late_offs, ..*part };
+    plan.parts = plan.parts.iter().map(told).collect();
+    for song in &mut plan.set {
+        let parts = song.parts.take();
+        song.parts = parts.map(|parts| parts.iter().map(told).collect());
     }
     plan
+}
+
+/// Some songs have parts of their own: one without pedals, or three on channels that others have too.
+fn own_parts(dice: &mut Dice, plan: &mut Plan) {
+    let whole = plans::part(&plan.synths);
+    for song in &mut plan.set {
+        let mut parts = vec![whole];
+        match dice.below(4) {
+            0 => parts[0].pass.pedals = false,
+            1 => {
+                parts = vec![whole; 3];
+                for (part, pool) in parts.iter_mut().zip([0x0003, 0x01FC, 0x7C00]) {
+                    part.pool = ChannelSet(pool & whole.pool.0);
+                    part.transpose_keys = dice.pick(&[-12, 0, 7]);
+                    part.from = dice.pick(&[None, KeyboardId::new(0), KeyboardId::new(1)]);
+                }
+            }
+            _ => continue,
+        }
+        song.parts = Some(parts.into());
+    }
 }
 
 /// One thing that a player, a wire or an editor does.

@@ -1,6 +1,7 @@
 //! What one channel of a receiver sounds, and what it has been told.
 
 use super::following::Class;
+use super::plan::PartId;
 use crate::midi::controller;
 use crate::pitch::Interval;
 use crate::pitch::word::Bend;
@@ -58,6 +59,8 @@ pub(super) struct Channel {
     pub damper: bool,
     /// A released note rings on under the sostenuto pedal.
     pub sostenuto: bool,
+    /// The part that played on it last; `None` if none of those now playing has.
+    pub part: Option<PartId>,
     /// When a note was last let go by key or pedal; `None` if it never played.
     pub released_at: Option<Time>,
     pub struck_at: Time,
@@ -86,6 +89,7 @@ impl Channel {
         held: 0,
         damper: false,
         sostenuto: false,
+        part: None,
         released_at: None,
         struck_at: Time::START,
         last_key: None,

@@ -103,8 +103,12 @@ fn wish(
     let this_key = channel.last_key == Some(want.key);
     // Notes that a nudge will move differently may not share, though they stand at one bend now.
     let moves_alike = !matches!(rest, Rest::Held | Rest::Pedal) || channel.nudge == want.nudge;
-    let this_bend =
-        rest != Rest::New && moves_alike && same_bend(want, channel.offset, channel.word, synth);
+    // What rings of a part that plays no more has another player's settings.
+    let this_part = channel.part.is_none_or(|part| part == want.part);
+    let this_bend = rest != Rest::New
+        && moves_alike
+        && this_part
+        && same_bend(want, channel.offset, channel.word, synth);
     let must_part = voices
         .iter()
         .any(|v| v.synth == synth.id && v.channel == number && v.number == want.number);

@@ -1,7 +1,7 @@
 //! The player's hands: wheel, pressure, pedals, controllers. They keep their meaning for their own part only.
 
 use super::channel::UNSAID;
-use super::dialect::{gesture_channels, members, on_members};
+use super::dialect::on_members;
 use super::plan::{PartPlan, SynthId};
 use super::synth::PEDALS;
 use super::traffic::Weight;
@@ -63,11 +63,12 @@ impl Engine {
     /// Gives a controller to the channels that sound; the others catch up before their next note, so that a busy
     /// controller on fifteen channels does not choke a slow wire.
     fn spread(&mut self, now: Time, index: usize, number: u8, value: u8, weight: Weight) {
-        let part = self.plan.parts[index];
+        let part = self.parts[index].plan;
         let version = self.parts[index].version;
+        let channels = self.gesture_channels(index);
         let synth = &mut self.synths[part.to.index()];
         let tail = synth.rig.tail;
-        for channel in gesture_channels(&synth.rig, &part).iter() {
+        for channel in channels.iter() {
             let manager = synth.rig.manager() == Some(channel);
             if manager || synth.channels[channel as usize].rings(now, tail) {
                 let told = synth.controller(channel, number, value, weight, &mut self.out);
@@ -81,7 +82,7 @@ impl Engine {
 
     /// A pedal of a part is as far down as the keyboard that holds it deepest.
     fn set_pedal(&mut self, now: Time, index: usize, which: usize) {
-        let part = self.plan.parts[index];
+        let part = self.parts[index].plan;
         let number = PEDALS[which];
         let value = self.deepest(&part, which);
         let was_down = self.parts[index].pedal_down(number);
@@ -103,15 +104,18 @@ impl Engine {
             }
         }
         if is_down && number == controller::DAMPER && !part.late_offs {
-            self.catch_tails(now, &part);
+            self.catch_tails(now, index);
         }
         if !is_down {
-            self.pedal_up(now, index, &part, number);
+            self.pedal_up(now, index, number);
         }
     }
 
     pub(super) fn deepest(&self, part: &PartPlan, which: usize) -> u8 {
         let mut deepest = 0;
+        if !part.pass.pedals {
+            return deepest;
+        }
         for (index, keyboard) in self.keyboards.iter().enumerate() {
             for (channel, source) in keyboard.sources.iter().enumerate() {
                 if source.pedals[which] > deepest
@@ -125,10 +129,11 @@ impl Engine {
     }
 
     /// A damper that goes down while a note still rings may catch it (GM2 3.3.7), so it counts as held.
-    fn catch_tails(&mut self, now: Time, part: &PartPlan) {
-        let synth = &mut self.synths[part.to.index()];
+    fn catch_tails(&mut self, now: Time, index: usize) {
+        let channels = self.channels_of(index);
+        let synth = &mut self.synths[self.parts[index].plan.to.index()];
         let tail = synth.rig.tail;
-        for number in members(&synth.rig, part).iter() {
+        for number in channels.iter() {
             let channel = synth.channel(number);
             if channel.held == 0 && channel.rings(now, tail) {
                 channel.damper = true;
@@ -136,10 +141,11 @@ impl Engine {
         }
     }
 
-    fn pedal_up(&mut self, now: Time, index: usize, part: &PartPlan, number: u8) {
+    fn pedal_up(&mut self, now: Time, index: usize, number: u8) {
         self.damp_harmonies(now);
-        let synth = &mut self.synths[part.to.index()];
-        for member in members(&synth.rig, part).iter() {
+        let channels = self.channels_of(index);
+        let synth = &mut self.synths[self.parts[index].plan.to.index()];
+        for member in channels.iter() {
             let channel = synth.channel(member);
             let held = if number == controller::DAMPER {
                 std::mem::take(&mut channel.damper)
@@ -181,8 +187,9 @@ impl Engine {
 
     /// Puts a part's wheel on the wire: on the manager, or on the channels that sound.
     pub(super) fn play_wheel(&mut self, now: Time, index: usize, weight: Weight) {
-        let part = self.plan.parts[index];
+        let part = self.parts[index].plan;
         let wheel = self.parts[index].wheel;
+        let channels = self.channels_of(index);
         let synth = &mut self.synths[part.to.index()];
         let (range, tail) = (synth.rig.bend_range, synth.rig.tail);
         if !on_members(&synth.rig, &part) {
@@ -192,7 +199,7 @@ impl Engine {
             }
             return;
         }
-        for number in members(&synth.rig, &part).iter() {
+        for number in channels.iter() {
             let channel = &synth.channels[number as usize];
             if channel.rings(now, tail) {
                 let (bend, clipped) = Bend::encode(channel.offset + wheel, range);
@@ -234,7 +241,7 @@ impl Engine {
     }
 
     fn play_pressure(&mut self, now: Time, index: usize) {
-        let part = self.plan.parts[index];
+        let part = self.parts[index].plan;
         let synth = &self.synths[part.to.index()];
         let tail = synth.rig.tail;
         if !on_members(&synth.rig, &part) {
@@ -245,7 +252,7 @@ impl Engine {
             }
             return;
         }
-        for number in members(&synth.rig, &part).iter() {
+        for number in self.channels_of(index).iter() {
             if self.synths[part.to.index()].channels[number as usize].rings(now, tail) {
                 let Some((id, _)) = self.part_of(part.to, number) else {
                     continue;
@@ -259,8 +266,8 @@ impl Engine {
 
     /// The newest value of every gesture that was left out while the wire was busy; what does not fit now waits again.
     pub(super) fn say_gestures_left_out(&mut self, now: Time, id: SynthId) {
-        for index in 0..self.plan.parts.len() {
-            let part = self.plan.parts[index];
+        for index in 0..self.parts.len() {
+            let part = self.parts[index].plan;
             if part.to != id {
                 continue;
             }
@@ -287,9 +294,7 @@ impl Engine {
             if voice.drum || !voice.down || voice.key != key || !hand.is_of(voice) {
                 continue;
             }
-            let Some(part) = self.plan.parts.get(voice.part.index()).copied() else {
-                continue;
-            };
+            let part = self.parts[voice.part.index()].plan;
             if !part.pass.pressure {
                 continue;
             }

@@ -145,7 +145,7 @@ impl Engine {
             followed,
         } in waiting.drain(..)
         {
-            let part = self.plan.parts.get(id.index()).copied();
+            let part = self.parts.get(id.index()).map(|part| part.plan);
             let sounds =
                 part.is_some_and(|part| self.start(now, id, &part, &press, Some(followed)));
             if !sounds {

@@ -1,5 +1,6 @@
 //! `by_line`: a key takes one place when the melody comes to it from below and another when from above.
 
+use super::plan::PartPlan;
 use super::{Engine, Hand};
 use crate::limits::{KEYBOARDS_MAX, LINE_KEYS, REST_MS};
 use crate::time::{Span, Time};
@@ -69,10 +70,9 @@ impl Engine {
 
     /// The key as the song's tuning sees it: moved by the transposition of the song and of the first part it plays.
     pub(super) fn as_tuned(&self, hand: Hand, key: Key) -> Option<Key> {
-        let part =
-            self.plan.parts.iter().find(|part| {
-                self.feeds(part, hand) && (part.keys.0..=part.keys.1).contains(&key)
-            })?;
+        let plays =
+            |part: &&PartPlan| self.feeds(part, hand) && (part.keys.0..=part.keys.1).contains(&key);
+        let part = self.parts_playing().find(plays)?;
         key.moved(part.transpose_keys as i32 + self.transpose_keys() as i32)
     }
 }

@@ -26,6 +26,7 @@ mod notes;
 mod outbox;
 mod parameters;
 mod part;
+mod parts;
 pub mod plan;
 mod setup;
 mod songs;
@@ -43,7 +44,7 @@ pub use traffic::{
 };
 
 use crate::intonation::{Harmony, Method, Shapes};
-use crate::limits::{KEYBOARDS_MAX, PARTS_MAX, SYNTHS_MAX, WAITING_PRESSES_MAX};
+use crate::limits::{KEYBOARDS_MAX, PART_PLACES, SYNTHS_MAX, WAITING_PRESSES_MAX};
 use crate::pitch::{Interval, Pitch};
 use crate::time::Time;
 use crate::tuning::Tuning;
@@ -85,7 +86,10 @@ pub struct Engine {
     line: Line,
     next_key: Option<Wait>,
     keyboards: Vec<Keyboard>,
+    /// Those of the song now playing, then those of songs before that still ring.
     parts: Vec<Part>,
+    /// How many of them are the song's.
+    playing_parts: usize,
     synths: Vec<Synth>,
     voices: Voices,
     out: Outbox,
@@ -178,7 +182,8 @@ impl Engine {
             plain: false,
             sends_due: !plan.set[0].sends.is_empty(),
             keyboards,
-            parts: vec![Part::NEW; PARTS_MAX],
+            parts: Vec::with_capacity(PART_PLACES),
+            playing_parts: 0,
             synths,
             voices: Voices::new(),
             out: Outbox::new(),
@@ -193,6 +198,7 @@ impl Engine {
             stopping: false,
             plan,
         };
+        engine.take_parts(Time::START);
         engine.begin_told();
         engine
     }
@@ -296,6 +302,7 @@ impl Engine {
 
     fn tick(&mut self, now: Time) {
         self.play_chord_before(now);
+        self.drop_silent_parts(now);
         for synth in &mut self.synths {
             synth.wire.tick(now);
         }
@@ -320,8 +327,8 @@ impl Engine {
 
     /// Does something for each part that a hand plays.
     fn for_parts(&mut self, hand: Hand, mut act: impl FnMut(&mut Engine, usize, &PartPlan)) {
-        for index in 0..self.plan.parts.len() {
-            let part = self.plan.parts[index];
+        for index in 0..self.parts.len() {
+            let part = self.parts[index].plan;
             if self.feeds(&part, hand) {
                 act(self, index, &part);
             }
@@ -330,7 +337,7 @@ impl Engine {
 
     fn drum_synths(&self, hand: Hand) -> SynthSet {
         let mut set = SynthSet::default();
-        for part in self.plan.parts.iter().filter(|part| self.hears(part, hand)) {
+        for part in self.parts_playing().filter(|part| self.hears(part, hand)) {
             if self.synths[part.to.index()].rig.drums.has(hand.channel) {
                 set.add(part.to);
             }
@@ -346,7 +353,7 @@ impl Engine {
     fn synths_of(&self, id: KeyboardId) -> SynthSet {
         let id = self.plays_as(id);
         let mut set = SynthSet::default();
-        for part in &self.plan.parts {
+        for part in self.parts_playing() {
             if part.from.is_none_or(|from| from == id) {
                 set.add(part.to);
             }

@@ -5,7 +5,6 @@ use super::choose::{Choice, Cost, Want, choose};
 use super::dialect::{self, on_members};
 use super::following::Followed;
 use super::outbox::Bundle;
-use super::part::owner_of;
 use super::plan::{KeyboardId, PartId, PartPlan, SynthId};
 use super::traffic::{Onset, Weight};
 use super::voices::Voice;
@@ -65,8 +64,8 @@ impl Engine {
             luggage,
             strike: self.strikes,
         };
-        for index in 0..self.plan.parts.len() {
-            let part = self.plan.parts[index];
+        for index in 0..self.playing_parts {
+            let part = self.parts[index].plan;
             if self.feeds(&part, hand) && (part.keys.0..=part.keys.1).contains(&key) {
                 let id = PartId::new(index).expect("a plan keeps to its limits");
                 if !self.wait_for_chord(now, id, &part, &press) {
@@ -213,6 +212,7 @@ impl Engine {
         followed: Option<Followed>,
     ) {
         let number = choice.channel;
+        self.hand_over(now, part.to, number, want.part);
         self.say_what_a_note_needs(now, part.to, number);
         let portamento_from = press
             .luggage
@@ -322,16 +322,10 @@ impl Engine {
         fits: impl Fn(&Voice) -> bool,
     ) {
         loop {
-            let Engine {
-                voices,
-                plan,
-                parts,
-                ..
-            } = self;
+            let Engine { voices, parts, .. } = self;
             let waits = |v: &Voice| {
-                !v.drum
-                    && plan.parts.get(v.part.index()).is_some_and(|p| p.late_offs)
-                    && (v.latched || parts[v.part.index()].damper_down())
+                let part = &parts[v.part.index()];
+                !v.drum && part.plan.late_offs && (v.latched || part.damper_down())
             };
             for voice in voices.iter_mut() {
                 if fits(voice) && waits(voice) {
@@ -382,12 +376,6 @@ impl Engine {
                 synth.pressure(voice.channel, pressure, Weight::Control, &mut self.out);
             }
         }
-    }
-
-    /// The part whose own channel this is.
-    pub(super) fn part_of(&self, id: SynthId, number: u8) -> Option<(PartId, PartPlan)> {
-        let owner = owner_of(&self.plan.parts, id, number)?;
-        Some((owner, self.plan.parts[owner.index()]))
     }
 
     /// Ends everything a keyboard holds.

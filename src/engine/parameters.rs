@@ -1,7 +1,6 @@
 //! Programs and parameters: what a player sets once, and what the engine answers to instead of passing on.
 
 use super::channel::{Program, RESET_VALUES, UNSAID};
-use super::dialect::gesture_channels;
 use super::keyboard::Select;
 use super::outbox::{Bundle, Outbox};
 use super::plan::{ChannelSet, PartPlan};
@@ -28,7 +27,7 @@ impl Engine {
             program: number,
         };
         self.for_parts(hand, |engine, index, part| {
-            if part.pass.programs {
+            if part.pass.programs && index < engine.playing_parts {
                 engine.set_program(now, index, program);
             }
         });
@@ -37,10 +36,11 @@ impl Engine {
     /// Gives a program to a part. Some synths reset their bend range with it, so that is said again.
     pub(super) fn set_program(&mut self, now: Time, index: usize, program: Program) {
         self.parts[index].program = program;
-        let part = self.plan.parts[index];
+        let part = self.parts[index].plan;
+        let channels = self.gesture_channels(index);
         let synth = &mut self.synths[part.to.index()];
         let mut told = ChannelSet::NONE;
-        for channel in gesture_channels(&synth.rig, &part).iter() {
+        for channel in channels.iter() {
             if synth.program(channel, program, &mut self.out) {
                 told = told.with(channel);
             }
@@ -111,10 +111,9 @@ impl Engine {
     /// Every channel that hears the controllers of the parts that a hand plays, by synth.
     fn gesture_channels_of(&self, hand: Hand) -> [ChannelSet; SYNTHS_MAX] {
         let mut channels = [ChannelSet::NONE; SYNTHS_MAX];
-        for part in &self.plan.parts {
-            if part.pass.controllers && self.feeds(part, hand) {
-                let to = part.to.index();
-                channels[to].0 |= gesture_channels(&self.synths[to].rig, part).0;
+        for (index, part) in self.parts.iter().enumerate() {
+            if part.plan.pass.controllers && self.feeds(&part.plan, hand) {
+                channels[part.plan.to.index()].0 |= self.gesture_channels(index).0;
             }
         }
         channels
@@ -157,7 +156,7 @@ impl Engine {
                 self.say_again_what_sounds(now, index, channels);
             }
         }
-        for index in 0..self.plan.parts.len() {
+        for index in 0..self.parts.len() {
             self.release_waiting(now, index);
         }
     }
@@ -198,8 +197,8 @@ impl Engine {
                 self.catch_up(id, number);
             }
         }
-        for part in 0..self.plan.parts.len() {
-            if by_manager && self.plan.parts[part].to == id {
+        for part in 0..self.parts.len() {
+            if by_manager && self.parts[part].plan.to == id {
                 self.play_wheel(now, part, Weight::Owed);
                 self.say_gestures(id, reset.iter().next().unwrap_or(0), part);
             }

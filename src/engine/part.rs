@@ -1,4 +1,4 @@
-//! What the player of a part has set: wheel, pressure, controllers, program.
+//! One part: what it plays, and what its player has set: wheel, pressure, controllers, program.
 
 use super::channel::{Program, UNSAID};
 use super::plan::{PartId, PartPlan, SynthId};
@@ -7,6 +7,7 @@ use crate::pitch::Interval;
 
 #[derive(Clone, Copy)]
 pub(super) struct Part {
+    pub plan: PartPlan,
     pub wheel: Interval,
     pub pressure: u8,
     pub controllers: [u8; 128],
@@ -16,13 +17,16 @@ pub(super) struct Part {
 }
 
 impl Part {
-    pub const NEW: Part = Part {
-        wheel: Interval::ZERO,
-        pressure: 0,
-        controllers: [UNSAID; 128],
-        version: 0,
-        program: Program::UNSAID,
-    };
+    pub const fn new(plan: PartPlan) -> Part {
+        Part {
+            plan,
+            wheel: Interval::ZERO,
+            pressure: 0,
+            controllers: [UNSAID; 128],
+            version: 0,
+            program: Program::UNSAID,
+        }
+    }
 
     pub fn set(&mut self, number: u8, value: u8) {
         self.controllers[number as usize] = value;
@@ -40,8 +44,8 @@ impl Part {
     }
 }
 
-/// The part whose own channel this is.
-pub(super) fn owner_of(parts: &[PartPlan], synth: SynthId, channel: u8) -> Option<PartId> {
-    let owns = |part: &PartPlan| part.to == synth && part.pool.has(channel);
+/// The part to whose pool a channel belongs.
+pub(super) fn owner_of(parts: &[Part], synth: SynthId, channel: u8) -> Option<PartId> {
+    let owns = |part: &Part| part.plan.to == synth && part.plan.pool.has(channel);
     parts.iter().position(owns).and_then(PartId::new)
 }

@@ -2,7 +2,7 @@
 
 pub use super::by_hand::{ByHand, ByLine, NameId, OtherPlace, TurnStep, TwoNames};
 use crate::intonation::Method;
-use crate::limits::{KEYBOARDS_MAX, PARTS_MAX, SYNTHS_MAX};
+use crate::limits::{KEYBOARDS_MAX, PART_PLACES, SYNTHS_MAX};
 use crate::pitch::word::BendRange;
 use crate::pitch::{Interval, Pitch};
 use crate::time::Span;
@@ -18,7 +18,7 @@ pub struct KeyboardId(u8);
 #[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord, Hash)]
 pub struct SynthId(u8);
 
-/// A part, by place in the plan; always below `PARTS_MAX`.
+/// A part, by place among those that play and those that still ring; always below `PART_PLACES`.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord, Hash)]
 pub struct PartId(u8);
 
@@ -42,7 +42,7 @@ macro_rules! place {
 }
 place!(KeyboardId, KEYBOARDS_MAX);
 place!(SynthId, SYNTHS_MAX);
-place!(PartId, PARTS_MAX);
+place!(PartId, PART_PLACES);
 
 /// A set of MIDI channels, bit 0 = channel 1.
 #[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
@@ -82,7 +82,7 @@ pub struct Plan {
     pub keyboards: Vec<KeyboardPlan>,
     /// At most `SYNTHS_MAX`, at least one.
     pub synths: Vec<SynthPlan>,
-    /// At most `PARTS_MAX`, at least one.
+    /// Of songs that have none of their own; at most `PARTS_MAX`, at least one.
     pub parts: Vec<PartPlan>,
     /// In tonight's order; at most `SONGS_MAX`, at least one.
     pub set: Vec<SongPlan>,
@@ -91,6 +91,13 @@ pub struct Plan {
     pub edits_at_once: bool,
     /// Where twelve-equal stands at the evening's reference, above A4 = 440 Hz.
     pub plain_offset: Interval,
+}
+
+impl Plan {
+    /// The parts of a song.
+    pub fn parts_of<'p>(&'p self, song: &'p SongPlan) -> &'p [PartPlan] {
+        song.parts.as_deref().unwrap_or(&self.parts)
+    }
 }
 
 #[derive(Clone, Debug, PartialEq)]
@@ -209,7 +216,7 @@ pub struct PartPlan {
     pub tune: bool,
     /// How it stands to the harmony, in songs that follow one.
     pub follow: Follow,
-    /// This part shares an MPE manager with another, so its pedals are played by late note-offs instead.
+    /// This part shares an MPE manager with another, in this song or the next, so its pedals are played by late note-offs instead.
     pub late_offs: bool,
 }
 
@@ -222,6 +229,8 @@ pub struct SongPlan {
     pub reference: Pitch,
     pub transpose_keys: i8,
     pub method: Method,
+    /// Its own in place of the plan's; at most `PARTS_MAX`, at least one.
+    pub parts: Option<Arc<[PartPlan]>>,
     /// What can be changed of it by hand; shared as the tuning is.
     pub by_hand: Arc<ByHand>,
     /// Whole messages given to a synth when the song begins, once no key is held, as if a player of it had sent them:

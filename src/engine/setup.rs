@@ -118,8 +118,8 @@ impl Engine {
             &mut self.out,
         );
         synth.channel(manager).bend = None;
-        for index in 0..self.plan.parts.len() {
-            if self.plan.parts[index].to == id {
+        for index in 0..self.parts.len() {
+            if self.parts[index].plan.to == id {
                 self.say_gestures(id, manager, index);
                 self.play_wheel(now, index, Weight::Owed);
             }
@@ -161,7 +161,7 @@ impl Engine {
     /// A part's program, controllers and pressure, on a channel that speaks for it.
     pub(super) fn say_gestures(&mut self, id: SynthId, number: u8, index: usize) {
         let settings = self.parts[index];
-        let part = self.plan.parts[index];
+        let part = settings.plan;
         let synth = &mut self.synths[id.index()];
         synth.program(number, settings.program, &mut self.out);
         if settings.pedal_down(controller::SOSTENUTO) && !part.late_offs {
@@ -196,7 +196,10 @@ impl Engine {
     /// A manager's range reaches as far as the widest wheel that plays on it.
     fn fit_manager_range(&mut self, id: SynthId) -> bool {
         let mut widest = Interval::SEMITONE;
-        for part in self.plan.parts.iter().filter(|part| part.to == id) {
+        for part in self.parts.iter().map(|part| &part.plan) {
+            if part.to != id {
+                continue;
+            }
             if on_members(&self.synths[id.index()].rig, part) {
                 continue;
             }
@@ -218,8 +221,8 @@ impl Engine {
 
     /// After RPN 0 from a keyboard: managers that have to reach further are told so.
     pub(super) fn widen_managers(&mut self, now: Time, hand: Hand) {
-        for index in 0..self.plan.parts.len() {
-            let part = self.plan.parts[index];
+        for index in 0..self.parts.len() {
+            let part = self.parts[index].plan;
             let id = part.to;
             if self.feeds(&part, hand)
                 && self.synths[id.index()].rig.manager().is_some()

@@ -1,12 +1,10 @@
 //! Songs, and edits of the whole plan.
 
 use super::armed::find_again;
-use super::channel::{Program, UNSAID};
-use super::part::owner_of;
+use super::channel::Program;
 use super::plan::{KeyboardId, Plan, SynthId};
-use super::synth::{PEDALS, Rig};
+use super::synth::Rig;
 use super::traffic::{Link, Weight};
-use super::voices::Voice;
 use super::{Engine, Playing};
 use crate::limits::KEYBOARDS_MAX;
 use crate::midi::{Message, controller};
@@ -24,6 +22,7 @@ impl Engine {
         self.sends_due = !song.sends.is_empty();
         self.begin_told();
         self.begin_harmony();
+        self.take_parts(now);
         for synth in self.synths.iter_mut().take(self.plan.synths.len()) {
             synth.repeat_when_silent = true;
         }
@@ -53,8 +52,8 @@ impl Engine {
     }
 
     fn send_program(&mut self, now: Time, id: SynthId, number: u8) {
-        for index in 0..self.plan.parts.len() {
-            if self.plan.parts[index].to == id {
+        for index in 0..self.playing_parts {
+            if self.parts[index].plan.to == id {
                 let bank = self.parts[index].program;
                 let program = Program {
                     program: number,
@@ -70,8 +69,8 @@ impl Engine {
 
     /// Kept for every channel of the synth's parts; they hear it before their next note.
     fn send_controller(&mut self, id: SynthId, number: u8, value: u8) {
-        for index in 0..self.plan.parts.len() {
-            if self.plan.parts[index].to == id {
+        for index in 0..self.playing_parts {
+            if self.parts[index].plan.to == id {
                 self.parts[index].set(number, value);
                 let synth = &mut self.synths[id.index()];
                 if let Some(manager) = synth.rig.manager() {
@@ -111,95 +110,13 @@ impl Engine {
             let synth = &mut self.synths[index];
             synth.next_rig = (rig != synth.rig).then_some(rig);
         }
-        if self.plan.parts != old.parts {
-            self.fit_parts(now);
-        }
+        self.edit_parts(now);
         for index in self.plan.synths.len()..old.synths.len() {
             let id = self.synths[index].id;
             self.link_changed(now, id, Link::Down);
         }
         self.when_silent(now);
         old
-    }
-
-    /// After an edit of the parts: each takes the pedals and the wheel of the hands that play it now, and what rings
-    /// under a pedal that nobody holds any more is let go.
-    fn fit_parts(&mut self, now: Time) {
-        self.rehome_voices(now);
-        for index in 0..self.plan.parts.len() {
-            let part = self.plan.parts[index];
-            for (which, pedal) in PEDALS.into_iter().enumerate() {
-                let value = self.deepest(&part, which);
-                if value > 0 || self.parts[index].controllers[pedal as usize] != UNSAID {
-                    self.parts[index].set(pedal, value);
-                }
-            }
-            self.release_waiting(now, index);
-        }
-        for index in 0..self.plan.synths.len() {
-            self.fit_channels(now, index);
-        }
-        // Where pedals are the synth's own now, nothing has to wait for them here.
-        loop {
-            let parts = &self.plan.parts;
-            let waits = |v: &Voice| !v.drum && !v.down && !parts[v.part.index()].late_offs;
-            match self.voices.take(waits) {
-                Some(voice) => self.end(now, &voice, 64, None),
-                None => return,
-            }
-        }
-    }
-
-    /// An open note belongs to the part that has its channel now; where none has, it is ended.
-    fn rehome_voices(&mut self, now: Time) {
-        for voice in self.voices.iter_mut().filter(|v| !v.drum) {
-            let owner = owner_of(&self.plan.parts, voice.synth, voice.channel);
-            voice.part = owner.unwrap_or(voice.part);
-        }
-        loop {
-            let parts = &self.plan.parts;
-            let homeless = |v: &Voice| !v.drum && owner_of(parts, v.synth, v.channel).is_none();
-            match self.voices.take(homeless) {
-                Some(voice) => self.end(now, &voice, 64, None),
-                None => return,
-            }
-        }
-    }
-
-    /// Brings a synth's channels in line with the parts that own them now.
-    fn fit_channels(&mut self, now: Time, index: usize) {
-        let (id, rig) = (self.synths[index].id, self.synths[index].rig);
-        let late = self.plan.parts.iter().any(|p| p.to == id && p.late_offs);
-        for number in rig.channels().iter() {
-            let owner = self.part_of(id, number);
-            let pedal_down = |engine: &Engine, pedal| {
-                owner.is_some_and(|(id, _)| engine.parts[id.index()].pedal_down(pedal))
-            };
-            let damper = pedal_down(self, controller::DAMPER);
-            let sostenuto = pedal_down(self, controller::SOSTENUTO);
-            let manager = rig.manager() == Some(number);
-            if (manager && late) || (!manager && !damper && !sostenuto) {
-                self.synths[index].lift_pedals(number, &mut self.out);
-            }
-            let channel = self.synths[index].channel(number);
-            channel.version = 0;
-            if (channel.damper && !damper) || (channel.sostenuto && !sostenuto) {
-                channel.damper &= damper;
-                channel.sostenuto &= sostenuto;
-                channel.released_at = Some(now);
-            }
-            if channel.rings(now, rig.tail) {
-                self.catch_up(id, number);
-            }
-        }
-        for part in 0..self.plan.parts.len() {
-            if let Some(manager) = rig.manager()
-                && self.plan.parts[part].to == id
-                && self.synths[index].up
-            {
-                self.say_gestures(id, manager, part);
-            }
-        }
     }
 }
 

@@ -73,7 +73,7 @@ fn read(path: &Path, top: &At<'_>, found: &mut Findings) -> Option<Stage> {
         told: Told::default(),
         titles: Vec::new(),
     };
-    let entries = songs::read(book.as_ref(), set.as_ref(), top, &mut desk);
+    let mut entries = songs::read(book.as_ref(), set.as_ref(), top, &mut desk);
     let (told, titles) = (desk.told, desk.titles);
     let scene = Scene {
         rig: &rig,
@@ -93,7 +93,8 @@ fn read(path: &Path, top: &At<'_>, found: &mut Findings) -> Option<Stage> {
         lamps::check(&at, &scene, found);
     }
     fields.finish(&mut found.complaints);
-    let parts = pools::allot(&rig.parts, &rig, &mut found.complaints);
+    let mut parts = pools::allot(&rig.parts, &rig, &mut found.complaints);
+    pools::share_managers(&rig, &mut parts, &mut entries);
     for entry in &entries {
         for line in entry.song.advice() {
             found.advise(line);

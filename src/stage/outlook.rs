@@ -159,8 +159,9 @@ pub fn intonation(plan: &Plan, song: usize) -> Option<String> {
 
 /// Where a song has more different bends within five octaves than a part has channels: what then gives way.
 pub fn crowding(plan: &Plan, song: usize) -> Option<String> {
-    let SongPlan { tuning, method, .. } = plan.set.get(song)?;
-    let parts = plan.parts.iter().filter(|part| part.tune);
+    let song = plan.set.get(song)?;
+    let SongPlan { tuning, method, .. } = song;
+    let parts = plan.parts_of(song).iter().filter(|part| part.tune);
     let crowded = parts.filter_map(|part| {
         if *method != Method::Fixed && part.follow != Follow::Nothing {
             return crowded_chords(plan, part);
@@ -262,16 +263,21 @@ impl std::fmt::Display for Pair {
 
 /// Each synth of a plan, as its songs will use it.
 pub fn synths(plan: &Plan) -> Vec<SynthOutlook> {
-    let mut tunings: Vec<&Arc<Tuning>> = Vec::new();
+    let mut played: Vec<(&PartPlan, &Arc<Tuning>)> = Vec::new();
     for song in &plan.set {
-        if !tunings.iter().any(|known| Arc::ptr_eq(known, &song.tuning)) {
-            tunings.push(&song.tuning);
+        for part in plan.parts_of(song).iter().filter(|part| part.tune) {
+            let is_it = |(other, tuning): &(&PartPlan, &Arc<Tuning>)| {
+                *other == part && Arc::ptr_eq(tuning, &song.tuning)
+            };
+            if !played.iter().any(is_it) {
+                played.push((part, &song.tuning));
+            }
         }
     }
     let synths = plan.synths.iter().enumerate();
     synths
         .map(|(index, synth)| {
-            let parts = plan.parts.iter().filter(|part| part.to.index() == index);
+            let here = played.iter().filter(|(part, _)| part.to.index() == index);
             SynthOutlook {
                 dialect: match synth.dialect {
                     Dialect::Mpe { .. } => "mpe",
@@ -280,7 +286,7 @@ pub fn synths(plan: &Plan) -> Vec<SynthOutlook> {
                 channels: synth.members.iter().map(|channel| channel + 1).collect(),
                 channels_spelt: spell_channels(synth.members),
                 bend_range: synth.bend_range.semitones(),
-                worst_rounding: worst_rounding(synth, parts, &tunings),
+                worst_rounding: worst_rounding(synth, here),
             }
         })
         .collect()
@@ -288,21 +294,18 @@ pub fn synths(plan: &Plan) -> Vec<SynthOutlook> {
 
 fn worst_rounding<'p>(
     synth: &SynthPlan,
-    parts: impl Iterator<Item = &'p PartPlan>,
-    tunings: &[&Arc<Tuning>],
+    played: impl Iterator<Item = &'p (&'p PartPlan, &'p Arc<Tuning>)>,
 ) -> Interval {
     let mut worst = Interval::ZERO;
-    for part in parts.filter(|part| part.tune) {
-        for tuning in tunings {
-            for pitch in Key::all().filter_map(|key| tuning.pitch(key)) {
-                let wanted = pitch + part.offset;
-                let Some(number) = wanted.nearest_key() else {
-                    continue;
-                };
-                let bend = wanted - Pitch::of_key(number);
-                let (word, _) = Bend::encode(bend, synth.bend_range);
-                worst = worst.max((word.decode(synth.bend_range) - bend).abs());
-            }
+    for (part, tuning) in played {
+        for pitch in Key::all().filter_map(|key| tuning.pitch(key)) {
+            let wanted = pitch + part.offset;
+            let Some(number) = wanted.nearest_key() else {
+                continue;
+            };
+            let bend = wanted - Pitch::of_key(number);
+            let (word, _) = Bend::encode(bend, synth.bend_range);
+            worst = worst.max((word.decode(synth.bend_range) - bend).abs());
         }
     }
     worst

@@ -3,6 +3,7 @@
 use super::complaint::{Complaints, Trail};
 use super::parts::Part;
 use super::rig::Rig;
+use super::songs::Entry;
 use super::values::spell_channels;
 use crate::engine::plan::{ChannelSet, Dialect, PartPlan, SynthId};
 
@@ -41,15 +42,41 @@ pub fn allot(parts: &[Part], rig: &Rig, complaints: &mut Complaints) -> Vec<Part
             pass: part.pass,
             tune: part.tune,
             follow: part.follow,
-            late_offs: shares_manager(part.to, parts, rig),
+            late_offs: false, // known once the whole evening is
         })
         .collect()
 }
 
-/// Two parts in one MPE zone share its manager, where pedals are heard.
-fn shares_manager(to: SynthId, parts: &[Part], rig: &Rig) -> bool {
-    let mpe = matches!(rig.synths[to.index()].plan.dialect, Dialect::Mpe { .. });
-    mpe && parts.iter().filter(|part| part.to == to).count() > 1
+/// Parts in one MPE zone share its manager, where pedals are heard: at once, or because what rings of the last song is
+/// another player's.
+pub fn share_managers(rig: &Rig, stage: &mut [PartPlan], set: &mut [Entry]) {
+    for index in 0..rig.synths.len() {
+        let mpe = matches!(rig.synths[index].plan.dialect, Dialect::Mpe { .. });
+        let Some(synth) = SynthId::new(index).filter(|_| mpe) else {
+            continue;
+        };
+        let mut players = Vec::new();
+        let mut shared = false;
+        for song in set.iter().map(|entry| &entry.plan) {
+            let here = song.parts.as_deref().unwrap_or(stage);
+            let here = here.iter().filter(|part| part.to == synth);
+            shared |= here.clone().count() > 1;
+            players.extend(here.map(|part| part.from));
+        }
+        shared |= players.iter().any(|player| *player != players[0]);
+        let told = |part: &PartPlan| PartPlan {
+            late_offs: part.late_offs || (shared && part.to == synth),
+            ..*part
+        };
+        for part in stage.iter_mut() {
+            *part = told(part);
+        }
+        for entry in set.iter_mut() {
+            if let Some(parts) = &mut entry.plan.parts {
+                *parts = parts.iter().map(told).collect();
+            }
+        }
+    }
 }
 
 /// What a part asks for by number, as far as it can have it.

@@ -232,7 +232,7 @@ fn same_title(known: &str, title: &str) -> bool {
     known == title || number(known).is_some_and(|known| number(title) == Some(known))
 }
 
-const SONG_KEYS: [&str; 13] = [
+const SONG_KEYS: [&str; 14] = [
     "song",
     "title",
     "tuning",
@@ -242,6 +242,7 @@ const SONG_KEYS: [&str; 13] = [
     "turned_to",
     "black_keys",
     "transpose",
+    "parts",
     "intonation",
     "begin_with",
     "by_line",
@@ -277,12 +278,10 @@ fn song(
         Some(at) => sends(&at, desk),
         None => Vec::new(),
     };
-    if let Some(at) = fields.take("parts") {
+    let parts = fields.take("parts").map(|at| {
         let parts = parts::parts(&at, desk.rig, desk.found);
-        super::pools::allot(&parts, desk.rig, &mut desk.found.complaints);
-        desk.found
-            .not_played(format!("`parts` of a song of its own ({title})"));
-    }
+        super::pools::allot(&parts, desk.rig, &mut desk.found.complaints)
+    });
     fields.finish(&mut desk.found.complaints);
     let (placed, by_hand) = (placed?, by_hand?);
     Some(Entry {
@@ -292,6 +291,7 @@ fn song(
             reference: placed.placement.hertz.pitch(),
             transpose_keys,
             method,
+            parts: parts.filter(|parts| !parts.is_empty()).map(Arc::from),
             by_hand,
             sends,
         },

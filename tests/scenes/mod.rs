@@ -16,6 +16,8 @@ mod inflections;
 mod lost;
 /// Mode messages, Reset All Controllers.
 mod modes;
+/// Splits, layers, several keyboards and synths; parts of a song.
+mod parts;
 /// Damper, sostenuto, keys struck again.
 mod pedals;
 /// Poly pressure, CC88 and CC84.

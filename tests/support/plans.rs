@@ -37,6 +37,7 @@ pub fn song(title: &str, tuning: Arc<Tuning>) -> SongPlan {
         reference: Pitch::of_key(69),
         transpose_keys: 0,
         method: Method::Fixed,
+        parts: None,
         by_hand: Arc::new(ByHand::nothing(Key::C4)),
         sends: Vec::new(),
     }

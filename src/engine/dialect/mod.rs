@@ -1,26 +1,17 @@
 //! How each dialect spreads a player's gestures over a synth's channels.
 //!
 //! **What this room is**: what differs between an MPE zone and a plain multitimbral synth, and nothing else.
-//! **Start reading at** [`gesture_channels`].
+//! **Start reading at** [`on_members`].
 //! **May know** the engine's plan and synths.
 //! **Owns**: a gesture reaches the channels of its own part only.
-//! **Not here**: which channel a note takes (`choose`).
+//! **Not here**: which channel a note takes (`choose`), which channels a part speaks for (`parts`).
 
 pub(super) mod mpe;
 
 use super::plan::{ChannelSet, Dialect, PartPlan};
 use super::synth::Rig;
 
-/// The channels that hear a part's controllers and programs: the manager alone under MPE (MPE 1.1, 2.3), each of the
-/// part's own otherwise.
-pub(super) fn gesture_channels(rig: &Rig, part: &PartPlan) -> ChannelSet {
-    match rig.dialect {
-        Dialect::Mpe { manager } => ChannelSet::NONE.with(manager),
-        Dialect::ChannelBend => members(rig, part),
-    }
-}
-
-/// The channels that carry a part's notes now. While a changed rig waits for silence, only those that both have.
+/// The channels that a part's new notes may take. While a changed rig waits for silence, only those that both have.
 pub(super) fn members(rig: &Rig, part: &PartPlan) -> ChannelSet {
     ChannelSet(part.pool.0 & rig.members.0)
 }
