@@ -145,6 +145,9 @@ fn song_text(text: &mut String, number: usize, song: &Song, more: impl Iterator<
     for fifth in song.circle() {
         line(text, format_args!("     {fifth}"));
     }
+    if let Some(keys) = song.good_keys() {
+        line(text, format_args!("     {keys}"));
+    }
     for (named, pairs) in song.pairs() {
         for pair in pairs {
             line(text, format_args!("     in {named}: {pair}"));
@@ -232,6 +235,7 @@ fn song_json(song: &Song) -> Value {
         "about": song.tuning_about,
         "c4": song.c4(),
         "circle": song.circle(),
+        "good_keys": song.good_keys(),
         "pairs": pairs.collect::<Vec<Value>>(),
     })
 }

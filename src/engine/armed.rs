@@ -1,7 +1,7 @@
 //! What cues `at: quiet` have armed, until every key and pedal of every keyboard is up.
 
 use super::Engine;
-use super::plan::{Plan, SongPlan};
+use super::plan::{ChannelSet, Plan, SongPlan};
 use super::traffic::Command;
 use crate::limits::ARMED_MAX;
 use crate::time::Time;
@@ -134,17 +134,15 @@ impl Engine {
         }
     }
 
-    fn is_quiet(&self) -> bool {
-        self.plan
-            .keyboards
-            .iter()
-            .zip(&self.keyboards)
-            .all(|(plan, keyboard)| {
-                let heard = plan.channels.iter();
-                heard
-                    .map(|channel| &keyboard.sources[channel as usize])
-                    .all(|source| source.is_quiet())
-            })
+    /// Whether every key and pedal is up, of every device that plays as a keyboard of the plan.
+    pub(super) fn is_quiet(&self) -> bool {
+        self.keyboards.iter().all(|keyboard| {
+            let plan = self.plan.keyboards.get(keyboard.plays_as.index());
+            let heard = plan.map_or(ChannelSet::NONE, |plan| plan.channels).iter();
+            heard
+                .map(|channel| &keyboard.sources[channel as usize])
+                .all(|source| source.is_quiet())
+        })
     }
 
     /// After an edit: armed songs are found again by title, or are armed no more.

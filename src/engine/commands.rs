@@ -90,12 +90,14 @@ impl Engine {
             Command::Ask(ask) => self.out.ask(ask),
             Command::Panic => self.panic(now),
             Command::Resend(Some(id)) if id.index() < self.plan.synths.len() => {
+                self.synths[id.index()].song_due.again();
                 self.set_up(now, id);
             }
             Command::Resend(Some(_)) => self.out.counters.ignored += 1,
             Command::Resend(None) => {
                 for index in 0..self.plan.synths.len() {
                     let id = self.synths[index].id;
+                    self.synths[index].song_due.again();
                     self.set_up(now, id);
                 }
             }

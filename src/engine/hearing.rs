@@ -3,12 +3,11 @@
 use super::channel::UNSAID;
 use super::cues::{Control, Heard};
 use super::plan::KeyboardId;
-use super::songs::is_reset;
 use super::synth::{PEDALS, bend_message};
 use super::traffic::Weight;
 use super::{Engine, Hand, wheel_semitones};
 use crate::limits::RESET_MS;
-use crate::midi::{Message, Splitter, controller, status};
+use crate::midi::{Message, Splitter, controller, is_reset, status};
 use crate::time::{Span, Time};
 use crate::tuning::Key;
 

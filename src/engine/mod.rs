@@ -103,7 +103,6 @@ pub struct Engine {
     /// Since when something waits for the harmony to be solved.
     chord_at: Option<Time>,
     strikes: u64,
-    sends_due: bool,
     stepped_at: Option<Time>,
     stopping: bool,
 }
@@ -180,7 +179,6 @@ impl Engine {
             nudge: Interval::ZERO,
             transposed: None,
             plain: false,
-            sends_due: !plan.set[0].sends.is_empty(),
             keyboards,
             parts: Vec::with_capacity(PART_PLACES),
             playing_parts: 0,
@@ -235,6 +233,7 @@ impl Engine {
             let id = self.synths[index].id;
             if self.synths[index].again_at.is_some_and(|at| at <= now) {
                 self.synths[index].again_at = None;
+                self.synths[index].song_due.again();
                 self.set_up(now, id);
             }
             self.say_pieces(now, id);

@@ -35,8 +35,8 @@ impl Engine {
                 if link == Link::Back {
                     synth.again_at = Some(now + Span::from_millis(SETTLE_MS));
                 }
+                self.synths[id.index()].song_due.again();
                 self.set_up(now, id);
-                self.sends_due = !self.plan.set[self.song].sends.is_empty();
             }
             Link::Going => {
                 while let Some(voice) = self.voices.take(|v| v.synth == id) {

@@ -3,7 +3,7 @@
 use super::armed::find_again;
 use super::channel::Program;
 use super::plan::{KeyboardId, Plan, SynthId};
-use super::synth::Rig;
+use super::synth::{Rig, SongDue, Synth};
 use super::traffic::{Link, Weight};
 use super::{Engine, Playing};
 use crate::limits::KEYBOARDS_MAX;
@@ -19,35 +19,49 @@ impl Engine {
         };
         self.song = place;
         self.playing = Playing::of(song);
-        self.sends_due = !song.sends.is_empty();
         self.begin_told();
         self.begin_harmony();
         self.take_parts(now);
         for synth in self.synths.iter_mut().take(self.plan.synths.len()) {
             synth.repeat_when_silent = true;
         }
+        self.song_is_due();
         self.send_song(now);
         self.when_silent(now);
     }
 
-    /// A song's own messages go out once no key is held.
+    fn song_is_due(&mut self) {
+        for synth in &mut self.synths {
+            synth.song_due = SongDue::All;
+        }
+    }
+
+    /// A song's own messages go out once no key and no pedal is down; a change of sound may cut off what they hold.
     pub(super) fn send_song(&mut self, now: Time) {
-        if !self.sends_due || self.voices.len() > 0 {
+        let synths = &self.synths[..self.plan.synths.len()];
+        let is_due = |synth: &Synth| synth.up && synth.song_due != SongDue::Nothing;
+        if !synths.iter().any(is_due) || self.voices.len() > 0 || !self.is_quiet() {
             return;
         }
-        self.sends_due = false;
         for index in 0..self.plan.set[self.song].sends.len() {
             let (id, ref bytes) = self.plan.set[self.song].sends[index];
-            match Message::read(bytes) {
-                Some(Message::Sysex(_)) => {
-                    self.synths[id.index()].send(Weight::Owed, bytes, &mut self.out);
-                }
-                Some(Message::Program { number, .. }) => self.send_program(now, id, number),
-                Some(Message::Controller { number, value, .. }) => {
+            let synth = &mut self.synths[id.index()];
+            if !synth.up {
+                continue; // it gets them when it comes
+            }
+            match (Message::read(bytes), synth.song_due) {
+                (_, SongDue::Nothing) => {}
+                (Some(Message::Sysex(_)), _) => synth.send(Weight::Owed, bytes, &mut self.out),
+                (_, SongDue::Exclusive) => {}
+                (Some(Message::Program { number, .. }), _) => self.send_program(now, id, number),
+                (Some(Message::Controller { number, value, .. }), _) => {
                     self.send_controller(id, number, value);
                 }
                 _ => self.out.counters.ignored += 1,
             }
+        }
+        for synth in self.synths.iter_mut().filter(|synth| synth.up) {
+            synth.song_due = SongDue::Nothing;
         }
     }
 
@@ -98,6 +112,7 @@ impl Engine {
             self.playing = Playing::of(&self.plan.set[self.song]);
             if place.is_none() {
                 self.begin_told();
+                self.song_is_due();
             }
             self.retell();
             if place.is_none() || self.playing.method != method {
@@ -118,9 +133,4 @@ impl Engine {
         self.when_silent(now);
         old
     }
-}
-
-/// Whether a system exclusive message is General MIDI On or Off (universal, 09 01-03): the receiver forgets everything.
-pub(super) fn is_reset(sysex: &[u8]) -> bool {
-    matches!(sysex, [0xF0, 0x7E, _, 0x09, 0x01..=0x03, 0xF7])
 }

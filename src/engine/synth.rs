@@ -92,6 +92,24 @@ pub(super) struct Synth {
     pub wire: Wire,
     /// When set-up is to be said once more.
     pub again_at: Option<Time>,
+    /// What of the song's own messages it has yet to be sent.
+    pub song_due: SongDue,
+}
+
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(super) enum SongDue {
+    Nothing,
+    /// It may have forgotten system exclusive messages. The rest is said as it stands now, with every set-up.
+    Exclusive,
+    All,
+}
+
+impl SongDue {
+    pub fn again(&mut self) {
+        if *self == SongDue::Nothing {
+            *self = SongDue::Exclusive;
+        }
+    }
 }
 
 impl Synth {
@@ -110,6 +128,7 @@ impl Synth {
             piece_at: None,
             wire: Wire::IDLE,
             again_at: None,
+            song_due: SongDue::All,
         }
     }
 

@@ -107,3 +107,8 @@ pub(super) fn data_bytes(status: u8) -> Option<usize> {
         _ => None,
     }
 }
+
+/// Whether a system exclusive message is General MIDI On or Off (universal, 09 01-03): the receiver forgets everything.
+pub fn is_reset(sysex: &[u8]) -> bool {
+    matches!(sysex, [0xF0, 0x7E, _, 0x09, 0x01..=0x03, 0xF7])
+}

@@ -11,7 +11,7 @@ mod message;
 pub mod parameter;
 mod splitter;
 
-pub use message::Message;
+pub use message::{Message, is_reset};
 pub use splitter::Splitter;
 
 /// Controllers the engine has something to say about, by number (MIDI 1.0, table 3; 88 from CA-031).

@@ -3,6 +3,7 @@
 use super::beats;
 use super::chart::Chart;
 use crate::pitch::{Interval, Log, Pitch};
+use crate::stage::chords::good_keys;
 use crate::stage::circle::Circle;
 use crate::stage::expression::narrow_or_wide;
 use crate::stage::landing::{ratio, where_c4_lands};
@@ -26,6 +27,9 @@ pub fn sheet(chart: &Chart) -> String {
         Some(circle) => {
             for line in circle.lines() {
                 let _ = writeln!(text, "{line}.");
+            }
+            if let Some(keys) = good_keys(&chart.tuning, &chart.names) {
+                let _ = writeln!(text, "There is {keys}.");
             }
             octave(&mut text, chart);
             setting(&mut text, chart);

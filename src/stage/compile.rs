@@ -72,6 +72,7 @@ fn read(path: &Path, top: &At<'_>, found: &mut Findings) -> Option<Stage> {
         by_hand: Vec::new(),
         told: Told::default(),
         titles: Vec::new(),
+        book_is_lost: false,
     };
     let mut entries = songs::read(book.as_ref(), set.as_ref(), top, &mut desk);
     let (told, titles) = (desk.told, desk.titles);

@@ -14,6 +14,8 @@ use std::sync::Arc;
 /// The keys that have other places in a song, as the tuning writes them and as they lie on the keyboard.
 struct Places<'t> {
     described: &'t TuningText,
+    /// It stands in the stage file, where a place can be added.
+    is_own: bool,
     /// The pitch class that the tuning is written from, and the one it is put on.
     written_from: u8,
     home: u8,
@@ -33,7 +35,11 @@ impl Places<'_> {
     }
 }
 
-fn places<'t>(described: &'t TuningText, placed: Option<&Placed>) -> Places<'t> {
+fn places<'t>(
+    described: &'t TuningText,
+    is_own: bool,
+    placed: Option<&Placed>,
+) -> Places<'t> {
     let written_from = match &described.scale {
         Scale::ByLetter(scale) => scale.home,
         Scale::FromTonic(scale) => scale.default_tonic().pitch_class(),
@@ -43,6 +49,7 @@ fn places<'t>(described: &'t TuningText, placed: Option<&Placed>) -> Places<'t> 
     });
     Places {
         described,
+        is_own,
         written_from,
         home,
     }
@@ -55,7 +62,10 @@ pub fn read(
     placed: Option<&Placed>,
     desk: &mut Desk<'_, '_>,
 ) -> Option<Arc<ByHand>> {
-    let places = described.map(|described| places(described, placed));
+    let places = described.map(|described| {
+        let is_own = desk.tunings.is_own(&described.name);
+        places(described, is_own, placed)
+    });
     let complaints = &mut desk.found.complaints;
     let begin_with = begin_with(fields, places.as_ref(), complaints);
     let by_line = by_line(fields, places.as_ref(), complaints);
@@ -85,8 +95,11 @@ fn begin_with(
     let wanted = "keys and their places, as in `{B: natural}`";
     let entries = at.fields(wanted, complaints);
     for (name, place) in entries.map(|mut all| all.take_all()).unwrap_or_default() {
-        if let Some((key, place)) = place_of(&name, &place, places, complaints) {
-            begin_with[key as usize] = place;
+        let Some(letter) = key_of(&name, &place, complaints) else {
+            continue;
+        };
+        if let Some(place) = place_of(letter, &place, places, complaints) {
+            begin_with[letter.pitch_class() as usize] = place;
         }
     }
     begin_with
@@ -104,70 +117,68 @@ fn by_line(
     let wanted = "keys and their places, as in `{E: {up: natural, down: home}}`";
     let entries = at.fields(wanted, complaints);
     for (name, ways) in entries.map(|mut all| all.take_all()).unwrap_or_default() {
-        let wanted = "`{up: natural, down: home}`";
-        let Some(mut ways) = ways.fields(wanted, complaints) else {
+        let Some(letter) = key_of(&name, &ways, complaints) else {
             continue;
         };
-        let [up, down] = ["up", "down"].map(|way| {
-            let at = ways.take(way)?;
-            place_of(&name, &at, places, complaints)
-        });
-        if let Some((key, _)) = up.or(down) {
-            by_line[key as usize] = Some(ByLine {
-                up: up.map(|(_, place)| place),
-                down: down.map(|(_, place)| place),
-            });
+        let wanted = "`{up: natural, down: home}`";
+        let Some(mut fields) = ways.fields(wanted, complaints) else {
+            continue;
+        };
+        let [up, down] = ["up", "down"].map(|way| fields.take(way));
+        if up.is_none() && down.is_none() && fields.is_empty() {
+            let wrong = format!("neither way is named for {letter}");
+            complaints.add(&ways.trail, wrong, format!("write {wanted}"));
         }
-        ways.finish(complaints);
+        fields.finish(complaints);
+        let [up, down] = [up, down].map(|at| place_of(letter, &at?, places, complaints));
+        if up.is_some() || down.is_some() {
+            by_line[letter.pitch_class() as usize] = Some(ByLine { up, down });
+        }
     }
     by_line
 }
 
-/// A key's pitch class and its place of that name.
+/// The key that an entry is about; `entry` is what stands behind its name, or within that.
+fn key_of(name: &str, entry: &At<'_>, complaints: &mut Complaints) -> Option<Letter> {
+    let letter = Letter::parse(name);
+    if letter.is_none() {
+        let mut trail = entry.trail.clone();
+        if let Some(last) = trail.steps.last_mut() {
+            *last = Segment::Name(name.to_string());
+        }
+        let wrong = format!("`{name}` is not the name of a key");
+        complaints.add(&trail, wrong, letter_remedy(name));
+    }
+    letter
+}
+
+/// A key's place of that name.
 fn place_of(
-    name: &str,
+    letter: Letter,
     place: &At<'_>,
     places: Option<&Places<'_>>,
     complaints: &mut Complaints,
-) -> Option<(u8, Place)> {
-    let mut key_trail = place.trail.clone();
-    while let Some(step) = key_trail.steps.last() {
-        if *step == Segment::Key(name.to_string()) {
-            break;
-        }
-        key_trail.steps.pop();
-    }
-    if let Some(last) = key_trail.steps.last_mut() {
-        *last = Segment::Name(name.to_string());
-    }
-    let Some(letter) = Letter::parse(name) else {
-        complaints.add(
-            &key_trail,
-            format!("`{name}` is not the name of a key"),
-            letter_remedy(name),
-        );
-        return None;
-    };
+) -> Option<Place> {
     let word = place.text("the name of a place, or home", complaints)?;
     let places = places?;
     let others = places.of(letter.pitch_class());
     if word == "home" {
-        return Some((letter.pitch_class(), Place::Home));
+        return Some(Place::Home);
     }
     if others.contains(&word.as_str()) {
-        let place = Place::Named(NameId::of(&word));
-        return Some((letter.pitch_class(), place));
+        return Some(Place::Named(NameId::of(&word)));
     }
-    let right = match others.is_empty() {
-        true => format!("name it in the tuning: `also: {{{letter}: {{{word}: 100 c}}}}`"),
-        false => format!("it has home, {}", others.join(", ")),
+    let tuning = &places.described.name;
+    let right = match (others.is_empty(), places.is_own) {
+        (true, true) => format!("name it in the tuning: `also: {{{letter}: {{{word}: 100 c}}}}`"),
+        (true, false) => format!(
+            "give it one in a tuning of your own: `{{like: {tuning}, also: {{{letter}: {{{word}: 100 c}}}}}}`"
+        ),
+        (false, _) => format!("it has home, {}", others.join(", ")),
     };
     complaints.add(
         &place.trail,
-        format!(
-            "{letter} has no place `{word}` in {}",
-            places.described.name
-        ),
+        format!("{letter} has no place `{word}` in {tuning}"),
         right,
     );
     None

@@ -11,6 +11,7 @@
 
 mod advice;
 mod black_keys;
+pub mod chords;
 pub mod circle;
 mod compile;
 pub mod complaint;
@@ -31,6 +32,7 @@ mod placing;
 mod pools;
 mod resolve;
 mod rig;
+mod sends;
 pub mod shipped;
 mod slips;
 mod songs;
@@ -43,7 +45,7 @@ pub mod watch;
 pub mod words;
 mod yaml_errors;
 
-use crate::engine::plan::NameId;
+use crate::engine::plan::{NameId, TwoNames};
 use crate::engine::{Command, Plan};
 use crate::tuning::{Letter, Placement, Scale, Tuning};
 use complaint::{Complaint, Complaints};
@@ -106,6 +108,11 @@ pub struct Song {
     pub in_keys: Vec<(Letter, String)>,
     /// What each of the twelve keys is called in this song (`Ab` or `G#`).
     pub names: [Letter; 12],
+    /// Black keys that stand for two notes, by pitch class.
+    pub two_names: [Option<TwoNames>; 12],
+    pub transpose_keys: i8,
+    /// Its chords are followed, so that they are pure whatever the tuning says.
+    pub follows: bool,
 }
 
 impl Stage {

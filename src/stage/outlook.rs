@@ -8,31 +8,16 @@ use crate::engine::Plan;
 use crate::engine::plan::{Dialect, Follow, PartPlan, SongPlan, SynthPlan};
 use crate::intonation::{Method, Ratios};
 use crate::pitch::word::Bend;
-use crate::pitch::{Interval, Log, Pitch};
-use crate::tuning::{Key, Letter, Pin, Tuning};
+use crate::pitch::{Interval, Pitch};
+use crate::tuning::{Key, Pin, Tuning};
 use std::sync::Arc;
 
-/// A third this far from pure is not meant to be played: beyond the 21.5 of a Pythagorean one.
-const HARSH: Interval = Interval::from_cents(30);
 /// Middle C further than this from equal surprises everybody.
 const FAR: Interval = Interval::from_cents(50);
 /// Further than this from a fixed instrument is heard as out of tune with it.
 const BESIDE_FIXED: Interval = Interval::from_cents(5);
 /// Five octaves that every keyboard has.
 const EVERY_KEYBOARD: std::ops::RangeInclusive<u8> = 36..=96;
-
-/// A third or fifth of a chord the piece stands on.
-#[derive(Clone, Debug, PartialEq, Eq)]
-pub struct Pair {
-    /// As the harmony spells them.
-    pub low: Letter,
-    pub high: Letter,
-    /// The name the upper key goes by in the song, where that is another one.
-    pub played_on: Option<Letter>,
-    pub size: Interval,
-    /// Above nought is wide.
-    pub from_pure: Interval,
-}
 
 /// A synth as it will be played.
 #[derive(Clone, Debug, PartialEq)]
@@ -59,56 +44,11 @@ impl Song {
         circle.map(|circle| circle.lines()).unwrap_or_default()
     }
 
-    /// The thirds of the chords on tonic, fourth and fifth of the keys the piece is in, and the tonic's fifth.
-    pub fn pairs(&self) -> Vec<(String, Vec<Pair>)> {
-        let keys = self.in_keys.iter().filter_map(|(tonic, mode)| {
-            let minor = match mode.as_str() {
-                "" | "major" | "lydian" | "mixolydian" | "ionian" => false,
-                "minor" | "aeolian" | "dorian" | "phrygian" => true,
-                _ => return None, // nobody's thirds are presumed
-            };
-            // On the line of fifths a major third is four places up, a minor one three down.
-            let third = if minor { -3 } else { 4 };
-            let pairs = [(0, third), (-1, third), (1, 4), (0, 1)];
-            let named = if mode.is_empty() {
-                tonic.to_string()
-            } else {
-                format!("{tonic} {mode}")
-            };
-            let pairs = pairs
-                .iter()
-                .filter_map(|(root, up)| self.pair(*tonic, *root, *up));
-            Some((named, pairs.collect()))
-        });
-        keys.collect()
-    }
-
-    fn pair(&self, tonic: Letter, root: i8, up: i8) -> Option<Pair> {
-        let low = Letter::on_line(tonic.place() + root)?;
-        let high = Letter::on_line(low.place() + up)?;
-        let pure = match up {
-            1 => Log::of_ratio(3, 2),
-            4 => Log::of_ratio(5, 4),
-            _ => Log::of_ratio(6, 5),
-        };
-        let pitch = |letter: Letter| {
-            self.tuning
-                .pitch(Key::C4.moved(letter.pitch_class().into())?)
-        };
-        let size = (pitch(high)? - pitch(low)?).within_octave();
-        let name = self.names[high.pitch_class() as usize];
-        Some(Pair {
-            low,
-            high,
-            played_on: (name != high).then_some(name),
-            size,
-            from_pure: size - pure.interval(),
-        })
-    }
-
     /// What a player should know before playing it.
     pub fn advice(&self) -> Vec<String> {
         let mut lines = Vec::new();
+        let moved = self.moved_from_its_keys();
+        lines.extend(moved.map(|moved| format!("{}: {moved}", self.title)));
         for (named, pairs) in self.pairs() {
             for pair in pairs.iter().filter(|pair| pair.is_harsh()) {
                 lines.push(format!("{} in {named}: {pair}", self.title));
@@ -220,45 +160,6 @@ fn out_of_reach(tuning: &Tuning) -> Option<String> {
     Some(format!(
         "the keys {first} to {last} stand beyond MIDI notes 0 to 127 and stay silent"
     ))
-}
-
-impl Pair {
-    pub fn is_fifth(&self) -> bool {
-        self.high.place() - self.low.place() == 1
-    }
-
-    fn is_harsh(&self) -> bool {
-        let limit = if self.is_fifth() {
-            Interval::from_cents(12)
-        } else {
-            HARSH
-        };
-        self.from_pure.abs() > limit
-    }
-}
-
-impl std::fmt::Display for Pair {
-    /// `the third F#-A# is 427.4 c, 41.1 c wide (A# is played on Bb)`.
-    fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
-        let what = if self.is_fifth() { "fifth" } else { "third" };
-        let off = self.from_pure;
-        write!(
-            f,
-            "the {what} {}-{} is {:.1} c, ",
-            self.low,
-            self.high,
-            self.size.cents()
-        )?;
-        match off.abs().microcents() {
-            0..=5 => write!(f, "pure")?,
-            _ if off < Interval::ZERO => write!(f, "{:.1} c narrow", off.abs().cents())?,
-            _ => write!(f, "{:.1} c wide", off.cents())?,
-        }
-        match self.played_on {
-            Some(name) => write!(f, " ({} is played on {name})", self.high),
-            None => Ok(()),
-        }
-    }
 }
 
 /// Each synth of a plan, as its songs will use it.

@@ -257,11 +257,20 @@ fn tonic(
         None => Key::parse(&text),
     };
     if key.is_none() {
-        complaints.add(
-            &at.trail,
-            format!("`{text}` is not a key"),
-            "write a letter, # or b if it has one, and an octave if you like: D, Eb, D4",
-        );
+        let mode = text.split_once(' ').map(|(first, _)| first);
+        let (wrong, right) = match mode.and_then(Letter::parse) {
+            Some(letter) => (
+                format!("a tonic is one key, and `{text}` has a mode"),
+                format!("write `tonic: {letter}`; `in: {text}` says which key the piece is in"),
+            ),
+            None => (
+                format!("`{text}` is not a key"),
+                String::from(
+                    "write a letter, # or b if it has one, and an octave if you like: D, Eb, D4",
+                ),
+            ),
+        };
+        complaints.add(&at.trail, wrong, right);
     }
     key
 }

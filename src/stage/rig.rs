@@ -216,19 +216,22 @@ pub fn keyboard_named(at: &At<'_>, rig: &Rig, complaints: &mut Complaints) -> Op
         .iter()
         .map(|k| k.device.name.as_str())
         .collect();
-    device_named(at, "keyboard", &names, complaints).and_then(KeyboardId::new)
+    let synth = |name: &str| rig.synths.iter().any(|s| s.device.name == name);
+    device_named(at, ("keyboard", "synth"), &names, synth, complaints).and_then(KeyboardId::new)
 }
 
 /// A synth by name.
 pub fn synth_named(at: &At<'_>, rig: &Rig, complaints: &mut Complaints) -> Option<SynthId> {
     let names: Vec<&str> = rig.synths.iter().map(|s| s.device.name.as_str()).collect();
-    device_named(at, "synth", &names, complaints).and_then(SynthId::new)
+    let keyboard = |name: &str| rig.keyboards.iter().any(|k| k.device.name == name);
+    device_named(at, ("synth", "keyboard"), &names, keyboard, complaints).and_then(SynthId::new)
 }
 
 fn device_named(
     at: &At<'_>,
-    what: &str,
+    (what, other): (&str, &str),
     names: &[&str],
+    is_other: impl Fn(&str) -> bool,
     complaints: &mut Complaints,
 ) -> Option<usize> {
     let text = at.text(&format!("the name of a {what}"), complaints)?;
@@ -238,7 +241,11 @@ fn device_named(
             Some(near) => format!("did you mean `{near}`?"),
             None => format!("the {what}s of this rig: {}", one_of(names)),
         };
-        complaints.add(&at.trail, format!("no {what} is called `{text}`"), right);
+        let wrong = match is_other(&text) {
+            true => format!("`{text}` is a {other}, and a {what} belongs here"),
+            false => format!("no {what} is called `{text}`"),
+        };
+        complaints.add(&at.trail, wrong, right);
     }
     place
 }

@@ -104,7 +104,7 @@ fn rejoin(key: &str, value: &Node, rest: &(String, Node)) -> Option<(String, Str
 
 /// For an unknown key: words of its own, if it is one of the common slips.
 pub fn unknown_key(name: &str, value: &Node, known: &[&str]) -> Option<(String, String)> {
-    const MEANT: [(&str, &str); 8] = [
+    const MEANT: [(&str, &str); 11] = [
         ("on", "when"),
         ("then", "do"),
         ("action", "do"),
@@ -113,6 +113,9 @@ pub fn unknown_key(name: &str, value: &Node, known: &[&str]) -> Option<(String, 
         ("key", "in"),
         ("chan", "channel"),
         ("name", "stage"),
+        ("reference", "pitch"),
+        ("split", "keys"),
+        ("range", "keys"),
     ];
     let meant = MEANT
         .iter()
@@ -121,6 +124,12 @@ pub fn unknown_key(name: &str, value: &Node, known: &[&str]) -> Option<(String, 
         return Some((
             format!("`{name}:` is not known here"),
             format!("the word is `{right}:`"),
+        ));
+    }
+    if ["also", "turns"].contains(&name) && known.contains(&"tuning") {
+        return Some((
+            format!("`{name}` belongs to a tuning, not to a song"),
+            String::from("write it under `tunings:`, beside the notes it is about"),
         ));
     }
     if *value != Node::Nothing {

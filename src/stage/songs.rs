@@ -4,15 +4,14 @@ use super::advice::Findings;
 use super::complaint::{Complaints, Trail};
 use super::node::{At, Fields, Node, nearest};
 use super::placing;
-use super::rig::{self, Rig};
+use super::rig::Rig;
 use super::told::Told;
 use super::tunings::{Library, Reference, TuningText};
 use super::{Song, defaults, intonation};
-use super::{inflections, parts};
-use crate::engine::plan::{ByHand, SongPlan, SynthId};
+use super::{inflections, parts, sends};
+use crate::engine::plan::{ByHand, SongPlan};
 use crate::intonation::Method;
 use crate::limits::SONGS_MAX;
-use crate::midi::status;
 use crate::tuning::{Letter, Placement, Scale, Tuning};
 use std::rc::Rc;
 use std::sync::Arc;
@@ -39,6 +38,8 @@ pub struct Desk<'d, 'n> {
     pub told: Told,
     /// The titles of the set in their order, also of songs that are written wrong.
     pub titles: Vec<String>,
+    /// `songs` could not be read, so nobody knows which titles it has.
+    pub book_is_lost: bool,
 }
 
 /// Tonight's songs in their order.
@@ -52,6 +53,7 @@ pub fn read(
     if let Some(at) = book {
         let wanted = "songs by title, as in `Lantern hymn: {tuning: vallotti}`";
         let songs = at.fields(wanted, &mut desk.found.complaints);
+        desk.book_is_lost = songs.is_none();
         for (title, at) in songs.map(|mut songs| songs.take_all()).unwrap_or_default() {
             let entry = book_song(&title, &at, desk);
             entries.push((title, entry));
@@ -75,6 +77,16 @@ pub fn read(
 
 /// The songs of the set in their order.
 fn tonight(set: &At<'_>, book: &[(String, Option<Entry>)], desk: &mut Desk<'_, '_>) -> Vec<Entry> {
+    if let Node::Map(entries) = set.node
+        && entries.iter().all(|(key, _)| !SONG_KEYS.contains(&key.as_str()))
+    {
+        desk.found.complaints.add(
+            &set.trail,
+            "these are songs by title, and a set is the order in which they come",
+            "write them under `songs:`; without `set` they are played in that order",
+        );
+        return Vec::new();
+    }
     let items = set.items();
     if items.is_empty() {
         desk.found.complaints.add(
@@ -133,6 +145,16 @@ fn set_song(
             &at.trail,
             format!("the colon in this title makes it a key with a value: `{start}: {end}`"),
             format!("put the title in quotes: \"{start}: {end}\""),
+        );
+        return None;
+    }
+    if let Node::Map(entries) = at.node
+        && let [(title, Node::Map(_))] = entries.as_slice()
+    {
+        complaints.add(
+            &at.trail,
+            "a song of the set does not hang on its title",
+            format!("write {{song: {title}, tuning: ...}}, or put it under `songs:`"),
         );
         return None;
     }
@@ -217,10 +239,15 @@ fn titled(
         );
         return None;
     }
+    if desk.book_is_lost {
+        return None;
+    }
     let titles: Vec<&str> = book.iter().map(|(title, _)| title.as_str()).collect();
-    let right = match nearest(&title, &titles) {
-        Some(near) => format!("did you mean `{near}`?"),
-        None => format!("add it under `songs:`, or write it whole: {{song: {title}, tuning: ...}}"),
+    let numbered = title.parse().ok().and_then(|n: usize| titles.get(n.checked_sub(1)?));
+    let right = match (nearest(&title, &titles), numbered) {
+        (Some(near), _) => format!("did you mean `{near}`?"),
+        (None, Some(titled)) => format!("a set goes by titles: {titled}"),
+        (None, None) => format!("add it under `songs:`, or write it whole: {{song: {title}, tuning: ...}}"),
     };
     complaints.add(&at.trail, format!("no song is called `{title}`"), right);
     None
@@ -275,7 +302,7 @@ fn song(
     desk.told.follows |= method != Method::Fixed;
     let by_hand = inflections::read(&mut fields, described.as_deref(), placed.as_ref(), desk);
     let sends = match fields.take("send") {
-        Some(at) => sends(&at, desk),
+        Some(at) => sends::read(&at, desk),
         None => Vec::new(),
     };
     let parts = fields.take("parts").map(|at| {
@@ -304,6 +331,9 @@ fn song(
             tuning: placed.tuning,
             in_keys,
             names: placed.names,
+            two_names: placed.two_names,
+            transpose_keys,
+            follows: method != Method::Fixed,
         },
     })
 }
@@ -316,6 +346,12 @@ fn tuning(
     let written = fields.take("tuning");
     let at = written.as_ref().unwrap_or(song);
     let name = match &written {
+        Some(at) if matches!(at.node, Node::Map(_)) => {
+            let wrong = "a tuning is described under `tunings:`, and a song only names it";
+            let right = "write it there under a name of your own, and that name here";
+            desk.found.complaints.add(&at.trail, wrong, right);
+            return None;
+        }
         Some(at) => at.text("the name of a tuning", &mut desk.found.complaints)?,
         None => String::from(defaults::TUNING),
     };
@@ -354,53 +390,4 @@ fn in_keys(at: &At<'_>, complaints: &mut Complaints) -> Vec<(Letter, String)> {
         }
     }
     keys
-}
-
-/// Messages sent when the song begins.
-fn sends(at: &At<'_>, desk: &mut Desk<'_, '_>) -> Vec<(SynthId, Box<[u8]>)> {
-    let mut sends = Vec::new();
-    for item in at.items() {
-        let complaints = &mut desk.found.complaints;
-        let wanted = "a map such as `{program: 20, to: organ}`";
-        let Some(mut fields) = item.fields(wanted, complaints) else {
-            continue;
-        };
-        let to = match fields.take("to") {
-            Some(at) => rig::synth_named(&at, desk.rig, complaints),
-            None => SynthId::new(0),
-        };
-        let from = desk.programs_from as i64;
-        let program = fields
-            .take("program")
-            .map(|at| at.whole("a program", from..=127 + from, complaints));
-        let controller = fields
-            .take("controller")
-            .map(|at| at.whole("a controller", 0..=119, complaints));
-        let value = fields
-            .take("value")
-            .map(|at| at.whole("its value", 0..=127, complaints));
-        fields.finish(complaints);
-        let bytes: Box<[u8]> = match (program, controller, value) {
-            (Some(program), None, None) => match program {
-                Some(program) => Box::new([status::PROGRAM, (program - from) as u8]),
-                None => continue,
-            },
-            (None, Some(controller), Some(value)) => match (controller, value) {
-                (Some(number), Some(value)) => {
-                    Box::new([status::CONTROLLER, number as u8, value as u8])
-                }
-                _ => continue,
-            },
-            _ => {
-                complaints.add(
-                    &item.trail,
-                    "it is not clear what to send",
-                    "write {program: 20, to: organ} or {controller: 7, value: 100, to: organ}",
-                );
-                continue;
-            }
-        };
-        sends.extend(to.map(|to| (to, bytes)));
-    }
-    sends
 }

@@ -153,6 +153,11 @@ impl<'n> Library<'n> {
         &self.files
     }
 
+    /// Whether it stands in the stage file itself.
+    pub fn is_own(&self, name: &str) -> bool {
+        self.own.iter().any(|(own, _)| own == name)
+    }
+
     /// Every name there is, own ones first.
     pub fn names(&self) -> Vec<String> {
         let own = self.own.iter().map(|(name, _)| name.clone());

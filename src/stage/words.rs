@@ -4,7 +4,7 @@
 
 use super::expression::{self, Expression, Mistake};
 use super::node::nearest;
-use super::values::{key_remedy, letter_remedy, one_of};
+use super::values::{letter_remedy, one_of};
 use crate::engine::Inflected;
 pub use crate::engine::TonicBy;
 use crate::pitch::{Hertz, Log};
@@ -173,7 +173,7 @@ impl Words {
             ("turn", name) => named(name).map(Words::Turn),
             ("next", rest) => next(rest),
             ("pitch", rest) => pitch(rest)?,
-            ("transpose", rest) => transpose(rest),
+            ("transpose", rest) => transpose(rest)?,
             ("tonic", rest) => tonic(rest)?,
             ("inflect", rest) => inflect(rest)?,
             ("black-key", rest) => black_key(rest)?,
@@ -220,8 +220,20 @@ fn pitch(rest: &str) -> Result<Option<Words>, Mistake> {
         None => (rest, false),
     };
     let to = match rest {
-        "" => return Ok(None),
         "home" => PitchNudge::Home,
+        rest if !rest.contains(|c: char| c.is_ascii_digit()) => return Ok(None),
+        rest if rest.contains('=') => {
+            return Err(mistake(
+                "a nudge names no key: the song has its reference",
+                "write pitch 416 Hz, or pitch +1 c",
+            ));
+        }
+        rest if rest.parse::<f64>().is_ok() => {
+            return Err(mistake(
+                format!("`{rest}` has no unit"),
+                "write pitch +1 c, or pitch 416 Hz",
+            ));
+        }
         rest => match Expression::parse(rest)? {
             Expression::Distance(log) => PitchNudge::By(log),
             Expression::Absolute(..) => PitchNudge::To(expression::hertz(rest)?),
@@ -230,14 +242,20 @@ fn pitch(rest: &str) -> Result<Option<Words>, Mistake> {
     Ok(Some(Words::Pitch { to, now }))
 }
 
-fn transpose(rest: &str) -> Option<Words> {
+fn transpose(rest: &str) -> Result<Option<Words>, Mistake> {
     if rest == "home" {
-        return Some(Words::Transpose(None));
+        return Ok(Some(Words::Transpose(None)));
     }
-    let keys = rest.parse::<i8>().ok()?;
-    (-60..=60)
-        .contains(&keys)
-        .then_some(Words::Transpose(Some(keys)))
+    let Ok(keys) = rest.parse::<i64>() else {
+        return Ok(None);
+    };
+    if !(-60..=60).contains(&keys) {
+        return Err(mistake(
+            format!("{keys} keys are more than five octaves"),
+            "write 60 keys up or down at most, as in transpose +2",
+        ));
+    }
+    Ok(Some(Words::Transpose(Some(keys as i8))))
 }
 
 fn tonic(rest: &str) -> Result<Option<Words>, Mistake> {
@@ -249,7 +267,8 @@ fn tonic(rest: &str) -> Result<Option<Words>, Mistake> {
         return Ok(None);
     };
     let to = match to {
-        "home" => return Ok(Some(Words::TonicHome)),
+        "home" if rest == "home" => return Ok(Some(Words::TonicHome)),
+        "home" => return Ok(None),
         "next-key" => TonicMove::NextKey,
         name => TonicMove::To(letter(name)?),
     };
@@ -284,19 +303,34 @@ fn inflect(rest: &str) -> Result<Option<Words>, Mistake> {
     let key = match (Letter::parse(name), Key::parse(name)) {
         (Some(letter), _) => Inflected::Everywhere(letter.pitch_class()),
         (None, Some(key)) => Inflected::Alone(key),
-        (None, None) => {
-            return Err(mistake(format!("`{name}` is not a key"), key_remedy(name)));
-        }
+        (None, None) => return Err(no_key_to_inflect(name, place.trim())),
     };
     let place = place.trim();
     if place.starts_with(['+', '-']) {
         let by = Expression::distance(place)?;
         return Ok(Some(Words::InflectBy { key, by }));
     }
+    if Expression::parse(place).is_ok() {
+        return Err(mistake(
+            format!("`{place}` has no sign, and is no name of a place"),
+            format!("write inflect {name} +{place} to move it by ear"),
+        ));
+    }
     Ok(Some(Words::Inflect {
         key,
         place: place.to_string(),
     }))
+}
+
+fn no_key_to_inflect(name: &str, place: &str) -> Mistake {
+    let is_key = |text: &str| Letter::parse(text).is_some() || Key::parse(text).is_some();
+    let raised = letter_remedy(name);
+    let right = match is_key(place) {
+        true => format!("the key stands first: inflect {place} {name}"),
+        false if raised.starts_with("key names") => raised,
+        false => String::from("write a letter, and an octave for that key alone: B, Bb, B4"),
+    };
+    mistake(format!("`{name}` is not a key"), right)
 }
 
 fn black_key(rest: &str) -> Result<Option<Words>, Mistake> {

@@ -248,7 +248,10 @@ pub(super) fn entries<'n>(
     for (name, at) in fields.take_all() {
         let trail = map.then(Segment::Name(name.clone()));
         let Some(letter) = Letter::parse(&name) else {
-            let (wrong, right) = not_a_letter(&name);
+            let (wrong, mut right) = not_a_letter(&name);
+            if is_number(&name) && !at.is_nothing() {
+                right = "keys go by their letters, not by a number: C, C#, Eb".to_string();
+            }
             complaints.add(&trail, wrong, right);
             good = None;
             continue;
@@ -266,6 +269,10 @@ pub(super) fn entries<'n>(
     Some(entries)
 }
 
+fn is_number(text: &str) -> bool {
+    !text.is_empty() && text.chars().all(|c| c.is_ascii_digit())
+}
+
 /// What to say about a name that is no key.
 pub(super) fn not_a_letter(text: &str) -> (String, String) {
     let right = "keys are called C, C#, Eb and so on: A to G, with # or b";
@@ -275,7 +282,7 @@ pub(super) fn not_a_letter(text: &str) -> (String, String) {
         .map(|first| first.to_ascii_uppercase().to_string() + chars.as_str());
     let capital = capital.filter(|name| Letter::parse(name).is_some());
     let plain = text.trim_end_matches(|c: char| c.is_ascii_digit() || c == '-');
-    if !text.is_empty() && text.chars().all(|c| c.is_ascii_digit()) {
+    if is_number(text) {
         (
             format!("`{text}` stands where a key belongs"),
             "decimals take a point, not a comma: 5.9".to_string(),
