@@ -24,6 +24,9 @@ mod cue_forms;
 /// Songs that follow the harmony, played as densely as hands can.
 mod dense;
 
+/// The example stages that come with trued, played song by song.
+mod evenings;
+
 /// A counting allocator: the engine takes nothing from the heap once it is made.
 mod no_alloc;
 

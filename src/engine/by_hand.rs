@@ -86,13 +86,14 @@ impl ByHand {
     }
 
     /// Where a key so many above the tonic stands under that name, above what the tonic sounds.
-    pub(super) fn other_place(&self, keys_above: u8, name: NameId) -> Option<Interval> {
+    pub fn other_place(&self, keys_above: u8, name: NameId) -> Option<Interval> {
         let is_it = |place: &&OtherPlace| place.keys_above == keys_above && place.name == name;
         let place = self.places.iter().flatten().find(is_it)?;
         Some(place.above)
     }
 
-    pub(super) fn period(&self) -> Interval {
+    /// After which its keys repeat.
+    pub fn period(&self) -> Interval {
         match &self.turning {
             Some(turning) => turning.period,
             None => Interval::OCTAVE,

@@ -55,7 +55,7 @@ impl Engine {
                 (_, SongDue::Exclusive) => {}
                 (Some(Message::Program { number, .. }), _) => self.send_program(now, id, number),
                 (Some(Message::Controller { number, value, .. }), _) => {
-                    self.send_controller(id, number, value);
+                    self.send_controller(now, id, number, value);
                 }
                 _ => self.out.counters.ignored += 1,
             }
@@ -65,16 +65,24 @@ impl Engine {
         }
     }
 
+    /// A whole set-up of the synth follows in this moment, and says programs and controllers itself.
+    fn set_up_follows(&self, now: Time, id: SynthId) -> bool {
+        let synth = &self.synths[id.index()];
+        synth.repeat_when_silent && synth.is_silent(now)
+    }
+
     fn send_program(&mut self, now: Time, id: SynthId, number: u8) {
         for index in 0..self.playing_parts {
             if self.parts[index].plan.to == id {
-                let bank = self.parts[index].program;
+                let before = self.parts[index].program;
                 let program = Program {
                     program: number,
                     bank_msb: self.parts[index].controllers[controller::BANK_MSB as usize],
                     bank_lsb: self.parts[index].controllers[controller::BANK_LSB as usize],
                 };
-                if bank != program {
+                if self.set_up_follows(now, id) {
+                    self.parts[index].program = program;
+                } else if before != program {
                     self.set_program(now, index, program);
                 }
             }
@@ -82,12 +90,13 @@ impl Engine {
     }
 
     /// Kept for every channel of the synth's parts; they hear it before their next note.
-    fn send_controller(&mut self, id: SynthId, number: u8, value: u8) {
+    fn send_controller(&mut self, now: Time, id: SynthId, number: u8, value: u8) {
+        let set_up_follows = self.set_up_follows(now, id);
         for index in 0..self.playing_parts {
             if self.parts[index].plan.to == id {
                 self.parts[index].set(number, value);
                 let synth = &mut self.synths[id.index()];
-                if let Some(manager) = synth.rig.manager() {
+                if let Some(manager) = synth.rig.manager().filter(|_| !set_up_follows) {
                     synth.controller(manager, number, value, Weight::Owed, &mut self.out);
                 }
             }

@@ -18,6 +18,8 @@ pub struct Chart {
     pub placement: Placement,
     pub names: [Letter; 12],
     pub tuning: Tuning,
+    /// What the song adds to every key; `tuning` goes by keys without it.
+    pub transpose_keys: i8,
 }
 
 /// One key that sounds.
@@ -57,7 +59,8 @@ impl Chart {
             scale: song.scale.clone(),
             placement: song.placement,
             names: song.names,
-            tuning: (*song.tuning).clone(),
+            tuning: song.as_it_begins(),
+            transpose_keys: song.transpose_keys,
         }
     }
 
@@ -76,6 +79,7 @@ impl Chart {
             tuning: text.scale.tune(&placement)?,
             scale: text.scale.clone(),
             placement,
+            transpose_keys: 0,
         })
     }
 

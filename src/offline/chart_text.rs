@@ -66,6 +66,16 @@ fn heading(chart: &Chart) -> String {
         }
     }
     let _ = writeln!(text, "{}.", chart.reference());
+    if let Some(key) = Key::C4
+        .moved(chart.transpose_keys.into())
+        .filter(|key| *key != Key::C4)
+    {
+        let (from, to) = (chart.name(Key::C4), chart.name(key));
+        let _ = writeln!(
+            text,
+            "The song is transposed: {from} sounds what is said of {to} here."
+        );
+    }
     let landing = where_c4_lands(&chart.scale, &chart.placement, &chart.tuning);
     let _ = writeln!(text, "{landing}.");
     text

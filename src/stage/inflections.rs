@@ -1,5 +1,6 @@
 //! What of a song's tuning the player changes by hand: `begin_with`, `by_line`, and the table of places for the engine.
 
+use super::Song;
 use super::complaint::{Complaints, Segment};
 use super::node::{At, Fields};
 use super::placing::Placed;
@@ -8,8 +9,31 @@ use super::tunings::TuningText;
 use super::values::letter_remedy;
 use crate::engine::Place;
 use crate::engine::plan::{ByHand, ByLine, NameId, OtherPlace, TurnStep};
-use crate::tuning::{Letter, Scale, Turning};
+use crate::tuning::{Key, Letter, Scale, Tuning, Turning};
 use std::sync::Arc;
+
+impl Song {
+    /// What its keys sound as it begins: with the places of `begin_with`.
+    pub fn as_it_begins(&self) -> Tuning {
+        let song = &self.by_hand;
+        let pitch = |key: Key| {
+            let Place::Named(name) = song.begin_with[key.pitch_class() as usize] else {
+                return self.tuning.pitch(key);
+            };
+            let above = i64::from(key.number()) - i64::from(song.home.number());
+            match song.other_place(above.rem_euclid(12) as u8, name) {
+                Some(place) => {
+                    let home = self.tuning.pitch(song.home)?;
+                    Some(home + song.period() * above.div_euclid(12) + place)
+                }
+                None => self.tuning.pitch(key),
+            }
+        };
+        Tuning::new(std::array::from_fn(|key| {
+            Key::new(key as u8).and_then(pitch)
+        }))
+    }
+}
 
 /// The keys that have other places in a song, as the tuning writes them and as they lie on the keyboard.
 struct Places<'t> {
@@ -35,11 +59,7 @@ impl Places<'_> {
     }
 }
 
-fn places<'t>(
-    described: &'t TuningText,
-    is_own: bool,
-    placed: Option<&Placed>,
-) -> Places<'t> {
+fn places<'t>(described: &'t TuningText, is_own: bool, placed: Option<&Placed>) -> Places<'t> {
     let written_from = match &described.scale {
         Scale::ByLetter(scale) => scale.home,
         Scale::FromTonic(scale) => scale.default_tonic().pitch_class(),

@@ -45,7 +45,7 @@ pub mod watch;
 pub mod words;
 mod yaml_errors;
 
-use crate::engine::plan::{NameId, TwoNames};
+use crate::engine::plan::{ByHand, NameId, TwoNames};
 use crate::engine::{Command, Plan};
 use crate::tuning::{Letter, Placement, Scale, Tuning};
 use complaint::{Complaint, Complaints};
@@ -111,6 +111,8 @@ pub struct Song {
     /// Black keys that stand for two notes, by pitch class.
     pub two_names: [Option<TwoNames>; 12],
     pub transpose_keys: i8,
+    /// What can be changed of it by hand; shared with the plan.
+    pub by_hand: Arc<ByHand>,
     /// Its chords are followed, so that they are pure whatever the tuning says.
     pub follows: bool,
 }

@@ -64,7 +64,11 @@ fn message(
 /// A whole system exclusive message, in hexadecimal.
 fn exclusive(at: &At<'_>, complaints: &mut Complaints) -> Option<Box<[u8]>> {
     let text = at.text("bytes such as F0 7D 01 F7", complaints)?;
-    let byte = |word| u8::from_str_radix(word, 16).ok().filter(|_| word.len() == 2);
+    let byte = |word| {
+        u8::from_str_radix(word, 16)
+            .ok()
+            .filter(|_| word.len() == 2)
+    };
     let bytes: Option<Vec<u8>> = text.split_whitespace().map(byte).collect();
     let wrong = match bytes.as_deref() {
         None => format!("`{text}` is not written in bytes"),
@@ -75,7 +79,8 @@ fn exclusive(at: &At<'_>, complaints: &mut Complaints) -> Option<Box<[u8]>> {
             format!("this message is longer than {SYSEX_BYTES_MAX} bytes")
         }
         Some(whole @ [0xF0, .., 0xF7]) if is_reset(whole) => {
-            let wrong = "this resets the synth, and it forgets its bend range and all else it was told";
+            let wrong =
+                "this resets the synth, and it forgets its bend range and all else it was told";
             complaints.add(&at.trail, wrong, "leave it out");
             return None;
         }

@@ -78,7 +78,9 @@ pub fn read(
 /// The songs of the set in their order.
 fn tonight(set: &At<'_>, book: &[(String, Option<Entry>)], desk: &mut Desk<'_, '_>) -> Vec<Entry> {
     if let Node::Map(entries) = set.node
-        && entries.iter().all(|(key, _)| !SONG_KEYS.contains(&key.as_str()))
+        && entries
+            .iter()
+            .all(|(key, _)| !SONG_KEYS.contains(&key.as_str()))
     {
         desk.found.complaints.add(
             &set.trail,
@@ -243,11 +245,16 @@ fn titled(
         return None;
     }
     let titles: Vec<&str> = book.iter().map(|(title, _)| title.as_str()).collect();
-    let numbered = title.parse().ok().and_then(|n: usize| titles.get(n.checked_sub(1)?));
+    let numbered = title
+        .parse()
+        .ok()
+        .and_then(|n: usize| titles.get(n.checked_sub(1)?));
     let right = match (nearest(&title, &titles), numbered) {
         (Some(near), _) => format!("did you mean `{near}`?"),
         (None, Some(titled)) => format!("a set goes by titles: {titled}"),
-        (None, None) => format!("add it under `songs:`, or write it whole: {{song: {title}, tuning: ...}}"),
+        (None, None) => {
+            format!("add it under `songs:`, or write it whole: {{song: {title}, tuning: ...}}")
+        }
     };
     complaints.add(&at.trail, format!("no song is called `{title}`"), right);
     None
@@ -319,7 +326,7 @@ fn song(
             transpose_keys,
             method,
             parts: parts.filter(|parts| !parts.is_empty()).map(Arc::from),
-            by_hand,
+            by_hand: Arc::clone(&by_hand),
             sends,
         },
         song: Song {
@@ -333,6 +340,7 @@ fn song(
             names: placed.names,
             two_names: placed.two_names,
             transpose_keys,
+            by_hand,
             follows: method != Method::Fixed,
         },
     })

@@ -6,6 +6,7 @@
 mod bench;
 mod frames;
 mod processes;
+mod set;
 mod trouble;
 
 use crate::no_alloc::heap_calls_so_far;

@@ -161,6 +161,44 @@ fn a_tag_ends_on_four_five_six_seven() {
     assert_eq!(shape, [4, 5, 6, 7]);
 }
 
+/// Thirds and sevenths as singers want them, and the pitch where it was: C, Am, Dm and G7, eight times round. Pure, they
+/// sink by 81/80 each time, 21.506 cents; the usual leash keeps them.
+#[test]
+fn n13_pure_thirds_and_sevenths_without_drift() {
+    // Each with its root below, and how far its third is above that.
+    const CHORDS: [([u8; 4], (f64, f64)); 4] = [
+        ([48, 64, 67, 72], (5.0, 2.0)),
+        ([45, 60, 64, 69], (12.0, 5.0)),
+        ([50, 65, 69, 74], (12.0, 5.0)),
+        ([43, 59, 62, 65], (5.0, 2.0)),
+    ];
+    let farthest_c = |leash: &str| {
+        let mut rig = following(
+            "equal-12",
+            &format!("{{method: chord-root, ratios: pure-with-7, drift_limit_cents: {leash}}}"),
+        );
+        let mut went: f64 = 0.0;
+        for chord in 0..32 {
+            let (keys, (over, under)) = CHORDS[chord % 4];
+            rig.midi(0, &keys.map(|key| [0x90, key, 90]).concat());
+            assert_just(&rig, 0, 1, over, under);
+            if chord % 4 == 0 {
+                went = went.max((sounding(&rig)[0].1 - 4800.0).abs());
+            }
+            rig.until(rig.now + trued::time::Span::from_millis(400));
+            rig.midi(0, &keys.map(|key| [0x80, key, 64]).concat());
+        }
+        // The tag, after a breath.
+        rig.until(rig.now + trued::time::Span::from_millis(4_000));
+        rig.midi(0, &[48, 64, 67, 70].map(|key| [0x90, key, 90]).concat());
+        assert_just(&rig, 0, 1, 5.0, 2.0);
+        assert_just(&rig, 0, 3, 7.0, 2.0);
+        went
+    };
+    let (leashed, free) = (farthest_c("12"), farthest_c("none"));
+    assert!(leashed <= 12.0 && free > 40.0, "{leashed} and {free}");
+}
+
 #[test]
 fn a_seventh_that_is_held_or_struck_again_keeps_its_size() {
     for again in ["", "1000 off F4\n1000 on F4 100\n"] {

@@ -22,8 +22,12 @@ mod parts;
 mod pedals;
 /// Poly pressure, CC88 and CC84.
 mod prefixes;
+/// Bend ranges told, and told again.
+mod ranges;
 /// Root and sevenths by hand.
 mod root;
+/// What a song says to the synths when it begins.
+mod sends;
 /// A new song under a ringing chord; one that waits for silence.
 mod songs;
 /// Too many pitches for the channels there are.
@@ -38,6 +42,8 @@ mod through;
 mod tonic;
 /// The player's wheel and what it means.
 mod wheel;
+/// Keys a tuning is good in, and those it is not.
+mod wolves;
 
 use crate::support::plans;
 use trued::engine::Plan;

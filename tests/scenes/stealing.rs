@@ -158,3 +158,34 @@ fn silent_keys_and_pitches_out_of_reach_stay_silent_and_are_counted() {
     assert_eq!(rig.engine.report().counters.silent, 3);
     assert!(rig.heard().orphans.is_empty());
 }
+
+/// A chord dies away while another in another tuning is played over it: channels that ring are left alone as long as there
+/// are others, and after that the one released longest ago goes first.
+#[test]
+fn n19_ringing_releases_are_not_retuned() {
+    let mut rig = Rig::of(
+        "keyboards: {keys: {port: virtual}}\nsynths: {synth: {port: virtual, channels: 1-6, tail_ms: 1500}}\n\
+         set: [{song: Mean, tuning: quarter-comma-meantone}, {song: Well, tuning: werckmeister-3}]\n",
+    );
+    rig.play(
+        "10 on C4 90\n20 on E4 90\n30 on G4 90
+         100 off E4\n110 off C4\n120 off G4
+         130 next
+         200 on C4 90\n210 on E4 90\n220 on G4 90\n300 off C4\n310 off E4\n320 off G4",
+    );
+    assert_eq!(rig.heard().notes.len(), 6);
+    assert!(
+        rig.heard().moves.is_empty(),
+        "six channels, six pitches: {:?}",
+        rig.heard().moves
+    );
+    assert_eq!(rig.engine.report().counters.tails_cut, 0);
+    // A seventh pitch while all six ring: E of the first chord has been released longest, and it is counted.
+    rig.play("400 on F#4 90");
+    let moved: Vec<usize> = rig.heard().moves.iter().map(|moved| moved.note).collect();
+    assert_eq!(moved, [1]);
+    assert_eq!(rig.engine.report().counters.tails_cut, 1);
+    // When the tails are over, nobody is disturbed by whatever comes.
+    rig.play("500 off F#4\n3000 on D4 90\n3010 on A4 90\n3020 on B4 90\n3030 on Bb4 90");
+    assert_eq!(rig.heard().moves.len(), 1);
+}

@@ -4,6 +4,7 @@ mod bad;
 mod check;
 mod config;
 mod forms;
+mod good;
 mod mangled;
 mod plans;
 

@@ -1,5 +1,7 @@
 //! What the tests share: an independent receiver, a rig that drives the engine on a scripted clock, published figures.
 
+/// What the binary's chart says of a song.
+pub mod charts;
 /// A small seeded generator, so that a failure can be played again.
 pub mod dice;
 /// The pitch of a partial in a sound.

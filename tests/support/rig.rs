@@ -72,6 +72,14 @@ impl Rig {
         rig
     }
 
+    /// A stage file that comes with trued, all up and ready.
+    pub fn of_file(path: &Path) -> Rig {
+        let stage = Stage::read(path).unwrap_or_else(|complaints| panic!("{complaints:#?}"));
+        let mut rig = Rig::ready(&stage.plan_offline());
+        rig.stage = Some(stage);
+        rig
+    }
+
     /// Words of `tell`, by the same grammar as the daemon's.
     pub fn tell(&mut self, words: &str) {
         let parsed = Words::parse(words).unwrap_or_else(|mistake| panic!("{words}: {mistake:?}"));

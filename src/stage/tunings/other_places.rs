@@ -36,7 +36,8 @@ pub(super) fn read_also(
                 good = None;
             }
             if name.starts_with(['+', '-']) {
-                let wrong = format!("`{name}` begins with a sign, and `inflect {key} +5 c` is a nudge");
+                let wrong =
+                    format!("`{name}` begins with a sign, and `inflect {key} +5 c` is a nudge");
                 complaints.add(&at.trail, wrong, "choose a name that begins with a letter");
                 good = None;
             }

@@ -38,6 +38,8 @@ impl Event {
 pub struct Heard {
     pub direct: Vec<Event>,
     pub through: Vec<Event>,
+    /// What a second synth heard, if there was one.
+    pub second: Vec<Event>,
     pub xruns: u64,
 }
 
@@ -77,13 +79,14 @@ impl jack::ProcessHandler for Playing {
 struct Recording {
     direct: Port<MidiIn>,
     through: Port<MidiIn>,
-    heard: [rtrb::Producer<Event>; 2],
+    second: Port<MidiIn>,
+    heard: [rtrb::Producer<Event>; 3],
 }
 
 impl jack::ProcessHandler for Recording {
     fn process(&mut self, _: &Client, scope: &ProcessScope) -> Control {
         let cycle = u64::from(scope.last_frame_time());
-        for (port, heard) in [&self.direct, &self.through]
+        for (port, heard) in [&self.direct, &self.through, &self.second]
             .into_iter()
             .zip(&mut self.heard)
         {
@@ -131,12 +134,12 @@ impl Prepared {
     }
 }
 
-/// `Player:out` to `recorder:direct` by a connection, to `recorder:through` by trued.
+/// `Player:out` to `recorder:direct` by a connection, to `recorder:through` and `recorder:second` by trued.
 pub struct Bench {
     player: AsyncClient<(), Playing>,
     recorder: AsyncClient<Xruns, Recording>,
     score: RefCell<rtrb::Producer<Event>>,
-    heard: RefCell<[rtrb::Consumer<Event>; 2]>,
+    heard: RefCell<[rtrb::Consumer<Event>; 3]>,
     done: Arc<AtomicBool>,
     xruns: Arc<AtomicU64>,
 }
@@ -146,7 +149,7 @@ pub struct Prepared {
     player: (Client, Playing),
     recorder: (Client, Recording),
     score: rtrb::Producer<Event>,
-    heard: [rtrb::Consumer<Event>; 2],
+    heard: [rtrb::Consumer<Event>; 3],
     done: Arc<AtomicBool>,
 }
 
@@ -164,6 +167,7 @@ impl Bench {
         let (score, score_out) = rtrb::RingBuffer::new(100_000);
         let (heard_direct, direct) = rtrb::RingBuffer::new(200_000);
         let (heard_through, through) = rtrb::RingBuffer::new(200_000);
+        let (heard_second, second) = rtrb::RingBuffer::new(200_000);
         let done = Arc::new(AtomicBool::new(false));
         let player = open("Player");
         let playing = Playing {
@@ -183,13 +187,14 @@ impl Bench {
         let recording = Recording {
             direct: port("direct"),
             through: port("through"),
-            heard: [heard_direct, heard_through],
+            second: port("second"),
+            heard: [heard_direct, heard_through, heard_second],
         };
         Prepared {
             player: (player, playing),
             recorder: (recorder, recording),
             score,
-            heard: [direct, through],
+            heard: [direct, through, second],
             done,
         }
     }
@@ -247,10 +252,11 @@ impl Bench {
     pub fn finish(self) -> Heard {
         let _ = self.player.deactivate();
         let _ = self.recorder.deactivate();
-        let [mut direct, mut through] = self.heard.into_inner();
+        let [mut direct, mut through, mut second] = self.heard.into_inner();
         Heard {
             direct: std::iter::from_fn(|| direct.pop().ok()).collect(),
             through: std::iter::from_fn(|| through.pop().ok()).collect(),
+            second: std::iter::from_fn(|| second.pop().ok()).collect(),
             xruns: self.xruns.load(Ordering::Relaxed),
         }
     }

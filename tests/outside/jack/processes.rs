@@ -145,6 +145,19 @@ impl Trued {
         Trued::begin(stage, &[])
     }
 
+    /// With a rig file, where the stage names it.
+    pub fn with_rig(stage: &str, name: &str, rig: &str) -> Trued {
+        let path = folder_with(stage).join(name);
+        std::fs::create_dir_all(path.parent().expect("a folder")).expect("a folder");
+        std::fs::write(path, rig).expect("a file");
+        Trued::begin(stage, &[])
+    }
+
+    /// The stage file that it plays.
+    pub fn stage(&self) -> PathBuf {
+        self.folder.join("stage.yaml")
+    }
+
     /// With a supervisor that has been told that all is ready.
     pub fn supervised(stage: &str, watchdog: Duration) -> (Trued, Supervisor) {
         let address = folder_with(stage).join("notify");
