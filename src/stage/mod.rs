@@ -2,7 +2,7 @@
 //!
 //! **What this room is**: YAML to a tree (`node`), where it stumbles in words of our own (`slips`, `cuts`, `yaml_errors`);
 //! the tree, section by section, to checked types with every complaint at once (`rig`, `songs`, `tunings`, `cues`;
-//! `complaint`, `locate`); those to a [`Plan`] (`compile`, `pools`); what to expect of it (`outlook`); when to read it
+//! `complaint`, `locate`); those to a [`Plan`] (`compile`, `pools`); what to expect of it (`outlook`, `chords`); when to read it
 //! again (`watch`).
 //! **Start reading at** [`Stage`], then `compile.rs`.
 //! **May know** `engine/` (its plan), `tuning/`, `pitch/`, `intonation/`, `limits`.

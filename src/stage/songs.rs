@@ -139,25 +139,8 @@ fn set_song(
     desk: &mut Desk<'_, '_>,
 ) -> Option<Entry> {
     let complaints = &mut desk.found.complaints;
-    if let Node::Map(entries) = at.node
-        && let [(start, Node::Text(end) | Node::Number(end))] = entries.as_slice()
-        && !SONG_KEYS.contains(&start.as_str())
-    {
-        complaints.add(
-            &at.trail,
-            format!("the colon in this title makes it a key with a value: `{start}: {end}`"),
-            format!("put the title in quotes: \"{start}: {end}\""),
-        );
-        return None;
-    }
-    if let Node::Map(entries) = at.node
-        && let [(title, Node::Map(_))] = entries.as_slice()
-    {
-        complaints.add(
-            &at.trail,
-            "a song of the set does not hang on its title",
-            format!("write {{song: {title}, tuning: ...}}, or put it under `songs:`"),
-        );
+    if let Some((wrong, right)) = title_as_key(at.node) {
+        complaints.add(&at.trail, wrong, right);
         return None;
     }
     let mut fields = at.fields(
@@ -199,6 +182,25 @@ fn set_song(
     }
     whole.push(title.clone());
     song(&title, at, Some(fields), desk)
+}
+
+/// A song whose title has become a key: by a colon in it, or because its settings hang on it.
+fn title_as_key(node: &Node) -> Option<(String, String)> {
+    let Node::Map(entries) = node else {
+        return None;
+    };
+    match entries.as_slice() {
+        [(start, _)] if SONG_KEYS.contains(&start.as_str()) => None,
+        [(start, Node::Text(end) | Node::Number(end))] => Some((
+            format!("the colon in this title makes it a key with a value: `{start}: {end}`"),
+            format!("put the title in quotes: \"{start}: {end}\""),
+        )),
+        [(title, Node::Map(_))] => Some((
+            String::from("a song of the set does not hang on its title"),
+            format!("write {{song: {title}, tuning: ...}}, or put it under `songs:`"),
+        )),
+        _ => None,
+    }
 }
 
 /// A title of the book.
@@ -308,10 +310,8 @@ fn song(
     );
     desk.told.follows |= method != Method::Fixed;
     let by_hand = inflections::read(&mut fields, described.as_deref(), placed.as_ref(), desk);
-    let sends = match fields.take("send") {
-        Some(at) => sends::read(&at, desk),
-        None => Vec::new(),
-    };
+    let sends = fields.take("send");
+    let sends = sends.map_or_else(Vec::new, |at| sends::read(&at, desk));
     let parts = fields.take("parts").map(|at| {
         let parts = parts::parts(&at, desk.rig, desk.found);
         super::pools::allot(&parts, desk.rig, &mut desk.found.complaints)
