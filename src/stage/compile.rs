@@ -96,11 +96,8 @@ fn read(path: &Path, top: &At<'_>, found: &mut Findings) -> Option<Stage> {
     fields.finish(&mut found.complaints);
     let mut parts = pools::allot(&rig.parts, &rig, &mut found.complaints);
     pools::share_managers(&rig, &mut parts, &mut entries);
-    for entry in &entries {
-        for line in entry.song.advice() {
-            found.advise(line);
-        }
-    }
+    let advice = entries.iter().flat_map(|entry| entry.song.advice());
+    advice.for_each(|line| found.advise(line));
     files.extend_from_slice(library.files());
     let texts = found.complaints.texts(&files);
     let rest = Rest {

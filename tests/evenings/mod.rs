@@ -59,7 +59,8 @@ fn by_the_chart(chart: &Chart, plan: &Plan, song: usize, part: &PartPlan, key: u
 /// Every key of every part, one after the other.
 fn play_through(rig: &mut Rig, plan: &Plan, song: usize, chart: &Chart) -> (usize, f64) {
     let (mut notes, mut worst): (usize, f64) = (0, 0.0);
-    for part in &plan.parts {
+    let own = plan.set[song].parts.as_deref();
+    for part in own.unwrap_or(&plan.parts) {
         let keyboard = part.from.map_or(0, |from| from.index());
         let channels = plan.keyboards[keyboard].channels.iter();
         let hears = part.hears;
