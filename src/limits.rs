@@ -7,6 +7,7 @@ pub const KEYS: usize = 128;
 /// Channels of one MIDI port.
 pub const CHANNELS: usize = 16;
 pub const KEYBOARDS_MAX: usize = 8;
+/// Synths, and keyboards with lamps: each has an output port of ours.
 pub const SYNTHS_MAX: usize = 8;
 pub const PARTS_MAX: usize = 16;
 /// Parts that play, and as many of songs before that still ring.
@@ -37,6 +38,8 @@ pub const REST_MS: u64 = 500;
 pub const CUES_MAX: usize = 128;
 /// Their gestures, each key of a range counted: all are looked through at every message.
 pub const GESTURES_MAX: usize = 256;
+/// Lamps in one stage file.
+pub const LAMPS_MAX: usize = 128;
 /// Longest system exclusive message passed on whole; longer ones are dropped and counted.
 pub const SYSEX_BYTES_MAX: usize = 64 * 1024;
 /// Room in the engine for output that one input can cause.

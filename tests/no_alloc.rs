@@ -6,7 +6,9 @@ use std::alloc::{GlobalAlloc, Layout, System};
 use std::cell::Cell;
 use std::hint::black_box;
 use std::path::Path;
-use trued::engine::plan::{Act, ChannelSet, CuePlan, Dialect, Gesture, NameId, Press, SongPlan};
+use trued::engine::plan::{
+    Act, ChannelSet, CuePlan, Dialect, Gesture, LampPlan, NameId, Press, Shown, SongPlan,
+};
 use trued::engine::{
     Ask, Command, Engine, InflectTo, Inflected, Input, KeyboardId, Link, Nudge, Place, Plan,
     SynthId, TonicBy,
@@ -77,7 +79,7 @@ fn by_hand() -> SongPlan {
     stage.plan().set.remove(0)
 }
 
-/// Two synths, one of each dialect, a layer on both, cues, four songs.
+/// Two synths, one of each dialect, a layer on both, cues, lamps, four songs.
 fn evening() -> Plan {
     let songs = vec![
         by_hand(),
@@ -101,6 +103,19 @@ fn evening() -> Plan {
     let mut layer = plans::part(&plan.synths[1..]);
     layer.to = SynthId::new(1).expect("a synth");
     plan.parts.push(layer);
+    plan.lamp_ports.extend(KeyboardId::new(0));
+    for (number, show) in [
+        (20, Shown::Song(1)),
+        (21, Shown::Told(Command::Plain)),
+        (22, Shown::Told(Command::InflectHome)),
+    ] {
+        plan.lamps.push(LampPlan {
+            show,
+            port: 0,
+            on: [0xB0, number, 127],
+            off: [0xB0, number, 0],
+        });
+    }
     plan.cues.push(CuePlan {
         from: None,
         channels: ChannelSet::ALL,
@@ -144,7 +159,7 @@ fn evening() -> Plan {
 /// One random input; `bytes` is room for it.
 fn random_input<'a>(dice: &mut Dice, bytes: &'a mut [u8; 4096]) -> Input<'a> {
     let keyboard = KeyboardId::new(dice.below(2) as usize).expect("a keyboard");
-    let synth = SynthId::new(dice.below(2) as usize).expect("a synth");
+    let synth = SynthId::new(dice.below(3) as usize).expect("a synth");
     match dice.below(200) {
         0 => Input::KeyboardLost(keyboard),
         1..=4 => Input::Synth {
@@ -261,7 +276,7 @@ fn a_hundred_thousand_inputs_and_a_plan_swap_never_touch_the_heap() {
     let mut now = Time::START;
     let mut outputs = 0;
     let calls = heap_calls(|| {
-        for place in 0..2 {
+        for place in 0..3 {
             let synth = SynthId::new(place).expect("a synth");
             engine.handle_input(
                 now,

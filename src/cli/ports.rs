@@ -118,7 +118,7 @@ fn as_json(ports: &[Port], rig: Option<&RigWanted>) -> Value {
             port.map(Port::full_name)
         };
         let keyboards = rig.keyboards.iter().zip(&choice.keyboards);
-        let synths = rig.synths.iter().zip(&choice.synths);
+        let synths = rig.synths_alone().iter().zip(&choice.synths);
         value["keyboards"] = keyboards
             .map(|(wanted, taken)| {
                 let taken: Vec<_> = taken.iter().copied().filter_map(name).collect();
@@ -164,6 +164,7 @@ mod tests {
                     socket: None,
                 },
             }],
+            lamps: 0,
         }
     }
 

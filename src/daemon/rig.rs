@@ -10,15 +10,29 @@ use crate::stage::{self, Stage};
 #[derive(Clone, Debug)]
 pub struct RigWanted {
     pub keyboards: Vec<Wanted>,
+    /// All that we send to: synths, then the way back to each keyboard that has lamps.
     pub synths: Vec<Wanted>,
+    /// How many of them are no synths.
+    pub lamps: usize,
 }
 
 impl RigWanted {
     pub fn of(stage: &Stage) -> RigWanted {
         RigWanted {
             keyboards: stage.keyboards.iter().map(wanted).collect(),
-            synths: stage.synths.iter().map(wanted).collect(),
+            synths: (stage.synths.iter().map(wanted))
+                .chain(
+                    stage
+                        .keyboards_with_lamps()
+                        .map(|place| lamps(stage, place)),
+                )
+                .collect(),
+            lamps: stage.keyboards_with_lamps().count(),
         }
+    }
+
+    pub fn synths_alone(&self) -> &[Wanted] {
+        &self.synths[..self.synths.len() - self.lamps]
     }
 
     /// How every device stands, for status: keyboards, then synths.
@@ -27,7 +41,8 @@ impl RigWanted {
             let connected = choice.keyboards.get(index).map_or(&[][..], Vec::as_slice);
             device(wanted, connected, ports)
         });
-        let synths = self.synths.iter().enumerate().map(|(index, wanted)| {
+        let synths = self.synths_alone().iter().enumerate();
+        let synths = synths.map(|(index, wanted)| {
             let connected = choice.synths.get(index).copied().flatten();
             device(wanted, connected.as_slice(), ports)
         });
@@ -160,6 +175,26 @@ fn wanted(device: &stage::Device) -> Wanted {
     }
 }
 
+/// The way back to a keyboard. Its name is that of a port, so no other port of ours may have it.
+fn lamps(stage: &Stage, place: usize) -> Wanted {
+    let keyboard = &stage.keyboards[place];
+    let mut name = format!("{} lamps", keyboard.name);
+    let taken = |name: &str| {
+        let mut all = stage.keyboards.iter().chain(&stage.synths);
+        all.any(|device| device.name == name)
+    };
+    while taken(&name) {
+        name.push_str(" too");
+    }
+    Wanted {
+        name,
+        wish: match keyboard.port {
+            stage::Wish::Virtual => Wish::Virtual,
+            _ => Wish::BackTo(place),
+        },
+    }
+}
+
 fn device(wanted: &Wanted, connected: &[Address], ports: &[Port]) -> Device {
     Device {
         name: wanted.name.clone(),
@@ -167,6 +202,7 @@ fn device(wanted: &Wanted, connected: &[Address], ports: &[Port]) -> Device {
         waits: match &wanted.wish {
             Wish::Virtual => Waits::ForOthers,
             Wish::Any => Waits::For("any port".to_string()),
+            Wish::BackTo(_) => Waits::For("a device that hears".to_string()),
             Wish::Named { globs, socket } => Waits::For(named(globs, socket.as_deref())),
         },
         linked: false,
@@ -194,6 +230,7 @@ fn describe(wanted: &Wanted, is: &str, connected: &[Address], ports: &[Port]) ->
     match &wanted.wish {
         Wish::Virtual => format!("{name} is a port for others to connect to"),
         Wish::Any => format!("{name} waits for any port"),
+        Wish::BackTo(_) => format!("{name} waits for a device that hears"),
         Wish::Named { globs, socket } => {
             format!("{name} waits for {}", named(globs, socket.as_deref()))
         }
@@ -213,6 +250,7 @@ mod tests {
         let rig = |synths: &[(&str, Wish)]| RigWanted {
             keyboards: vec![wanted("keys", Wish::Any)],
             synths: synths.iter().map(|(n, w)| wanted(n, w.clone())).collect(),
+            lamps: 0,
         };
         let old = rig(&[("organ", Wish::Any), ("bells", Wish::Virtual)]);
         assert!(Moved::between(&old, &old).is_nothing());
@@ -271,6 +309,7 @@ mod tests {
                 wanted("pads", Wish::Virtual),
             ],
             synths: vec![wanted("organ", Wish::Any)],
+            lamps: 0,
         };
         let address = Address {
             client: 20,
@@ -296,5 +335,32 @@ mod tests {
              keyboard pads is a port for others to connect to; \
              organ is connected to Loft Organ MIDI 1"
         );
+    }
+
+    #[test]
+    fn a_keyboard_with_lamps_has_a_way_back_behind_the_synths() {
+        let text = "keyboards: {keys: {}, pads: {port: virtual}, 'keys lamps': {port: virtual}}\n\
+                    synths: {organ: {}, bells: {}}\nset: [{song: One}]\n\
+                    lamps:\n\
+                    \x20 - {show: plain, send: {note: E2, to: pads}}\n\
+                    \x20 - {show: plain, send: {note: E2, to: keys}}\n\
+                    \x20 - {show: song One, send: {note: F2, to: pads}}\n";
+        let stage = Stage::parse(std::path::Path::new("lamps.yaml"), text).expect("it loads");
+        let rig = RigWanted::of(&stage);
+        let outs: Vec<_> = (rig.synths.iter())
+            .map(|wanted| (wanted.name.as_str(), wanted.wish.clone()))
+            .collect();
+        assert_eq!(
+            outs,
+            [
+                ("organ", Wish::Any),
+                ("bells", Wish::Any),
+                ("pads lamps", Wish::Virtual),
+                ("keys lamps too", Wish::BackTo(0)),
+            ]
+        );
+        let (_, synths) = rig.devices(&Choice::default(), &[]);
+        assert_eq!(synths.len(), 2);
+        assert_eq!(stage.plan().ports(), 4);
     }
 }

@@ -178,7 +178,7 @@ impl Score {
                     outlet.at(time);
                     let quiet = [DAMPER, SOSTENUTO, ALL_NOTES_OFF, ALL_SOUND_OFF];
                     outlet.at(time);
-                    hush(outlet, synth, &quiet);
+                    self.hush(outlet, synth, &quiet);
                 }
                 self.up[synth] = !lost;
                 self.link(time, synth, link.into());
@@ -262,7 +262,7 @@ impl Score {
     fn begin_anew(&mut self, now: Time, synth: usize, outlet: &mut Outlet<'_>) {
         outlet.at(now);
         outlet.forget(synth);
-        hush(outlet, synth, &[DAMPER, ALL_NOTES_OFF]);
+        self.hush(outlet, synth, &[DAMPER, ALL_NOTES_OFF]);
         self.link(now, synth, engine::Link::Back);
     }
 
@@ -315,17 +315,20 @@ impl Score {
         self.ending = Some(Ending::Panicked);
         let _ = catch_unwind(AssertUnwindSafe(|| self.obey(now, Command::Stop, outlet)));
         for synth in 0..self.synths {
-            hush(outlet, synth, &[DAMPER, ALL_NOTES_OFF, ALL_SOUND_OFF]);
+            self.hush(outlet, synth, &[DAMPER, ALL_NOTES_OFF, ALL_SOUND_OFF]);
         }
     }
-}
 
-/// Sets controllers to zero on every channel, whatever anybody knows to be sounding.
-fn hush(outlet: &mut Outlet<'_>, synth: usize, numbers: &[u8]) {
-    for channel in 0..CHANNELS as u8 {
-        for number in numbers {
-            let message = [status::CONTROLLER | channel, *number, 0];
-            outlet.send(synth, ports::Weight::Owed, &message);
+    /// Sets controllers to zero on every channel of a synth, whatever anybody knows to be sounding. Lamps make no sound.
+    fn hush(&self, outlet: &mut Outlet<'_>, synth: usize, numbers: &[u8]) {
+        if synth >= self.engine.synths() {
+            return;
+        }
+        for channel in 0..CHANNELS as u8 {
+            for number in numbers {
+                let message = [status::CONTROLLER | channel, *number, 0];
+                outlet.send(synth, ports::Weight::Owed, &message);
+            }
         }
     }
 }

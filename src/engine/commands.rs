@@ -46,7 +46,7 @@ impl Engine {
     }
 
     /// Whether the song of a place is the one now playing; it may stand in the set more than once.
-    fn is_playing(&self, place: u16) -> bool {
+    pub(super) fn is_playing(&self, place: u16) -> bool {
         let set = &self.plan.set;
         set.get(place as usize)
             .is_some_and(|song| song.title == set[self.song].title)

@@ -3,7 +3,7 @@
 //! Told once it is latched; by a cue `while: held` it lies on top of what is latched, until the control is let go.
 
 use super::Playing;
-use super::by_hand::ByHand;
+use super::by_hand::{ByHand, NameId};
 use super::following::level;
 use super::traffic::{Command, InflectTo, Inflected, Nudge, Place, RootTo, TonicBy};
 use crate::intonation::{Method, Sevenths};
@@ -255,6 +255,63 @@ impl Lasting {
         keys.fold(0, |all, number| all | 1 << (number % 12))
     }
 
+    /// Whether keys stand at a place. At home they are not nudged either.
+    pub fn stands(&self, key: Inflected, place: Place, song: &ByHand) -> bool {
+        let pitch_class = key.pitch_class();
+        let now = match key {
+            Inflected::Everywhere(pitch_class) => self.place_of_all(pitch_class as usize),
+            Inflected::Alone(key) => self.place_of(key),
+        };
+        let trim = match key {
+            Inflected::Everywhere(_) => Interval::ZERO,
+            Inflected::Alone(_) => self.trim_of(key),
+        };
+        let nudged = trim != Interval::ZERO || self.trims[pitch_class as usize] != Interval::ZERO;
+        self.sounded(pitch_class, now, song) == place && (place != Place::Home || !nudged)
+    }
+
+    /// How far keys were nudged from their place.
+    pub fn trim_of(&self, key: Inflected) -> Interval {
+        match key {
+            Inflected::Everywhere(pitch_class) => self.trims[pitch_class as usize],
+            Inflected::Alone(key) => self.trims_alone[key.number() as usize],
+        }
+    }
+
+    /// Whether no key of a pitch class goes alone.
+    pub fn goes_together(&self, key: Inflected) -> bool {
+        self.shown_alone() >> key.pitch_class() & 1 == 0
+    }
+
+    /// Whether all keys of a turn stand where it puts them.
+    pub fn is_turned(&self, name: NameId, song: &ByHand) -> bool {
+        let tonic = self.tonic_key(song).pitch_class();
+        let mut steps = song
+            .turns
+            .iter()
+            .flatten()
+            .filter(|step| step.turn == name)
+            .peekable();
+        steps.peek().is_some()
+            && steps.all(|step| {
+                let pitch_class = (tonic + step.keys_above) % 12;
+                self.stands(Inflected::Everywhere(pitch_class), step.place, song)
+            })
+    }
+
+    /// Whether all that belongs to a song is as it begins.
+    pub fn is_as_begun(&self, song: &ByHand) -> bool {
+        let begun = Lasting::new(song);
+        *self
+            == Lasting {
+                nudge: self.nudge,
+                plain: self.plain,
+                told: self.told,
+                by_line: self.by_line,
+                ..begun
+            }
+    }
+
     /// The key that places are counted from.
     fn tonic_key(&self, song: &ByHand) -> Key {
         self.tonic.map_or(song.home, |tonic| tonic.key)
@@ -262,12 +319,15 @@ impl Lasting {
 
     /// A key alone goes before the line, the line before what was told before the last rest.
     fn place_of(&self, key: Key) -> Place {
-        let pitch_class = key.pitch_class() as usize;
+        let all = self.place_of_all(key.pitch_class() as usize);
+        self.alone[key.number() as usize].unwrap_or(all)
+    }
+
+    /// Of the keys of a pitch class that do not go alone.
+    fn place_of_all(&self, pitch_class: usize) -> Place {
         let told = self.told >> pitch_class & 1 == 1;
         let line = self.by_line[pitch_class].filter(|_| !told);
-        self.alone[key.number() as usize]
-            .or(line)
-            .unwrap_or(self.places[pitch_class])
+        line.unwrap_or(self.places[pitch_class])
     }
 }
 

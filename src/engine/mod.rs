@@ -19,6 +19,7 @@ mod following;
 mod hearing;
 mod held;
 mod keyboard;
+mod lamps;
 mod lasting;
 mod line;
 mod next_key;
@@ -54,6 +55,7 @@ use cues::Presses;
 use following::{HARMONIES, Waiting};
 use held::Held;
 use keyboard::{Keyboard, Source};
+use lamps::Lamps;
 use lasting::Lasting;
 use line::Line;
 use next_key::Wait;
@@ -95,6 +97,7 @@ pub struct Engine {
     out: Outbox,
     armed: Armed,
     presses: Presses,
+    lamps: Lamps,
     shapes: Shapes,
     /// The stage's own first, then one for each part.
     harmonies: Vec<Harmony>,
@@ -187,6 +190,7 @@ impl Engine {
             out: Outbox::new(),
             armed: Armed::new(),
             presses: Presses::new(),
+            lamps: Lamps::new(),
             shapes: Shapes::new(),
             harmonies: harmonies(plan.set[0].method),
             waiting: Vec::with_capacity(WAITING_PRESSES_MAX),
@@ -213,6 +217,9 @@ impl Engine {
             Input::Seat { keyboard, plays_as } => self.seat(now, keyboard, plays_as),
             Input::Synth { synth, link } if synth.index() < self.plan.synths.len() => {
                 self.link_changed(now, synth, link);
+            }
+            Input::Synth { synth, link } if synth.index() < self.plan.ports() => {
+                self.lamp_link_changed(synth, link);
             }
             Input::Synth { .. } => self.out.counters.ignored += 1,
             Input::Command(command) => self.command(now, command),
@@ -260,7 +267,15 @@ impl Engine {
     /// Drain to `None` before time moves on.
     pub fn poll_output(&mut self) -> Option<Output<'_>> {
         self.play_chord();
+        if self.out.is_drained() {
+            self.show_lamps();
+        }
         self.out.take()
+    }
+
+    /// How many synths the plan has; output ports beyond lead to lamps.
+    pub fn synths(&self) -> usize {
+        self.plan.synths.len()
     }
 
     /// When `handle_timeout` is next due.

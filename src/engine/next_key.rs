@@ -46,6 +46,15 @@ impl Engine {
         });
     }
 
+    pub(super) fn waits_for_tonic(&self) -> bool {
+        let wait = self.next_key;
+        wait.is_some_and(|wait| matches!(wait.names, Names::Tonic(_)))
+    }
+
+    pub(super) fn waits_for_root(&self) -> bool {
+        self.next_key.is_some_and(|wait| wait.names == Names::Root)
+    }
+
     /// A key goes down. Tells whether it only named something, so that it is not played.
     pub(super) fn names_by_key(&mut self, now: Time, hand: Hand, key: Key) -> bool {
         self.source(hand).named &= !(1 << key.number());

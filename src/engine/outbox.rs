@@ -98,6 +98,11 @@ impl Outbox {
         }
     }
 
+    /// Nothing waits for the driver.
+    pub fn is_drained(&self) -> bool {
+        self.taken == self.items.len()
+    }
+
     /// The next output; once all are taken, `None`, and the room is free again.
     pub fn take(&mut self) -> Option<Output<'_>> {
         let Some(item) = self.items.get(self.taken) else {

@@ -87,6 +87,11 @@ pub struct Plan {
     /// In tonight's order; at most `SONGS_MAX`, at least one.
     pub set: Vec<SongPlan>,
     pub cues: Vec<CuePlan>,
+    /// At most `LAMPS_MAX`.
+    pub lamps: Vec<LampPlan>,
+    /// Keyboards that have lamps. To each leads a port, behind those of the synths and in this order; with them at most
+    /// `SYNTHS_MAX`.
+    pub lamp_ports: Vec<KeyboardId>,
     /// Whether a song whose own settings were edited takes them at once or at its next beginning.
     pub edits_at_once: bool,
     /// Where twelve-equal stands at the evening's reference, above A4 = 440 Hz.
@@ -236,6 +241,35 @@ pub struct SongPlan {
     /// Whole messages given to a synth when the song begins, once no key is held, as if a player of it had sent them:
     /// their own channel is ignored, the synth's parts spread them as they do a player's.
     pub sends: Vec<(SynthId, Box<[u8]>)>,
+}
+
+impl Plan {
+    /// Output ports: synths, then keyboards with lamps.
+    pub fn ports(&self) -> usize {
+        self.synths.len() + self.lamp_ports.len()
+    }
+}
+
+/// A light of a keyboard's device, and what it shows.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct LampPlan {
+    pub show: Shown,
+    /// Place in `lamp_ports`.
+    pub port: u8,
+    /// The message for lit, and for out.
+    pub on: [u8; 3],
+    pub off: [u8; 3],
+}
+
+/// What can be shown: something that lasts.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Shown {
+    /// The song of this place is playing.
+    Song(u16),
+    /// A song of the same title as that of this place is playing.
+    Title(u16),
+    /// All is as this command makes it.
+    Told(super::traffic::Command),
 }
 
 /// A gesture and what it does.

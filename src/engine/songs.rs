@@ -129,6 +129,7 @@ impl Engine {
             }
         }
         self.let_go_of_edited(now);
+        self.take_over_lamps(&old);
         for index in 0..self.plan.synths.len() {
             let rig = Rig::of(&self.plan.synths[index]);
             let synth = &mut self.synths[index];

@@ -37,6 +37,8 @@ pub enum Wish {
         globs: Vec<String>,
         socket: Option<String>,
     },
+    /// The way back to the device that plays as the keyboard of this place.
+    BackTo(usize),
 }
 
 impl Wish {
@@ -44,7 +46,7 @@ impl Wish {
     fn fits(&self, port: &Port) -> bool {
         match self {
             Wish::Any => !port.ours,
-            Wish::Virtual => false,
+            Wish::Virtual | Wish::BackTo(_) => false,
             Wish::Named { globs, socket } => globs.iter().any(|glob| port.fits(glob, socket)),
         }
     }
@@ -168,7 +170,7 @@ pub fn choose(ports: &[Port], keyboards: &[Wanted], synths: &[Wanted], held: &Ch
         let held: Vec<Address> = held.keyboards.get(index).cloned().unwrap_or_default();
         let kept = held.into_iter().find(|a| still_fits(wanted, *a));
         choice.keyboards[index] = match (&wanted.wish, kept) {
-            (Wish::Virtual, _) => Vec::new(),
+            (Wish::Virtual | Wish::BackTo(_), _) => Vec::new(),
             (Wish::Any, _) => ports
                 .iter()
                 .filter(|port| port.sends && is_free(port, &choice.synths))
@@ -187,7 +189,41 @@ pub fn choose(ports: &[Port], keyboards: &[Wanted], synths: &[Wanted], held: &Ch
         };
     }
     refuse_loops(ports, keyboards, &mut choice);
+    for (index, wanted) in synths.iter().enumerate() {
+        if let Wish::BackTo(keyboard) = wanted.wish {
+            let taken = choice.keyboards.get(keyboard).into_iter().flatten();
+            let wish = keyboards.get(keyboard).map(|keyboard| &keyboard.wish);
+            let back = taken.zip(wish.into_iter().cycle());
+            let mut back = back.filter_map(|(from, wish)| way_back(ports, *from, wish));
+            choice.synths[index] = back.next();
+        }
+    }
     choice
+}
+
+/// The port by which a keyboard's device hears: the one that it sends by, where ports go both ways; else the one of the
+/// same name but for `playback` in place of `capture`, as JACK has them; else the one that fits the keyboard's globs, of
+/// several that one which stands among them where the keyboard's own port stands among those that send.
+fn way_back(ports: &[Port], from: Address, wish: &Wish) -> Option<Address> {
+    let port = ports.iter().find(|port| port.address == from)?;
+    if port.hears {
+        return Some(from);
+    }
+    let hearing = || ports.iter().filter(|port| port.hears && !port.ours);
+    let turned = |port: &Port| port.full_name().replace("capture", "playback");
+    let mut others = hearing();
+    if let Some(back) =
+        others.find(|other| port.full_name() != turned(port) && other.full_name() == turned(port))
+    {
+        return Some(back.address);
+    }
+    if !matches!(wish, Wish::Named { .. }) {
+        return None;
+    }
+    let sending = ports.iter().filter(|port| port.sends && wish.fits(port));
+    let place = sending.map(|port| port.address).position(|a| a == from)?;
+    let back = hearing().filter(|port| wish.fits(port)).nth(place);
+    back.map(|port| port.address)
 }
 
 /// Midi Through as keyboard and as synth would play trued's notes back to it for ever.

@@ -29,6 +29,7 @@ struct Rest {
     entries: Vec<Entry>,
     parts: Vec<PartPlan>,
     cues: Vec<CuePlan>,
+    lamps: lamps::Lamps,
     told: Told,
     advice: Vec<String>,
     files: Vec<PathBuf>,
@@ -90,9 +91,8 @@ fn read(path: &Path, top: &At<'_>, found: &mut Findings) -> Option<Stage> {
     };
     let cues = fields.take("cues");
     let cues = cues.map_or_else(Vec::new, |at| cues::read(&at, &scene, found));
-    if let Some(at) = fields.take("lamps") {
-        lamps::check(&at, &scene, found);
-    }
+    let lamps = fields.take("lamps");
+    let lamps = lamps.map_or_else(Default::default, |at| lamps::read(&at, &scene, found));
     fields.finish(&mut found.complaints);
     let mut parts = pools::allot(&rig.parts, &rig, &mut found.complaints);
     pools::share_managers(&rig, &mut parts, &mut entries);
@@ -104,6 +104,7 @@ fn read(path: &Path, top: &At<'_>, found: &mut Findings) -> Option<Stage> {
         entries,
         parts,
         cues,
+        lamps,
         told,
         advice: std::mem::take(&mut found.advice),
         files,
@@ -137,6 +138,8 @@ fn assemble(evening: Evening, rig: Rig, rest: Rest) -> Stage {
             parts: rest.parts,
             set: songs,
             cues: rest.cues,
+            lamps: rest.lamps.plans,
+            lamp_ports: rest.lamps.ports,
             edits_at_once: evening.edits_at_once,
             plain_offset: evening.pitch.map_or(Interval::ZERO, |(key, hertz, _)| {
                 hertz.pitch() - Pitch::of_key(key.number())

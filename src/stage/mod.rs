@@ -183,6 +183,11 @@ impl Stage {
         self.told.place_names()
     }
 
+    /// Keyboards that have lamps, by place.
+    pub fn keyboards_with_lamps(&self) -> impl Iterator<Item = usize> + '_ {
+        self.plan.lamp_ports.iter().map(|keyboard| keyboard.index())
+    }
+
     /// A plan for the live engine.
     pub fn plan(&self) -> Box<Plan> {
         Box::new(self.plan.clone())

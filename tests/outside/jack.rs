@@ -5,6 +5,7 @@
 
 mod bench;
 mod frames;
+mod lamps;
 mod processes;
 mod set;
 mod trouble;

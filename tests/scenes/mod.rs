@@ -12,6 +12,8 @@ mod gestures;
 mod harmony;
 /// Other places of keys, latched, held and by the line.
 mod inflections;
+/// Lamps of a controller.
+mod lamps;
 /// Keyboards and synths that go and come back, panic, a short outbox.
 mod lost;
 /// Mode messages, Reset All Controllers.

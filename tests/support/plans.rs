@@ -102,6 +102,8 @@ pub fn plan(synth: SynthPlan, set: Vec<SongPlan>) -> Plan {
         synths,
         set,
         cues: Vec::new(),
+        lamps: Vec::new(),
+        lamp_ports: Vec::new(),
         edits_at_once: false,
         plain_offset: Interval::ZERO,
     }

@@ -34,6 +34,10 @@ pub struct Rig {
     /// One for each synth of the plan.
     pub receivers: Vec<Receiver>,
     pub sent: Vec<Sent>,
+    /// To keyboards with lamps, whose ports stand behind those of the synths.
+    pub lamps: Vec<Sent>,
+    /// The port of everything that went out, in order.
+    pub order: Vec<usize>,
     pub onsets: Vec<(Time, Onset)>,
     /// Sounding notes that were moved, where to.
     pub moved: Vec<(Time, Onset)>,
@@ -57,6 +61,8 @@ impl Rig {
             engine: Engine::new(Box::new(plan.clone())),
             now: Time::START,
             sent: Vec::new(),
+            lamps: Vec::new(),
+            order: Vec::new(),
             onsets: Vec::new(),
             moved: Vec::new(),
             asked: Vec::new(),
@@ -91,7 +97,7 @@ impl Rig {
     /// All synths are up and set up; the clock stands where set-up has been said.
     pub fn ready(plan: &Plan) -> Rig {
         let mut rig = Rig::new(plan);
-        for place in 0..plan.synths.len() {
+        for place in 0..plan.ports() {
             rig.link(place, Link::Up);
         }
         rig
@@ -133,8 +139,10 @@ impl Rig {
 
     /// A synth that comes up has just been switched on.
     pub fn link(&mut self, place: usize, link: Link) {
-        if link == Link::Down {
-            self.receivers[place].power_cycle(elapsed(self.now));
+        if link == Link::Down
+            && let Some(receiver) = self.receivers.get_mut(place)
+        {
+            receiver.power_cycle(elapsed(self.now));
         }
         let synth = SynthId::new(place).expect("a synth of the plan");
         self.input(Input::Synth { synth, link });
@@ -188,13 +196,20 @@ impl Rig {
                     bytes,
                 } => {
                     let synth = synth.index();
-                    self.receivers[synth].hear(elapsed(at), bytes);
-                    self.sent.push(Sent {
+                    let sent = Sent {
                         at,
                         synth,
                         weight,
                         bytes: bytes.to_vec(),
-                    });
+                    };
+                    self.order.push(synth);
+                    match self.receivers.get_mut(synth) {
+                        Some(receiver) => {
+                            receiver.hear(elapsed(at), bytes);
+                            self.sent.push(sent);
+                        }
+                        None => self.lamps.push(sent),
+                    }
                 }
                 Output::Onset(onset) => self.onsets.push((at, onset)),
                 Output::Moved(onset) => self.moved.push((at, onset)),

@@ -55,7 +55,7 @@ impl Score {
             return;
         };
         self.let_go(now, &handover, outlet);
-        let synths = handover.plan.synths.len().min(SYNTHS_MAX);
+        let synths = handover.plan.ports().min(SYNTHS_MAX);
         let old = self.engine.handle_plan(now, handover.plan);
         self.plans_taken += 1;
         // Only once the loop has begun again are there ports for all of them.

@@ -255,3 +255,69 @@ fn one_device_is_keyboard_and_synth_but_midi_through_is_not() {
         through.remarks
     );
 }
+
+fn back_to(keyboard: usize) -> Wanted {
+    Wanted {
+        name: "lamps".to_string(),
+        wish: Wish::BackTo(keyboard),
+    }
+}
+
+#[test]
+fn lamps_go_back_to_the_device_that_plays_as_their_keyboard() {
+    // A port that goes both ways is its own way back, also of the second of two twins.
+    let ports = [
+        port(20, "Small Pads", "Small Pads MIDI 1", "sh"),
+        port(24, "Small Pads", "Small Pads MIDI 1", "sh"),
+        port(28, "Loft Organ", "Loft Organ MIDI 1", "sh"),
+    ];
+    let pads = named("pads", &["*Pads*"]);
+    let rig = [pads.clone(), any("all")];
+    let outs = [named("organ", &["*Organ*"]), back_to(0), back_to(1)];
+    let held = Choice {
+        keyboards: vec![vec![ports[1].address], Vec::new()],
+        ..Choice::default()
+    };
+    let choice = choose(&ports, &rig, &outs, &held);
+    assert_eq!(clients(&choice).1, [28, 24, 20]);
+    // The organ's port is no less a keyboard's because lamps were there before.
+    let again = choose(&ports, &rig, &outs, &choice);
+    assert_eq!(clients(&again), clients(&choice));
+    // Where the device has gone, so has the way back.
+    let choice = choose(&ports[2..], &rig, &outs, &choice);
+    assert_eq!(clients(&choice).1, [28, -1, -1]);
+}
+
+/// As a JACK server names them: each port goes one way.
+#[test]
+fn where_ports_go_one_way_the_way_back_has_the_other_name_or_fits_the_globs() {
+    let ports = [
+        port(1, "system", "midi_capture_1", "s"),
+        port(2, "system", "midi_capture_2", "s"),
+        port(3, "system", "midi_playback_1", "h"),
+        port(4, "system", "midi_playback_2", "h"),
+        port(5, "Pads", "buttons", "s"),
+        port(6, "Pads", "more buttons", "s"),
+        port(7, "Pads", "lights", "h"),
+        port(8, "Pads", "more lights", "h"),
+        port(9, "trued", "Pads lights", "ho"),
+    ];
+    let back = |keyboard: Wanted| {
+        let choice = choose(&ports, &[keyboard], &[back_to(0)], &Choice::default());
+        choice.synths[0].map(|address| address.client)
+    };
+    assert_eq!(back(named("k", &["system:midi_capture_2"])), Some(4));
+    assert_eq!(back(named("k", &["Pads*"])), Some(7));
+    assert_eq!(
+        back(named("k", &["*buttons"])),
+        None,
+        "no light is called so"
+    );
+    let choice = choose(
+        &ports[4..],
+        &[named("k", &["Pads: more*"])],
+        &[back_to(0)],
+        &Choice::default(),
+    );
+    assert_eq!(choice.synths[0].map(|address| address.client), Some(8));
+}
