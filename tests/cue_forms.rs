@@ -11,7 +11,7 @@ mod lasting;
 use crate::support::dice::Dice;
 use crate::support::receiver::Hold;
 use crate::support::rig::{Rig, keyboard_id};
-use controls::{ACTIONS, CONTROLS, Cue, TITLES, can_be_held, forms, some_cues, stage};
+use controls::{ACTIONS, CONTROLS, Cue, LAMPS, TITLES, can_be_held, forms, some_cues, stage};
 use lasting::Lasting;
 use std::collections::{BTreeMap, BTreeSet};
 use std::time::Duration;
@@ -380,6 +380,24 @@ fn agree(rig: &Rig, model: &Model, seed: u64, text: &str) {
         rig.asked.len(),
     );
     assert_eq!(got, wanted, "seed {seed} at {:?} with\n{text}", rig.now);
+    for (number, show) in LAMPS.iter().enumerate() {
+        let lit = match *show {
+            "song Third" => model.song == 2,
+            "tonic next-key" => model.wait.is_some(),
+            show => told.shows(model.song, show),
+        };
+        let mut its = (rig.lamps.iter().rev())
+            .filter(|sent| usize::from(sent.bytes[1]) == number)
+            .map(|sent| sent.bytes[2] > 0);
+        let (now, before) = (its.next(), its.next());
+        assert_eq!(
+            now,
+            Some(lit),
+            "seed {seed} at {:?}: {show} with\n{text}",
+            rig.now
+        );
+        assert_ne!(now, before, "seed {seed}: {show} was said twice");
+    }
 }
 
 fn play(seed: u64, fired: &mut BTreeSet<Fired>) -> usize {

@@ -9,6 +9,7 @@ use super::{Engine, Inflected};
 use crate::intonation::{Ratios, Sevenths};
 use crate::limits::{LAMPS_MAX, SYNTHS_MAX};
 use crate::pitch::Interval;
+use crate::tuning::Key;
 
 /// What the devices know; room is taken once.
 pub(super) struct Lamps {
@@ -159,9 +160,9 @@ impl Engine {
                 InflectTo::Place(place) => told.stands(key, place, &song.by_hand),
                 InflectTo::By(trim) => told.trim_of(key) == trim,
             },
-            Command::InflectHome => (0..12)
-                .map(Inflected::Everywhere)
-                .all(|key| told.stands(key, Place::Home, &song.by_hand) && told.goes_together(key)),
+            Command::InflectHome => Key::all()
+                .map(Inflected::Alone)
+                .all(|key| told.stands(key, Place::Home, &song.by_hand)),
             Command::Turn(name) => told.is_turned(name, &song.by_hand),
             _ => false,
         }

@@ -278,11 +278,6 @@ impl Lasting {
         }
     }
 
-    /// Whether no key of a pitch class goes alone.
-    pub fn goes_together(&self, key: Inflected) -> bool {
-        self.shown_alone() >> key.pitch_class() & 1 == 0
-    }
-
     /// Whether all keys of a turn stand where it puts them.
     pub fn is_turned(&self, name: NameId, song: &ByHand) -> bool {
         let tonic = self.tonic_key(song).pitch_class();

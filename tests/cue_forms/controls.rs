@@ -130,6 +130,23 @@ const BY_KEY: [(&str, [&str; 2]); 3] = [
     ("tonic pivot", ["tonic E pivot", "tonic F pivot"]),
     ("tonic equal", ["tonic E equal", "tonic F equal"]),
 ];
+/// What lamps show.
+pub const LAMPS: [&str; 14] = [
+    "plain",
+    "song Third",
+    "transpose +2",
+    "pitch home",
+    "tonic next-key",
+    "tonic home",
+    "tonic D",
+    "inflect C high",
+    "inflect C home",
+    "inflect home",
+    "turn both",
+    "black-key Ab",
+    "black-key G#",
+    "home",
+];
 pub const TITLES: [&str; 4] = ["First", "Second", "Third", "Fourth"];
 
 pub struct Cue {
@@ -216,6 +233,10 @@ pub fn stage(cues: &[Cue], dialect: &str) -> String {
         let black_keys = if *title == "Third" { BLACK_KEYS } else { "" };
         text +=
             &format!("  - {{song: {title}, tuning: of {title}, transpose: {keys}{black_keys}}}\n");
+    }
+    text += "lamps:\n";
+    for (number, show) in LAMPS.iter().enumerate() {
+        text += &format!("  - {{show: {show}, send: {{controller: {number}, to: pads}}}}\n");
     }
     text += "cues:\n";
     for cue in cues

@@ -52,7 +52,7 @@ fn meantone(key: i32, ab: bool) -> f64 {
     plain + (fifth - 700.0) * f64::from(fifths)
 }
 
-#[derive(Clone, Default)]
+#[derive(Clone, Default, PartialEq)]
 pub struct Lasting {
     pub nudge_microcents: i64,
     pub plain: bool,
@@ -144,6 +144,32 @@ impl Lasting {
             self.tonic = Some((key, sounds));
         }
         song == 3
+    }
+
+    /// Whether a lamp is lit that shows something of this.
+    pub fn shows(&self, song: usize, show: &str) -> bool {
+        let at_home = !self.high && self.trim == 0;
+        match show {
+            "plain" => self.plain,
+            "transpose +2" => self.transpose_keys(song) == 2,
+            "pitch home" => self.nudge_microcents == 0,
+            "tonic home" => song == 3 && self.tonic.is_none(),
+            "tonic D" => song == 3 && self.tonic.is_some_and(|(key, _)| key.rem_euclid(12) == 2),
+            "inflect C high" => self.high,
+            "inflect C home" => at_home,
+            "inflect home" => at_home && !self.low && self.alone != Some(true),
+            "turn both" => self.high && self.low,
+            "black-key Ab" => song == 2 && self.ab,
+            "black-key G#" => song == 2 && !self.ab,
+            "home" => {
+                let nudged = Lasting {
+                    nudge_microcents: self.nudge_microcents,
+                    ..Lasting::default()
+                };
+                *self == nudged
+            }
+            _ => panic!("{show}"),
+        }
     }
 
     fn at_rest(&self, song: usize, key: i32) -> f64 {
