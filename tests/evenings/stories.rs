@@ -102,6 +102,19 @@ fn close_harmony_is_pure_in_every_key_and_the_seventh_when_it_is_asked_for() {
     assert!(rig.heard().stuck().is_empty() && rig.heard().orphans.is_empty());
 }
 
+/// What the pedal of the example is for: the root stays while what stands over it changes.
+#[test]
+fn close_harmony_keeps_a_root_that_is_held() {
+    let mut rig = Rig::of_file(&config("close-harmony.yaml"));
+    let root = |rig: &Rig| rig.engine.report().standing.chord.root;
+    rig.play("10 chord C3 E4 G4\n500 cc 69 127\n600 off E4\n600 off G4\n600 chord F4 A4\n700 wait");
+    assert_eq!(root(&rig), Some(0));
+    rig.play("1000 cc 69 0\n1100 off F4\n1100 off A4\n1100 chord F4 A4\n1200 wait");
+    assert_eq!(root(&rig), Some(5));
+    rig.play("1300 off C3\n1300 off F4\n1300 off A4");
+    assert!(rig.heard().stuck().is_empty() && rig.heard().orphans.is_empty());
+}
+
 /// E at home is 145 cents above D, natural 9/8 (203.910), flat 90; G flat 400; B at home 850, natural 27/16 (905.865).
 #[test]
 fn maqam_by_pads_by_turns_by_ear_and_by_the_line() {

@@ -128,3 +128,22 @@ fn two_devices_that_play_as_one_keyboard_are_both_asked_whether_all_is_quiet() {
     rig.midi(2, &[0xB0, 64, 0]);
     assert!(said(&rig, mark, 0).contains(&SYSEX.to_string()));
 }
+
+/// A bank is two messages, in order: its number by controller 0, then the program (MIDI 1.0, p. 18).
+#[test]
+fn a_bank_and_a_program_of_it() {
+    for dialect in ["channel-bend", "mpe"] {
+        let mut rig = Rig::of(&format!(
+            "keyboards: {{keys: {{port: virtual}}}}\nsynths: {{organ: {{port: virtual, dialect: {dialect}, tail_ms: 0}}}}\n\
+             set: [{{song: One}}, {{song: Two, send: [{{controller: 0, value: 3}}, {{program: 5}}]}}]\n"
+        ));
+        let mark = rig.sent.len();
+        rig.play("10 next\n500 on C4 90\n510 off C4");
+        let sent = rig.sent_since(mark);
+        let place = |wanted: &str| sent.iter().position(|message| message == wanted);
+        assert!(
+            place("B0 00 03").is_some() && place("B0 00 03") < place("C0 04"),
+            "{dialect}: {sent:?}"
+        );
+    }
+}

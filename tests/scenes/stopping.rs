@@ -86,3 +86,39 @@ fn with_nothing_sounding_it_stops_at_once() {
     rig.play("5000 stop");
     assert!(rig.engine.report().stopped);
 }
+
+/// Whatever a guest has told: one word brings the evening back as it was, and the synths are left as a stranger wants them.
+/// (That nothing is written into the stage file is told where the daemon is: `remembered::daemon`.)
+#[test]
+fn n17_a_guest_leaves_no_trace() {
+    let mut rig = Rig::of(
+        "keyboards: {keys: {port: virtual}}\nsynths: {synth: {port: virtual, bend_range: 12, tail_ms: 0}}\n\
+         tunings: {just: {like: five-limit-scale, also: {E: {high: 81/64}}}}\n\
+         set: [{song: One, tuning: just}, {song: Two}]\n",
+    );
+    let c_and_e = |rig: &mut Rig, at: u64| {
+        rig.play(&format!(
+            "{at} on C4 90\n{at} on E4 90\n{} off C4\n{} off E4",
+            at + 10,
+            at + 10
+        ));
+        let notes = &rig.heard().notes;
+        [&notes[notes.len() - 2], &notes[notes.len() - 1]].map(|note| note.onset_cents())
+    };
+    let at_first = c_and_e(&mut rig, 10);
+    rig.play(
+        "100 tell inflect E high\n110 tell tonic D pivot\n120 tell pitch +7 c\n130 tell transpose +2\n140 tell song 2\n150 tell plain",
+    );
+    assert_ne!(c_and_e(&mut rig, 200), at_first);
+    rig.play("300 tell fresh");
+    assert_eq!(c_and_e(&mut rig, 400), at_first);
+    rig.play("500 stop\n600 wait");
+    assert!(rig.engine.report().stopped);
+    for channel in (0..16).filter(|channel| *channel != 9) {
+        let left = (
+            rig.heard().bend_cents(channel),
+            rig.heard().range_cents(channel),
+        );
+        assert_eq!(left, (0.0, 200.0), "channel {channel}");
+    }
+}

@@ -31,7 +31,7 @@ fn moves(at_ms: u64, number: u8, cents: f64) -> String {
 }
 
 #[test]
-fn a_nudge_moves_what_comes_and_now_moves_what_is_held_as_well() {
+fn n05_a_nudge_moves_what_comes_and_now_moves_what_is_held_as_well() {
     let mut rig = evening("channel-bend");
     let heard = rig.play(
         "10 on C4 100
@@ -91,7 +91,7 @@ fn what_a_pedal_holds_on_a_plain_synth_moves_too_and_a_tail_does_not() {
 }
 
 #[test]
-fn a_nudge_to_a_frequency_goes_by_the_song_s_own_reference() {
+fn n05_a_nudge_to_a_frequency_goes_by_the_song_s_own_reference() {
     let mut rig = evening("channel-bend");
     let heard = rig.play("10 tell pitch 416 Hz\n20 on A4 100\n30 off A4\n500 next\n600 on G4 100");
     // 1200 log2(416/440); in the second song two keys up, so G4 sounds the same.

@@ -6,7 +6,7 @@ use crate::support::script::assert_heard;
 use trued::engine::plan::Dialect;
 
 #[test]
-fn the_wheel_adds_to_the_tuning_of_what_sounds_and_of_what_comes() {
+fn n08_the_wheel_adds_to_the_tuning_of_what_sounds_and_of_what_comes() {
     let plan = two_songs(Dialect::ChannelBend, 12);
     assert_heard(
         &Rig::ready(&plan).play(
@@ -25,6 +25,44 @@ fn the_wheel_adds_to_the_tuning_of_what_sounds_and_of_what_comes() {
          300 69 moves to 6900.0
          300 62 moves to 6200.0",
     );
+}
+
+/// A melody over another player's drone, and drums beside them: the wheel and the pressure of the one reach her notes alone.
+#[test]
+fn n08_what_one_player_bends_and_presses_is_no_business_of_another_part() {
+    for dialect in ["channel-bend", "mpe"] {
+        let mut rig = Rig::of(&format!(
+            "keyboards: {{keys: {{port: virtual}}, pads: {{port: virtual}}}}\n\
+             synths: {{organ: {{port: virtual, dialect: {dialect}, bend_range: 12}}, kit: {{port: virtual}}}}\n\
+             parts: [{{from: keys, to: organ}}, {{from: pads, to: organ}}, {{from: pads, keys: C1, to: kit, tune: no}}]\n\
+             set: [{{song: One, tuning: quarter-comma-meantone}}]\n"
+        ));
+        rig.play("10 second on D3 90\n20 on D4 90\n30 second on C1 90\n40 wheel 12288\n50 send D0 50\n60 wheel 0");
+        let notes = &rig.heard().notes;
+        let (drone, melody) = (&notes[0], &notes[1]);
+        assert_eq!(drone.pitch.len(), 1, "{dialect}: {:?}", drone.pitch);
+        let path: Vec<f64> = melody
+            .pitch
+            .iter()
+            .map(|(_, cents)| cents - melody.onset_cents())
+            .collect();
+        for (heard, wanted) in path.iter().zip([0.0, 100.0, -200.0]) {
+            assert!((heard - wanted).abs() < 0.08, "{dialect}: {path:?}");
+        }
+        assert_eq!(path.len(), 3, "{dialect}: {path:?}");
+        let pressure = |channel| rig.heard().pressure(channel);
+        assert_eq!(
+            (pressure(drone.channel), pressure(melody.channel)),
+            (0, 0x50),
+            "{dialect}"
+        );
+        assert!(
+            rig.receivers[1]
+                .notes
+                .iter()
+                .all(|note| note.pitch.len() == 1)
+        );
+    }
 }
 
 #[test]
