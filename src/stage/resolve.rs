@@ -9,7 +9,7 @@ use crate::engine::plan::SynthId;
 use crate::engine::{Ask, Command, InflectTo, Nudge, Place, RootTo};
 use crate::intonation::Sevenths;
 use crate::limits::{INFLECT_MAX_CENTS, NUDGE_MAX_CENTS};
-use crate::pitch::{Interval, Log, Pitch};
+use crate::pitch::{Hertz, Interval, Log, Pitch};
 
 /// The words that are played.
 pub const PLAYED: &str = "next, back, song, pitch, transpose, tonic, inflect, turn, black-key, root, sevenths, plain, home, resend, panic, fresh, reload and \
@@ -127,15 +127,24 @@ impl Names<'_> {
         })
     }
 
+    /// So many hertz above the first song's reference. A step up and one down are of one size, so that they cancel out.
+    fn step(&self, hertz: Hertz) -> Option<Interval> {
+        let reference = self.references.first()?.hertz();
+        let micro = (reference * 1e6).round() as u64;
+        Some(Log::of_ratio(micro + hertz.micro(), micro).interval())
+    }
+
     fn nudge(&self, to: &PitchNudge) -> Result<Nudge, Refusal> {
         let near = |far: Interval| far.abs() <= Interval::from_cents(NUDGE_MAX_CENTS);
         match to {
             PitchNudge::Home => Ok(Nudge::Home),
             PitchNudge::By(log) if near(log.interval()) => Ok(Nudge::By(log.interval())),
-            PitchNudge::By(_) => Err(wrong(
-                "this nudge is more than an octave",
-                "a nudge goes an octave up or down at most, as in `pitch +1 c`",
-            )),
+            PitchNudge::By(_) => Err(too_far()),
+            PitchNudge::ByHertz { up, hertz } => {
+                let step = self.step(*hertz).filter(|step| near(*step));
+                let step = step.ok_or_else(too_far)?;
+                Ok(Nudge::By(if *up { step } else { -step }))
+            }
             PitchNudge::To(hertz) => {
                 let pitch = hertz.pitch();
                 let reached = |reference: &Pitch| near(pitch - *reference);
@@ -152,6 +161,13 @@ impl Names<'_> {
             }
         }
     }
+}
+
+fn too_far() -> Refusal {
+    wrong(
+        "this nudge is more than an octave",
+        "a nudge goes an octave up or down at most, as in `pitch +1 c`",
+    )
 }
 
 fn inflect_by(by: Log) -> Result<Interval, Refusal> {

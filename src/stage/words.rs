@@ -64,6 +64,11 @@ pub enum Words {
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum PitchNudge {
     By(Log),
+    /// So many hertz up or down from the reference.
+    ByHertz {
+        up: bool,
+        hertz: Hertz,
+    },
     To(Hertz),
     Home,
 }
@@ -88,7 +93,7 @@ const FORMS: [(&str, &str); 19] = [
     ("song", "song 3, or song TITLE"),
     (
         "pitch",
-        "pitch +1 c, pitch 416 Hz or pitch home, and `now` behind it to move held notes too",
+        "pitch +1 c, pitch +0.1 Hz, pitch 416 Hz or pitch home, and `now` behind it to move held notes too",
     ),
     ("transpose", "transpose +2, or transpose home"),
     (
@@ -234,6 +239,12 @@ fn pitch(rest: &str) -> Result<Option<Words>, Mistake> {
                 "write pitch +1 c, or pitch 416 Hz",
             ));
         }
+        rest if rest.starts_with(['+', '-']) && rest.to_lowercase().ends_with("hz") => {
+            PitchNudge::ByHertz {
+                up: rest.starts_with('+'),
+                hertz: expression::hertz(&rest[1..])?,
+            }
+        }
         rest => match Expression::parse(rest)? {
             Expression::Distance(log) => PitchNudge::By(log),
             Expression::Absolute(..) => PitchNudge::To(expression::hertz(rest)?),
@@ -363,6 +374,7 @@ mod tests {
             "pitch +1 c",
             "pitch -1 c now",
             "pitch 416 Hz",
+            "pitch +0.1 Hz",
             "pitch home",
             "pitch home now",
             "transpose +2",
@@ -374,7 +386,6 @@ mod tests {
             "tonic next-key",
             "tonic next-key absolute",
             "tonic",
-            "tonic pivot",
             "tonic home",
             "inflect B half-flat",
             "inflect B4 half-flat",

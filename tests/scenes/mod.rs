@@ -42,6 +42,8 @@ mod telling;
 mod through;
 /// The tonic moved while playing.
 mod tonic;
+/// The reference trimmed by tenths of a hertz and by cents.
+mod trim;
 /// The player's wheel and what it means.
 mod wheel;
 /// Keys a tuning is good in, and those it is not.

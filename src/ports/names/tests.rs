@@ -306,7 +306,7 @@ fn where_ports_go_one_way_the_way_back_has_the_other_name_or_fits_the_globs() {
         let choice = choose(&ports, &[keyboard], &[back_to(0)], &Choice::default());
         choice.synths[0].map(|address| address.client)
     };
-    assert_eq!(back(named("k", &["system:midi_capture_2"])), Some(4));
+    assert_eq!(back(named("k", &["midi_capture_2"])), Some(4));
     assert_eq!(back(named("k", &["Pads*"])), Some(7));
     assert_eq!(
         back(named("k", &["*buttons"])),
