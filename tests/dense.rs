@@ -171,6 +171,7 @@ fn check(rig: &Rig, half_step_cents: f64, run: &str) {
 
 #[test]
 fn an_event_of_dense_playing_costs_little_and_takes_nothing_from_the_heap() {
+    let mut missed = Vec::new();
     for method in ["chord-root", "least-squares"] {
         let plan = plan("channel-bend", method);
         let script = script(7);
@@ -204,9 +205,12 @@ fn an_event_of_dense_playing_costs_little_and_takes_nothing_from_the_heap() {
             "{method}: {} events, median {median} ns, 99.9 % {late} ns, worst {worst} ns",
             fastest.len()
         );
-        if !cfg!(debug_assertions) {
-            assert!(median <= MEDIAN_NS_MAX && worst <= WORST_NS_MAX, "{method}");
+        if median > MEDIAN_NS_MAX || worst > WORST_NS_MAX {
+            missed.push(method);
         }
+    }
+    if !cfg!(debug_assertions) {
+        assert!(missed.is_empty(), "slower than promised: {missed:?}");
     }
 }
 

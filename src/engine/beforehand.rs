@@ -92,7 +92,7 @@ pub(super) fn bend_for(
     out: &mut Outbox,
 ) {
     let range = synth.rig.bend_range;
-    let word = Bend::encode(want.offset, range).0;
+    let word = want.word;
     let channel = synth.channel(number);
     if channel.held == 0 || channel.word != word {
         channel.offset = want.offset;

@@ -2,7 +2,7 @@
 
 use super::channel::{Channel, Rest};
 use super::following::Class;
-use super::plan::{PartId, Steal};
+use super::plan::{ChannelSet, PartId, Steal};
 use super::synth::Synth;
 use super::voices::Voices;
 use crate::pitch::word::Bend;
@@ -14,7 +14,7 @@ use crate::tuning::Key;
 pub(super) struct Want {
     pub part: PartId,
     /// Channels it may take.
-    pub pool: super::plan::ChannelSet,
+    pub pool: ChannelSet,
     pub key: Key,
     pub number: u8,
     /// Distance of the wanted pitch from the number's own.
@@ -25,10 +25,14 @@ pub(super) struct Want {
     pub follows: Option<Class>,
     /// How many different bends the tuning can ask for.
     pub groups: u8,
-    /// Its number is already held at this very bend.
+    /// Channels on which its number sounds already.
+    pub sounding_on: ChannelSet,
+    /// It sounds already at this very bend.
     pub doubles: bool,
     /// The player's wheel, where it is added to the channel's bend.
     pub wheel: Interval,
+    /// The bend for all this, without the wheel.
+    pub word: Bend,
 }
 
 /// The channel to take and what has to give way for it.
@@ -105,13 +109,9 @@ fn wish(
     let moves_alike = !matches!(rest, Rest::Held | Rest::Pedal) || channel.nudge == want.nudge;
     // What rings of a part that plays no more has another player's settings.
     let this_part = channel.part.is_none_or(|part| part == want.part);
-    let this_bend = rest != Rest::New
-        && moves_alike
-        && this_part
-        && same_bend(want, channel.offset, channel.word, synth);
-    let must_part = voices
-        .iter()
-        .any(|v| v.synth == synth.id && v.channel == number && v.number == want.number);
+    let this_bend =
+        rest != Rest::New && moves_alike && this_part && same_bend(want, channel, synth);
+    let must_part = want.sounding_on.has(number);
     let moved_alike = channel.follows == want.follows;
     let ringing = matches!(rest, Rest::Held | Rest::Pedal | Rest::Tail(_));
     let may_share = synth.rig.share || (this_key && rest != Rest::Held);
@@ -148,10 +148,10 @@ fn wish(
 }
 
 /// Whether the note would send the very bend that the channel has, with and without the wheel.
-fn same_bend(want: &Want, offset: Interval, word: Bend, synth: &Synth) -> bool {
-    let range = synth.rig.bend_range;
-    Bend::encode(want.offset, range).0 == word
-        && Bend::encode(want.offset + want.wheel, range) == Bend::encode(offset + want.wheel, range)
+fn same_bend(want: &Want, channel: &Channel, synth: &Synth) -> bool {
+    let with_wheel = |offset| Bend::encode(offset + want.wheel, synth.rig.bend_range);
+    want.word == channel.word
+        && (want.offset == channel.offset || with_wheel(want.offset) == with_wheel(channel.offset))
 }
 
 /// Whether there are more channels never used than bends that have none yet, so that a second one for a bend that has

@@ -134,7 +134,8 @@ impl Engine {
         let Some(now) = self.chord_at.take() else {
             return;
         };
-        for harmony in &mut self.harmonies {
+        let contexts = self.contexts();
+        for harmony in &mut self.harmonies[..contexts] {
             harmony.solve(now, &self.shapes);
         }
         self.move_followers(now, Weight::Owed);
@@ -157,6 +158,11 @@ impl Engine {
         self.waiting = waiting;
     }
 
+    /// How many of the contexts can have anything to do: the stage's and those of its parts.
+    pub(super) fn contexts(&self) -> usize {
+        1 + self.plan.parts.len()
+    }
+
     /// Before time moves on.
     pub(super) fn play_chord_before(&mut self, now: Time) {
         if self.chord_at.is_some_and(|at| at < now) {
@@ -166,7 +172,7 @@ impl Engine {
 
     /// A step of every glide that is due.
     pub(super) fn glide(&mut self, now: Time) {
-        for index in 0..HARMONIES {
+        for index in 0..self.contexts() {
             if self.harmonies[index].due_at().is_some_and(|at| at <= now) {
                 self.harmonies[index].glide(now);
                 self.move_followers(now, Weight::Control);
@@ -254,8 +260,13 @@ impl Engine {
         let channel = synth.channel(number);
         channel.offset += by;
         let offset = channel.offset;
-        channel.word = Bend::encode(offset, range).0;
-        let (bend, clipped) = Bend::encode(offset + wheel, range);
+        let unwheeled = Bend::encode(offset, range);
+        channel.word = unwheeled.0;
+        let (bend, clipped) = if wheel == Interval::ZERO {
+            unwheeled
+        } else {
+            Bend::encode(offset + wheel, range)
+        };
         self.out.counters.clipped += clipped as u64;
         if synth.bend(number, bend, weight, &mut self.out) {
             self.out.counters.bends += 1;

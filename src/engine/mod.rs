@@ -283,7 +283,8 @@ impl Engine {
         let synths = self.synths.iter().take(self.plan.synths.len());
         let sensing = self.keyboards.iter().filter_map(Keyboard::gone_at);
         let due = synths.filter_map(|synth| synth.due_at(self.stopping));
-        let glides = self.harmonies.iter().filter_map(Harmony::due_at);
+        let harmonies = &self.harmonies[..self.contexts()];
+        let glides = harmonies.iter().filter_map(Harmony::due_at);
         let due = sensing.chain(due).chain(self.presses.due_at());
         due.chain(glides).min()
     }

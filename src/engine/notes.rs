@@ -5,7 +5,7 @@ use super::choose::{Choice, Cost, Want, choose};
 use super::dialect::{self, on_members};
 use super::following::Followed;
 use super::outbox::Bundle;
-use super::plan::{KeyboardId, PartId, PartPlan, SynthId};
+use super::plan::{ChannelSet, KeyboardId, PartId, PartPlan, SynthId};
 use super::traffic::{Onset, Weight};
 use super::voices::Voice;
 use super::{Engine, Hand};
@@ -114,12 +114,13 @@ impl Engine {
         let offset = target - Pitch::of_key(number);
         let word = Bend::encode(offset, synth.rig.bend_range).0;
         let pool = dialect::members(&synth.rig, part);
-        let is_double = |v: &Voice| {
-            v.synth == part.to
-                && v.number == number
-                && pool.has(v.channel)
-                && synth.channels[v.channel as usize].word == word
-        };
+        let mut sounding_on = ChannelSet::NONE;
+        for voice in self.voices.iter() {
+            if voice.synth == part.to && voice.number == number && pool.has(voice.channel) {
+                sounding_on = sounding_on.with(voice.channel);
+            }
+        }
+        let is_double = |channel| synth.channels[channel as usize].word == word;
         let want = Want {
             part: id,
             pool,
@@ -129,8 +130,10 @@ impl Engine {
             nudge: self.nudge_of(part),
             follows: followed.map(Followed::class),
             groups: self.playing.tuning.groups(),
-            doubles: self.voices.iter().any(is_double),
+            doubles: sounding_on.iter().any(is_double),
+            sounding_on,
             wheel,
+            word,
         };
         let Some(choice) = choose(&want, synth, &self.voices, now) else {
             self.out.counters.refused += 1;
@@ -225,7 +228,6 @@ impl Engine {
         let pressure = self.pressure_for(part, part.to, number, want.part);
         let synth = &mut self.synths[part.to.index()];
         let range = synth.rig.bend_range;
-        let word = Bend::encode(want.offset, range).0;
         let mut bundle = luggage.bundle(number);
         bend_for(synth, want, number, pressure, &mut bundle, &mut self.out);
         bundle.add(&[status::NOTE_ON | number, want.number, press.velocity]);
@@ -248,7 +250,7 @@ impl Engine {
             channel: number,
             number: want.number,
             target: want.target(),
-            sent: Pitch::of_key(want.number) + word.decode(range),
+            sent: Pitch::of_key(want.number) + want.word.decode(range),
             standing: followed.map(|f| self.standing(f)),
         });
         let voice = self.voice(press, part.to, number, want.number);

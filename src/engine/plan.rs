@@ -71,7 +71,12 @@ impl ChannelSet {
 
     /// From the lowest channel up, 0-15.
     pub fn iter(self) -> impl Iterator<Item = u8> {
-        (0..16).filter(move |channel| self.has(*channel))
+        let mut rest = self.0;
+        std::iter::from_fn(move || {
+            let lowest = (rest != 0).then(|| rest.trailing_zeros() as u8);
+            rest &= rest.wrapping_sub(1);
+            lowest
+        })
     }
 }
 

@@ -3,7 +3,7 @@
 use super::lattice::Point;
 use super::pitch_classes::PitchClasses;
 use super::settings::Ratios;
-use super::shapes::{CORE_MAX, KEPT_MAX, Shapes};
+use super::shapes::{CORE_MAX, Shape, Shapes};
 use crate::pitch::Interval;
 
 /// The harmonic seventh above a root.
@@ -27,37 +27,40 @@ pub struct Candidate {
 }
 
 /// At least one shape for a chord.
-pub struct Candidates {
-    list: [Candidate; KEPT_MAX],
-    count: usize,
+pub struct Candidates<'a> {
+    from: From<'a>,
     classes: [u8; CORE_MAX],
     width: usize,
-    /// Whether the points mean anything.
-    pub exact: bool,
 }
 
-impl Candidates {
+enum From<'a> {
+    Pure(&'a [Shape]),
+    /// Shapes of the chord without its seventh, or with a root put in; which of their points are members, and the
+    /// root's.
+    Septimal {
+        shapes: &'a [Shape],
+        members: [usize; CORE_MAX],
+        root: usize,
+    },
+    Own([i64; CORE_MAX]),
+}
+
+impl<'a> Candidates<'a> {
     /// `septimal`: the root of a dominant chord whose seventh is to be 7/4.
     pub fn of(
         core: PitchClasses,
         ratios: &Ratios,
         root: Option<u8>,
         septimal: Option<u8>,
-        shapes: &Shapes,
-    ) -> Candidates {
-        let mut all = Candidates {
-            list: [Candidate::default(); KEPT_MAX],
-            count: 0,
-            classes: [0; CORE_MAX],
-            width: core.count(),
-            exact: true,
-        };
+        shapes: &'a Shapes,
+    ) -> Candidates<'a> {
         match (ratios, septimal) {
-            (Ratios::Own(offsets), _) => all.own(core, offsets, root.or(core.first()).unwrap_or(0)),
-            (_, Some(root)) => all.septimal(core, root, shapes),
-            _ => all.pure(core, shapes),
+            (Ratios::Own(offsets), _) => {
+                Candidates::own(core, offsets, root.or(core.first()).unwrap_or(0))
+            }
+            (_, Some(root)) => Candidates::septimal(core, root, shapes),
+            _ => Candidates::pure(core, shapes),
         }
-        all
     }
 
     /// The chord's pitch classes, in the order of each candidate's offsets.
@@ -65,61 +68,104 @@ impl Candidates {
         &self.classes[..self.width]
     }
 
-    pub fn list(&self) -> &[Candidate] {
-        &self.list[..self.count]
+    /// Whether the points mean anything.
+    pub fn is_exact(&self) -> bool {
+        !matches!(self.from, From::Own(_))
     }
 
-    fn pure(&mut self, core: PitchClasses, shapes: &Shapes) {
+    pub fn count(&self) -> usize {
+        match self.from {
+            From::Pure(shapes) | From::Septimal { shapes, .. } => shapes.len(),
+            From::Own(_) => 1,
+        }
+    }
+
+    /// What a candidate errs at least where its shape is kept, in microcents.
+    pub fn errs(&self, index: usize) -> i64 {
+        match self.from {
+            From::Pure(shapes) => shapes[index].errs,
+            _ => 0,
+        }
+    }
+
+    /// One of them; the best come first.
+    pub fn get(&self, index: usize) -> Candidate {
+        let (points, wanted) = match &self.from {
+            From::Pure(shapes) => (shapes[index].points, 0),
+            From::Septimal {
+                shapes,
+                members,
+                root,
+            } => {
+                let shape = &shapes[index].points;
+                let mut points = members.map(|member| shape[member]);
+                points[self.width - 1] = shape[*root].plus(SEVENTH);
+                (points, 1 << (self.width - 1))
+            }
+            From::Own(offsets) => {
+                return Candidate {
+                    offsets: *offsets,
+                    wanted: u8::MAX,
+                    ..Candidate::default()
+                };
+            }
+        };
+        Candidate {
+            offsets: points.map(|point| point.offset().microcents()),
+            points,
+            wanted,
+        }
+    }
+
+    fn pure(core: PitchClasses, shapes: &'a Shapes) -> Candidates<'a> {
         let found = shapes.of(core);
-        self.classes[..self.width].copy_from_slice(found.classes());
-        for shape in found.shapes {
-            self.add(*shape, 0);
+        Candidates {
+            from: From::Pure(found.shapes),
+            classes: found.classes,
+            width: found.count,
         }
     }
 
     /// The chord without its seventh takes its 5-limit shapes; the seventh stands on the root, sounding or not.
-    fn septimal(&mut self, core: PitchClasses, root: u8, shapes: &Shapes) {
+    fn septimal(core: PitchClasses, root: u8, shapes: &'a Shapes) -> Candidates<'a> {
         let seventh = (root + 10) % 12;
         // A root that is missing is put in for the while, so that the others know where it would be.
         let found = shapes.of(core.without(seventh).with(root));
-        let width = self.width;
-        for shape in found.shapes {
-            let at_root = found.classes().iter().position(|class| *class == root);
-            let mut points = [Point::default(); CORE_MAX];
-            let mut place = 0;
-            for (class, point) in found.classes().iter().zip(shape) {
-                if core.has(*class) {
-                    (points[place], self.classes[place]) = (*point, *class);
-                    place += 1;
-                }
+        let (mut members, mut at_root) = ([0; CORE_MAX], 0);
+        let mut classes = [0; CORE_MAX];
+        let mut place = 0;
+        for (index, class) in found.classes().iter().enumerate() {
+            if *class == root {
+                at_root = index;
             }
-            points[width - 1] = shape[at_root.unwrap_or(0)].plus(SEVENTH);
-            self.classes[width - 1] = seventh;
-            self.add(points, 1 << (width - 1));
+            if core.has(*class) {
+                (members[place], classes[place]) = (index, *class);
+                place += 1;
+            }
+        }
+        classes[place] = seventh;
+        Candidates {
+            from: From::Septimal {
+                shapes: found.shapes,
+                members,
+                root: at_root,
+            },
+            classes,
+            width: place + 1,
         }
     }
 
-    fn own(&mut self, core: PitchClasses, offsets: &[Interval; 12], root: u8) {
-        self.exact = false;
-        let mut candidate = Candidate {
-            wanted: u8::MAX,
-            ..Candidate::default()
-        };
+    fn own(core: PitchClasses, offsets: &[Interval; 12], root: u8) -> Candidates<'a> {
+        let (mut at, mut classes) = ([0; CORE_MAX], [0; CORE_MAX]);
         for (place, class) in core.iter().enumerate() {
-            self.classes[place] = class;
-            candidate.offsets[place] = offsets[(class + 12 - root) as usize % 12].microcents();
+            classes[place] = class;
+            at[place] = offsets[(class + 12 - root) as usize % 12].microcents();
         }
-        self.list[0] = candidate;
-        self.count = 1;
-    }
-
-    fn add(&mut self, points: [Point; CORE_MAX], wanted: u8) {
-        self.list[self.count] = Candidate {
-            offsets: points.map(|point| point.offset().microcents()),
-            points,
-            wanted,
-        };
-        self.count += 1;
+        Candidates {
+            from: From::Own(at),
+            classes,
+            width: core.count(),
+        }
     }
 }
 

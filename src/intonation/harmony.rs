@@ -110,6 +110,9 @@ pub struct Standing {
 pub struct Harmony {
     method: Method,
     keys: [KeyState; KEYS],
+    /// Keys that have a part in the harmony, and keys that only a pedal keeps sounding; bit 0 is key 0.
+    counted_keys: u128,
+    ringing_keys: u128,
     places: [Place; 12],
     chord: Chord,
     /// The player holds the root by hand.
@@ -125,13 +128,21 @@ pub struct Harmony {
     event_at: Time,
     returned_at: Time,
     returned: i64,
+    /// When something moves next.
+    due: Option<Time>,
+    /// How far what sounds stands from rest, on average, since it last moved.
+    drift: i64,
 }
+
+const _: () = assert!(KEYS <= u128::BITS as usize);
 
 impl Harmony {
     pub fn new() -> Harmony {
         Harmony {
             method: Method::Fixed,
             keys: [KeyState::default(); KEYS],
+            counted_keys: 0,
+            ringing_keys: 0,
             places: [Place::NEW; 12],
             chord: Chord::default(),
             locked: false,
@@ -142,6 +153,8 @@ impl Harmony {
             event_at: Time::START,
             returned_at: Time::START,
             returned: 0,
+            due: None,
+            drift: 0,
         }
     }
 
@@ -189,7 +202,7 @@ impl Harmony {
         Standing {
             chord: self.chord,
             anchor: self.chord.root.map(|root| self.offset(root)),
-            drift: Interval::from_microcents(self.drift(|place| place.now)),
+            drift: Interval::from_microcents(self.drift),
         }
     }
 
@@ -252,7 +265,7 @@ impl Harmony {
             self.places[member.class as usize].target = at;
         }
         self.attach(now, core, members, &placed.at, settings);
-        self.chord.count = if candidates.exact {
+        self.chord.count = if candidates.is_exact() {
             members.len() as u8
         } else {
             0
@@ -354,7 +367,7 @@ impl Harmony {
     }
 
     /// How far what is held and counted stands from rest, on average.
-    fn drift(&self, of: impl Fn(&Place) -> i64) -> i64 {
+    fn mean_away(&self, of: impl Fn(&Place) -> i64) -> i64 {
         let (mut away, mut keys) = (0, 0);
         for place in self.places.iter().filter(|place| place.counted > 0) {
             away += (of(place) - place.rest) * place.counted as i64;
@@ -385,11 +398,11 @@ fn fading(weight: i64, since: Span, fade: Span) -> i64 {
     if fade == Span::ZERO {
         return 0;
     }
-    // e^-x = 2^-(x log2 e); between whole powers of two a straight line is near enough.
-    let x = since.nanos() as i128 * 1_443 * 1_024 / 1_000 / fade.nanos() as i128;
-    if x >= 20 * 1_024 {
-        return 0;
+    if since.nanos() / 14 >= fade.nanos() {
+        return 0; // less than a millionth
     }
-    let whole = weight >> (x / 1_024);
+    // e^-x = 2^-(x log2 e); between whole powers of two a straight line is near enough. A memory of minutes fits.
+    let x = since.nanos() * 1_443 * 1_024 / 1_000 / fade.nanos();
+    let whole = weight >> (x / 1_024).min(63);
     whole - whole * (x % 1_024) as i64 / 2_048
 }

@@ -44,12 +44,18 @@ impl Tone {
 }
 
 /// Where the tones stand.
-#[derive(Clone, Copy, Debug)]
-pub struct Solution {
+pub struct Solution<'a> {
     /// From twelve-equal, in the order of the tones asked about; zero beyond.
     pub offsets: [Interval; TONES_MAX],
+    springs: Springs<'a>,
+}
+
+impl Solution<'_> {
     /// What strain is left, in millionths of a squared cent at weight 1.
-    pub strain_millionths: u64,
+    pub fn strain_millionths(&self) -> u64 {
+        let places = self.offsets.map(Interval::microcents);
+        self.springs.strain_millionths(&places)
+    }
 }
 
 /// Places the tones (at most [`TONES_MAX`]; further ones are not looked at). The leash pulls the mean distance from rest,
@@ -57,7 +63,7 @@ pub struct Solution {
 /// Without leash and anchors the mean stands at rest exactly.
 ///
 /// At most [`crate::limits::TRIALS_MAX`] combinations of sizes are tried; `trials.rs` says which.
-pub fn solve(tones: &[Tone], targets: &Targets, leash: Weight) -> Solution {
+pub fn solve<'a>(tones: &'a [Tone], targets: &'a Targets, leash: Weight) -> Solution<'a> {
     let tones = &tones[..tones.len().min(TONES_MAX)];
     let mut springs = Springs::between(tones, targets, leash);
     let factor = springs.factor();
@@ -65,7 +71,7 @@ pub fn solve(tones: &[Tone], targets: &Targets, leash: Weight) -> Solution {
     let places = springs.settle(&factor);
     Solution {
         offsets: places.map(Interval::from_microcents),
-        strain_millionths: springs.strain_millionths(&places),
+        springs,
     }
 }
 
@@ -91,7 +97,7 @@ mod tests {
         assert_eq!(at(&held, Weight::ZERO), 4_000_000);
         // Three parts of four on the way.
         assert_eq!(at(&held, Weight::millionths(333_333)), 3_000_003);
-        assert_eq!(solve(&[], &targets, Weight::ZERO).strain_millionths, 0);
+        assert_eq!(solve(&[], &targets, Weight::ZERO).strain_millionths(), 0);
     }
 
     #[test]

@@ -44,16 +44,56 @@ pub struct Placed {
     pub candidate: Candidate,
 }
 
+/// What two pitch classes of the chord are to each other.
+#[derive(Clone, Copy, Default)]
+struct Pair {
+    sizes: [i64; 2],
+    /// What an error between them counts, in quarters.
+    weight: i64,
+    /// How hard either holds the other.
+    pull: i64,
+}
+
+/// Every two of a chord; worked out once for all places that are tried.
+struct Pairs([[Pair; CORE_MAX]; CORE_MAX]);
+
+impl Pairs {
+    fn of(members: &[Member]) -> Pairs {
+        let mut pairs = Pairs([[Pair::default(); CORE_MAX]; CORE_MAX]);
+        for (one, a) in members.iter().enumerate() {
+            for (other, b) in members.iter().enumerate().filter(|(at, _)| *at != one) {
+                let semitones = (a.class + 12 - b.class) % 12;
+                pairs.0[one][other] = Pair {
+                    sizes: shapes::exact(semitones),
+                    weight: shapes::quarters(semitones) * a.keys * b.keys,
+                    pull: shapes::pull(semitones) * b.keys,
+                };
+            }
+        }
+        pairs
+    }
+}
+
 /// Finds the best candidate and its best place. `drift_limit: None` takes the leash away with the limit.
 pub fn place(members: &[Member], candidates: &Candidates, drift_limit: Option<i64>) -> Placed {
     let count = members.len();
+    let pairs = Pairs::of(members);
+    let any_held = members.iter().any(|m| m.held.is_some());
     let mut best = Placed {
         at: [0; CORE_MAX],
-        candidate: candidates.list()[0],
+        candidate: candidates.get(0),
     };
     let mut least = i64::MAX;
-    for candidate in candidates.list() {
+    for index in 0..candidates.count() {
+        // Where nothing holds a note back, the shape errs as much wherever it is put.
+        if !any_held && candidates.errs(index) >= least {
+            continue;
+        }
+        let candidate = &candidates.get(index);
         let zero = &candidate.offsets[..count];
+        if !any_held && candidates.errs(index) + least_away(members, zero) >= least {
+            continue;
+        }
         let mean = away(members, zero);
         let soft = shift(members, zero, mean, drift_limit);
         // Besides the place that all pull it to, those where one held note need not move at all.
@@ -63,15 +103,16 @@ pub fn place(members: &[Member], candidates: &Candidates, drift_limit: Option<i6
         for shift in std::iter::once(soft).chain(still.filter(near)) {
             let mut at = candidate.offsets;
             at[..count].iter_mut().for_each(|at| *at += shift);
-            give_way(members, &mut at[..count], drift_limit);
-            let strain = errors(members, &at[..count], candidate) + strain(members, &at[..count]);
-            if strain < least {
-                least = strain;
-                best = Placed {
-                    at,
-                    candidate: *candidate,
-                };
-            }
+            give_way(members, &pairs, &mut at[..count], drift_limit);
+            let strain = strain(members, &at[..count]);
+            let Some(errors) = errors(&pairs, &at[..count], candidate, least - strain) else {
+                continue;
+            };
+            least = errors + strain;
+            best = Placed {
+                at,
+                candidate: *candidate,
+            };
         }
     }
     best
@@ -99,29 +140,44 @@ fn shift(members: &[Member], zero: &[i64], mean: i64, drift_limit: Option<i64>) 
     (mean + shift).clamp(-limit, limit) - mean
 }
 
+/// What standing away from rest costs a shape at least, wherever it is put: two members cannot both be at rest if they
+/// are not so far apart there.
+fn least_away(members: &[Member], zero: &[i64]) -> i64 {
+    let away = || members.iter().zip(zero).map(|(m, at)| at - m.rest);
+    let spread = away().max().unwrap_or(0) - away().min().unwrap_or(0);
+    spread * AWAY / 100
+}
+
 /// How far the chord stands from rest, on average over its keys.
 pub fn away(members: &[Member], at: &[i64]) -> i64 {
     let keys: i64 = members.iter().map(|m| m.keys).sum();
-    let away = members.iter().zip(at).map(|(m, at)| m.keys * (at - m.rest));
-    away.sum::<i64>() / keys.max(1)
+    summed_away(members, at) / keys.max(1)
 }
 
-/// How far its intervals are from just, dissonances a quarter.
-fn errors(members: &[Member], at: &[i64], candidate: &Candidate) -> i64 {
+fn summed_away(members: &[Member], at: &[i64]) -> i64 {
+    let away = members.iter().zip(at).map(|(m, at)| m.keys * (at - m.rest));
+    away.sum()
+}
+
+/// How far its intervals are from just, dissonances a quarter; `None` where that is not less than `below`.
+fn errors(pairs: &Pairs, at: &[i64], candidate: &Candidate, below: i64) -> Option<i64> {
     let mut sum = 0;
-    for (one, a) in members.iter().enumerate() {
-        for (other, b) in members.iter().enumerate().take(one) {
-            let semitones = (a.class + 12 - b.class) % 12;
-            let stands = at[one] - at[other];
+    for (one, one_at) in at.iter().enumerate() {
+        for (other, other_at) in at.iter().enumerate().take(one) {
+            let pair = &pairs.0[one][other];
+            let stands = one_at - other_at;
             let error = if candidate.wanted & (1 << one | 1 << other) != 0 {
                 (stands - candidate.offsets[one] + candidate.offsets[other]).abs()
             } else {
-                shapes::error(semitones, stands)
+                shapes::error(pair.sizes, stands)
             };
-            sum += error * shapes::quarters(semitones) * a.keys * b.keys;
+            sum += error * pair.weight;
+        }
+        if sum / 4 >= below {
+            return None;
         }
     }
-    sum / 4
+    Some(sum / 4)
 }
 
 /// What else speaks against a placement, in microcents of error.
@@ -138,7 +194,7 @@ fn strain(members: &[Member], at: &[i64]) -> i64 {
 }
 
 /// Held notes move less than the shape wants; then the others are put as well with them as can be.
-fn give_way(members: &[Member], at: &mut [i64], drift_limit: Option<i64>) {
+fn give_way(members: &[Member], pairs: &Pairs, at: &mut [i64], drift_limit: Option<i64>) {
     let mut shape = [0; CORE_MAX];
     shape[..at.len()].copy_from_slice(at);
     let mut clamped = false;
@@ -154,7 +210,7 @@ fn give_way(members: &[Member], at: &mut [i64], drift_limit: Option<i64>) {
         }
     }
     if clamped {
-        ease(members, &shape, at);
+        ease(members, pairs, &shape, at);
     }
     if let Some(limit) = drift_limit {
         keep_within(members, at, limit);
@@ -162,25 +218,25 @@ fn give_way(members: &[Member], at: &mut [i64], drift_limit: Option<i64>) {
 }
 
 /// Each note that is free goes to the weighted mean of where the others want it.
-fn ease(members: &[Member], shape: &[i64], at: &mut [i64]) {
-    if members.iter().all(|m| m.held.is_some()) {
-        return;
-    }
+fn ease(members: &[Member], pairs: &Pairs, shape: &[i64], at: &mut [i64]) {
+    let is_free = |index: &usize| members[*index].held.is_none();
     for _ in 0..ROUNDS {
-        for (free, member) in members.iter().enumerate().filter(|(_, m)| m.held.is_none()) {
+        let mut moved = false;
+        for free in (0..members.len()).filter(is_free) {
             let (mut sum, mut weight) = (0, 0);
-            for (other, m) in members
-                .iter()
-                .enumerate()
-                .filter(|(other, _)| *other != free)
-            {
-                let pull = m.keys * shapes::pull(member.class + 12 - m.class);
+            for other in (0..members.len()).filter(|other| *other != free) {
+                let pull = pairs.0[free][other].pull;
                 sum += pull * (at[other] + shape[free] - shape[other]);
                 weight += pull;
             }
             if weight > 0 {
-                at[free] = sum / weight;
+                let to = sum / weight;
+                moved |= to != at[free];
+                at[free] = to;
             }
+        }
+        if !moved {
+            return;
         }
     }
 }
@@ -189,11 +245,15 @@ fn ease(members: &[Member], shape: &[i64], at: &mut [i64]) {
 pub fn keep_within(members: &[Member], at: &mut [i64], limit: i64) {
     let keys: i64 = members.iter().map(|m| m.keys).sum();
     for held_too in [false, true] {
+        // As `away`, but without a division where all is well.
+        if summed_away(members, at).abs() < (limit + 1) * keys {
+            return;
+        }
         let away = away(members, at);
         let beyond = away - away.clamp(-limit, limit);
         let moves = |m: &Member| held_too || m.held.is_none();
         let moving: i64 = members.iter().filter(|m| moves(m)).map(|m| m.keys).sum();
-        if beyond == 0 || moving == 0 {
+        if moving == 0 {
             continue;
         }
         let each = beyond * keys / moving;
@@ -209,16 +269,26 @@ pub fn keep_within(members: &[Member], at: &mut [i64], limit: i64) {
 /// A place for a pitch class that is not part of the shape: exact to one of the chord's, and as well as can be with the
 /// others.
 pub fn attach(class: u8, members: &[Member], at: &[i64], drift: i64, rest: i64) -> i64 {
+    let mut to_each = [Pair::default(); CORE_MAX];
+    for (pair, member) in to_each.iter_mut().zip(members) {
+        let semitones = (class + 12 - member.class) % 12;
+        pair.sizes = shapes::exact(semitones);
+        pair.weight = shapes::quarters(semitones) * member.keys;
+    }
+    let to_each = &to_each[..members.len()];
     let mut best = rest + drift;
     let mut least = i64::MAX;
-    for (to, to_at) in members.iter().zip(at) {
-        for size in shapes::exact(class + 12 - to.class) {
-            let place = to_at + size;
-            let errors = members.iter().zip(at).map(|(m, at)| {
-                let semitones = (class + 12 - m.class) % 12;
-                shapes::error(semitones, place - at) * shapes::quarters(semitones) * m.keys
-            });
-            let strain = errors.sum::<i64>() / 4 + (place - rest - drift).abs() * AWAY / 100;
+    for (to, to_at) in to_each.iter().zip(at) {
+        for place in to.sizes.map(|size| to_at + size) {
+            let away = (place - rest - drift).abs() * AWAY / 100;
+            let mut errors = 0;
+            for (pair, at) in to_each.iter().zip(at) {
+                errors += shapes::error(pair.sizes, place - at) * pair.weight;
+                if errors / 4 + away >= least {
+                    break;
+                }
+            }
+            let strain = errors / 4 + away;
             if strain < least {
                 least = strain;
                 best = place;

@@ -13,8 +13,6 @@ use super::pitch_classes::PitchClasses;
 
 /// Pitch classes that are tuned as one shape; any more are attached to it.
 pub const CORE_MAX: usize = 6;
-/// Shapes kept for one chord.
-pub const KEPT_MAX: usize = 12;
 /// Every chord that is no transposition of one above it, by its pitch classes: its shapes, best first, each the fifths
 /// and thirds of its points. Worked out by `shapes/make.rs`, whose test says that it still is what comes of it.
 const TABLE: &str = include_str!("shapes.txt");
@@ -43,15 +41,21 @@ pub const fn quarters(semitones: u8) -> i64 {
     }
 }
 
-/// One way to tune a chord: the points of its pitch classes, in the order of [`Found::classes`].
-pub type Shape = [Point; CORE_MAX];
+/// One way to tune a chord.
+#[derive(Clone, Copy, Default)]
+pub struct Shape {
+    /// In the order of [`Found::classes`].
+    pub points: [Point; CORE_MAX],
+    /// How far its intervals are from just, if each pitch class has one key, in microcents.
+    pub errs: i64,
+}
 
 /// The shapes of one chord, best first.
 #[derive(Clone, Copy)]
 pub struct Found<'a> {
     pub shapes: &'a [Shape],
-    classes: [u8; CORE_MAX],
-    count: usize,
+    pub(super) classes: [u8; CORE_MAX],
+    pub(super) count: usize,
 }
 
 impl Found<'_> {
@@ -100,17 +104,18 @@ impl Shapes {
     fn take(&mut self, line: &str) -> Option<()> {
         let (chord, written) = line.split_once(':')?;
         let first = self.all.len() as u16;
+        let classes = chord.split_whitespace();
+        let home: PitchClasses = classes.filter_map(|class| class.parse().ok()).collect();
         for shape in written.split('|') {
             let mut points = [Point::default(); CORE_MAX];
             for (point, written) in points.iter_mut().zip(shape.split_whitespace()) {
                 let (fifths, thirds) = written.split_once(',')?;
                 *point = Point::new(fifths.parse().ok()?, thirds.parse().ok()?);
             }
-            self.all.push(points);
+            let errs = errs(home, &points);
+            self.all.push(Shape { points, errs });
         }
         let count = (self.all.len() - first as usize) as u8;
-        let classes = chord.split_whitespace();
-        let home: PitchClasses = classes.filter_map(|class| class.parse().ok()).collect();
         for up in 0..12 {
             let entry = &mut self.index[home.raised(up).bits() as usize];
             if entry.count == 0 {
@@ -137,27 +142,47 @@ impl Shapes {
     }
 }
 
+fn errs(chord: PitchClasses, points: &[Point; CORE_MAX]) -> i64 {
+    let mut sum = 0;
+    for (one, a) in chord.iter().zip(points) {
+        for (other, b) in chord.iter().zip(points).take_while(|(other, _)| *other < one) {
+            let stands = a.minus(*b).offset().microcents();
+            sum += error(exact(one - other), stands) * quarters(one - other);
+        }
+    }
+    sum / 4
+}
+
 impl Default for Shapes {
     fn default() -> Shapes {
         Shapes::new()
     }
 }
 
-/// How far an interval of so many semitones, standing so far from equal, is from its nearest exact size; microcents.
-pub fn error(semitones: u8, offset: i64) -> i64 {
-    let sizes = exact(semitones);
-    sizes
-        .map(|size| (offset - size).abs())
-        .min()
-        .expect("every interval has an exact size")
+/// How far an interval, standing so far from equal, is from the nearest of its exact sizes; microcents.
+pub const fn error(sizes: [i64; 2], offset: i64) -> i64 {
+    let (one, other) = ((offset - sizes[0]).abs(), (offset - sizes[1]).abs());
+    if one < other { one } else { other }
 }
 
-/// The exact sizes of an interval of so many semitones, as microcents from equal.
-pub fn exact(semitones: u8) -> impl Iterator<Item = i64> {
-    EXACT[semitones as usize % 12]
-        .iter()
-        .map(|p| p.offset().microcents())
+/// The exact sizes of an interval of so many semitones, as microcents from equal; where there is but one, that twice.
+pub const fn exact(semitones: u8) -> [i64; 2] {
+    SIZES[semitones as usize % 12]
 }
+
+const SIZES: [[i64; 2]; 12] = {
+    let mut sizes = [[0; 2]; 12];
+    let mut semitones = 0;
+    while semitones < 12 {
+        let points = EXACT[semitones];
+        sizes[semitones] = [
+            points[0].offset().microcents(),
+            points[points.len() - 1].offset().microcents(),
+        ];
+        semitones += 1;
+    }
+    sizes
+};
 
 /// How hard an interval of so many semitones holds its size where held notes will not let all of them have it.
 pub const fn pull(semitones: u8) -> i64 {

@@ -10,6 +10,9 @@ pub struct Bend(u16);
 #[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
 pub struct BendRange(u8);
 
+/// Twice the keyboard.
+const WIDEST: i64 = 256 * Interval::SEMITONE.microcents();
+
 impl BendRange {
     /// What General MIDI receivers start with (GM1 p. 3) and an MPE manager too (MPE 1.1, 2.2.5).
     pub const TWO: BendRange = BendRange(2);
@@ -48,8 +51,10 @@ impl Bend {
     /// `round(interval x 8192 / range) + 8192`, held inside 0-16383 (MPE 1.1, C.3). The flag tells whether it had to be
     /// held by more than the missing last step of the upward range.
     pub fn encode(interval: Interval, range: BendRange) -> (Bend, bool) {
-        let full = Interval::SEMITONE.microcents() as i128 * range.0 as i128;
-        let steps = (interval.microcents() as i128 * 16384 + full).div_euclid(2 * full);
+        // Nothing that could be meant is as wide as this; and so no product leaves 64 bits.
+        let microcents = interval.microcents().clamp(-WIDEST, WIDEST);
+        let full = Interval::SEMITONE.microcents() * range.0 as i64;
+        let steps = (microcents * 16384 + full).div_euclid(2 * full);
         let value = (steps + 8192).clamp(0, 16383);
         (Bend(value as u16), !(-8192..=8192).contains(&steps))
     }

@@ -81,7 +81,7 @@ fn chords_about_their_mean() {
             let wanted: f64 = wanted.parse().expect("cents");
             assert!((ours - wanted).abs() < 0.0011, "{row}: {ours}");
         }
-        let strain = solution.strain_millionths as f64 / 1e6;
+        let strain = solution.strain_millionths() as f64 / 1e6;
         let wanted: f64 = fields[4].parse().expect("a strain");
         assert!((strain - wanted).abs() < 0.000051, "{row}: {strain}");
         rows += 1;
@@ -104,8 +104,7 @@ fn a_thousand_random_chords_against_numpy() {
     let mut strains = Vec::new();
     let (mut best_known, mut worst_cents) = (0, 0.0_f64);
     for case in &cases {
-        let solution = place(case);
-        let ours = cents(&solution, tones(case).len());
+        let (ours, strain) = place(case);
         let is_best_alone = case["gap"].as_f64().is_some_and(|gap| gap > NO_DIFFERENCE);
         if is_best_alone && tries_all(case) {
             worst_cents = worst_cents.max(furthest(&ours, &case["places"]));
@@ -114,7 +113,7 @@ fn a_thousand_random_chords_against_numpy() {
         let mut case = case.clone();
         case["places"] = json!(ours);
         answered += &format!("{case}\n");
-        strains.push(solution.strain_millionths as f64 / 1e6);
+        strains.push(strain);
     }
     println!("numpy's own best places: {best_known} chords, at most {worst_cents:.6} cents away");
     assert!(
@@ -159,12 +158,16 @@ fn tries_all(case: &Value) -> bool {
     case["combinations"].as_u64().expect("a number") <= TRIALS_MAX as u64
 }
 
-fn place(case: &Value) -> Solution {
+/// Where the tones stand, in cents, and the strain that is left.
+fn place(case: &Value) -> (Vec<f64>, f64) {
+    let tones = tones(case);
     let targets = match case["sevens"].as_bool() {
         Some(true) => Targets::with_sevens(weight(&case["dissonance"])),
         _ => Targets::five_limit(weight(&case["dissonance"])),
     };
-    solve(&tones(case), &targets, weight(&case["leash"]))
+    let solution = solve(&tones, &targets, weight(&case["leash"]));
+    let strain = solution.strain_millionths() as f64 / 1e6;
+    (cents(&solution, tones.len()), strain)
 }
 
 fn tones(case: &Value) -> Vec<Tone> {

@@ -40,23 +40,27 @@ impl Harmony {
         };
         self.go_home(now, &settings);
         let Some(step) = step_span(settings.glide_per_s) else {
+            self.drift = self.mean_away(|place| place.now);
             return;
         };
+        let mut due = self.home_at(&settings);
         for place in self.places.iter_mut().filter(|place| glides(place)) {
             if place.stepped.is_none_or(|at| at + step <= now) {
                 place.now += (place.target - place.now).clamp(-STEP, STEP);
                 place.stepped = Some(now);
             }
+            if glides(place) {
+                let next = place.stepped.unwrap_or(now) + step;
+                due = Some(due.map_or(next, |due| due.min(next)));
+            }
         }
+        self.due = due;
+        self.drift = self.mean_away(|place| place.now);
     }
 
     /// When something moves next.
     pub fn due_at(&self) -> Option<Time> {
-        let settings = self.method.settings()?;
-        let step = step_span(settings.glide_per_s)?;
-        let gliding = self.places.iter().filter(|place| glides(place));
-        let next = gliding.map(|place| place.stepped.map_or(self.event_at, |at| at + step));
-        next.chain(self.home_at(settings)).min()
+        self.due
     }
 
     /// When a chord that stands is to take its next step home.
@@ -66,7 +70,7 @@ impl Harmony {
         let may = settings
             .hold_limit
             .is_none_or(|limit| self.returned < limit.microcents());
-        let is_away = self.drift(|place| place.target).abs() > DEAD_BAND;
+        let is_away = self.mean_away(|place| place.target).abs() > DEAD_BAND;
         (may && is_away).then_some((self.event_at + STANDS).max(self.returned_at + step))
     }
 
@@ -74,8 +78,8 @@ impl Harmony {
         if self.home_at(settings).is_none_or(|at| at > now) {
             return;
         }
-        let step = STEP.min(self.drift(|place| place.target).abs());
-        let step = step * -self.drift(|place| place.target).signum();
+        let step = STEP.min(self.mean_away(|place| place.target).abs());
+        let step = step * -self.mean_away(|place| place.target).signum();
         let limit = settings
             .hold_limit
             .map_or(i64::MAX / 4, Interval::microcents);

@@ -1,6 +1,6 @@
 //! What sounds: keys that go down and up, pedals, and which pitch classes are the chord.
 
-use super::{FADE, Harmony, KeyState, Place};
+use super::{FADE, Harmony, Place};
 use crate::intonation::pitch_classes::PitchClasses;
 use crate::intonation::shapes::CORE_MAX;
 use crate::pitch::Interval;
@@ -28,6 +28,7 @@ impl Harmony {
         place.rest = rest.microcents();
         self.struck |= counted;
         self.changed = true;
+        self.note_key(key.number());
     }
 
     /// A note of a key ends; `rings`: a pedal keeps it sounding.
@@ -51,15 +52,26 @@ impl Harmony {
             place.sounding -= !rings as u8;
         }
         self.changed = true;
+        self.note_key(key.number());
     }
 
     /// The pedal is up: what only it held has ended.
     pub fn damp(&mut self) {
-        for (number, state) in self.keys.iter_mut().enumerate().filter(|(_, s)| s.rings) {
-            state.rings = false;
-            self.places[number % 12].sounding -= 1;
+        while self.ringing_keys != 0 {
+            let number = self.ringing_keys.trailing_zeros() as u8;
+            self.keys[number as usize].rings = false;
+            self.places[number as usize % 12].sounding -= 1;
             self.changed = true;
+            self.note_key(number);
         }
+    }
+
+    /// Notes what has become of a key.
+    fn note_key(&mut self, number: u8) {
+        let state = &self.keys[number as usize];
+        let counts = state.held > state.uncounted || state.rings;
+        self.counted_keys = self.counted_keys & !(1 << number) | (counts as u128) << number;
+        self.ringing_keys = self.ringing_keys & !(1 << number) | (state.rings as u128) << number;
     }
 
     /// The pitch classes that are the harmony now.
@@ -75,11 +87,15 @@ impl Harmony {
     }
 
     pub(super) fn bass(&self, chord: PitchClasses) -> Option<u8> {
-        let sounds = |(number, state): &(usize, &KeyState)| {
-            (state.held > state.uncounted || state.rings) && chord.has(*number as u8)
-        };
-        let lowest = self.keys.iter().enumerate().find(sounds);
-        lowest.map(|(number, _)| number as u8 % 12)
+        let mut keys = self.counted_keys;
+        while keys != 0 {
+            let lowest = keys.trailing_zeros() as u8;
+            if chord.has(lowest) {
+                return Some(lowest % 12);
+            }
+            keys &= keys - 1;
+        }
+        None
     }
 
     /// At most as many pitch classes as there are shapes for: the bass, the root, and of the others those with most

@@ -6,7 +6,7 @@ use crate::intonation::least_squares::{Targets, Tone, Weight, solve};
 use crate::intonation::pitch_classes::PitchClasses;
 use crate::intonation::place::{self, Member};
 use crate::intonation::settings::{Ratios, Settings};
-use crate::intonation::shapes::Shapes;
+use crate::intonation::shapes::{CORE_MAX, Shapes};
 use crate::pitch::Interval;
 use crate::time::{Span, Time};
 
@@ -27,18 +27,23 @@ impl Harmony {
         settings: &Settings,
         shapes: &Shapes,
     ) {
-        self.septimal = self.septimal_root(now, chord, settings);
+        let core = self.core(chord);
+        self.septimal = self.septimal_root(now, core, settings);
+        let own;
         let targets = match &settings.ratios {
-            Ratios::Own(offsets) => own_targets(offsets),
-            _ if self.septimal.is_some() => shapes.seven_limit,
-            _ => shapes.five_limit,
+            Ratios::Own(offsets) => {
+                own = own_targets(offsets);
+                &own
+            }
+            _ if self.septimal.is_some() => &shapes.seven_limit,
+            _ => &shapes.five_limit,
         };
-        let mut members = [Member::default(); TONES];
-        for (member, class) in members.iter_mut().zip(chord.iter()) {
+        let mut members = [Member::default(); CORE_MAX];
+        for (member, class) in members.iter_mut().zip(core.iter()) {
             *member = self.member(now, class, settings);
         }
-        let members = &members[..chord.count()];
-        let mut at = self.pulled(now, members, &targets, settings);
+        let members = &members[..core.count()];
+        let mut at = self.pulled(now, members, targets, settings);
         let at = &mut at[..members.len()];
         if let Some(limit) = settings.drift_limit {
             place::keep_within(members, at, limit.microcents());
@@ -46,7 +51,7 @@ impl Harmony {
         for (member, at) in members.iter().zip(at.iter()) {
             self.places[member.class as usize].target = *at;
         }
-        self.attach(now, chord, members, at, settings);
+        self.attach(now, core, members, at, settings);
         // Sizes that were shared out are no ratio.
         self.chord = Chord {
             root: self.chord.root,

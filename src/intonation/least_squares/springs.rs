@@ -26,16 +26,18 @@ const _: () = {
 /// Two tones and the sizes their interval may have.
 #[derive(Clone, Copy)]
 pub struct Pair<'a> {
-    pub lower: usize,
-    pub upper: usize,
+    pub lower: u8,
+    pub upper: u8,
+    /// Which of the sizes it is pulled to.
+    pub chosen: u8,
     pub weight: i64,
     target: &'a Target,
-    /// Which of the sizes it is pulled to.
-    pub chosen: usize,
 }
 
 pub struct Springs<'a> {
     tones: &'a [Tone],
+    /// What all weights are multiplied by.
+    all_keys: i64,
     leash: i64,
     matrix: Row<Row<i64>>,
     /// What anchors and leash add to the right-hand side.
@@ -51,6 +53,7 @@ impl<'a> Springs<'a> {
         let anchored = tones.iter().any(|tone| anchor(tone).1 > 0);
         let mut springs = Springs {
             tones,
+            all_keys: tones.iter().map(keys).sum(),
             // Something has to say where the chord stands.
             leash: leash.get().max(i64::from(!anchored)),
             matrix: Default::default(),
@@ -93,18 +96,17 @@ impl<'a> Springs<'a> {
         self.matrix[lower][upper] -= weight;
         self.matrix[upper][lower] -= weight;
         self.pairs[self.pair_count] = Pair {
-            lower,
-            upper,
+            lower: lower as u8,
+            upper: upper as u8,
+            chosen: 0,
             weight,
             target,
-            chosen: 0,
         };
         self.pair_count += 1;
     }
 
-    /// What all weights are multiplied by.
     pub fn all_keys(&self) -> i64 {
-        self.tones.iter().map(keys).sum()
+        self.all_keys
     }
 
     #[inline]
@@ -143,7 +145,8 @@ impl<'a> Springs<'a> {
             for (place, better) in places.iter_mut().zip(better) {
                 *place += better;
             }
-            if better.iter().all(|better| better.abs() <= 1) {
+            // What is left then is below one.
+            if better.iter().all(|better| better.abs() < 1_000) {
                 break;
             }
         }
@@ -154,8 +157,8 @@ impl<'a> Springs<'a> {
         let mut pulls = self.home;
         for pair in self.pairs() {
             let pull = i128::from(pair.weight) * i128::from(size(pair));
-            pulls[pair.lower] -= pull;
-            pulls[pair.upper] += pull;
+            pulls[pair.lower as usize] -= pull;
+            pulls[pair.upper as usize] += pull;
         }
         pulls
     }
@@ -196,12 +199,12 @@ impl<'a> Pair<'a> {
     }
 
     pub fn size(&self) -> i64 {
-        self.sizes()[self.chosen]
+        self.sizes()[self.chosen as usize]
     }
 
     /// The interval of the two as they stand.
     pub fn interval(&self, places: &Row<i64>) -> i64 {
-        places[self.upper] - places[self.lower]
+        places[self.upper as usize] - places[self.lower as usize]
     }
 }
 

@@ -64,7 +64,7 @@ fn try_all(springs: &mut Springs, factor: &Factor, doubts: &Doubts) {
     let wheels = trials.wheels;
     let mut rank = trials.run(same);
     for (wheel, number) in wheels.iter().zip(doubts.numbers()) {
-        springs.pairs_mut()[number].chosen = rank / wheel.place;
+        springs.pairs_mut()[number].chosen = (rank / wheel.place) as u8;
         rank %= wheel.place;
     }
 }
@@ -87,9 +87,9 @@ fn take_nearest(springs: &mut Springs, places: &Row<i64>) -> bool {
     let mut changed = false;
     for pair in springs.pairs_mut() {
         let stands = pair.interval(places);
-        let error = |choice: usize| (pair.sizes()[choice] - stands).abs();
+        let error = |choice: u8| (pair.sizes()[choice as usize] - stands).abs();
         let mut nearest = pair.chosen;
-        for choice in 0..pair.sizes().len() {
+        for choice in 0..pair.sizes().len() as u8 {
             if error(choice) < error(nearest) {
                 nearest = choice;
             }
@@ -208,8 +208,8 @@ impl<'a> Trials<'a> {
         for ((wheel, stands), number) in wheels.zip(doubts.numbers()) {
             let pair = springs.pairs()[number];
             let mut pull = Row::default();
-            pull[pair.upper] = i128::from(pair.weight) << PART;
-            pull[pair.lower] = -pull[pair.upper];
+            let way = i128::from(pair.weight) << PART;
+            (pull[pair.upper as usize], pull[pair.lower as usize]) = (way, -way);
             let answer = factor.solve(&pull);
             for (answers, other) in wheel.answers.iter_mut().zip(doubts.numbers()) {
                 *answers = springs.pairs()[other].interval(&answer);
@@ -245,7 +245,7 @@ impl<'a> Trials<'a> {
     fn is_at_end(&self, wheel: usize) -> bool {
         let Wheel { pair, down, .. } = &self.wheels[wheel];
         let end = if *down { 0 } else { pair.sizes().len() - 1 };
-        pair.chosen == end
+        usize::from(pair.chosen) == end
     }
 
     /// On to the next size of a pair.

@@ -1,10 +1,12 @@
 //! How the table of shapes is made. Where it differs, `cargo test --lib shapes::make` shows what it should be.
 
-use super::{CORE_MAX, EXACT, KEPT_MAX, Shape, Shapes, TABLE, error, quarters};
+use super::{CORE_MAX, EXACT, Shapes, TABLE, error, exact, quarters};
 use crate::intonation::lattice::Point;
 use crate::intonation::pitch_classes::PitchClasses;
 use std::fmt::Write;
 
+/// Shapes kept for one chord.
+const KEPT_MAX: usize = 12;
 /// Shapes that err by more than this for each pitch class beyond the best are not kept.
 const SLACK: i64 = 6_000_000 * 4;
 /// Of unfinished shapes so many are followed up, those that err least.
@@ -35,7 +37,7 @@ struct Work {
 
 impl Work {
     /// Places one pitch class after another, each exactly above or below one that stands already.
-    fn shapes_of(&mut self, set: PitchClasses) -> Vec<Shape> {
+    fn shapes_of(&mut self, set: PitchClasses) -> Vec<[Point; CORE_MAX]> {
         let mut classes = [0u8; CORE_MAX];
         let count = set.count();
         for (place, class) in classes.iter_mut().zip(set.iter()) {
@@ -99,7 +101,7 @@ fn cost_of(new: usize, partly: &Partly, others: u8, classes: &[u8]) -> i64 {
         .map(|other| {
             let semitones = (classes[new] + 12 - classes[other]) % 12;
             let stands = partly.points[new].minus(partly.points[other]).offset();
-            quarters(semitones) * error(semitones, stands.microcents())
+            quarters(semitones) * error(exact(semitones), stands.microcents())
         })
         .sum()
 }
@@ -148,8 +150,8 @@ fn chords_have_the_shapes_of_the_books() {
                 .position(|class| *class == key)
                 .expect("of the chord")
         };
-        let root = found.shapes[0][at(keys[0])];
-        let ratio = |key: &u8| found.shapes[0][at(*key)].minus(root).ratio();
+        let root = found.shapes[0].points[at(keys[0])];
+        let ratio = |key: &u8| found.shapes[0].points[at(*key)].minus(root).ratio();
         keys.iter().map(ratio).collect::<Vec<_>>()
     };
     assert_eq!(best(&[0, 4, 7]), [(1, 1), (5, 4), (3, 2)]);
