@@ -160,7 +160,7 @@ impl Engine {
 
     /// How many of the contexts can have anything to do: the stage's and those of its parts.
     pub(super) fn contexts(&self) -> usize {
-        1 + self.plan.parts.len()
+        1 + self.playing_parts
     }
 
     /// Before time moves on.
