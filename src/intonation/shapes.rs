@@ -144,8 +144,9 @@ impl Shapes {
 
 fn errs(chord: PitchClasses, points: &[Point; CORE_MAX]) -> i64 {
     let mut sum = 0;
-    for (one, a) in chord.iter().zip(points) {
-        for (other, b) in chord.iter().zip(points).take_while(|(other, _)| *other < one) {
+    let tones = || chord.iter().zip(points);
+    for (one, a) in tones() {
+        for (other, b) in tones().take_while(|(other, _)| *other < one) {
             let stands = a.minus(*b).offset().microcents();
             sum += error(exact(one - other), stands) * quarters(one - other);
         }
