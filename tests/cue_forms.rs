@@ -15,7 +15,7 @@ use controls::{ACTIONS, CONTROLS, Cue, LAMPS, TITLES, can_be_held, forms, some_c
 use lasting::Lasting;
 use std::collections::{BTreeMap, BTreeSet};
 use std::time::Duration;
-use trued::engine::Input;
+use trued::engine::{Input, Link};
 use trued::time::Span;
 
 #[derive(Clone, Copy)]
@@ -43,6 +43,7 @@ struct Model {
     /// Keyboard and key, or pedal.
     hands: BTreeSet<(usize, u8, bool)>,
     asked: usize,
+    lamps_away: bool,
     moved_at: BTreeSet<u64>,
     /// Control, form and action of every cue that has fired.
     fired: BTreeSet<Fired>,
@@ -308,6 +309,21 @@ fn happen(dice: &mut Dice, rig: &mut Rig, model: &mut Model) {
             rig.midi(keyboard, &[0xB0, 64, u8::from(down) * 127]);
             model.when_quiet(at);
         }
+        98 => {
+            // What they were told before is nothing to a device that comes.
+            rig.link(
+                1,
+                if model.lamps_away {
+                    Link::Back
+                } else {
+                    Link::Down
+                },
+            );
+            model.lamps_away = !model.lamps_away;
+            if model.lamps_away {
+                rig.lamps.clear();
+            }
+        }
         _ => {
             rig.input(Input::KeyboardLost(keyboard_id(keyboard)));
             model.down.retain(|place, _| place.0 != keyboard);
@@ -380,6 +396,10 @@ fn agree(rig: &Rig, model: &Model, seed: u64, text: &str) {
         rig.asked.len(),
     );
     assert_eq!(got, wanted, "seed {seed} at {:?} with\n{text}", rig.now);
+    if model.lamps_away {
+        assert!(rig.lamps.is_empty(), "seed {seed}");
+        return;
+    }
     for (number, show) in LAMPS.iter().enumerate() {
         let lit = match *show {
             "song Third" => model.song == 2,

@@ -7,6 +7,8 @@ mod edits;
 mod files;
 /// The virtual machine and what it leaves.
 mod guest;
+/// A controller with lights.
+mod lamps;
 /// Ports that come and go, and stops of all kinds.
 mod plugging;
 
@@ -132,6 +134,7 @@ fn on_a_real_sequencer() {
     let counts = format!("{} {NOTES} {FEW}\n", plugging::unplugs().0);
     std::fs::write(folder.join("counts"), counts).unwrap();
     edits::write(&folder);
+    lamps::write(&folder);
     files::write_run(&folder.join("run.mid"), RUN);
     files::write_run(&folder.join("few.mid"), FEW);
     files::write_flood(&folder.join("flood.mid"));
@@ -142,6 +145,7 @@ fn on_a_real_sequencer() {
     two_thousand_notes_in_two_tunings_and_a_clean_stop(&guest, &played);
     plugging::judge(&guest);
     edits::judge(&guest);
+    lamps::judge(&guest);
     a_synth_that_does_not_read_holds_nobody_up(&guest);
     what_ports_says(&guest);
 }

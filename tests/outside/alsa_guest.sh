@@ -31,6 +31,7 @@ keys=/dev/snd/midiC${card}D0 organ=/dev/snd/midiC${card}D1
 driver=/sys/bus/platform/drivers/snd_virmidi
 . /guest/alsa_ports.sh
 . /guest/alsa_edits.sh
+. /guest/alsa_lamps.sh
 
 # Third: one of two synths stops reading in the middle of a run of notes, then reads again.
 log=/out/layer.log

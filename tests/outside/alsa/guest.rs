@@ -28,6 +28,7 @@ impl Guest {
             "ports.yaml",
             "many.yaml",
             "layer.yaml",
+            "lamps.yaml",
             "counts",
             "evening.mid",
             "held.mid",
@@ -46,7 +47,13 @@ impl Guest {
                     .map(|file| folder.join(file)),
             )
             .args(
-                ["alsa_waits.sh", "alsa_ports.sh", "alsa_edits.sh"].map(|script| here.join(script)),
+                [
+                    "alsa_waits.sh",
+                    "alsa_ports.sh",
+                    "alsa_edits.sh",
+                    "alsa_lamps.sh",
+                ]
+                .map(|script| here.join(script)),
             )
             .env("VM_TIMEOUT_S", timeout_s.to_string())
             .output()

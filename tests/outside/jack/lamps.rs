@@ -97,11 +97,18 @@ fn lamps_follow_come_back_with_their_device_and_go_out_at_the_end() {
         "lamps::lamps_follow_come_back_with_their_device_and_go_out_at_the_end",
         || {
             let _server = Server::start(256);
-            let trued = Trued::start(STAGE);
+            // The lamps come with an edit, and with them a port more.
+            let without = STAGE.replace("lamps:", "").replace("  - {show", "#");
+            let trued = Trued::start(&without);
             let bench = Bench::open();
             bench.wait_until_connected();
             let mut pads = Pads::plug_in();
+            wait_for("the pads", || {
+                trued.log().contains("keyboard pads is connected to")
+            });
+            trued.edit(STAGE);
             pads.shows(&[[0x89, 40, 0], [0xB9, 20, 0]]);
+            bench.wait_until_connected();
             bench.play(&[Event::new(100, &[0xCF, 1])]);
             pads.shows(&[[0xB9, 20, 5]]);
             pads.press.push([0x99, 38, 90]).expect("room");
@@ -117,6 +124,11 @@ fn lamps_follow_come_back_with_their_device_and_go_out_at_the_end() {
             // Longer than the time after which a synth's set-up is said once more.
             std::thread::sleep(Duration::from_millis(2_500));
             pads.shows(&[]);
+            // With the lamp goes its light.
+            trued.edit(&without);
+            pads.shows(&[[0xB9, 20, 0]]);
+            trued.edit(STAGE);
+            pads.shows(&[[0x89, 40, 0], [0xB9, 20, 5]]);
             trued.stop_cleanly();
             pads.shows(&[[0xB9, 20, 0]]);
         },

@@ -216,6 +216,12 @@ impl Trued {
         signal(&self.child.borrow(), name);
     }
 
+    /// Another stage file, read at once.
+    pub fn edit(&self, stage: &str) {
+        std::fs::write(self.folder.join("stage.yaml"), stage).expect("a file");
+        self.tell("reload");
+    }
+
     /// What is said to words that are followed.
     pub fn tell(&self, words: &str) -> String {
         self.ask("tell", words.split(' '))
