@@ -2,6 +2,7 @@
 lights() { # lights FILE: what the controller is told, from the moment it is there; $! is the eye
   (until [ -e $keys ]; do :; done; exec cat $keys) > "$1" 2> /dev/null &
 }
+# A status byte is written once for all messages of its kind.
 told() { [ "$(hexdump -v -e '1/1 "%02x"' "$2" 2> /dev/null | grep -c "$1")" -ge 1 ]; } # told HEX FILE
 log=/out/lamps.log
 lights /out/lamps.before
@@ -21,5 +22,5 @@ await "the lamps again" told b01405 /out/lamps.after
 kill -TERM $trued
 wait $trued
 echo $? > /out/lamps.exit
-await "the lamps go out" told b01400 /out/lamps.after
+await "the lamps go out" told 14051400 /out/lamps.after
 kill $eye 2> /dev/null
