@@ -41,7 +41,7 @@ impl Engine {
                 self.lamps.up[id.index()] = false;
             }
             Link::Going => {
-                self.put_out(|port| port == id);
+                self.put_out(id);
                 self.lamps.up[id.index()] = false;
             }
             Link::Tight | Link::Easy => {}
@@ -73,12 +73,9 @@ impl Engine {
         }
     }
 
-    fn put_out(&mut self, which: impl Fn(SynthId) -> bool) {
+    fn put_out(&mut self, id: SynthId) {
         for (lamp, told) in self.plan.lamps.iter().zip(&mut self.lamps.told) {
-            if let Some(id) = port(&self.plan, lamp)
-                && which(id)
-                && *told == Some(true)
-            {
+            if *told == Some(true) && port(&self.plan, lamp) == Some(id) {
                 *told = Some(false);
                 self.out.send(id, Weight::Owed, &lamp.off);
             }

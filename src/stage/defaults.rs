@@ -23,6 +23,7 @@ pub const EDITS: &str = "at-next-song";
 pub const LEAVE: &str = "plain";
 pub const STEAL: &str = "oldest";
 pub const LONG_MS: u64 = 800;
+pub const LAMP_VALUE: u8 = 127;
 /// Between the pieces of a live set-up, so that a key never waits long behind one on a slow wire.
 pub const PACE_MS: u64 = 8;
 
@@ -51,6 +52,7 @@ pub fn table() -> Vec<Default> {
         songs(&line),
         intonation(&line),
         cues(&line),
+        lamps(&line),
     ];
     sections.into_iter().flatten().collect()
 }
@@ -280,8 +282,27 @@ fn cues(line: Line<'_>) -> Vec<Default> {
     vec![
         line("cues", "from", &"every keyboard", ""),
         line("cues", "channel", &"1-16", ""),
+        line(
+            "cues",
+            "value",
+            &"64..127",
+            "of a controller: what counts as down",
+        ),
+        line("cues", "bank", &"any", ""),
         line("cues", "press", &"down", ""),
         line("cues", "long_ms", &LONG_MS, "how long a long press is held"),
         line("cues", "pass", &"no", "yes: the synth gets the message too"),
+    ]
+}
+
+fn lamps(line: Line<'_>) -> Vec<Default> {
+    vec![
+        line("lamps", "value", &LAMP_VALUE, "how bright, or which colour"),
+        line(
+            "lamps",
+            "channel",
+            &"that of the keyboard, if it is heard on one, else 1",
+            "",
+        ),
     ]
 }

@@ -6,9 +6,9 @@ use super::expression::Mistake;
 use super::naming::Scene;
 use super::node::At;
 use super::resolve::Refusal;
-use super::rig;
 use super::values::{channels, key};
 use super::words::{TonicBy, Words};
+use super::{defaults, rig};
 use crate::engine::Command;
 use crate::engine::plan::{KeyboardId, LampPlan, Shown};
 use crate::limits::{LAMPS_MAX, SYNTHS_MAX};
@@ -207,7 +207,7 @@ fn light(at: &At<'_>, scene: &Scene<'_>, complaints: &mut Complaints) -> Option<
     }
     let value = match fields.take("value") {
         Some(at) => at.whole("how bright, or which colour", 1..=127, complaints),
-        None => Some(127),
+        None => Some(i64::from(defaults::LAMP_VALUE)),
     };
     let channel = fields
         .take("channel")

@@ -81,11 +81,12 @@ const FORMS: [&[&str]; 9] = [
 /// What is over at once has no press.
 const ONCE: &[&str] = &["once"];
 /// What can be held begins here.
-const LASTING: usize = 11;
-pub const ACTIONS: [&str; 39] = [
+const LASTING: usize = 12;
+pub const ACTIONS: [&str; 40] = [
     "next",
     "back",
     "song 3",
+    "song Fifth",
     "next from Third",
     "fresh",
     "panic",
@@ -117,7 +118,7 @@ pub const ACTIONS: [&str; 39] = [
     "tonic A equal",
     "tonic home",
     "tonic next-key pivot",
-    // No song here follows chords, so these change nothing.
+    // The fifth song follows chords.
     "root hold",
     "root free",
     "root next-key",
@@ -131,12 +132,16 @@ const BY_KEY: [(&str, [&str; 2]); 3] = [
     ("tonic equal", ["tonic E equal", "tonic F equal"]),
 ];
 /// What lamps show.
-pub const LAMPS: [&str; 14] = [
+pub const LAMPS: [&str; 18] = [
     "plain",
     "song Third",
     "transpose +2",
     "pitch home",
     "tonic next-key",
+    "root next-key",
+    "root hold",
+    "root free",
+    "sevenths harmonic",
     "tonic home",
     "tonic D",
     "inflect C high",
@@ -147,7 +152,7 @@ pub const LAMPS: [&str; 14] = [
     "black-key G#",
     "home",
 ];
-pub const TITLES: [&str; 4] = ["First", "Second", "Third", "Fourth"];
+pub const TITLES: [&str; 5] = ["First", "Second", "Third", "Fourth", "Fifth"];
 
 pub struct Cue {
     pub control: usize,
@@ -202,7 +207,7 @@ pub fn some_cues(dice: &mut Dice) -> Vec<Cue> {
                     ..cue
                 });
             } else if control == RANGE {
-                let by_key = dice.percent(60).then(|| dice.pick(&BY_KEY));
+                let by_key = dice.percent(40).then(|| dice.pick(&BY_KEY));
                 let (written, actions) = by_key.unwrap_or((action, [action; 2]));
                 for (key, action) in actions.into_iter().enumerate() {
                     cues.push(Cue {
@@ -230,9 +235,12 @@ pub fn stage(cues: &[Cue], dialect: &str) -> String {
     }
     text += "set:\n";
     for (title, keys) in TITLES.iter().zip(TRANSPOSED) {
-        let black_keys = if *title == "Third" { BLACK_KEYS } else { "" };
-        text +=
-            &format!("  - {{song: {title}, tuning: of {title}, transpose: {keys}{black_keys}}}\n");
+        let more = match *title {
+            "Third" => BLACK_KEYS,
+            "Fifth" => ", intonation: chord-root",
+            _ => "",
+        };
+        text += &format!("  - {{song: {title}, tuning: of {title}, transpose: {keys}{more}}}\n");
     }
     text += "lamps:\n";
     for (number, show) in LAMPS.iter().enumerate() {

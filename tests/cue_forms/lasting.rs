@@ -1,16 +1,20 @@
 //! What lasts, by the language: nudge, plain, transposition, tonic, places of keys, names of black keys; and what each
 //! key of four songs sounds with it, in floating point from the definitions of their scales.
 
-/// In the order of the set: two by letter in cents from equal, a meantone chain with two names for one key, a just scale.
-pub const TUNINGS: [&str; 4] = [
+/// In the order of the set: two by letter in cents from equal, a meantone chain with two names for one key, a just scale,
+/// and equal temperament for the song that follows chords.
+pub const TUNINGS: [&str; 5] = [
     "{offsets: {C: 0}, also: {C: {high: 30 c}, E: {low: 350 c}}, turns: {both: {C: high, E: low}}}",
     "{offsets: {C: +10 c, E: -14 c}}",
     "{fifths: {chain: [Ab, Eb, Bb, F, C, G, D, A, E, B, F#, C#, G#], each: narrow 1/4 syntonic}, also: {C: {high: 30 c}}}",
     "{pitches: [1/1, 16/15, 9/8, 6/5, 5/4, 4/3, 45/32, 3/2, 8/5, 5/3, 9/5, 15/8]}",
+    "{offsets: {C: 0}}",
 ];
+/// The song whose notes are where their chord is.
+pub const FOLLOWS: usize = 4;
 pub const BLACK_KEYS: &str = ", black_keys: [G# or Ab]";
 /// Each song's own transposition.
-pub const TRANSPOSED: [i32; 4] = [0, 1, 0, -2];
+pub const TRANSPOSED: [i32; 5] = [0, 1, 0, -2, 0];
 
 const JUST: [(f64, f64); 12] = [
     (1., 1.),
@@ -65,6 +69,9 @@ pub struct Lasting {
     alone: Option<bool>,
     trim: i64,
     ab: bool,
+    pub root_held: bool,
+    /// Harmonic, or plain.
+    pub sevenths: Option<bool>,
 }
 
 impl Lasting {
@@ -102,6 +109,10 @@ impl Lasting {
             }
             "black-key Ab" if song == 2 => self.ab = true,
             "black-key G#" if song == 2 => self.ab = false,
+            "root hold" if song == FOLLOWS => self.root_held = true,
+            "root free" if song == FOLLOWS => self.root_held = false,
+            "sevenths harmonic" if song == FOLLOWS => self.sevenths = Some(true),
+            "sevenths plain" if song == FOLLOWS => self.sevenths = Some(false),
             "tonic home" if song == 3 => self.tonic = None,
             "tonic home" => return false,
             _ => return self.tonic_by_name(song, action),
@@ -151,6 +162,9 @@ impl Lasting {
         let at_home = !self.high && self.trim == 0;
         match show {
             "plain" => self.plain,
+            "root hold" => song == FOLLOWS && self.root_held,
+            "root free" => song == FOLLOWS && !self.root_held,
+            "sevenths harmonic" => self.sevenths == Some(true),
             "transpose +2" => self.transpose_keys(song) == 2,
             "pitch home" => self.nudge_microcents == 0,
             "tonic home" => song == 3 && self.tonic.is_none(),
