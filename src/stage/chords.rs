@@ -41,6 +41,7 @@ impl Song {
         if self.follows {
             return Vec::new();
         }
+        let tuning = self.as_it_begins();
         let keys = self.in_keys.iter().filter_map(|(tonic, mode)| {
             let minor = match mode.as_str() {
                 "" | "major" | "lydian" | "mixolydian" | "ionian" => false,
@@ -57,13 +58,13 @@ impl Song {
             };
             let pairs = pairs
                 .iter()
-                .filter_map(|(root, up)| self.pair(*tonic, *root, *up));
+                .filter_map(|(root, up)| self.pair(&tuning, *tonic, *root, *up));
             Some((named, pairs.collect()))
         });
         keys.collect()
     }
 
-    fn pair(&self, tonic: Letter, root: i8, up: i8) -> Option<Pair> {
+    fn pair(&self, tuning: &Tuning, tonic: Letter, root: i8, up: i8) -> Option<Pair> {
         let low = Letter::on_line(tonic.place() + root)?;
         let high = Letter::on_line(low.place() + up)?;
         let pure = match up {
@@ -71,7 +72,7 @@ impl Song {
             4 => Log::of_ratio(5, 4),
             _ => Log::of_ratio(6, 5),
         };
-        let size = (self.sounds(high)? - self.sounds(low)?).within_octave();
+        let size = (self.sounds(tuning, high)? - self.sounds(tuning, low)?).within_octave();
         Some(Pair {
             low,
             high,
@@ -81,12 +82,12 @@ impl Song {
         })
     }
 
-    fn sounds(&self, letter: Letter) -> Option<Pitch> {
+    fn sounds(&self, tuning: &Tuning, letter: Letter) -> Option<Pitch> {
         let moved = i32::from(letter.pitch_class()) + i32::from(self.transpose_keys);
         let apart = self
             .second_name(letter)
             .map_or(Interval::ZERO, |names| names.apart);
-        Some(self.tuning.pitch(Key::C4.moved(moved)?)? + apart)
+        Some(tuning.pitch(Key::C4.moved(moved)?)? + apart)
     }
 
     /// Where a black key can be this note, and begins as another.
@@ -141,7 +142,7 @@ impl Song {
         if self.follows {
             return None;
         }
-        good_keys(&self.tuning, &self.names).filter(|keys| keys != EVERYWHERE)
+        good_keys(&self.as_it_begins(), &self.names).filter(|keys| keys != EVERYWHERE)
     }
 }
 

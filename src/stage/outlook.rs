@@ -40,7 +40,7 @@ impl Song {
 
     /// What closes the circle of fifths, and the wolves; nothing where there is no circle.
     pub fn circle(&self) -> Vec<String> {
-        let circle = Circle::of(&self.tuning, &self.names);
+        let circle = Circle::of(&self.as_it_begins(), &self.names);
         circle.map(|circle| circle.lines()).unwrap_or_default()
     }
 

@@ -86,3 +86,26 @@ fn n16_a_transposition_brings_the_wolf_of_another_key() {
     assert_eq!(mended.stage.as_ref().expect("a stage").advice, [""; 0]);
     assert!((chord(&mut mended, "G3 B3 D4")[1] - 386.314).abs() < 0.03);
 }
+
+/// The just scale on C has 40/27 from D to A, 21.506 narrow of the fifth; with D a comma lower that fifth is pure, and a piece
+/// in D minor that begins so is not warned.
+#[test]
+fn n16_a_place_that_the_song_begins_with_counts() {
+    let text = |begins: &str| {
+        songs(&format!(
+            "tunings: {{just: {{like: five-limit-scale, also: {{D: {{low: 10/9}}}}}}}}\n\
+             set: [{{song: Motet, tuning: just, in: D minor{begins}}}]"
+        ))
+    };
+    let mut rig = text("");
+    let advice = rig.stage.as_ref().expect("a stage").advice.join("\n");
+    assert!(
+        advice.contains("Motet in D minor: the fifth D-A is 680.4 c, 21.5 c narrow"),
+        "{advice}"
+    );
+    assert!((chord(&mut rig, "D3 A3")[1] - 680.449).abs() < 0.03);
+    let mut rig = text(", begin_with: {D: low}");
+    let advice = rig.stage.as_ref().expect("a stage").advice.join("\n");
+    assert!(!advice.contains("D-A"), "{advice}");
+    assert!((chord(&mut rig, "D3 A3")[1] - 701.955).abs() < 0.03);
+}
