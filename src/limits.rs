@@ -12,6 +12,8 @@ pub const SYNTHS_MAX: usize = 8;
 pub const PARTS_MAX: usize = 16;
 /// Parts that play, and as many of songs before that still ring.
 pub const PART_PLACES: usize = 2 * PARTS_MAX;
+/// Keys that wait below the one that sounds in a part of one voice.
+pub const MONO_KEYS_MAX: usize = 16;
 /// Keys held down at once, over all keyboards and layers. Pedal-held notes do not count: their note-off is out.
 pub const VOICES_MAX: usize = 256;
 /// Presses of one instant that can wait for each other to be one chord.
@@ -46,7 +48,7 @@ pub const SYSEX_BYTES_MAX: usize = 64 * 1024;
 pub const OUTBOX_BYTES: usize = 512 * 1024;
 /// Outputs (messages or bundles) that one input can cause.
 pub const OUTBOX_ITEMS: usize = 32 * 1024;
-/// Bytes of the longest bundle that goes out whole: CC88, CC84, pressure, bend, catch-up is sent apart, note-on.
+/// Bytes of the longest bundle that goes out whole: CC88, CC84, CC74, pressure, bend, catch-up is sent apart, note-on.
 pub const BUNDLE_BYTES_MAX: usize = 24;
 
 /// Pitch bend range a synth may be told, in semitones (MPE 1.1, 2.1).

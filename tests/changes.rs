@@ -42,6 +42,9 @@ fn a_plan(dice: &mut Dice, dialect: Dialect, range: u8) -> Plan {
     synth.pace = Span::from_millis(dice.pick(&[0, 8]));
     let mut plan = plans::plan(synth, set(dice));
     plan.edits_at_once = dice.percent(30);
+    if dice.percent(30) {
+        plan.keyboards[1].zones.set(0, dice.between(1, 15) as u8);
+    }
     if dice.percent(50) {
         let middle = dice.between(50, 70) as u8;
         let mut upper = plan.parts[0];
@@ -56,7 +59,8 @@ fn a_plan(dice: &mut Dice, dialect: Dialect, range: u8) -> Plan {
     }
     own_parts(dice, &mut plan);
     let songs = plan.set.iter().filter_map(|song| song.parts.as_deref());
-    let shared = plan.parts.len() > 1 || songs.clone().any(|parts| parts.len() > 1);
+    let mut others = songs.filter(|parts| parts.len() > 1 || !parts[0].pass.pedals);
+    let shared = plan.parts.len() > 1 || others.next().is_some();
     let late_offs = dialect == MPE && shared;
     let told = |part: &PartPlan| PartPlan { late_offs, ..*part };
     plan.parts = plan.parts.iter().map(told).collect();
@@ -72,9 +76,14 @@ fn own_parts(dice: &mut Dice, plan: &mut Plan) {
     let whole = plans::part(&plan.synths);
     for song in &mut plan.set {
         let mut parts = vec![whole];
-        match dice.below(4) {
+        match dice.below(5) {
             0 => parts[0].pass.pedals = false,
-            1 => {
+            // On a plain synth what a pedal holds is bent with the one voice.
+            1 if plan.synths[0].dialect == MPE => {
+                parts[0].mono = true;
+                parts[0].pool = ChannelSet(1 << dice.between(3, 6));
+            }
+            1 | 2 => {
                 parts = vec![whole; 3];
                 for (part, pool) in parts.iter_mut().zip([0x0003, 0x01FC, 0x7C00]) {
                     part.pool = ChannelSet(pool & whole.pool.0);

@@ -21,6 +21,9 @@ mod unisons;
 /// Every form of a cue with every action, against a small model of its own.
 mod cue_forms;
 
+/// Random play on a keyboard that sends each note on a channel of its own.
+mod expressive;
+
 /// Songs that follow the harmony, played as densely as hands can.
 mod dense;
 

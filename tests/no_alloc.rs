@@ -100,9 +100,14 @@ fn evening() -> Plan {
     plan.synths
         .push(plans::synth("organ", Dialect::ChannelBend, 2));
     plan.synths[1].pace = Span::from_millis(2);
+    plan.keyboards[1].zones.set(0, 7);
     let mut layer = plans::part(&plan.synths[1..]);
     layer.to = SynthId::new(1).expect("a synth");
     plan.parts.push(layer);
+    let mut lead = layer;
+    lead.mono = true;
+    lead.pool = ChannelSet(1);
+    plan.set[1].parts = Some([lead].into());
     plan.lamp_ports.extend(KeyboardId::new(0));
     for (number, show) in [
         (20, Shown::Song(1)),
@@ -230,7 +235,7 @@ fn random_input<'a>(dice: &mut Dice, bytes: &'a mut [u8; 4096]) -> Input<'a> {
             bytes[0] = status | dice.below(16) as u8;
             bytes[1] = match status {
                 0xB0 => dice.pick(&[
-                    0, 1, 6, 7, 11, 32, 38, 64, 66, 67, 84, 88, 100, 101, 120, 121, 123, 126,
+                    0, 1, 6, 7, 11, 32, 38, 64, 66, 67, 74, 84, 88, 100, 101, 120, 121, 123, 126,
                 ]),
                 _ => dice.below(128) as u8,
             };

@@ -117,10 +117,14 @@ fn stage_text(stage: &Stage) -> String {
         }
     }
     text.push_str("\nkeyboards\n");
-    for keyboard in &stage.keyboards {
+    for (keyboard, played) in stage.keyboards.iter().zip(&plan.keyboards) {
+        let fingers = match played.sends_mpe() {
+            true => ", each note on a channel of its own",
+            false => "",
+        };
         line(
             &mut text,
-            format_args!("  {}: {}", keyboard.name, wish(keyboard, true)),
+            format_args!("  {}: {}{fingers}", keyboard.name, wish(keyboard, true)),
         );
     }
     text.push_str("\nsynths\n");

@@ -1,17 +1,20 @@
 //! What a channel is told before a note: set-up that is due, controllers it has missed, pressure, bend.
 
 use super::Engine;
-use super::channel::{Due, UNSAID};
+use super::channel::{Channel, DOUBTFUL, Due, UNSAID};
 use super::choose::Want;
 use super::dialect::on_members;
 use super::outbox::{Bundle, Outbox};
 use super::plan::{ChannelSet, PartId, PartPlan, SynthId};
 use super::synth::{Synth, bend_message};
 use super::traffic::Weight;
-use super::voices::Voices;
+use super::voices::{Voice, Voices};
 use crate::midi::{controller, status};
 use crate::pitch::word::Bend;
 use crate::time::Time;
+
+/// Where controller 74 does nothing: the middle (MPE 1.1, A.4.3).
+const BRIGHTNESS_AT_REST: u8 = 64;
 
 impl Engine {
     /// Set-up that is still due on a channel, then the controllers it has missed while it was silent.
@@ -39,17 +42,11 @@ impl Engine {
         } else {
             0
         };
-        let of_keys = if rig.keeps_pitch() {
-            self.voices
-                .iter()
-                .filter(|v| v.synth == id && v.channel == number)
-                .map(|v| v.pressure)
-                .max()
-                .unwrap_or(0)
-        } else {
-            0
-        };
-        of_part.max(of_keys)
+        // To a plain synth pressure on one key of an ordinary keyboard goes as it came.
+        let on_channel = |v: &&Voice| rig.keeps_pitch() || v.finger;
+        let here = self.voices.iter().filter(on_channel);
+        let here = here.filter(|v| v.synth == id && v.channel == number);
+        here.map(|v| v.pressure).fold(of_part, u8::max)
     }
 
     /// Tells a channel every controller of its part that it has not heard yet.
@@ -74,15 +71,17 @@ impl Engine {
                 &mut self.voices,
             );
         }
+        let finger = synth.channels[number as usize].brightness != UNSAID;
         for (cc, value) in settings.controllers.iter().enumerate() {
-            if *value != UNSAID {
+            let is_finger_s = finger && cc as u8 == controller::BRIGHTNESS;
+            if *value != UNSAID && !is_finger_s {
                 synth.controller(number, cc as u8, *value, Weight::Owed, &mut self.out);
             }
         }
     }
 }
 
-/// Adds to a bundle the pressure and the bend that a channel must have before the wanted note, where it has not.
+/// Adds to a bundle the brightness, pressure and bend that a channel must have before the wanted note, where it has not.
 pub(super) fn bend_for(
     synth: &mut Synth,
     want: &Want,
@@ -94,11 +93,13 @@ pub(super) fn bend_for(
     let range = synth.rig.bend_range;
     let word = want.word;
     let channel = synth.channel(number);
-    if channel.held == 0 || channel.word != word {
+    if channel.held == 0 || channel.word != word || want.alone {
         channel.offset = want.offset;
         channel.nudge = want.nudge;
+        channel.finger = want.finger.bend;
+        brightness_for(channel, want, number, bundle);
     }
-    let (bend, clipped) = Bend::encode(channel.offset + want.wheel, range);
+    let (bend, clipped) = Bend::encode(channel.offset + channel.finger + want.wheel, range);
     out.counters.clipped += clipped as u64;
     if channel.pressure != pressure {
         channel.pressure = pressure;
@@ -112,11 +113,27 @@ pub(super) fn bend_for(
     channel.word = word;
 }
 
+/// The finger's own, or its part's in place of what another finger has left there.
+fn brightness_for(channel: &mut Channel, want: &Want, number: u8, bundle: &mut Bundle) {
+    let told = &mut channel.controllers[controller::BRIGHTNESS as usize];
+    let left_behind = channel.brightness != UNSAID;
+    let wanted = match (want.finger.brightness, want.brightness) {
+        (UNSAID, UNSAID) if left_behind => BRIGHTNESS_AT_REST,
+        (UNSAID, of_part) => of_part,
+        (own, _) => own,
+    };
+    channel.brightness = want.finger.brightness;
+    if wanted != UNSAID && wanted != *told {
+        *told = wanted;
+        bundle.add(&[status::CONTROLLER | number, controller::BRIGHTNESS, wanted]);
+    }
+}
+
 /// To be asked before a channel is told that the sostenuto pedal is down: if the receiver sees it go down only now, it
 /// latches what is held on `governed` now, whenever the player pressed it.
 pub(super) fn latch(synth: &Synth, channel: u8, governed: ChannelSet, voices: &mut Voices) {
     let told = synth.channels[channel as usize].controllers[controller::SOSTENUTO as usize];
-    if told == UNSAID || told < 64 {
+    if told == UNSAID || told == DOUBTFUL || told < 64 {
         for voice in voices.iter_mut() {
             voice.latched |= voice.synth == synth.id && governed.has(voice.channel);
         }

@@ -10,6 +10,8 @@ use crate::tuning::Key;
 
 /// A controller value that nobody has said yet.
 pub(super) const UNSAID: u8 = 0xFF;
+/// A controller away from its rest that was said, and that the receiver may have forgotten.
+pub(super) const DOUBTFUL: u8 = 0xFE;
 
 /// Bank and program as told to a receiver; `UNSAID` where nothing was.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -69,6 +71,10 @@ pub(super) struct Channel {
     pub offset: Interval,
     /// The pitch nudge that is in the offset.
     pub nudge: Interval,
+    /// What their player's finger adds to that, on a keyboard that sends a channel for each.
+    pub finger: Interval,
+    /// Controller 74 as that finger has it; `UNSAID` where it goes with the part.
+    pub brightness: u8,
     /// What moves its notes, and where that stood when they were last moved.
     pub follows: Option<Class>,
     pub stood: Interval,
@@ -95,6 +101,8 @@ impl Channel {
         last_key: None,
         offset: Interval::ZERO,
         nudge: Interval::ZERO,
+        finger: Interval::ZERO,
+        brightness: UNSAID,
         follows: None,
         stood: Interval::ZERO,
         word: Bend::CENTRE,
@@ -149,7 +157,14 @@ impl Channel {
         self.bend = None;
         self.pressure = 0;
         self.program = Program::UNSAID;
-        self.controllers = [UNSAID; 128];
+        let mut controllers = [UNSAID; 128];
+        for (number, rest) in AT_REST {
+            let told = self.controllers[number as usize];
+            if told != UNSAID && told != rest {
+                controllers[number as usize] = DOUBTFUL;
+            }
+        }
+        self.controllers = controllers;
         self.version = 0;
         self.due = Due::Everything;
     }
@@ -163,6 +178,17 @@ impl Channel {
         }
     }
 }
+
+/// Controllers that must not stay as another part's player has left them, with their values at rest.
+pub(super) const AT_REST: [(u8, u8); 7] = [
+    (1, 0),
+    (11, 127),
+    (controller::DAMPER, 0),
+    (65, 0),
+    (controller::SOSTENUTO, 0),
+    (controller::SOFT, 0),
+    (controller::HOLD_2, 0),
+];
 
 /// Controllers that Reset All Controllers sets, with their values (RP-015).
 pub(super) const RESET_VALUES: [(u8, u8); 6] = [

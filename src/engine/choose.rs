@@ -1,6 +1,7 @@
 //! Which channel a new note takes.
 
 use super::channel::{Channel, Rest};
+use super::fingers::Finger;
 use super::following::Class;
 use super::plan::{ChannelSet, PartId, Steal};
 use super::synth::Synth;
@@ -31,8 +32,16 @@ pub(super) struct Want {
     pub doubles: bool,
     /// The player's wheel, where it is added to the channel's bend.
     pub wheel: Interval,
-    /// The bend for all this, without the wheel.
+    /// The bend for all this, without the player's hands.
     pub word: Bend,
+    /// What the finger on its key adds, where it has a channel of its own.
+    pub finger: Finger,
+    /// Channels that another finger moves; where one moves this, also those that none does.
+    pub led_otherwise: ChannelSet,
+    /// Controller 74 of the part, where notes are told it; else `UNSAID`.
+    pub brightness: u8,
+    /// Nothing else sounds on its channel: its part has one voice.
+    pub alone: bool,
 }
 
 /// The channel to take and what has to give way for it.
@@ -112,7 +121,8 @@ fn wish(
     let this_bend =
         rest != Rest::New && moves_alike && this_part && same_bend(want, channel, synth);
     let must_part = want.sounding_on.has(number);
-    let moved_alike = channel.follows == want.follows;
+    // A finger moves its own note, and nothing that rings on once its key is up.
+    let moved_alike = channel.follows == want.follows && !want.led_otherwise.has(number);
     let ringing = matches!(rest, Rest::Held | Rest::Pedal | Rest::Tail(_));
     let may_share = synth.rig.share || (this_key && rest != Rest::Held);
     let oldest_first = channel.released_at.map_or(0, Time::nanos);
@@ -147,11 +157,14 @@ fn wish(
     })
 }
 
-/// Whether the note would send the very bend that the channel has, with and without the wheel.
+/// Whether the note would send the very bend that the channel has, with and without the player's hands.
 fn same_bend(want: &Want, channel: &Channel, synth: &Synth) -> bool {
-    let with_wheel = |offset| Bend::encode(offset + want.wheel, synth.rig.bend_range);
-    want.word == channel.word
-        && (want.offset == channel.offset || with_wheel(want.offset) == with_wheel(channel.offset))
+    let with_wheel = |bend| Bend::encode(bend + want.wheel, synth.rig.bend_range);
+    let (here, there) = (
+        want.offset + want.finger.bend,
+        channel.offset + channel.finger,
+    );
+    want.word == channel.word && (here == there || with_wheel(here) == with_wheel(there))
 }
 
 /// Whether there are more channels never used than bends that have none yet, so that a second one for a bend that has

@@ -2,6 +2,7 @@
 
 use super::Engine;
 use super::channel::{Rest, UNSAID};
+use super::mono::Below;
 use super::next_key::Names;
 use super::plan::SynthId;
 use super::synth::PEDALS;
@@ -161,6 +162,9 @@ impl Engine {
         }
         while let Some(voice) = self.voices.take(|_| true) {
             self.end(now, &voice, 64, None);
+        }
+        for part in &mut self.parts {
+            part.below = Below::NOTHING;
         }
         self.lift_all_pedals(now);
         self.damp_harmonies(now);

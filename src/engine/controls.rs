@@ -7,6 +7,7 @@ use super::synth::PEDALS;
 use super::traffic::Weight;
 use super::{Engine, Hand};
 use crate::midi::{controller, status};
+use crate::pitch::Interval;
 use crate::pitch::word::Bend;
 use crate::time::Time;
 
@@ -15,8 +16,11 @@ impl Engine {
         let source = self.source(hand);
         match number {
             controller::ALL_SOUND_OFF | controller::ALL_NOTES_OFF..=127 => {
-                source.keys = 0;
-                self.release(now, 64, None, |v| v.down && hand.is_of(v));
+                for finger in self.fingers_of(hand).chain([hand]) {
+                    self.source(finger).keys = 0;
+                    self.release(now, 64, None, |v| v.down && finger.is_of(v));
+                }
+                self.come_back_everywhere(now);
             }
             controller::RESET_ALL => self.reset_all(now, hand),
             controller::LOCAL => {
@@ -70,6 +74,9 @@ impl Engine {
         let tail = synth.rig.tail;
         for channel in channels.iter() {
             let manager = synth.rig.manager() == Some(channel);
+            if number == controller::BRIGHTNESS && synth.channel(channel).brightness != UNSAID {
+                continue; // its finger's own goes first
+            }
             if manager || synth.channels[channel as usize].rings(now, tail) {
                 let told = synth.controller(channel, number, value, weight, &mut self.out);
                 let channel = synth.channel(channel);
@@ -191,7 +198,7 @@ impl Engine {
         let wheel = self.parts[index].wheel;
         let channels = self.channels_of(index);
         let synth = &mut self.synths[part.to.index()];
-        let (range, tail) = (synth.rig.bend_range, synth.rig.tail);
+        let tail = synth.rig.tail;
         if !on_members(&synth.rig, &part) {
             if let Some(manager) = synth.rig.manager() {
                 let bend = Bend::encode(wheel, synth.manager_range).0;
@@ -199,14 +206,29 @@ impl Engine {
             }
             return;
         }
+        let id = part.to;
         for number in channels.iter() {
-            let channel = &synth.channels[number as usize];
-            if channel.rings(now, tail) {
-                let (bend, clipped) = Bend::encode(channel.offset + wheel, range);
-                self.out.counters.clipped += clipped as u64;
-                synth.bend(number, bend, weight, &mut self.out);
+            if self.synths[id.index()].channels[number as usize].rings(now, tail) {
+                self.bend_channel(id, number, weight);
             }
         }
+    }
+
+    /// Gives a channel the bend it should have: tuning, finger, and the wheel where it is played there. Tells whether
+    /// it was sent.
+    pub(super) fn bend_channel(&mut self, id: SynthId, number: u8, weight: Weight) -> bool {
+        let wheel = match self.part_of(id, number) {
+            Some((part_id, part)) if on_members(&self.synths[id.index()].rig, &part) => {
+                self.parts[part_id.index()].wheel
+            }
+            _ => Interval::ZERO,
+        };
+        let synth = &mut self.synths[id.index()];
+        let channel = &synth.channels[number as usize];
+        let wanted = channel.offset + channel.finger + wheel;
+        let (bend, clipped) = Bend::encode(wanted, synth.rig.bend_range);
+        self.out.counters.clipped += clipped as u64;
+        synth.bend(number, bend, weight, &mut self.out)
     }
 
     pub(super) fn pressure_in(&mut self, now: Time, hand: Hand, value: u8) {
@@ -221,6 +243,11 @@ impl Engine {
 
     /// Takes a hand off everything it moved: pedals up, wheel to centre, pressure to nothing.
     pub(super) fn hand_off(&mut self, now: Time, hand: Hand) {
+        if self.is_finger(hand) {
+            self.rest_finger(hand);
+            self.source(hand).brightness = UNSAID;
+            return;
+        }
         let source = self.source(hand);
         let (wheel, pressure) = (source.wheel, source.pressure);
         source.pedals = [0; PEDALS.len()];
@@ -254,13 +281,16 @@ impl Engine {
         }
         for number in self.channels_of(index).iter() {
             if self.synths[part.to.index()].channels[number as usize].rings(now, tail) {
-                let Some((id, _)) = self.part_of(part.to, number) else {
-                    continue;
-                };
-                let value = self.pressure_for(&part, part.to, number, id);
-                let synth = &mut self.synths[part.to.index()];
-                synth.pressure(number, value, Weight::Control, &mut self.out);
+                self.press_channel(part.to, number, Weight::Control);
             }
+        }
+    }
+
+    /// Gives a channel the pressure it should have.
+    pub(super) fn press_channel(&mut self, id: SynthId, number: u8, weight: Weight) {
+        if let Some((part_id, part)) = self.part_of(id, number) {
+            let value = self.pressure_for(&part, id, number, part_id);
+            self.synths[id.index()].pressure(number, value, weight, &mut self.out);
         }
     }
 
@@ -282,6 +312,7 @@ impl Engine {
                 }
             }
         }
+        self.say_fingers_left_out(id);
     }
 
     /// Pressure on one key: as it came, where the synth may hear it so; as channel pressure of the note's own channel
@@ -301,10 +332,8 @@ impl Engine {
             voice.pressure = value;
             let voice = *voice;
             let synth = &mut self.synths[voice.synth.index()];
-            if synth.rig.keeps_pitch() {
-                let value = self.pressure_for(&part, voice.synth, voice.channel, voice.part);
-                let synth = &mut self.synths[voice.synth.index()];
-                synth.pressure(voice.channel, value, Weight::Control, &mut self.out);
+            if synth.rig.keeps_pitch() || voice.finger {
+                self.press_channel(voice.synth, voice.channel, Weight::Control);
             } else {
                 let bytes = [status::POLY_PRESSURE | voice.channel, voice.number, value];
                 synth.send(Weight::Control, &bytes, &mut self.out);

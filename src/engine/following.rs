@@ -3,7 +3,6 @@
 //! Keys of one instant are one chord, so a press of a part that follows waits until the instant is over: until time
 //! moves on, something else comes in, or the driver asks for output.
 
-use super::dialect::on_members;
 use super::lasting::Lasting;
 use super::notes::Press;
 use super::plan::{Follow, PartId, PartPlan, SynthId};
@@ -248,30 +247,16 @@ impl Engine {
 
     /// Moves all that a channel sounds: one bend.
     pub(super) fn move_channel(&mut self, id: SynthId, number: u8, by: Interval, weight: Weight) {
-        let owner = self.part_of(id, number);
         let synth = &mut self.synths[id.index()];
-        let wheel = match owner {
-            Some((part_id, part)) if on_members(&synth.rig, &part) => {
-                self.parts[part_id.index()].wheel
-            }
-            _ => Interval::ZERO,
-        };
         let range = synth.rig.bend_range;
         let channel = synth.channel(number);
         channel.offset += by;
         let offset = channel.offset;
-        let unwheeled = Bend::encode(offset, range);
-        channel.word = unwheeled.0;
-        let (bend, clipped) = if wheel == Interval::ZERO {
-            unwheeled
-        } else {
-            Bend::encode(offset + wheel, range)
-        };
-        self.out.counters.clipped += clipped as u64;
-        if synth.bend(number, bend, weight, &mut self.out) {
+        channel.word = Bend::encode(offset, range).0;
+        let sent = channel.word.decode(range);
+        if self.bend_channel(id, number, weight) {
             self.out.counters.bends += 1;
         }
-        let sent = synth.channel(number).word.decode(range);
         for voice in self.voices.iter() {
             if voice.synth == id && voice.channel == number {
                 self.out.moved(Onset {

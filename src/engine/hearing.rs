@@ -5,7 +5,7 @@ use super::cues::{Control, Heard};
 use super::plan::KeyboardId;
 use super::synth::{PEDALS, bend_message};
 use super::traffic::Weight;
-use super::{Engine, Hand, wheel_semitones};
+use super::{Engine, Hand};
 use crate::limits::RESET_MS;
 use crate::midi::{Message, Splitter, controller, is_reset, status};
 use crate::time::{Span, Time};
@@ -110,6 +110,9 @@ impl Engine {
             }
         }
         self.pass_drums(hand, message);
+        if self.is_finger(hand) && self.finger_in(now, hand, message) {
+            return;
+        }
         match message {
             Message::NoteOn {
                 key: k, velocity, ..
@@ -133,6 +136,20 @@ impl Engine {
         }
     }
 
+    /// What a member of an MPE zone says otherwise than an ordinary channel; tells whether it was that.
+    fn finger_in(&mut self, now: Time, hand: Hand, message: Message<'_>) -> bool {
+        match message {
+            Message::PitchBend { bend, .. } => self.finger_bend_in(hand, bend),
+            Message::Pressure { value, .. } => self.finger_pressure_in(hand, value),
+            Message::Controller { number, value, .. } => {
+                self.finger_controller_in(now, hand, number, value);
+            }
+            Message::Program { .. } => {} // the manager's to say (MPE 1.1, 2.3)
+            _ => return false,
+        }
+        true
+    }
+
     fn is_open(&self, hand: Hand, key: u8) -> bool {
         self.voices
             .iter()
@@ -141,9 +158,11 @@ impl Engine {
 
     /// What a hand holds down, so that it is known when all is up.
     fn keep_hand(&mut self, hand: Hand, message: Message<'_>) {
+        let is_finger = self.is_finger(hand);
         let source = self.source(hand);
         match message {
             Message::NoteOn { key, .. } => source.keys |= 1 << key,
+            Message::Controller { .. } if is_finger => {} // pedals are the manager's
             Message::Controller { number, value, .. } => {
                 if let Some(which) = PEDALS.iter().position(|pedal| *pedal == number) {
                     source.pedals[which] = value;
@@ -258,8 +277,8 @@ impl Engine {
             };
             self.hand_off(now, hand);
         }
-        let wheel = wheel_semitones(&self.plan, self.plays_as(id));
-        self.keyboards[index].let_go(wheel);
+        let plan = self.plan.keyboards.get(self.plays_as(id).index());
+        self.keyboards[index].let_go(plan);
         self.note_silence(now);
         self.when_quiet(now);
     }
@@ -268,6 +287,6 @@ impl Engine {
     pub(super) fn seat(&mut self, now: Time, id: KeyboardId, plays_as: KeyboardId) {
         self.let_go(now, id);
         self.keyboards[id.index()].plays_as = plays_as;
-        self.keyboards[id.index()].let_go(wheel_semitones(&self.plan, plays_as));
+        self.keyboards[id.index()].let_go(self.plan.keyboards.get(plays_as.index()));
     }
 }

@@ -1,7 +1,7 @@
 //! What a keyboard holds: its stream, and the player's hands on each of its channels.
 
 use super::channel::UNSAID;
-use super::plan::KeyboardId;
+use super::plan::{KeyboardId, KeyboardPlan, Plan, Zones};
 use super::synth::PEDALS;
 use crate::limits::{CHANNELS, SENSING_MS};
 use crate::midi::Splitter;
@@ -9,10 +9,15 @@ use crate::pitch::Interval;
 use crate::pitch::word::Bend;
 use crate::time::{Span, Time};
 
+/// Of keyboards that no plan knows.
+const WHEEL_SEMITONES: u8 = 2;
+
 pub(super) struct Keyboard {
     /// The keyboard of the plan that it plays as: itself, unless several devices play as one.
     pub plays_as: KeyboardId,
     pub splitter: Splitter,
+    /// By the plan, or as it has said itself.
+    pub zones: Zones,
     pub sources: [Source; CHANNELS],
     /// Set once it has sent Active Sensing: when it was last heard.
     pub sensed_at: Option<Time>,
@@ -25,6 +30,8 @@ pub(super) struct Source {
     /// What a full push of the wheel means.
     pub wheel_range: Interval,
     pub pressure: u8,
+    /// Controller 74 of a note with a channel of its own.
+    pub brightness: u8,
     /// In the order of `PEDALS`.
     pub pedals: [u8; 4],
     /// Keys that are down, whether they sound or not; those that cues take away are no playing. Bit 0 = key 0.
@@ -58,6 +65,7 @@ impl Source {
             wheel: Bend::CENTRE,
             wheel_range: Interval::SEMITONE * wheel_semitones as i64,
             pressure: 0,
+            brightness: UNSAID,
             pedals: [0; PEDALS.len()],
             keys: 0,
             named: 0,
@@ -98,18 +106,38 @@ impl Source {
 }
 
 impl Keyboard {
-    pub fn new(plays_as: KeyboardId, wheel_semitones: u8) -> Keyboard {
-        Keyboard {
+    /// `plan`: of the keyboard that it plays as.
+    pub fn new(plays_as: KeyboardId, plan: Option<&KeyboardPlan>) -> Keyboard {
+        let mut keyboard = Keyboard {
             plays_as,
             splitter: Splitter::new(),
-            sources: [Source::new(wheel_semitones); CHANNELS],
+            zones: Zones::NONE,
+            sources: [Source::new(0); CHANNELS],
             sensed_at: None,
-        }
+        };
+        keyboard.let_go(plan);
+        keyboard
     }
 
     /// Forgets the player's hands, as when the keyboard has gone.
-    pub fn let_go(&mut self, wheel_semitones: u8) {
-        self.sources = [Source::new(wheel_semitones); CHANNELS];
+    pub fn let_go(&mut self, plan: Option<&KeyboardPlan>) {
+        let zones = plan.map_or(Zones::NONE, |plan| plan.zones);
+        self.zones = zones;
+        self.sources = std::array::from_fn(|channel| {
+            Source::new(match zones.manager_of(channel as u8) {
+                Some(_) => plan.map_or(0, |plan| plan.finger_semitones),
+                None => plan.map_or(WHEEL_SEMITONES, |plan| plan.wheel_semitones),
+            })
+        });
+    }
+
+    /// After an edit: one that sends MPE now, or no more, begins anew. What it held has been let go.
+    pub fn fit(&mut self, plan: &Plan, old: &Plan) {
+        let place = self.plays_as.index();
+        let zones = |plan: &Plan| plan.keyboards.get(place).map(|plan| plan.zones);
+        if zones(plan) != zones(old) {
+            self.let_go(plan.keyboards.get(place));
+        }
     }
 
     /// When its silence means that it has gone.

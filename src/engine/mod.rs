@@ -15,6 +15,7 @@ mod commands;
 mod controls;
 mod cues;
 mod dialect;
+mod fingers;
 mod following;
 mod hearing;
 mod held;
@@ -22,6 +23,7 @@ mod keyboard;
 mod lamps;
 mod lasting;
 mod line;
+mod mono;
 mod next_key;
 mod notes;
 mod outbox;
@@ -36,6 +38,7 @@ mod told;
 pub mod traffic;
 mod voices;
 mod wire;
+mod zones;
 
 pub use plan::{KeyboardId, PartId, Plan, SynthId};
 pub use told::{Told, ToldTonic};
@@ -163,7 +166,7 @@ impl Engine {
     pub fn new(plan: Box<Plan>) -> Engine {
         let keyboards = (0..KEYBOARDS_MAX)
             .filter_map(KeyboardId::new)
-            .map(|id| Keyboard::new(id, wheel_semitones(&plan, id)))
+            .map(|id| Keyboard::new(id, plan.keyboards.get(id.index())))
             .collect();
         let rig = |index: usize| Rig::of(plan.synths.get(index).unwrap_or(&plan.synths[0]));
         let synths = (0..SYNTHS_MAX)
@@ -327,9 +330,11 @@ impl Engine {
         &mut self.keyboards[hand.keyboard.index()].sources[hand.channel as usize]
     }
 
-    /// Whether a part is played by a hand. What comes in on a synth's drum channel is not the part's.
+    /// Whether a part is played by a hand. What comes in on a synth's drum channel is not the part's, unless the channel
+    /// is one of an MPE zone.
     fn feeds(&self, part: &PartPlan, hand: Hand) -> bool {
-        self.hears(part, hand) && !self.synths[part.to.index()].rig.drums.has(hand.channel)
+        let drums = self.synths[part.to.index()].rig.drums;
+        self.hears(part, hand) && (!drums.has(hand.channel) || self.is_in_zone(hand))
     }
 
     fn hears(&self, part: &PartPlan, hand: Hand) -> bool {
@@ -352,6 +357,9 @@ impl Engine {
 
     fn drum_synths(&self, hand: Hand) -> SynthSet {
         let mut set = SynthSet::default();
+        if self.is_in_zone(hand) {
+            return set;
+        }
         for part in self.parts_playing().filter(|part| self.hears(part, hand)) {
             if self.synths[part.to.index()].rig.drums.has(hand.channel) {
                 set.add(part.to);
@@ -399,9 +407,4 @@ fn harmonies(method: Method) -> Vec<Harmony> {
     let mut harmony = Harmony::new();
     harmony.begin(method);
     vec![harmony; HARMONIES]
-}
-
-fn wheel_semitones(plan: &Plan, id: KeyboardId) -> u8 {
-    let keyboard = plan.keyboards.get(id.index());
-    keyboard.map_or(2, |k| k.wheel_semitones)
 }

@@ -1,9 +1,12 @@
 //! Notes: started at the right pitch, ended where they were started.
 
 use super::beforehand::bend_for;
+use super::channel::UNSAID;
 use super::choose::{Choice, Cost, Want, choose};
 use super::dialect::{self, on_members};
+use super::fingers::led_otherwise;
 use super::following::Followed;
+use super::mono;
 use super::outbox::Bundle;
 use super::plan::{ChannelSet, KeyboardId, PartId, PartPlan, SynthId};
 use super::traffic::{Onset, Weight};
@@ -47,6 +50,22 @@ pub(super) struct Press {
     luggage: Luggage,
     /// One for each key press.
     strike: u64,
+}
+
+impl Press {
+    /// The press of a voice once more, with nothing that travelled with it.
+    pub fn again(voice: &Voice) -> Press {
+        Press {
+            hand: Hand {
+                keyboard: voice.keyboard,
+                channel: voice.heard_on,
+            },
+            key: voice.key,
+            velocity: voice.velocity,
+            luggage: Luggage::default(),
+            strike: voice.strike,
+        }
+    }
 }
 
 impl Engine {
@@ -105,12 +124,48 @@ impl Engine {
             self.out.counters.refused += 1;
             return false;
         }
+        let want = self.want(id, part, press, followed, target, number);
+        let synth = &self.synths[part.to.index()];
+        let choice = match part.mono {
+            true => mono::choose(&want, synth, &self.voices, now),
+            false => choose(&want, synth, &self.voices, now),
+        };
+        let Some(choice) = choice else {
+            self.out.counters.refused += 1;
+            return false;
+        };
+        if part.mono {
+            // Two notes of one number would end as one; and what is released first keeps its pitch in an MPE zone.
+            let keeps_pitch = self.synths[part.to.index()].rig.keeps_pitch();
+            let first = keeps_pitch || choice.cost == Cost::Steal;
+            self.make_way(now, id, |v| v.number == number || first);
+        }
+        self.make_room(now, part.to, choice);
+        self.sound(now, part, press, &want, choice, followed);
+        if part.mono {
+            // Only now, so that a plain synth in mono mode plays legato.
+            self.make_way(now, id, |v| v.strike != press.strike);
+        }
+        true
+    }
+
+    /// What a note of a part at a pitch asks of a channel.
+    fn want(
+        &self,
+        id: PartId,
+        part: &PartPlan,
+        press: &Press,
+        followed: Option<Followed>,
+        target: Pitch,
+        number: u8,
+    ) -> Want {
         let synth = &self.synths[part.to.index()];
         let wheel = if on_members(&synth.rig, part) {
             self.parts[id.index()].wheel
         } else {
             Interval::ZERO
         };
+        let finger = self.finger(press.hand, part);
         let offset = target - Pitch::of_key(number);
         let word = Bend::encode(offset, synth.rig.bend_range).0;
         let pool = dialect::members(&synth.rig, part);
@@ -121,7 +176,7 @@ impl Engine {
             }
         }
         let is_double = |channel| synth.channels[channel as usize].word == word;
-        let want = Want {
+        Want {
             part: id,
             pool,
             key: press.key,
@@ -130,18 +185,18 @@ impl Engine {
             nudge: self.nudge_of(part),
             follows: followed.map(Followed::class),
             groups: self.playing.tuning.groups(),
-            doubles: sounding_on.iter().any(is_double),
+            doubles: finger.hand.is_none() && sounding_on.iter().any(is_double),
             sounding_on,
             wheel,
             word,
-        };
-        let Some(choice) = choose(&want, synth, &self.voices, now) else {
-            self.out.counters.refused += 1;
-            return false;
-        };
-        self.make_room(now, part.to, choice);
-        self.sound(now, part, press, &want, choice, followed);
-        true
+            finger,
+            led_otherwise: led_otherwise(&self.voices, part.to, finger.hand),
+            brightness: match synth.rig.manager() {
+                Some(_) => UNSAID, // told to the manager
+                None => self.parts[id.index()].controllers[controller::BRIGHTNESS as usize],
+            },
+            alone: part.mono,
+        }
     }
 
     /// The key after all transpositions.
@@ -226,6 +281,7 @@ impl Engine {
             ..press.luggage
         };
         let pressure = self.pressure_for(part, part.to, number, want.part);
+        let pressure = pressure.max(want.finger.pressure);
         let synth = &mut self.synths[part.to.index()];
         let range = synth.rig.bend_range;
         let mut bundle = luggage.bundle(number);
@@ -257,6 +313,8 @@ impl Engine {
         self.voices.add(Voice {
             part: want.part,
             followed,
+            finger: want.finger.hand.is_some(),
+            pressure: want.finger.pressure,
             ..voice
         });
     }
@@ -275,6 +333,7 @@ impl Engine {
             key: press.key,
             strike: press.strike,
             down: true,
+            finger: false,
             latched: false,
             followed: None,
             drum: false,
@@ -308,8 +367,9 @@ impl Engine {
     pub(super) fn key_up(&mut self, now: Time, hand: Hand, key: Key, velocity: u8) {
         let luggage = self.source(hand).velocity_low.take();
         let of_key = |v: &Voice| v.down && v.key == key && hand.is_of(v);
+        let waited = self.leave_mono(now, hand, key);
         let Some(strike) = self.voices.iter().find(|v| of_key(v)).map(|v| v.strike) else {
-            self.out.counters.orphans += 1;
+            self.out.counters.orphans += !waited as u64;
             return;
         };
         self.release(now, velocity, luggage, |v| v.down && v.strike == strike);
@@ -383,5 +443,6 @@ impl Engine {
     /// Ends everything a keyboard holds.
     pub(super) fn release_keyboard(&mut self, now: Time, keyboard: KeyboardId) {
         self.release(now, 64, None, |v| v.keyboard == keyboard && v.down);
+        self.come_back_everywhere(now);
     }
 }

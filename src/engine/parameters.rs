@@ -63,17 +63,21 @@ impl Engine {
 
     /// Data entry. RPN 0 says what the wheel means and goes no further; what is trued's own is not passed on.
     pub(super) fn set_parameter(&mut self, now: Time, hand: Hand, msb: u8, lsb: u8) {
-        let source = self.source(hand);
-        let sequence: fn(u8, [u8; 2], [u8; 2]) -> [u8; parameter::PARAMETER_BYTES] = match source
-            .select
-        {
+        let select = self.source(hand).select;
+        let sequence: fn(u8, [u8; 2], [u8; 2]) -> [u8; parameter::PARAMETER_BYTES] = match select {
             Select::Registered([0, 0]) => {
-                source.wheel_range =
+                let range =
                     Interval::from_cents(msb.min(BEND_RANGE_MAX) as i64 * 100 + lsb.min(99) as i64);
+                if self.is_finger(hand) {
+                    return self.set_finger_range(hand, range);
+                }
+                self.source(hand).wheel_range = range;
                 self.widen_managers(now, hand);
                 self.wheel_moved(now, hand);
                 return;
             }
+            Select::Registered([0, 6]) => return self.set_zone(now, hand, msb),
+            _ if self.is_finger(hand) => return, // the manager's to say
             Select::Registered(number) if OURS.contains(&number) || number == NULL => {
                 return;
             }
@@ -81,7 +85,7 @@ impl Engine {
             Select::Registered(_) => parameter::registered,
             Select::NonRegistered(_) => parameter::non_registered,
         };
-        let (Select::Registered(number) | Select::NonRegistered(number)) = source.select else {
+        let (Select::Registered(number) | Select::NonRegistered(number)) = select else {
             return;
         };
         self.tell_gesture_channels(hand, |channel| sequence(channel, number, [msb, lsb]));
@@ -140,6 +144,9 @@ impl Engine {
         source.pressure = 0;
         source.pedals = [0; PEDALS.len()];
         source.select = Select::Nothing;
+        for finger in self.fingers_of(hand) {
+            self.rest_finger(finger);
+        }
         self.for_parts(hand, |engine, index, part| {
             if part.pass.controllers {
                 engine.reset_part(index, part);
@@ -214,7 +221,7 @@ fn pass_reset(now: Time, synth: &mut Synth, number: u8, out: &mut Outbox) {
     channel.reset_controllers();
     let mut bundle = Bundle::new();
     bundle.add(&[status::CONTROLLER | number, controller::RESET_ALL, 0]);
-    let bend = Bend::encode(channel.offset, range).0;
+    let bend = Bend::encode(channel.offset + channel.finger, range).0;
     if !manager && channel.rings(now, tail) && bend != Bend::CENTRE {
         channel.bend = Some(bend);
         bundle.add(&bend_message(number, bend));

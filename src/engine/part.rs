@@ -1,6 +1,7 @@
 //! One part: what it plays, and what its player has set: wheel, pressure, controllers, program.
 
 use super::channel::{Program, UNSAID};
+use super::mono::Below;
 use super::plan::{PartId, PartPlan, SynthId};
 use crate::midi::controller;
 use crate::pitch::Interval;
@@ -14,6 +15,8 @@ pub(super) struct Part {
     /// Grows with every change of a controller, so that a channel knows whether it has to catch up.
     pub version: u32,
     pub program: Program,
+    /// Of a part of one voice.
+    pub below: Below,
 }
 
 impl Part {
@@ -25,6 +28,7 @@ impl Part {
             controllers: [UNSAID; 128],
             version: 0,
             program: Program::UNSAID,
+            below: Below::NOTHING,
         }
     }
 

@@ -6,7 +6,8 @@
 
 use super::Engine;
 use super::Hand;
-use super::channel::{RESET_VALUES, UNSAID};
+use super::channel::{AT_REST, UNSAID};
+use super::mono::Below;
 use super::part::{Part, owner_of};
 use super::plan::{ChannelSet, PartId, PartPlan, SynthId};
 use super::synth::PEDALS;
@@ -112,7 +113,12 @@ impl Engine {
         let is_like = |part: &&Part| part.plan.to == plan.to && part.plan.from == plan.from;
         let mut part = Part::new(plan);
         if let Some(like) = before.find(is_like) {
-            part = Part { plan, ..*like };
+            let below = Below::NOTHING;
+            part = Part {
+                plan,
+                below,
+                ..*like
+            };
         }
         for (which, pedal) in PEDALS.into_iter().enumerate() {
             let value = self.deepest(&plan, which);
@@ -123,7 +129,8 @@ impl Engine {
         (part.wheel, part.pressure) = (Interval::ZERO, 0);
         for (index, keyboard) in self.keyboards.iter().enumerate() {
             for (channel, source) in keyboard.sources.iter().enumerate() {
-                if !Hand::new(index, channel as u8).is_some_and(|hand| self.feeds(&plan, hand)) {
+                let plays = |hand: Hand| self.feeds(&plan, hand) && !self.is_finger(hand);
+                if !Hand::new(index, channel as u8).is_some_and(plays) {
                     continue;
                 }
                 if plan.pass.wheel && source.wheel_interval() != Interval::ZERO {
@@ -247,7 +254,7 @@ impl Engine {
         if synth.rig.manager().is_some() {
             return; // told to the manager alone, for all players
         }
-        for (cc, value) in RESET_VALUES.into_iter().chain([(controller::HOLD_2, 0)]) {
+        for (cc, value) in AT_REST {
             let told = synth.channels[number as usize].controllers[cc as usize];
             let of_owner = owner.map(|(part, _)| self.parts[part.index()].controllers[cc as usize]);
             if told != UNSAID && of_owner.is_none_or(|value| value == UNSAID) {

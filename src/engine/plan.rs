@@ -1,6 +1,7 @@
 //! The compiled stage file, ready to play. Built by `stage/`, played by the engine, changed by nobody.
 
 pub use super::by_hand::{ByHand, ByLine, NameId, OtherPlace, TurnStep, TwoNames};
+pub use super::zones::Zones;
 use crate::intonation::Method;
 use crate::limits::{KEYBOARDS_MAX, PART_PLACES, SYNTHS_MAX};
 use crate::pitch::word::BendRange;
@@ -117,6 +118,17 @@ pub struct KeyboardPlan {
     pub channels: ChannelSet,
     /// What a full push of its wheel means, in semitones, until it says otherwise by RPN 0.
     pub wheel_semitones: u8,
+    /// The MPE zones that it sends, until it says otherwise; none: it is an ordinary keyboard, whatever it says.
+    pub zones: Zones,
+    /// What a full bend of a single note means there, in semitones, until it says otherwise by RPN 0.
+    pub finger_semitones: u8,
+}
+
+impl KeyboardPlan {
+    /// Each of its notes comes on a channel of its own.
+    pub fn sends_mpe(&self) -> bool {
+        self.zones != Zones::NONE
+    }
 }
 
 /// How pitch is spelt on the wire.
@@ -224,6 +236,8 @@ pub struct PartPlan {
     pub pass: Pass,
     /// False: plays plain twelve-equal at A4 = 440 Hz, whatever the song.
     pub tune: bool,
+    /// One channel, on which the newest key sounds.
+    pub mono: bool,
     /// How it stands to the harmony, in songs that follow one.
     pub follow: Follow,
     /// This part shares an MPE manager with another, in this song or the next, so its pedals are played by late note-offs instead.

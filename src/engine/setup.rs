@@ -181,16 +181,7 @@ impl Engine {
 
     /// The bend that a member should have now.
     pub(super) fn say_bend(&mut self, id: SynthId, number: u8) {
-        let wheel = match self.part_of(id, number) {
-            Some((part_id, part)) if on_members(&self.synths[id.index()].rig, &part) => {
-                self.parts[part_id.index()].wheel
-            }
-            _ => Interval::ZERO,
-        };
-        let synth = &mut self.synths[id.index()];
-        let offset = synth.channels[number as usize].offset;
-        let bend = Bend::encode(offset + wheel, synth.rig.bend_range).0;
-        synth.bend(number, bend, Weight::Owed, &mut self.out);
+        self.bend_channel(id, number, Weight::Owed);
     }
 
     /// A manager's range reaches as far as the widest wheel that plays on it.
@@ -205,8 +196,8 @@ impl Engine {
             }
             for (index, keyboard) in self.keyboards.iter().enumerate() {
                 for (channel, source) in keyboard.sources.iter().enumerate() {
-                    let hand = Hand::new(index, channel as u8);
-                    if hand.is_some_and(|hand| self.feeds(part, hand)) {
+                    let plays = |hand: Hand| self.feeds(part, hand) && !self.is_finger(hand);
+                    if Hand::new(index, channel as u8).is_some_and(plays) {
                         widest = widest.max(source.wheel_range);
                     }
                 }

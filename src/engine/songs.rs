@@ -107,12 +107,18 @@ impl Engine {
     pub(super) fn swap_plan(&mut self, now: Time, plan: Box<Plan>) -> Box<Plan> {
         let gone = plan.keyboards.len()..self.plan.keyboards.len();
         for id in (0..KEYBOARDS_MAX).filter_map(KeyboardId::new) {
-            if gone.contains(&self.plays_as(id).index()) {
+            let plays_as = self.plays_as(id).index();
+            let zones = |plan: &Plan| plan.keyboards.get(plays_as).map(|plan| plan.zones);
+            let is_other = zones(&plan) != zones(&self.plan);
+            if gone.contains(&plays_as) || is_other {
                 // It is heard no more, so nobody else would end what it holds.
                 self.let_go(now, id);
             }
         }
         let old = std::mem::replace(&mut self.plan, plan);
+        for keyboard in &mut self.keyboards {
+            keyboard.fit(&self.plan, &old);
+        }
         let place = find_again(&self.plan.set, &old, self.song);
         self.find_armed_again(&old);
         self.song = place.unwrap_or(self.song.min(self.plan.set.len() - 1));

@@ -1,5 +1,6 @@
 //! Notes whose note-off is still to come.
 
+use super::Hand;
 use super::following::Followed;
 use super::plan::{KeyboardId, PartId, SynthId};
 use crate::limits::VOICES_MAX;
@@ -22,12 +23,24 @@ pub(super) struct Voice {
     pub strike: u64,
     /// The key is down. False only while a pedal is played by a late note-off.
     pub down: bool,
+    /// Its key came on a channel of its own, with bend, pressure and brightness of its own.
+    pub finger: bool,
     /// Latched by the sostenuto pedal.
     pub latched: bool,
     /// What it is to the harmony, if it follows it.
     pub followed: Option<Followed>,
     /// Passed through untouched on a drum channel.
     pub drum: bool,
+}
+
+impl Voice {
+    /// The hand that moves it alone; `None` for a key on an ordinary channel.
+    pub fn hand_of_finger(&self) -> Option<Hand> {
+        self.finger.then_some(Hand {
+            keyboard: self.keyboard,
+            channel: self.heard_on,
+        })
+    }
 }
 
 /// All open notes, oldest first; room is taken once.

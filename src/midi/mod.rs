@@ -14,7 +14,7 @@ mod splitter;
 pub use message::{Message, is_reset};
 pub use splitter::Splitter;
 
-/// Controllers the engine has something to say about, by number (MIDI 1.0, table 3; 88 from CA-031).
+/// Controllers the engine has something to say about, by number (MIDI 1.0, table 3; 74 by MPE 1.1, 88 from CA-031).
 pub mod controller {
     pub const BANK_MSB: u8 = 0;
     pub const DATA_MSB: u8 = 6;
@@ -24,6 +24,7 @@ pub mod controller {
     pub const SOSTENUTO: u8 = 66;
     pub const SOFT: u8 = 67;
     pub const HOLD_2: u8 = 69;
+    pub const BRIGHTNESS: u8 = 74;
     pub const PORTAMENTO_FROM: u8 = 84;
     pub const VELOCITY_LOW: u8 = 88;
     pub const DATA_UP: u8 = 96;

@@ -10,7 +10,7 @@ use super::songs::{self, Desk, Entry};
 use super::told::Told;
 use super::tunings::{Library, Reference};
 use super::values::choice;
-use super::{Stage, cues, defaults, lamps, placing, pools, slips};
+use super::{Stage, cues, defaults, lamps, outlook, placing, pools, slips};
 use crate::engine::Plan;
 use crate::engine::plan::{CuePlan, PartPlan};
 use crate::pitch::{Interval, Pitch};
@@ -123,7 +123,7 @@ fn assemble(evening: Evening, rig: Rig, rest: Rest) -> Stage {
     let (synths, synth_plans) = (rig.synths.into_iter())
         .map(|synth| (synth.device, synth.plan))
         .unzip();
-    Stage {
+    let mut stage = Stage {
         name: evening.name,
         keyboards,
         synths,
@@ -145,7 +145,10 @@ fn assemble(evening: Evening, rig: Rig, rest: Rest) -> Stage {
                 hertz.pitch() - Pitch::of_key(key.number())
             }),
         },
-    }
+    };
+    let short = outlook::short_reach(&stage.plan);
+    stage.advice.extend(short);
+    stage
 }
 
 fn evening(path: &Path, fields: &mut Fields<'_>, found: &mut Findings) -> Evening {

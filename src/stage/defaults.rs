@@ -13,6 +13,8 @@ pub const DRUMS: ChannelSet = ChannelSet(1 << 9);
 pub const DRUMS_MPE: ChannelSet = ChannelSet::NONE;
 pub const TAIL_MS: u64 = 1500;
 pub const WHEEL: u8 = 2;
+/// What a keyboard sends: all notes on one channel.
+pub const SENDS: &str = "plain";
 pub const REFERENCE: &str = "A4 = 440 Hz";
 pub const TUNING: &str = "equal-12";
 pub const TONIC: &str = "C";
@@ -107,6 +109,18 @@ fn keyboards(line: Line<'_>) -> Vec<Default> {
             "wheel",
             &WHEEL,
             "semitones of a full push of its wheel",
+        ),
+        line(
+            "keyboards",
+            "sends",
+            &SENDS,
+            "mpe: each note on a channel of its own, with bend, pressure and brightness of its own",
+        ),
+        line(
+            "keyboards",
+            "bend_range",
+            &BEND_RANGE_MPE,
+            "with `sends: mpe`: semitones of a full bend of one note, until the keyboard says otherwise",
         ),
         line(
             "keyboards",

@@ -101,7 +101,8 @@ pub fn intonation(plan: &Plan, song: usize) -> Option<String> {
 pub fn crowding(plan: &Plan, song: usize) -> Option<String> {
     let song = plan.set.get(song)?;
     let SongPlan { tuning, method, .. } = song;
-    let parts = plan.parts_of(song).iter().filter(|part| part.tune);
+    let parts = plan.parts_of(song).iter();
+    let parts = parts.filter(|part| part.tune && !part.mono);
     let crowded = parts.filter_map(|part| {
         if *method != Method::Fixed && part.follow != Follow::Nothing {
             return crowded_chords(plan, part);
@@ -144,6 +145,32 @@ fn crowded_chords(plan: &Plan, part: &PartPlan) -> Option<String> {
              at once, one goes along with another"
         )
     })
+}
+
+/// Keyboards whose single notes bend further than a synth that they play.
+pub fn short_reach(plan: &Plan) -> Vec<String> {
+    let mut lines = Vec::new();
+    let lists = plan.set.iter().map(|song| plan.parts_of(song));
+    for part in lists.flatten().filter(|part| part.pass.wheel) {
+        let synth = &plan.synths[part.to.index()];
+        let reach = synth.bend_range.semitones();
+        for (index, keyboard) in plan.keyboards.iter().enumerate() {
+            let plays = part.from.is_none_or(|from| from.index() == index);
+            let bends = keyboard.finger_semitones;
+            if !plays || !keyboard.sends_mpe() || bends <= reach {
+                continue;
+            }
+            let line = format!(
+                "single notes of {} bend by up to {bends} semitones, and {} by {reach}: further than that they stay \
+                 there; write `bend_range: {bends}` at {}, or `dialect: mpe` if it knows that",
+                keyboard.name, synth.name, synth.name
+            );
+            if !lines.contains(&line) {
+                lines.push(line);
+            }
+        }
+    }
+    lines
 }
 
 /// Keys that every keyboard has and that stand outside of what MIDI can say.

@@ -22,6 +22,7 @@ pub struct Part {
     pub offset: Interval,
     pub pass: Pass,
     pub tune: bool,
+    pub mono: bool,
     pub follow: Follow,
 }
 
@@ -37,6 +38,7 @@ pub fn whole_keyboard() -> Part {
         offset: Interval::ZERO,
         pass: Pass::ALL,
         tune: true,
+        mono: false,
         follow: Follow::Harmony,
     }
 }
@@ -99,11 +101,21 @@ fn part(at: &At<'_>, rig: &Rig, found: &mut Findings) -> Option<Part> {
     if let Some(at) = fields.take("follow") {
         part.follow = follow(&at, complaints);
     }
-    let mono = fields.take("mono").and_then(|at| at.flag(complaints));
-    fields.finish(complaints);
-    if mono == Some(true) {
-        found.not_played("`mono: yes` of a part");
+    if let Some(at) = fields.take("mono") {
+        part.mono = at.flag(complaints).unwrap_or(false);
     }
+    if let Some((trail, channels)) = &part.channel
+        && part.mono
+        && channels.count() > 1
+    {
+        let first = channels.iter().next().map_or(1, |channel| channel + 1);
+        complaints.add(
+            trail,
+            "a part with `mono: yes` has one channel",
+            format!("write `channel: {first}`"),
+        );
+    }
+    fields.finish(complaints);
     Some(part)
 }
 

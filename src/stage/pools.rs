@@ -41,6 +41,7 @@ pub fn allot(parts: &[Part], rig: &Rig, complaints: &mut Complaints) -> Vec<Part
             offset: part.offset,
             pass: part.pass,
             tune: part.tune,
+            mono: part.mono,
             follow: part.follow,
             late_offs: false, // known once the whole evening is
         })
@@ -61,7 +62,7 @@ pub fn share_managers(rig: &Rig, stage: &mut [PartPlan], set: &mut [Entry]) {
             let here = song.parts.as_deref().unwrap_or(stage);
             let here = here.iter().filter(|part| part.to == synth);
             shared |= here.clone().count() > 1;
-            players.extend(here.map(|part| part.from));
+            players.extend(here.map(|part| (part.from, part.pass)));
         }
         shared |= players.iter().any(|player| *player != players[0]);
         let told = |part: &PartPlan| PartPlan {
@@ -131,7 +132,8 @@ fn asked_for(
     ChannelSet(asked.0 & free.0)
 }
 
-/// An even share each, in order; the first parts get what is over.
+/// One channel for each part of one voice, and an even share for each of the others, in order; the first get what is
+/// over.
 fn share(
     free: ChannelSet,
     sharing: &[usize],
@@ -147,15 +149,22 @@ fn share(
         return; // the synth has had its complaint
     }
     let mut channels = free.iter();
-    let count = free.count() as usize;
-    for (place, part) in sharing.iter().enumerate() {
-        let over = usize::from(place < count % sharing.len());
-        let wanted = count / sharing.len() + over;
+    let voices = sharing.iter().filter(|part| parts[**part].mono).count();
+    let others = sharing.len() - voices;
+    let count = (free.count() as usize).saturating_sub(voices);
+    let mut place = 0;
+    for part in sharing {
+        let wanted = if parts[*part].mono {
+            1
+        } else {
+            place += 1;
+            count / others + usize::from(place <= count % others)
+        };
         pools[*part] = channels
             .by_ref()
             .take(wanted)
             .fold(ChannelSet::NONE, ChannelSet::with);
-        if wanted == 0 {
+        if pools[*part] == ChannelSet::NONE {
             complaints.add(
                 &parts[*part].trail,
                 format!(

@@ -7,7 +7,7 @@ use super::parts::{self, Part};
 use super::synth;
 use super::values::{channels, choice, one_of};
 use super::{Device, Wish, defaults};
-use crate::engine::plan::{ChannelSet, KeyboardId, KeyboardPlan, Leave, SynthId, SynthPlan};
+use crate::engine::plan::{ChannelSet, KeyboardId, KeyboardPlan, Leave, SynthId, SynthPlan, Zones};
 use crate::limits::{BEND_RANGE_MAX, KEYBOARDS_MAX, SYNTHS_MAX};
 
 /// Everything that is plugged in, and how it is bound together.
@@ -115,8 +115,31 @@ fn keyboard(
     let mut fields = at.fields("a map such as `{port: \"*Keys*\"}`", complaints)?;
     let mut keyboard = any_keyboard(&name);
     keyboard.device.port = port(&mut fields, complaints);
-    if let Some(at) = fields.take("channel") {
-        keyboard.plan.channels = channels(&at, complaints).unwrap_or(ChannelSet::ALL);
+    let written = fields.take("channel");
+    if let Some(at) = &written {
+        keyboard.plan.channels = channels(at, complaints).unwrap_or(ChannelSet::ALL);
+    }
+    const SENDS: [(&str, bool); 2] = [(defaults::SENDS, false), ("mpe", true)];
+    let sends = fields.take("sends");
+    let sends = sends.and_then(|at| choice(&at, &SENDS, complaints));
+    if sends == Some(true) {
+        let all = keyboard.plan.channels;
+        let place = &written.as_ref().unwrap_or(at).trail;
+        if let Some(manager) = synth::zone(all, place, complaints) {
+            keyboard.plan.zones.set(manager, all.count() as u8 - 1);
+        }
+    }
+    if let Some(at) = fields.take("bend_range") {
+        let range = 1..=BEND_RANGE_MAX as i64;
+        let bends = at.whole("semitones of a full bend of one note", range, complaints);
+        keyboard.plan.finger_semitones = bends.unwrap_or(1) as u8;
+        if sends != Some(true) {
+            complaints.add(
+                &at.trail,
+                "this keyboard sends all notes on one channel and bends none by itself",
+                "write `sends: mpe` if each has a channel of its own, or `wheel: 12` for what the wheel means",
+            );
+        }
     }
     if let Some(at) = fields.take("wheel") {
         let range = 0..=BEND_RANGE_MAX as i64;
@@ -142,6 +165,8 @@ fn any_keyboard(name: &str) -> Keyboard {
             name: name.into(),
             channels: ChannelSet::ALL,
             wheel_semitones: defaults::WHEEL,
+            zones: Zones::NONE,
+            finger_semitones: defaults::BEND_RANGE_MPE,
         },
     }
 }

@@ -1,7 +1,7 @@
 //! One synth as written: dialect, channels, bend range, and how it is treated.
 
 use super::advice::Findings;
-use super::complaint::Complaints;
+use super::complaint::{Complaints, Trail};
 use super::node::{At, Fields};
 use super::rig::{Synth, leave, port};
 use super::values::{channels, choice, spell_channels};
@@ -127,12 +127,7 @@ fn members(
         }
         return;
     }
-    let Some(manager) = zone_manager(all) else {
-        complaints.add(
-            &place,
-            format!("{spelt} makes no MPE zone"),
-            "a lower zone begins at 1, as in 1-8 (manager 1), an upper one ends at 16, as in 9-16 (manager 16)",
-        );
+    let Some(manager) = zone(all, &place, complaints) else {
         return;
     };
     let drummed = ChannelSet(all.0 & plan.drums.0);
@@ -152,13 +147,20 @@ fn members(
 
 /// The manager, 0-15, of a zone that covers just these channels (MPE 1.1, 2.1: the outermost channel manages, members
 /// follow without gaps).
-fn zone_manager(all: ChannelSet) -> Option<u8> {
+pub fn zone(all: ChannelSet, place: &Trail, complaints: &mut Complaints) -> Option<u8> {
     let (first, last) = (all.iter().next()?, all.iter().last()?);
     let gapless = all.count() == u32::from(last - first) + 1 && all.count() >= 2;
     match (gapless, first, last) {
         (true, 0, _) => Some(0),
         (true, _, 15) => Some(15),
-        _ => None,
+        _ => {
+            complaints.add(
+                place,
+                format!("{} makes no MPE zone", spell_channels(all)),
+                "a lower zone begins at 1, as in 1-8 (manager 1), an upper one ends at 16, as in 9-16 (manager 16)",
+            );
+            None
+        }
     }
 }
 

@@ -6,6 +6,8 @@ mod black_keys;
 mod cues;
 /// Two runs of one script; a stream in portions.
 mod determinism;
+/// Keyboards that send each note on a channel of its own; the player's hands on their own part.
+mod expressive;
 /// Gestures besides switches and keys: values, pressure, banks, song select, ranges of keys.
 mod gestures;
 /// Chords that are pure, and what of them moves.
@@ -18,6 +20,8 @@ mod lamps;
 mod lost;
 /// Mode messages, Reset All Controllers.
 mod modes;
+/// Parts of one voice.
+mod mono;
 /// Splits, layers, several keyboards and synths; parts of a song.
 mod parts;
 /// Damper, sostenuto, keys struck again.

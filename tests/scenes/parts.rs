@@ -122,6 +122,25 @@ fn an_untuned_part_is_equal_at_440_whatever_the_song() {
     );
 }
 
+/// Where the last E of a synth stands above its first, held as a pure third by the other player.
+fn octave_of_e(follow: &str) -> f64 {
+    let mut rig = Rig::of(&format!(
+        "{DEVICES}parts: [{{from: keys}}, {{from: pads, follow: {follow}}}]\n\
+         set: [{{song: Pure, tuning: equal-12, intonation: chord-root}}]\n"
+    ));
+    rig.play("10 chord C4 E4 G4\n500 second on E5 100");
+    let notes = &rig.heard().notes;
+    notes[3].onset_cents() - notes[1].cents()
+}
+
+#[test]
+fn a_second_player_may_have_a_harmony_of_one_s_own() {
+    let step_cents = 200.0 / 8192.0;
+    assert!((octave_of_e("yes") - 1200.0).abs() <= step_cents);
+    // Alone, it stands at rest; the pure third of the first player is some 10 cents lower.
+    assert!(octave_of_e("own") > 1206.0);
+}
+
 /// Two manuals a quarter-tone apart: 24 keys to the octave on two channels, however many keys are down.
 #[test]
 fn n15_two_keyboards_a_quarter_tone_apart_need_two_channels() {

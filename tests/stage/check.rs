@@ -155,3 +155,21 @@ fn defaults_are_listed_with_and_without_a_file() {
     assert!(both.starts_with("First light") && both.contains(&out));
     assert!(json(&check(&["--defaults", "--json"]).1)["defaults"].is_array());
 }
+
+/// A full bend of a member is 48 semitones unless it says otherwise (MPE 1.1, 2.2.5).
+#[test]
+fn an_expressive_keyboard_and_a_synth_that_bends_less_are_said() {
+    let stage = |synth: &str| {
+        let text = format!(
+            "keyboards: {{keys: {{port: virtual, sends: mpe}}}}\nsynths: {{lead: {{port: virtual{synth}}}}}\n\
+             set: [{{song: One, tuning: equal-12}}]\n"
+        );
+        trued::stage::Stage::parse(std::path::Path::new("test.yaml"), &text).expect("good")
+    };
+    let told = "single notes of keys bend by up to 48 semitones, and lead by 2: further than that they stay there; \
+                write `bend_range: 48` at lead, or `dialect: mpe` if it knows that";
+    assert_eq!(stage("").advice, [told]);
+    for wide in [", dialect: mpe", ", bend_range: 48"] {
+        assert!(stage(wide).advice.is_empty());
+    }
+}

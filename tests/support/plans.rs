@@ -74,6 +74,8 @@ pub fn keyboard(name: &str) -> KeyboardPlan {
         name: name.into(),
         channels: ChannelSet::ALL,
         wheel_semitones: 2,
+        zones: trued::engine::plan::Zones::NONE,
+        finger_semitones: 48,
     }
 }
 
@@ -89,6 +91,7 @@ pub fn part(synths: &[SynthPlan]) -> PartPlan {
         offset: Interval::ZERO,
         pass: Pass::ALL,
         tune: true,
+        mono: false,
         follow: trued::engine::plan::Follow::Harmony,
         late_offs: false,
     }
