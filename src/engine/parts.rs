@@ -274,7 +274,10 @@ impl Engine {
         for index in 0..count {
             let plan = self.song_parts()[index];
             match self.parts.get_mut(index) {
-                Some(part) => part.plan = plan,
+                Some(part) => {
+                    part.plan = plan;
+                    part.below = Below::NOTHING;
+                }
                 None => self.parts.push(Part::new(plan)),
             }
         }
