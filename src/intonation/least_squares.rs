@@ -5,7 +5,7 @@
 //! for each class. Where an interval has several just sizes (10/9 and 9/8), the combination with the least strain is taken.
 //! A squared error spreads what does not fit over the whole chord: nothing is far off, and not everything is pure.
 
-mod factor;
+mod inverse;
 mod springs;
 mod targets;
 mod trials;
@@ -18,8 +18,10 @@ use springs::Springs;
 
 /// Unknowns of one chord.
 pub const TONES_MAX: usize = CLASSES as usize;
-/// One number for each tone.
-type Row<T> = [T; TONES_MAX];
+const PAIRS_MAX: usize = pairs(TONES_MAX);
+const fn pairs(tones: usize) -> usize {
+    tones * (tones - 1) / 2
+}
 
 /// One unknown: a sounding class with all its keys.
 #[derive(Clone, Copy, Debug)]
@@ -47,14 +49,22 @@ impl Tone {
 pub struct Solution<'a> {
     /// From twelve-equal, in the order of the tones asked about; zero beyond.
     pub offsets: [Interval; TONES_MAX],
-    springs: Springs<'a>,
+    /// The size of each pair.
+    chosen: [u8; PAIRS_MAX],
+    tones: &'a [Tone],
+    targets: &'a Targets,
+    leash: Weight,
 }
 
 impl Solution<'_> {
     /// What strain is left, in millionths of a squared cent at weight 1.
     pub fn strain_millionths(&self) -> u64 {
-        let places = self.offsets.map(Interval::microcents);
-        self.springs.strain_millionths(&places)
+        let mut springs = Springs::<TONES_MAX, PAIRS_MAX>::SLACK;
+        springs.tie(self.tones, self.targets, self.leash);
+        for (pair, chosen) in springs.pairs_mut().iter_mut().zip(self.chosen) {
+            pair.chosen = chosen;
+        }
+        springs.strain_millionths(&self.offsets.map(Interval::microcents))
     }
 }
 
@@ -64,14 +74,36 @@ impl Solution<'_> {
 ///
 /// At most [`crate::limits::TRIALS_MAX`] combinations of sizes are tried; `trials.rs` says which.
 pub fn solve<'a>(tones: &'a [Tone], targets: &'a Targets, leash: Weight) -> Solution<'a> {
-    let tones = &tones[..tones.len().min(TONES_MAX)];
-    let mut springs = Springs::between(tones, targets, leash);
-    let factor = springs.factor();
-    trials::choose(&mut springs, &factor);
-    let places = springs.settle(&factor);
-    Solution {
-        offsets: places.map(Interval::from_microcents),
-        springs,
+    let mut solution = Solution {
+        offsets: [Interval::ZERO; TONES_MAX],
+        chosen: [0; PAIRS_MAX],
+        tones: &tones[..tones.len().min(TONES_MAX)],
+        targets,
+        leash,
+    };
+    // Arrays no larger than need be: setting them up is much of the work.
+    match tones.len() {
+        0..=4 => solution.find::<4, { pairs(4) }>(),
+        5..=6 => solution.find::<6, { pairs(6) }>(),
+        _ => solution.find::<TONES_MAX, PAIRS_MAX>(),
+    }
+    solution
+}
+
+impl Solution<'_> {
+    /// Of at most `N` tones, with this many pairs.
+    fn find<const N: usize, const PAIRS: usize>(&mut self) {
+        let mut springs = Springs::<N, PAIRS>::SLACK;
+        springs.tie(self.tones, self.targets, self.leash);
+        let inverse = springs.inverse();
+        trials::choose(&mut springs, &inverse);
+        let places = springs.settle(&inverse);
+        for (offset, place) in self.offsets.iter_mut().zip(places) {
+            *offset = Interval::from_microcents(place);
+        }
+        for (chosen, pair) in self.chosen.iter_mut().zip(springs.pairs()) {
+            *chosen = pair.chosen;
+        }
     }
 }
 

@@ -2,18 +2,15 @@
 //!
 //! All weights are multiplied by the number of keys, so that the leash's share of each key is a whole number too.
 
-use super::factor::{Factor, MATRIX_BITS};
+use super::inverse::{Inverse, MATRIX_BITS, times};
 use super::targets::{HEAVIEST, Target, Targets, Weight};
-use super::{Row, TONES_MAX, Tone};
+use super::{TONES_MAX, Tone};
 use crate::pitch::Interval;
 
-pub const PAIRS_MAX: usize = TONES_MAX * (TONES_MAX - 1) / 2;
 /// More keys of one class weigh no more than these.
 const KEYS_MAX: u8 = 8;
 /// No offset is further out than this, well over three octaves; whole numbers stay in their bounds by it.
 pub const PLACE_MAX: i64 = 1 << 32;
-/// Rounds of improving a solution; each leaves less than a thousandth of the error.
-const ROUNDS: usize = 3;
 
 /// Every entry of the matrix: all keys times what can pull at one class.
 const _: () = {
@@ -34,84 +31,92 @@ pub struct Pair<'a> {
     target: &'a Target,
 }
 
-pub struct Springs<'a> {
+/// Of at most `N` tones and as many pairs as these have.
+pub struct Springs<'a, const N: usize, const PAIRS: usize> {
     tones: &'a [Tone],
+    keys: [i64; N],
     /// What all weights are multiplied by.
     all_keys: i64,
     leash: i64,
-    matrix: Row<Row<i64>>,
+    matrix: [[i64; N]; N],
     /// What anchors and leash add to the right-hand side.
-    home: Row<i128>,
-    pairs: [Pair<'a>; PAIRS_MAX],
+    home: [i128; N],
+    pairs: [Pair<'a>; PAIRS],
     pair_count: usize,
 }
 
-impl<'a> Springs<'a> {
-    // Inlined, for it is larger than most of the work there is to do on it.
+impl<'a, const N: usize, const PAIRS: usize> Springs<'a, N, PAIRS> {
+    pub const SLACK: Springs<'a, N, PAIRS> = Springs {
+        tones: &[],
+        keys: [0; N],
+        all_keys: 0,
+        leash: 0,
+        matrix: [[0; N]; N],
+        home: [0; N],
+        pairs: [Pair::NONE; PAIRS],
+        pair_count: 0,
+    };
+
+    /// Done in place, for to move them is half as much work as to make them.
     #[inline]
-    pub fn between(tones: &'a [Tone], targets: &'a Targets, leash: Weight) -> Springs<'a> {
+    pub fn tie(&mut self, tones: &'a [Tone], targets: &'a Targets, leash: Weight) {
+        self.tones = tones;
+        // Something has to say where the chord stands.
         let anchored = tones.iter().any(|tone| anchor(tone).1 > 0);
-        let mut springs = Springs {
-            tones,
-            all_keys: tones.iter().map(keys).sum(),
-            // Something has to say where the chord stands.
-            leash: leash.get().max(i64::from(!anchored)),
-            matrix: Default::default(),
-            home: Default::default(),
-            pairs: [Pair::NONE; PAIRS_MAX],
-            pair_count: 0,
-        };
-        springs.fasten();
-        for lower in 0..tones.len() {
-            for upper in lower + 1..tones.len() {
-                springs.stretch(lower, upper, targets);
-            }
+        self.leash = leash.get().max(i64::from(!anchored));
+        for (keys, tone) in self.keys.iter_mut().zip(tones) {
+            *keys = i64::from(tone.keys.clamp(1, KEYS_MAX));
+            self.all_keys += *keys;
         }
-        springs
+        self.fasten();
+        self.stretch(targets);
     }
 
     /// Anchors and leash.
+    #[inline]
     fn fasten(&mut self) {
-        let all_keys = self.all_keys();
-        let rest: i64 = self.tones.iter().map(|t| keys(t) * place(t.rest)).sum();
+        let tones = self.tones.iter().zip(&self.keys);
+        let rest: i64 = tones.map(|(tone, keys)| keys * place(tone.rest)).sum();
         for (i, tone) in self.tones.iter().enumerate() {
             let (value, weight) = anchor(tone);
-            let pull = self.leash * keys(tone);
-            self.matrix[i][i] += all_keys * weight;
-            self.home[i] += i128::from(all_keys * weight) * i128::from(value);
-            self.home[i] += i128::from(pull) * i128::from(rest);
-            for (j, other) in self.tones.iter().enumerate() {
-                self.matrix[i][j] += pull * keys(other);
-            }
+            let hold = self.all_keys * weight;
+            let pull = self.leash * self.keys[i];
+            self.home[i] = times(hold, value) + times(pull, rest);
+            self.matrix[i] = self.keys.map(|keys| pull * keys);
+            self.matrix[i][i] += hold;
         }
     }
 
-    fn stretch(&mut self, lower: usize, upper: usize, targets: &'a Targets) {
-        let (low, high) = (&self.tones[lower], &self.tones[upper]);
-        let target = targets.between(low.class, high.class);
-        let all_keys = self.all_keys();
-        let weight = all_keys * target.weight() * keys(low) * keys(high);
-        self.matrix[lower][lower] += weight;
-        self.matrix[upper][upper] += weight;
-        self.matrix[lower][upper] -= weight;
-        self.matrix[upper][lower] -= weight;
-        self.pairs[self.pair_count] = Pair {
-            lower: lower as u8,
-            upper: upper as u8,
-            chosen: 0,
-            weight,
-            target,
-        };
-        self.pair_count += 1;
+    /// Every two tones.
+    #[inline]
+    fn stretch(&mut self, targets: &'a Targets) {
+        for (lower, low) in self.tones.iter().enumerate() {
+            let one = self.all_keys * self.keys[lower];
+            for (upper, high) in self.tones.iter().enumerate().skip(lower + 1) {
+                let target = targets.between(low.class, high.class);
+                let weight = one * self.keys[upper] * target.weight();
+                self.matrix[lower][lower] += weight;
+                self.matrix[upper][upper] += weight;
+                self.matrix[lower][upper] -= weight;
+                self.matrix[upper][lower] -= weight;
+                self.pairs[self.pair_count] = Pair {
+                    lower: lower as u8,
+                    upper: upper as u8,
+                    chosen: 0,
+                    weight,
+                    target,
+                };
+                self.pair_count += 1;
+            }
+        }
     }
 
     pub fn all_keys(&self) -> i64 {
         self.all_keys
     }
 
-    #[inline]
-    pub fn factor(&self) -> Factor {
-        Factor::of(&self.matrix, self.tones.len())
+    pub fn inverse(&self) -> Inverse<N> {
+        Inverse::of(&self.matrix, self.tones.len())
     }
 
     pub fn pairs(&self) -> &[Pair<'a>] {
@@ -123,40 +128,32 @@ impl<'a> Springs<'a> {
     }
 
     /// Where the tones stand if each pair is pulled to this size, to within a small part of a cent.
-    pub fn roughly(&self, factor: &Factor, size: impl Fn(&Pair<'a>) -> i64) -> Row<i64> {
-        factor.solve(&self.pulls(size))
+    pub fn roughly(&self, inverse: &Inverse<N>, size: impl Fn(&Pair<'a>) -> i64) -> [i64; N] {
+        inverse.solve(&self.pulls(size))
     }
 
-    /// Where the tones stand by the sizes chosen, to within a few microcents: what the solution leaves over is solved for
-    /// again.
-    pub fn settle(&self, factor: &Factor) -> Row<i64> {
-        let pulls = self.pulls(Pair::size);
-        let mut places = factor.solve(&pulls);
-        for _ in 0..ROUNDS {
-            let mut left = pulls;
-            let size = self.tones.len();
-            for (left, row) in left.iter_mut().zip(&self.matrix).take(size) {
-                let held = row.iter().zip(&places).take(size);
-                *left -= held
-                    .map(|(a, x)| i128::from(*a) * i128::from(*x))
-                    .sum::<i128>();
+    /// Where the tones stand by the sizes chosen, to within a few microcents. If the inverse is not fine, what its solution
+    /// leaves over is solved for again; it is a few thousandths of a cent at most.
+    pub fn settle(&self, inverse: &Inverse<N>) -> [i64; N] {
+        let mut left = self.pulls(Pair::size);
+        let mut places = inverse.solve(&left);
+        if !inverse.is_fine {
+            for (left, row) in left.iter_mut().zip(&self.matrix) {
+                for (entry, place) in row.iter().zip(&places) {
+                    *left -= times(*entry, *place);
+                }
             }
-            let better = factor.solve(&left);
-            for (place, better) in places.iter_mut().zip(better) {
+            for (place, better) in places.iter_mut().zip(inverse.solve(&left)) {
                 *place += better;
-            }
-            // What is left then is below one.
-            if better.iter().all(|better| better.abs() < 1_000) {
-                break;
             }
         }
         places
     }
 
-    fn pulls(&self, size: impl Fn(&Pair<'a>) -> i64) -> Row<i128> {
+    fn pulls(&self, size: impl Fn(&Pair<'a>) -> i64) -> [i128; N] {
         let mut pulls = self.home;
         for pair in self.pairs() {
-            let pull = i128::from(pair.weight) * i128::from(size(pair));
+            let pull = times(pair.weight, size(pair));
             pulls[pair.lower as usize] -= pull;
             pulls[pair.upper as usize] += pull;
         }
@@ -164,7 +161,7 @@ impl<'a> Springs<'a> {
     }
 
     /// In millionths of a squared cent at weight 1.
-    pub fn strain_millionths(&self, places: &Row<i64>) -> u64 {
+    pub fn strain_millionths(&self, places: &[i64; N]) -> u64 {
         let square =
             |weight: i64, error: i64| i128::from(weight) * i128::from(error) * i128::from(error);
         let mut strain = 0;
@@ -173,8 +170,8 @@ impl<'a> Springs<'a> {
         }
         let all_keys = self.all_keys();
         let mut from_rest = 0;
-        for (tone, at) in self.tones.iter().zip(places) {
-            from_rest += keys(tone) * (at - place(tone.rest));
+        for ((tone, at), keys) in self.tones.iter().zip(places).zip(self.keys) {
+            from_rest += keys * (at - place(tone.rest));
             let (value, weight) = anchor(tone);
             strain += square(all_keys * weight, at - value);
         }
@@ -194,6 +191,10 @@ impl<'a> Pair<'a> {
         chosen: 0,
     };
 
+    pub fn tones(&self) -> (u8, u8) {
+        (self.lower, self.upper)
+    }
+
     pub fn sizes(&self) -> &'a [i64] {
         self.target.sizes()
     }
@@ -203,13 +204,9 @@ impl<'a> Pair<'a> {
     }
 
     /// The interval of the two as they stand.
-    pub fn interval(&self, places: &Row<i64>) -> i64 {
+    pub fn interval(&self, places: &[i64]) -> i64 {
         places[self.upper as usize] - places[self.lower as usize]
     }
-}
-
-fn keys(tone: &Tone) -> i64 {
-    i64::from(tone.keys.clamp(1, KEYS_MAX))
 }
 
 fn place(offset: Interval) -> i64 {
