@@ -56,7 +56,7 @@ pub fn sentences(report: &Report, names: &Names) -> Vec<String> {
     for key in report.go_alone() {
         out.push(format!("Some {key} go alone."));
     }
-    for name in report.second_names.iter().flatten() {
+    for name in report.told_names.iter().flatten() {
         out.push(format!("The black key is {name}."));
     }
     out
@@ -84,8 +84,24 @@ pub fn inflections(report: &Report, names: &Names) -> Value {
 }
 
 pub fn black_keys(report: &Report) -> Value {
-    let names = report.second_names.iter().flatten();
+    let names = report.told_names.iter().flatten();
     names.map(|name| Value::from(name.to_string())).collect()
+}
+
+/// What every black key with two names is now.
+pub fn black_keys_now(report: &Report) -> Value {
+    let names = report.black_keys.iter().flatten();
+    names.map(|name| Value::from(name.to_string())).collect()
+}
+
+/// What the harmony calls the black keys now, for a line of its own.
+pub fn by_chord(report: &Report) -> Option<String> {
+    let names: Vec<String> = (report.black_keys.iter().flatten())
+        .filter(|name| !report.told_names.contains(&Some(**name)))
+        .map(|name| name.to_string())
+        .collect();
+    (report.by_chord && !names.is_empty())
+        .then(|| format!("By chord the black keys are {} now.", names.join(", ")))
 }
 
 fn name(id: NameId, names: &Names) -> &str {

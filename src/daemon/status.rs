@@ -92,6 +92,7 @@ impl Status {
     pub fn text(&self, uptime_s: u64) -> String {
         let mut lines = self.sentences();
         lines.extend(by_hand::chord(&self.report.standing));
+        lines.extend(by_hand::by_chord(&self.report));
         let priority = if self.real_time {
             "with real-time priority."
         } else {
@@ -138,6 +139,8 @@ impl Status {
             "waits_for_key": self.report.waits_for_key,
             "inflections": by_hand::inflections(&self.report, &self.places),
             "black_keys": by_hand::black_keys(&self.report),
+            "black_keys_now": by_hand::black_keys_now(&self.report),
+            "by_chord": self.report.by_chord,
             "root": self.report.standing.chord.root,
             "shape": by_hand::shape(&self.report.standing),
             "anchor_cents": self.report.standing.anchor.map(cents),

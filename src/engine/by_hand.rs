@@ -32,6 +32,8 @@ pub struct ByHand {
     pub by_line: [Option<ByLine>; 12],
     /// By pitch class: those that stand for two notes.
     pub black_keys: [Option<TwoNames>; 12],
+    /// The harmony chooses between their names; by pitch class, what every key is called as the song begins.
+    pub by_chord: Option<[Letter; 12]>,
     /// `None` for a tuning by letter: its keys keep their pitches whatever the tonic.
     pub turning: Option<Turning>,
 }
@@ -81,6 +83,7 @@ impl ByHand {
             begin_with: [Place::Home; 12],
             by_line: [None; 12],
             black_keys: [None; 12],
+            by_chord: None,
             turning: None,
         }
     }

@@ -7,6 +7,7 @@ use super::next_key::Names;
 use super::plan::SynthId;
 use super::synth::PEDALS;
 use super::traffic::{Command, Weight};
+use crate::limits::PARTS_MAX;
 use crate::midi::{controller, status};
 use crate::pitch::Interval;
 use crate::time::{Span, Time};
@@ -168,6 +169,7 @@ impl Engine {
         }
         self.lift_all_pedals(now);
         self.damp_harmonies(now);
+        (0..PARTS_MAX).for_each(|part| self.by_chord.damp(part));
     }
 
     fn lift_all_pedals(&mut self, now: Time) {

@@ -150,6 +150,11 @@ impl Engine {
 
     fn pedal_up(&mut self, now: Time, index: usize, number: u8) {
         self.damp_harmonies(now);
+        if !self.parts[index].pedal_down(controller::DAMPER)
+            && !self.parts[index].pedal_down(controller::SOSTENUTO)
+        {
+            self.by_chord.damp(index);
+        }
         let channels = self.channels_of(index);
         let synth = &mut self.synths[self.parts[index].plan.to.index()];
         for member in channels.iter() {

@@ -50,9 +50,10 @@ impl Followed {
 /// A press that waits for the instant to be over.
 #[derive(Clone, Copy)]
 pub(super) struct Waiting {
-    part: PartId,
-    press: Press,
-    followed: Followed,
+    pub part: PartId,
+    pub press: Press,
+    /// `None` if it only waits for its name.
+    pub followed: Option<Followed>,
 }
 
 /// The middle of what a tuning's keys stand from equal: what a neutral step is measured against.
@@ -93,7 +94,7 @@ impl Engine {
         Some((followed, rest))
     }
 
-    /// Lets a press wait for its chord, if its part follows the harmony; tells whether it does.
+    /// Lets a press wait for its chord, if its part follows the harmony or is named by it; tells whether it does.
     pub(super) fn wait_for_chord(
         &mut self,
         now: Time,
@@ -101,9 +102,10 @@ impl Engine {
         part: &PartPlan,
         press: &Press,
     ) -> bool {
-        let Some((followed, rest)) = self.follows(id, part, press.key) else {
+        let follows = self.follows(id, part, press.key);
+        if follows.is_none() && !self.is_named_by_chord(part) {
             return false;
-        };
+        }
         if self.waiting.len() == self.waiting.capacity() {
             self.play_chord();
         }
@@ -111,12 +113,14 @@ impl Engine {
             self.out.counters.refused += 1;
             return true;
         }
-        let harmony = &mut self.harmonies[followed.harmony as usize];
-        harmony.press(now, followed.key, rest, followed.counted);
+        if let Some((followed, rest)) = follows {
+            let harmony = &mut self.harmonies[followed.harmony as usize];
+            harmony.press(now, followed.key, rest, followed.counted);
+        }
         self.waiting.push(Waiting {
             part: id,
             press: *press,
-            followed,
+            followed: follows.map(|(followed, _)| followed),
         });
         self.chord_at = Some(now);
         true
@@ -133,6 +137,7 @@ impl Engine {
         let Some(now) = self.chord_at.take() else {
             return;
         };
+        self.name_by_chord(now);
         let contexts = self.contexts();
         for harmony in &mut self.harmonies[..contexts] {
             harmony.solve(now, &self.shapes);
@@ -146,9 +151,8 @@ impl Engine {
         } in waiting.drain(..)
         {
             let part = self.parts.get(id.index()).map(|part| part.plan);
-            let sounds =
-                part.is_some_and(|part| self.start(now, id, &part, &press, Some(followed)));
-            if !sounds {
+            let sounds = part.is_some_and(|part| self.start(now, id, &part, &press, followed));
+            if let Some(followed) = followed.filter(|_| !sounds) {
                 let harmony = &mut self.harmonies[followed.harmony as usize];
                 harmony.release(now, followed.key, followed.counted, false);
                 self.chord_at = Some(now);
@@ -185,6 +189,7 @@ impl Engine {
         for harmony in &mut self.harmonies {
             harmony.begin(self.playing.method);
         }
+        self.begin_names();
         for voice in self.voices.iter_mut() {
             voice.followed = None;
         }

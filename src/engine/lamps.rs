@@ -127,13 +127,7 @@ impl Engine {
             Command::Transpose(keys) => {
                 self.transpose_keys() == keys.unwrap_or(song.transpose_keys)
             }
-            Command::BlackKey(name) => {
-                let key = name.pitch_class() as usize;
-                let names = song.by_hand.black_keys[key];
-                let first = names.is_some_and(|names| names.first == name);
-                let second = self.second_names()[key];
-                second == Some(name) || first && second.is_none()
-            }
+            Command::BlackKey(name) => self.black_keys()[name.pitch_class() as usize] == Some(name),
             Command::Tonic { to, .. } => self
                 .tonic_in_force()
                 .0

@@ -9,7 +9,7 @@ use super::traffic::{Command, InflectTo, Inflected, Nudge, Place, RootTo, TonicB
 use crate::intonation::{Method, Sevenths};
 use crate::limits::{INFLECT_MAX_CENTS, KEYS, NUDGE_MAX_CENTS};
 use crate::pitch::{Interval, Pitch};
-use crate::tuning::{Key, Scale, Tonic, Tuning};
+use crate::tuning::{Key, Letter, Scale, Tonic, Tuning};
 
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub(super) struct Lasting {
@@ -30,8 +30,11 @@ pub(super) struct Lasting {
     /// Keys that go alone.
     pub alone: [Option<Place>; KEYS],
     pub trims_alone: [Interval; KEYS],
-    /// Pitch classes whose black key is its second name, one bit each.
+    /// Pitch classes whose black key was told its name, one bit each, and those that were told their second.
+    pub named: u16,
     pub second_names: u16,
+    /// Those whose second name the harmony has chosen; what was told goes before it.
+    pub by_chord: u16,
     /// Pitch classes whose place was told since the last rest, so that the line does not choose it; one bit each.
     pub told: u16,
     /// Where the line has put keys, by pitch class.
@@ -53,7 +56,9 @@ impl Lasting {
             trims: [Interval::ZERO; 12],
             alone: [None; KEYS],
             trims_alone: [Interval::ZERO; KEYS],
+            named: 0,
             second_names: 0,
+            by_chord: 0,
             told: 0,
             by_line: [None; 12],
         }
@@ -102,6 +107,7 @@ impl Lasting {
                     Some(names) if names.second == name => self.second_names |= bit,
                     _ => return false,
                 }
+                self.named |= bit;
             }
             Command::Tonic { to, by } => {
                 return self.move_tonic(Scale::tonic_key(to), by, playing);
@@ -303,8 +309,24 @@ impl Lasting {
                 plain: self.plain,
                 told: self.told,
                 by_line: self.by_line,
+                by_chord: self.by_chord,
                 ..begun
             }
+    }
+
+    /// What a black key was told to be, if that is not what it would be without.
+    pub fn told_name(&self, pitch_class: usize, song: &ByHand) -> Option<Letter> {
+        let names = song.black_keys[pitch_class]?;
+        let has = |bits: u16| bits >> pitch_class & 1 == 1;
+        match has(self.second_names) {
+            true => Some(names.second),
+            false => (has(self.named) && song.by_chord.is_some()).then_some(names.first),
+        }
+    }
+
+    /// Whether a black key is the second of its two names.
+    pub fn is_second(&self, pitch_class: usize) -> bool {
+        (self.second_names | self.by_chord & !self.named) >> pitch_class & 1 == 1
     }
 
     /// The key that places are counted from.
@@ -345,7 +367,7 @@ impl Playing {
         };
         let at_home = || {
             let names = self.by_hand.black_keys[pitch_class];
-            let second = names.filter(|_| told.second_names >> pitch_class & 1 == 1);
+            let second = names.filter(|_| told.is_second(pitch_class));
             let apart = second.map_or(Interval::ZERO, |names| names.apart);
             Some(self.at_rest(told, key)? + apart)
         };

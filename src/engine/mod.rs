@@ -8,6 +8,7 @@
 
 mod armed;
 mod beforehand;
+mod by_chord;
 mod by_hand;
 mod channel;
 mod choose;
@@ -53,6 +54,7 @@ use crate::pitch::{Interval, Pitch};
 use crate::time::Time;
 use crate::tuning::Tuning;
 use armed::Armed;
+use by_chord::ByChord;
 use by_hand::ByHand;
 use cues::Presses;
 use following::{HARMONIES, Waiting};
@@ -104,6 +106,7 @@ pub struct Engine {
     shapes: Shapes,
     /// The stage's own first, then one for each part.
     harmonies: Vec<Harmony>,
+    by_chord: ByChord,
     /// Presses of this instant that wait for their chord.
     waiting: Vec<Waiting>,
     /// Since when something waits for the harmony to be solved.
@@ -196,6 +199,7 @@ impl Engine {
             lamps: Lamps::new(),
             shapes: Shapes::new(),
             harmonies: harmonies(plan.set[0].method),
+            by_chord: ByChord::new(),
             waiting: Vec::with_capacity(WAITING_PRESSES_MAX),
             chord_at: None,
             strikes: 0,
@@ -311,7 +315,11 @@ impl Engine {
             waits_for_key: self.next_key.is_some(),
             places: self.in_force.shown(&self.playing.by_hand),
             alone: self.in_force.shown_alone(),
-            second_names: self.second_names(),
+            black_keys: self.black_keys(),
+            by_chord: self.playing.by_hand.by_chord.is_some(),
+            told_names: std::array::from_fn(|key| {
+                self.in_force.told_name(key, &self.playing.by_hand)
+            }),
             voices: self.voices.len() as u16,
             counters: self.out.counters,
             stopped: self.stopping && synths.all(|synth| synth.left || !synth.up),

@@ -108,11 +108,16 @@ impl Engine {
         (letter(tonic.key), from_home.unwrap_or_default())
     }
 
-    /// By pitch class: black keys that are the second of their two names.
-    pub(super) fn second_names(&self) -> [Option<Letter>; 12] {
-        let second = |key: usize| self.in_force.second_names >> key & 1 == 1;
+    /// By pitch class: what black keys with two names are now.
+    pub(super) fn black_keys(&self) -> [Option<Letter>; 12] {
         let names = &self.playing.by_hand.black_keys;
-        std::array::from_fn(|key| names[key].filter(|_| second(key)).map(|names| names.second))
+        std::array::from_fn(|key| {
+            let names = names[key]?;
+            Some(match self.in_force.is_second(key) {
+                true => names.second,
+                false => names.first,
+            })
+        })
     }
 
     pub(super) fn end_wait(&mut self, ends: impl Fn(Hand, Gesture, bool) -> bool) {

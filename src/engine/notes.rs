@@ -312,6 +312,7 @@ impl Engine {
         let voice = self.voice(press, part.to, number, want.number);
         self.voices.add(Voice {
             part: want.part,
+            tuned: self.moved_key(part, press.key).filter(|_| part.tune),
             followed,
             finger: want.finger.hand.is_some(),
             pressure: want.finger.pressure,
@@ -335,6 +336,7 @@ impl Engine {
             down: true,
             finger: false,
             latched: false,
+            tuned: None,
             followed: None,
             drum: false,
         }
@@ -429,6 +431,9 @@ impl Engine {
         channel.damper |= damper;
         channel.sostenuto |= sostenuto;
         self.leave_harmony(now, voice, follows_on);
+        if let (Some((part, _)), Some(key), true) = (owner, voice.tuned, damper || sostenuto) {
+            self.by_chord.rings_on(part.index(), key);
+        }
         if voice.pressure > 0
             && let Some((id, part)) = owner
         {

@@ -22,7 +22,7 @@ pub struct Told {
     trims: [Interval; 12],
     alone: [Option<Place>; KEYS],
     trims_alone: [Interval; KEYS],
-    second_names: [Option<Letter>; 12],
+    black_keys: [Option<Letter>; 12],
 }
 
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -43,7 +43,6 @@ impl Engine {
             let there = song.turning.as_ref()?.absolute(Scale::tonic_key(name))?;
             (there == tonic).then_some(ToldTonic::Named(name))
         };
-        let second = |key: usize| song.black_keys[key].filter(|_| now.second_names >> key & 1 == 1);
         Told {
             nudge: now.nudge,
             transposed: now.transposed,
@@ -64,7 +63,7 @@ impl Engine {
                 Some(now.sounded((key % 12) as u8, now.alone[key]?, song))
             }),
             trims_alone: now.trims_alone,
-            second_names: std::array::from_fn(|key| second(key).map(|names| names.second)),
+            black_keys: std::array::from_fn(|key| now.told_name(key, song)),
         }
     }
 }
@@ -86,9 +85,9 @@ impl Told {
             .filter(|(_, trim)| *trim != Interval::ZERO)
     }
 
-    /// Black keys that are the second of their two names.
-    pub fn second_names(&self) -> impl Iterator<Item = Letter> {
-        self.second_names.into_iter().flatten()
+    /// Black keys that were told their name. (What the harmony chose is none of it.)
+    pub fn black_keys(&self) -> impl Iterator<Item = Letter> {
+        self.black_keys.into_iter().flatten()
     }
 
     fn inflected<T: Copy>(

@@ -298,8 +298,12 @@ pub struct Report {
     pub places: [(Place, Interval); 12],
     /// Pitch classes some of whose keys go alone, one bit each.
     pub alone: u16,
-    /// By pitch class: black keys that are the second of their two names.
-    pub second_names: [Option<Letter>; 12],
+    /// By pitch class: what black keys with two names are now.
+    pub black_keys: [Option<Letter>; 12],
+    /// The harmony chooses between their names, but for those that were told theirs.
+    pub by_chord: bool,
+    /// By pitch class: what black keys were told to be, if it is not what they would be without.
+    pub told_names: [Option<Letter>; 12],
     /// The root is held by hand.
     pub root_held: bool,
     /// Dominant sevenths are so by hand.

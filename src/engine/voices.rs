@@ -27,6 +27,8 @@ pub(super) struct Voice {
     pub finger: bool,
     /// Latched by the sostenuto pedal.
     pub latched: bool,
+    /// The key as the song's tuning sees it; `None` if it is not tuned, or is left from another song.
+    pub tuned: Option<Key>,
     /// What it is to the harmony, if it follows it.
     pub followed: Option<Followed>,
     /// Passed through untouched on a drum channel.

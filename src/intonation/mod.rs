@@ -18,6 +18,7 @@ mod place;
 pub mod root;
 mod settings;
 mod shapes;
+pub mod spelling;
 
 pub use chord::Chord;
 pub use harmony::{Harmony, Sevenths, Standing};

@@ -2,8 +2,9 @@
 
 use super::complaint::Complaints;
 use super::node::{At, Node};
+use super::tunings::TuningText;
 use crate::engine::plan::TwoNames;
-use crate::pitch::Log;
+use crate::pitch::{Interval, Log};
 use crate::tuning::{Letter, Scale};
 
 /// Reads the list, and gives each key its first name and what goes with it. Back come those with two names, by pitch class.
@@ -51,6 +52,37 @@ pub fn read(
         });
     }
     two_names
+}
+
+/// `by_chord: yes` needs a key that can be two pitches.
+pub fn check_choice(
+    at: &At<'_>,
+    two_names: &[Option<TwoNames>; 12],
+    tuning: &TuningText,
+    complaints: &mut Complaints,
+) {
+    let mut named = two_names.iter().flatten();
+    if named.any(|names| names.apart != Interval::ZERO) {
+        return;
+    }
+    let Some(names) = two_names.iter().flatten().next() else {
+        complaints.add(
+            &at.trail,
+            "no black key has two names for the harmony to choose from",
+            "give each key that may be chosen both of them, as in `black_keys: [G# or Ab, Eb or D#]`, or leave \
+             `by_chord` out",
+        );
+        return;
+    };
+    complaints.add(
+        &at.trail,
+        format!(
+            "there is nothing to choose: {} and {} are one pitch in {}",
+            names.first, names.second, tuning.name
+        ),
+        "take a tuning by fifths that are all alike, such as quarter-comma-meantone, or one whose chain has both names, \
+         or leave `by_chord` out",
+    );
 }
 
 /// Over a scale from the tonic the list only says what the keys are called.

@@ -215,6 +215,7 @@ fn table(
     song.begin_with = begin_with;
     song.by_line = by_line;
     song.black_keys = placed.two_names;
+    song.by_chord = placed.by_chord.then_some(placed.names);
     if let Scale::FromTonic(scale) = &placed.scale {
         song.turning = Some(Turning::of(scale, &placed.placement));
     }

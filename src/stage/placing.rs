@@ -101,6 +101,8 @@ pub struct Placed {
     pub names: [Letter; 12],
     /// By pitch class.
     pub two_names: [Option<TwoNames>; 12],
+    /// The harmony chooses between two names.
+    pub by_chord: bool,
 }
 
 /// Takes `pitch`, `tonic`, `turned_to`, `black_keys` and `by_chord`, and puts the tuning there.
@@ -118,12 +120,10 @@ pub fn read(
     let tonic_at = fields.take("tonic");
     let turned_at = fields.take("turned_to");
     let black_at = fields.take("black_keys");
-    let by_chord = fields
-        .take("by_chord")
-        .and_then(|at| at.flag(&mut desk.found.complaints));
-    if by_chord == Some(true) {
-        desk.found.not_played("`by_chord: yes`");
-    }
+    let chord_at = fields.take("by_chord");
+    let by_chord = (chord_at.as_ref())
+        .and_then(|at| at.flag(&mut desk.found.complaints))
+        .unwrap_or(false);
     let described = described?;
     let mut scale = described.scale.clone();
     let complaints = &mut desk.found.complaints;
@@ -133,6 +133,9 @@ pub fn read(
         Some(at) => black_keys::read(at, &mut scale, turned_to, &mut desk.found.complaints),
         None => [None; 12],
     };
+    if let Some(at) = chord_at.filter(|_| by_chord) {
+        black_keys::check_choice(&at, &two_names, described, &mut desk.found.complaints);
+    }
     // Not written at all is one thing (the tuning may bring its own), written wrong is another.
     let reference = match reference {
         Some(written) => Some(written?),
@@ -159,6 +162,7 @@ pub fn read(
         tuning,
         names,
         two_names,
+        by_chord,
     })
 }
 

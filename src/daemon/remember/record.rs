@@ -76,7 +76,7 @@ impl State {
             told.trims()
                 .map(|(key, by)| format!("inflect {key} {}", in_cents(by))),
         );
-        by_hand.extend(told.second_names().map(|name| format!("black-key {name}")));
+        by_hand.extend(told.black_keys().map(|name| format!("black-key {name}")));
         by_hand.extend(told.sevenths.map(|which| format!("sevenths {which}")));
         State {
             place,

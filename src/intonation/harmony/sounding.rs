@@ -31,6 +31,18 @@ impl Harmony {
         self.note_key(key.number());
     }
 
+    /// A key that has just been pressed has taken another name, and stands elsewhere at rest; where it stood under the
+    /// name before is no memory of it.
+    pub fn rename(&mut self, now: Time, key: Key, rest: Interval) {
+        let place = &mut self.places[key.pitch_class() as usize];
+        if place.since == now && place.rest != rest.microcents() {
+            place.rest = rest.microcents();
+            place.now = place.rest;
+            place.let_go = None;
+            self.changed = true;
+        }
+    }
+
     /// A note of a key ends; `rings`: a pedal keeps it sounding.
     pub fn release(&mut self, now: Time, key: Key, counted: bool, rings: bool) {
         let state = &mut self.keys[key.number() as usize];
