@@ -71,18 +71,19 @@ pub fn heap_calls_so_far() -> u64 {
 const LONG: Span = Span::from_millis(100);
 const INPUTS: usize = 100_000;
 
-/// A song with everything that can be changed by hand.
-fn by_hand() -> SongPlan {
+/// A song with everything that can be changed by hand, and one with black keys that the harmony names.
+fn by_hand() -> Vec<SongPlan> {
     let text = "tunings: {just: {like: five-limit-scale, also: {E: {low: 350 c}}, turns: {lower: {E: low}}}}\n\
-                set: [{song: A, tuning: just, by_line: {E: {up: low, down: home}}, black_keys: [G# or Ab]}]\n";
+                set: [{song: A, tuning: just, by_line: {E: {up: low, down: home}}, black_keys: [G# or Ab]}, \
+                {song: B, tuning: quarter-comma-meantone, by_chord: yes, black_keys: [G# or Ab, Eb or D#, Bb or A#]}]\n";
     let stage = Stage::parse(Path::new("by-hand.yaml"), text).expect("good");
-    stage.plan().set.remove(0)
+    stage.plan().set
 }
 
 /// Two synths, one of each dialect, a layer on both, cues, lamps, four songs.
 fn evening() -> Plan {
-    let songs = vec![
-        by_hand(),
+    let mut songs = by_hand();
+    songs.extend([
         plans::song("equal", plans::equal()),
         plans::song(
             "crooked",
@@ -92,7 +93,7 @@ fn evening() -> Plan {
             "gaps",
             plans::tuning(|key| (key % 3 > 0).then_some(key as f64 * 100.0 + 31.0)),
         ),
-    ];
+    ]);
     let mut plan = plans::plan(
         plans::synth("grand", Dialect::Mpe { manager: 0 }, 48),
         songs,

@@ -2,6 +2,8 @@
 
 /// Black keys that stand for two notes.
 mod black_keys;
+/// Black keys named by the harmony.
+mod by_chord;
 /// Presses, long and short; what waits until all hands are off.
 mod cues;
 /// Two runs of one script; a stream in portions.

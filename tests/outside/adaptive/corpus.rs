@@ -28,21 +28,33 @@ impl Take {
 
 #[derive(Debug, Deserialize)]
 pub struct Piece {
+    pub name: String,
     /// By name, as music21 finds it.
     pub tonic: String,
+    pub notes: Vec<Note>,
+}
+
+/// A piece as it is printed, its key not looked for.
+#[derive(Debug, Deserialize)]
+pub struct Printed {
+    /// Among the sorted file names.
+    pub place: usize,
+    pub name: String,
     pub notes: Vec<Note>,
 }
 
 #[derive(Debug, Deserialize)]
 pub struct Note {
     pub key: u8,
-    on: Fraction,
-    off: Fraction,
+    /// `Bb`.
+    pub name: String,
+    pub on: Fraction,
+    pub off: Fraction,
     performed_s: [f64; 2],
 }
 
 /// Whole quarters over how many.
-#[derive(Clone, Copy, Debug, Deserialize)]
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Deserialize)]
 pub struct Fraction(i64, i64);
 
 impl Fraction {
@@ -76,25 +88,37 @@ pub enum Manner {
     Performed,
 }
 
+impl Note {
+    pub fn touch(&self, manner: Manner) -> Touch {
+        let [on_s, off_s] = match manner {
+            Manner::Together => [self.on, self.off].map(|at| at.quarters() * QUARTER_S),
+            Manner::Performed => self.performed_s,
+        };
+        Touch {
+            on_s,
+            off_s,
+            key: self.key,
+        }
+    }
+}
+
+pub fn music(notes: &[Note], manner: Manner) -> Music {
+    Music::without_pedal(notes.iter().map(|note| note.touch(manner)).collect())
+}
+
 impl Piece {
     pub fn music(&self, manner: Manner) -> Music {
-        let touch = |note: &Note| {
-            let [on_s, off_s] = match manner {
-                Manner::Together => [note.on, note.off].map(|at| at.quarters() * QUARTER_S),
-                Manner::Performed => note.performed_s,
-            };
-            Touch {
-                on_s,
-                off_s,
-                key: note.key,
-            }
-        };
-        Music::without_pedal(self.notes.iter().map(touch).collect())
+        music(&self.notes, manner)
     }
 }
 
 pub fn chorales(take: Take) -> Vec<Piece> {
     read(&["chorales", take.words()])
+}
+
+/// All chorales in four voices.
+pub fn printed() -> Vec<Printed> {
+    read(&["printed"])
 }
 
 pub fn analyses() -> Vec<Analysis> {

@@ -2,6 +2,7 @@
 
   export.py check              are the packages of requirements.txt here, in just these versions?
   export.py chorales TAKE OUT  pieces as JSON; TAKE is START:STEP:COUNT over the sorted file names
+  export.py printed OUT        all of them, as they are printed and without their keys, by a reader that takes seconds
   export.py analyses OUT       the chorales with a hand-made harmonic analysis, slice by slice, as JSON
 
 A piece is taken if it has parts named Soprano, Alto, Tenor and Bass, and then only those. Ties are merged, grace notes
@@ -15,6 +16,9 @@ import sys
 from concurrent.futures import ProcessPoolExecutor
 from fractions import Fraction
 from importlib.metadata import PackageNotFoundError, version
+from importlib.util import find_spec
+from xml.etree import ElementTree
+from zipfile import ZipFile
 
 VOICES = ("Soprano", "Alto", "Tenor", "Bass")
 QUARTER_S = 0.75
@@ -35,9 +39,7 @@ def check():
 
 
 def folder():
-    import music21
-
-    return os.path.join(os.path.dirname(music21.__file__), "corpus", "bach")
+    return os.path.join(os.path.dirname(find_spec("music21").origin), "corpus", "bach")
 
 
 def names():
@@ -80,11 +82,15 @@ def read(name):
         "name": name.removesuffix(".mxl"),
         "tonic": key.tonic.name.replace("-", "b"),
         "mode": key.mode,
-        "notes": [
-            {"voice": voice, "key": midi, "name": spelling, "on": pair(on), "off": pair(off)}
-            for on, voice, midi, spelling, off in notes
-        ],
+        "notes": listed(notes),
     }
+
+
+def listed(notes):
+    return [
+        {"voice": voice, "key": midi, "name": spelling, "on": pair(on), "off": pair(off)}
+        for on, voice, midi, spelling, off in notes
+    ]
 
 
 def pair(fraction):
@@ -110,6 +116,70 @@ def chorales(take, out):
     for place, piece in enumerate(pieces):
         perform(place, piece)
     write(out, pieces)
+
+
+def printed(out):
+    pieces = []
+    with ProcessPoolExecutor() as pool:
+        for place, (name, notes) in enumerate(zip(names(), pool.map(read_printed, names(), chunksize=8))):
+            if notes is not None:
+                piece = {"place": place, "name": name.removesuffix(".mxl"), "notes": listed(notes)}
+                perform(place, piece)
+                pieces.append(piece)
+    write(out, pieces)
+
+
+def read_printed(name):
+    """The notes of `load`, straight from the MusicXML; None if it is not in the four voices."""
+    with ZipFile(os.path.join(folder(), name)) as packed:
+        inside = next(file for file in packed.namelist() if re.match(r"(?!META-INF).*xml$", file))
+        score = ElementTree.fromstring(packed.read(inside))
+    ids = [next((part.get("id") for part in score.iter("score-part") if part.findtext("part-name") == voice), None)
+           for voice in VOICES]
+    if None in ids:
+        return None
+    parts = {part.get("id"): part for part in score.findall("part")}
+    notes = [(on, voice, midi, spelling, off)
+             for voice, part in enumerate(ids) for on, midi, spelling, off in read_part(parts[part])]
+    notes.sort(key=lambda note: note[:3])
+    return notes
+
+
+def read_part(part):
+    notes, tied = [], {}
+    begin, divisions = Fraction(0), 1
+    for measure in part.findall("measure"):
+        at = end = begin
+        for element in measure:
+            if element.tag == "attributes":
+                divisions = int(element.findtext("divisions") or divisions)
+            if element.tag not in ("note", "backup", "forward") or element.find("grace") is not None:
+                continue
+            lasts = Fraction(int(element.findtext("duration")), divisions)
+            is_chord = element.find("chord") is not None
+            on = at - lasts if is_chord else at
+            if element.find("pitch") is not None:
+                midi, spelling = read_pitch(element.find("pitch"))
+                ties = {tie.get("type") for tie in element.findall("tie")}
+                note = tied.pop((midi, spelling), None)
+                if note is None or "stop" not in ties or note[3] != on:
+                    note = [on, midi, spelling, on]
+                    notes.append(note)
+                note[3] = on + lasts
+                if "start" in ties:
+                    tied[midi, spelling] = note
+            if not is_chord:
+                at += -lasts if element.tag == "backup" else lasts
+            end = max(end, at)
+        begin = end
+    return notes
+
+
+def read_pitch(pitch):
+    step, alter = pitch.findtext("step"), int(float(pitch.findtext("alter") or 0))
+    natural = {"C": 0, "D": 2, "E": 4, "F": 5, "G": 7, "A": 9, "B": 11}[step]
+    midi = 12 * (int(pitch.findtext("octave")) + 1) + natural + alter
+    return midi, step + "#" * alter + "b" * -alter
 
 
 def analyses(out):
@@ -183,4 +253,4 @@ def write(out, what):
 
 
 if __name__ == "__main__":
-    {"check": check, "chorales": chorales, "analyses": analyses}[sys.argv[1]](*sys.argv[2:])
+    {"check": check, "chorales": chorales, "printed": printed, "analyses": analyses}[sys.argv[1]](*sys.argv[2:])

@@ -7,6 +7,8 @@
 //! TAKE=dev INTONATION="{method: chord-root, hold_limit_cents: 4}" cargo test --test all table_of_chorales -- --nocapture
 //! ```
 
+/// Black keys named by the harmony, against the printed names.
+mod by_chord;
 /// The table: chorales in fixed tunings and by the method, beside what others make of them.
 mod chorales;
 /// Piano and jazz of our own.
