@@ -30,9 +30,10 @@ pub(super) struct Lasting {
     /// Keys that go alone.
     pub alone: [Option<Place>; KEYS],
     pub trims_alone: [Interval; KEYS],
-    /// Pitch classes whose black key was told its name, one bit each, and those that were told their second.
-    pub named: u16,
+    /// Pitch classes whose black key was told to be its second name, one bit each.
     pub second_names: u16,
+    /// Those that were told a name where the harmony would choose one.
+    pub named: u16,
     /// Those whose second name the harmony has chosen; what was told goes before it.
     pub by_chord: u16,
     /// Pitch classes whose place was told since the last rest, so that the line does not choose it; one bit each.
@@ -56,8 +57,8 @@ impl Lasting {
             trims: [Interval::ZERO; 12],
             alone: [None; KEYS],
             trims_alone: [Interval::ZERO; KEYS],
-            named: 0,
             second_names: 0,
+            named: 0,
             by_chord: 0,
             told: 0,
             by_line: [None; 12],
@@ -107,7 +108,9 @@ impl Lasting {
                     Some(names) if names.second == name => self.second_names |= bit,
                     _ => return false,
                 }
-                self.named |= bit;
+                if playing.by_hand.by_chord.is_some() {
+                    self.named |= bit;
+                }
             }
             Command::Tonic { to, by } => {
                 return self.move_tonic(Scale::tonic_key(to), by, playing);
@@ -320,7 +323,7 @@ impl Lasting {
         let has = |bits: u16| bits >> pitch_class & 1 == 1;
         match has(self.second_names) {
             true => Some(names.second),
-            false => (has(self.named) && song.by_chord.is_some()).then_some(names.first),
+            false => has(self.named).then_some(names.first),
         }
     }
 
