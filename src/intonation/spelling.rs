@@ -2,7 +2,7 @@
 //!
 //! Names are places on the line of fifths (C = 0, G = 1, F = -1). What sounds and has sounded lately has a middle there,
 //! and a key takes its sharp where that middle lies towards the sharps, its flat where it lies towards the flats. A major
-//! third that would sound draws it besides. The weights were found on chorales that the reported figures leave out.
+//! third that it would make draws it besides. The weights were found on chorales that the reported figures leave out.
 
 use crate::time::{Span, Time};
 use crate::tuning::Letter;
@@ -14,11 +14,12 @@ const FADE: Span = Span::from_millis(3_000);
 const FORGOTTEN: i64 = STROKE / 100;
 /// What is struck now weighs more, what is held weighs besides.
 const NOW: i64 = STROKE * 3;
-const HELD: i64 = STROKE;
+const HELD: i64 = STROKE / 2;
 /// Music goes to a sharp it needs as a leading note more often than it borrows a flat, so the line between sharp and
 /// flat lies half a fifth from the middle of the two.
 const LEANING_HALVES: i64 = 1;
-/// A pure major third to a note that sounds draws a key so many fifths towards the name that makes it.
+/// A pure major third to a note of the same instant draws a key so many fifths towards the name that makes it. (What is
+/// still held may be the chord before, about to be let go.)
 const THIRD: i64 = 1;
 const THIRD_PLACES: u8 = 4;
 /// A key keeps its name within a quarter of a fifth to both sides of that line.
@@ -95,18 +96,17 @@ impl Spelling {
         for (class, weight) in weights.iter().enumerate() {
             middle.add(*weight, called[class].now);
         }
-        let (mut open, mut sounding) = (0u16, 0u16);
+        let (mut open, mut known) = (0u16, 0u16);
         for (class, count) in strokes.struck.iter().enumerate() {
             match called[class].choice {
                 Some(_) if *count > 0 => open |= 1 << class,
                 _ => middle.add(NOW * i64::from(*count), called[class].now),
             }
-            let sounds = *count > 0 || strokes.held[class] > 0;
-            sounding |= u16::from(sounds && open >> class & 1 == 0) << class;
+            known |= u16::from(*count > 0 && open >> class & 1 == 0) << class;
         }
-        while let Some((class, lean)) = surest(open, sounding, called, &middle) {
+        while let Some((class, lean)) = surest(open, known, called, &middle) {
             open &= !(1 << class);
-            sounding |= 1 << class;
+            known |= 1 << class;
             let name = called[class].towards(lean, middle.weight);
             middle.add(-weights[class], called[class].now);
             middle.add(
@@ -158,16 +158,11 @@ impl Middle {
 }
 
 /// Of the keys still open the one about which there is least doubt, and how far it leans to its sharp, as [`Middle::lean`].
-fn surest(
-    open: u16,
-    sounding: u16,
-    called: &[Called; 12],
-    middle: &Middle,
-) -> Option<(usize, i64)> {
+fn surest(open: u16, known: u16, called: &[Called; 12], middle: &Middle) -> Option<(usize, i64)> {
     let thirds = |name: Letter| {
-        let sounds = (0..12).filter(|class| sounding >> class & 1 == 1);
+        let struck = (0..12).filter(|class| known >> class & 1 == 1);
         let far = |class: &usize| called[*class].now.place().abs_diff(name.place());
-        sounds.filter(|class| far(class) == THIRD_PLACES).count() as i64
+        struck.filter(|class| far(class) == THIRD_PLACES).count() as i64
     };
     let lean = |class: usize| {
         let (first, second) = called[class].choice?;

@@ -1,3 +1,5 @@
+//! Chords and single keys, and what they are called.
+
 use super::*;
 
 const BLACK: [(usize, &str, &str); 5] = [

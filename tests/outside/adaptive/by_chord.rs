@@ -14,7 +14,7 @@ const FOLLOWING: &str = "tuning: quarter-comma-meantone, by_chord: yes, intonati
 /// The weights were found on these places modulo ten, and on them alone.
 const TUNED_ON: [usize; 2] = [5, 7];
 
-/// A pure fifth is four of these less two octaves in 5/1, so a fifth is the fourth root of 5.
+/// Four of them are 5/1, a pure third and two octaves.
 fn meantone_fifth_cents() -> f64 {
     300.0 * 5f64.log2()
 }
@@ -85,11 +85,6 @@ fn count(notes: &[Note], hearing: &Hearing, manner: Manner, slack_cents: f64) ->
                 printed - 12
             } else {
                 printed + 12
-            };
-            let other = if (printed - 2).abs() <= 8 {
-                other
-            } else {
-                printed
             };
             assert!(
                 off(printed).min(off(other)) <= slack_cents,
@@ -192,13 +187,14 @@ fn black_keys_are_named_as_they_are_printed() {
         print_row("by chord", manner, &row);
         let least_percent = match manner {
             Manner::Together => 99.6,
-            Manner::Performed => 99.5,
+            Manner::Performed => 99.4,
         };
         for (ours, theirs) in [(row.all, fixed.all), (row.judged, fixed.judged)] {
             assert!(ours.right_percent() >= least_percent);
-            // No name of a black key can help against an E# on the F key, so those are left out on both sides.
-            let wolves = |count: Count| count.wolves - count.white_wolves;
-            assert!(10 * wolves(ours) <= wolves(theirs));
+            assert!(manner == Manner::Performed || 10 * ours.wolves <= theirs.wolves);
+            // No name of a black key helps against an E# on the F key. Of those it can help against:
+            let avoidable = |count: Count| count.wolves - count.white_wolves;
+            assert!(20 * avoidable(ours) <= avoidable(theirs));
         }
     }
     // Where chords are followed a note may stand up to the leash, 12 cents, from its place; a few more between the two.
