@@ -66,6 +66,12 @@ pub struct Spelling {
     at: Time,
 }
 
+impl Default for Spelling {
+    fn default() -> Spelling {
+        Spelling::new()
+    }
+}
+
 /// How often each pitch class is struck now, and held from before.
 #[derive(Clone, Copy, Debug, Default)]
 pub struct Strokes {
