@@ -4,7 +4,7 @@
 //! pedal, keeps its name, and so does one that was told its name.
 
 use super::Engine;
-use super::plan::{Follow, PartPlan};
+use super::plan::{Follow, PartId, PartPlan};
 use crate::intonation::spelling::{Called, Spelling, Strokes};
 use crate::limits::PARTS_MAX;
 use crate::pitch::Pitch;
@@ -25,8 +25,11 @@ impl ByChord {
         }
     }
 
-    pub fn rings_on(&mut self, part: usize, key: Key) {
-        self.ringing[part] |= 1 << key.pitch_class();
+    /// A pedal of a part keeps a key ringing, if there are such.
+    pub fn rings_on(&mut self, part: Option<PartId>, key: Option<Key>) {
+        if let (Some(part), Some(key)) = (part, key) {
+            self.ringing[part.index()] |= 1 << key.pitch_class();
+        }
     }
 
     /// A part's pedals are up.

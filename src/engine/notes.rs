@@ -246,10 +246,8 @@ impl Engine {
             Cost::Tail => self.out.counters.tails_cut += 1,
             Cost::Steal => {
                 self.out.counters.stolen += 1;
-                while let Some(voice) = self
-                    .voices
-                    .take(|v| v.synth == id && v.channel == choice.channel)
-                {
+                let there = |v: &Voice| v.synth == id && v.channel == choice.channel;
+                while let Some(voice) = self.voices.take(there) {
                     self.end(now, &voice, 64, None);
                 }
                 if !self.synths[id.index()].rig.keeps_pitch() {
@@ -431,9 +429,8 @@ impl Engine {
         channel.damper |= damper;
         channel.sostenuto |= sostenuto;
         self.leave_harmony(now, voice, follows_on);
-        if let (Some((part, _)), Some(key), true) = (owner, voice.tuned, damper || sostenuto) {
-            self.by_chord.rings_on(part.index(), key);
-        }
+        let tuned = voice.tuned.filter(|_| damper || sostenuto);
+        self.by_chord.rings_on(owner.map(|(part, _)| part), tuned);
         if voice.pressure > 0
             && let Some((id, part)) = owner
         {

