@@ -222,10 +222,11 @@ impl Engine {
     /// Gives a channel the bend it should have: tuning, finger, and the wheel where it is played there. Tells whether
     /// it was sent.
     pub(super) fn bend_channel(&mut self, id: SynthId, number: u8, weight: Weight) -> bool {
-        let wheel = match self.part_of(id, number) {
-            Some((part_id, part)) if on_members(&self.synths[id.index()].rig, &part) => {
-                self.parts[part_id.index()].wheel
-            }
+        let owner = self
+            .owner_of(id, number)
+            .map(|owner| &self.parts[owner.index()]);
+        let wheel = match owner {
+            Some(part) if on_members(&self.synths[id.index()].rig, &part.plan) => part.wheel,
             _ => Interval::ZERO,
         };
         let synth = &mut self.synths[id.index()];

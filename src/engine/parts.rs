@@ -30,9 +30,14 @@ impl Engine {
 
     /// The part to which a channel belongs.
     pub(super) fn part_of(&self, id: SynthId, number: u8) -> Option<(PartId, PartPlan)> {
-        let played = self.synths[id.index()].channels[number as usize].part;
-        let owner = played.or_else(|| owner_of(&self.parts[..self.playing_parts], id, number))?;
+        let owner = self.owner_of(id, number)?;
         Some((owner, self.parts[owner.index()].plan))
+    }
+
+    /// The same by its place among the parts.
+    pub(super) fn owner_of(&self, id: SynthId, number: u8) -> Option<PartId> {
+        let played = self.synths[id.index()].channels[number as usize].part;
+        played.or_else(|| owner_of(&self.parts[..self.playing_parts], id, number))
     }
 
     /// The channels that belong to a part.

@@ -128,6 +128,9 @@ pub struct Harmony {
     event_at: Time,
     returned_at: Time,
     returned: i64,
+    /// How long a step of a glide and one home take; `None` where there are none.
+    glide_step: Option<Span>,
+    return_step: Option<Span>,
     /// When something moves next.
     due: Option<Time>,
     /// How far what sounds stands from rest, on average, since it last moved.
@@ -153,6 +156,8 @@ impl Harmony {
             event_at: Time::START,
             returned_at: Time::START,
             returned: 0,
+            glide_step: None,
+            return_step: None,
             due: None,
             drift: 0,
         }
@@ -160,8 +165,11 @@ impl Harmony {
 
     /// Begins anew: what sounds now is no anchor, memory or harmony for what comes.
     pub fn begin(&mut self, method: Method) {
+        let settings = method.settings();
         *self = Harmony {
             method,
+            glide_step: settings.and_then(|s| motion::step_span(s.glide_per_s)),
+            return_step: settings.and_then(|s| motion::step_span(s.return_per_s)),
             ..Harmony::new()
         };
     }

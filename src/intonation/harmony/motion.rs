@@ -39,23 +39,15 @@ impl Harmony {
             return;
         };
         self.go_home(now, &settings);
-        let Some(step) = step_span(settings.glide_per_s) else {
-            self.drift = self.mean_away(|place| place.now);
-            return;
-        };
-        let mut due = self.home_at(&settings);
-        for place in self.places.iter_mut().filter(|place| glides(place)) {
-            if place.stepped.is_none_or(|at| at + step <= now) {
-                place.now += (place.target - place.now).clamp(-STEP, STEP);
-                place.stepped = Some(now);
-            }
-            if glides(place) {
-                let next = place.stepped.unwrap_or(now) + step;
-                due = Some(due.map_or(next, |due| due.min(next)));
+        if let Some(step) = self.glide_step {
+            for place in self.places.iter_mut().filter(|place| glides(place)) {
+                if place.stepped.is_none_or(|at| at + step <= now) {
+                    place.now += (place.target - place.now).clamp(-STEP, STEP);
+                    place.stepped = Some(now);
+                }
             }
         }
-        self.due = due;
-        self.drift = self.mean_away(|place| place.now);
+        self.look_ahead(&settings);
     }
 
     /// When something moves next.
@@ -63,23 +55,45 @@ impl Harmony {
         self.due
     }
 
-    /// When a chord that stands is to take its next step home.
+    /// Works out how the chord stands, and when something moves next.
+    fn look_ahead(&mut self, settings: &Settings) {
+        let (mut away, mut bound, mut keys) = (0, 0, 0);
+        let mut next: Option<Time> = None;
+        for place in &self.places {
+            let counted = place.counted as i64;
+            away += (place.now - place.rest) * counted;
+            bound += (place.target - place.rest) * counted;
+            keys += counted;
+            if let Some(step) = self.glide_step.filter(|_| glides(place)) {
+                let at = place.stepped.unwrap_or(self.event_at) + step;
+                next = Some(next.map_or(at, |next| next.min(at)));
+            }
+        }
+        self.drift = away / keys.max(1);
+        let is_away = bound.abs() >= (DEAD_BAND + 1) * keys.max(1);
+        let home = self.home_at(settings).filter(|_| is_away);
+        self.due = self.glide_step.and(next.into_iter().chain(home).min());
+    }
+
+    /// When a chord that stands away from rest is to take its next step home.
     fn home_at(&self, settings: &Settings) -> Option<Time> {
-        let step = step_span(settings.return_per_s)?;
+        let step = self.return_step?;
         settings.drift_limit?;
         let may = settings
             .hold_limit
             .is_none_or(|limit| self.returned < limit.microcents());
-        let is_away = self.mean_away(|place| place.target).abs() > DEAD_BAND;
-        (may && is_away).then_some((self.event_at + STANDS).max(self.returned_at + step))
+        may.then_some((self.event_at + STANDS).max(self.returned_at + step))
     }
 
     fn go_home(&mut self, now: Time, settings: &Settings) {
         if self.home_at(settings).is_none_or(|at| at > now) {
             return;
         }
-        let step = STEP.min(self.mean_away(|place| place.target).abs());
-        let step = step * -self.mean_away(|place| place.target).signum();
+        let bound = self.mean_away(|place| place.target);
+        if bound.abs() <= DEAD_BAND {
+            return;
+        }
+        let step = -bound.clamp(-STEP, STEP);
         let limit = settings
             .hold_limit
             .map_or(i64::MAX / 4, Interval::microcents);
@@ -98,7 +112,7 @@ fn glides(place: &Place) -> bool {
 }
 
 /// How long a step takes at a speed; `None` where nothing moves.
-fn step_span(per_s: Interval) -> Option<Span> {
+pub(super) fn step_span(per_s: Interval) -> Option<Span> {
     let speed = per_s.microcents();
     (speed > 0).then(|| Span::from_nanos(STEP as u64 * 1_000_000_000 / speed as u64))
 }
