@@ -6,7 +6,7 @@
 use super::lasting::Lasting;
 use super::notes::Press;
 use super::plan::{Follow, PartId, PartPlan, SynthId};
-use super::traffic::{Onset, RootTo, Weight};
+use super::traffic::{RootTo, Weight};
 use super::voices::Voice;
 use super::{Engine, Hand};
 use crate::limits::{KEYS, PARTS_MAX};
@@ -258,29 +258,10 @@ impl Engine {
         channel.offset += by;
         let offset = channel.offset;
         channel.word = Bend::encode(offset, range).0;
-        let sent = channel.word.decode(range);
+        let word = channel.word;
         if self.bend_channel(id, number, weight) {
             self.out.counters.bends += 1;
         }
-        for voice in self.voices.iter() {
-            if voice.synth == id && voice.channel == number {
-                self.out.moved(Onset {
-                    part: voice.part,
-                    keyboard: voice.keyboard,
-                    key: voice.key,
-                    velocity: voice.velocity,
-                    synth: id,
-                    channel: number,
-                    number: voice.number,
-                    target: Pitch::of_key(voice.number) + offset,
-                    sent: Pitch::of_key(voice.number) + sent,
-                    standing: voice.followed.map(|f| self.standing(f)),
-                });
-            }
-        }
-    }
-
-    pub(super) fn standing(&self, followed: Followed) -> crate::intonation::Standing {
-        self.harmonies[followed.harmony as usize].standing()
+        self.record_moved(id, number, offset, word);
     }
 }

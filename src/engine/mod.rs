@@ -32,6 +32,7 @@ mod parameters;
 mod part;
 mod parts;
 pub mod plan;
+mod records;
 mod setup;
 mod songs;
 mod synth;

@@ -9,7 +9,7 @@ use super::following::Followed;
 use super::mono;
 use super::outbox::Bundle;
 use super::plan::{ChannelSet, KeyboardId, PartId, PartPlan, SynthId};
-use super::traffic::{Onset, Weight};
+use super::traffic::Weight;
 use super::voices::Voice;
 use super::{Engine, Hand};
 use crate::midi::{controller, status};
@@ -281,7 +281,6 @@ impl Engine {
         let pressure = self.pressure_for(part, part.to, number, want.part);
         let pressure = pressure.max(want.finger.pressure);
         let synth = &mut self.synths[part.to.index()];
-        let range = synth.rig.bend_range;
         let mut bundle = luggage.bundle(number);
         bend_for(synth, want, number, pressure, &mut bundle, &mut self.out);
         bundle.add(&[status::NOTE_ON | number, want.number, press.velocity]);
@@ -295,27 +294,17 @@ impl Engine {
             channel.stood = self.harmonies[class.harmony as usize].offset(class.class);
         }
         self.out.counters.notes += 1;
-        self.out.onset(Onset {
-            part: want.part,
-            keyboard: self.plays_as(press.hand.keyboard),
-            key: press.key,
-            velocity: press.velocity,
-            synth: part.to,
-            channel: number,
-            number: want.number,
-            target: want.target(),
-            sent: Pitch::of_key(want.number) + want.word.decode(range),
-            standing: followed.map(|f| self.standing(f)),
-        });
         let voice = self.voice(press, part.to, number, want.number);
-        self.voices.add(Voice {
+        let voice = Voice {
             part: want.part,
             tuned: self.moved_key(part, press.key).filter(|_| part.tune),
             followed,
             finger: want.finger.hand.is_some(),
             pressure: want.finger.pressure,
             ..voice
-        });
+        };
+        self.record_onset(&voice, want.offset, want.word);
+        self.voices.add(voice);
     }
 
     /// A voice for a press that has just been started.

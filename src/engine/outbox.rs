@@ -10,6 +10,8 @@ pub(super) struct Outbox {
     items: Vec<Item>,
     taken: usize,
     pub counters: Counters,
+    /// Whether anybody keeps records of notes.
+    pub recorded: bool,
 }
 
 #[derive(Clone, Copy)]
@@ -57,6 +59,7 @@ impl Outbox {
             items: Vec::with_capacity(OUTBOX_ITEMS),
             taken: 0,
             counters: Counters::default(),
+            recorded: false,
         }
     }
 

@@ -198,9 +198,9 @@ pub enum Output<'a> {
         weight: Weight,
         bytes: &'a [u8],
     },
-    /// A note has just been started by the `Send` before; for records and displays, nothing need be done.
+    /// A note has just been started by the `Send` before. Told after `Engine::keep_records` only.
     Onset(Onset),
-    /// A sounding note has been moved by the `Send` before: `target` and `sent` say where to. For records, as `Onset`.
+    /// A sounding note has been moved by the `Send` before: `target` and `sent` say where to. As `Onset`.
     Moved(Onset),
     /// For the desk. Nothing need be done where there is none.
     Ask(Ask),

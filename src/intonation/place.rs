@@ -280,7 +280,11 @@ pub fn attach(class: u8, members: &[Member], at: &[i64], drift: i64, rest: i64) 
     let mut least = i64::MAX;
     for (to, to_at) in to_each.iter().zip(at) {
         let [one, other] = to.sizes;
-        let sizes = if one == other { &to.sizes[..1] } else { &to.sizes };
+        let sizes = if one == other {
+            &to.sizes[..1]
+        } else {
+            &to.sizes
+        };
         for place in sizes.iter().map(|size| to_at + size) {
             let away = (place - rest - drift).abs() * AWAY / 100;
             let mut errors = 0;

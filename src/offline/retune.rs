@@ -74,6 +74,7 @@ pub fn play(plan: Box<Plan>, score: &Score<'_>, song: u16, keyboard: usize) -> R
         moved: Vec::new(),
         open: Vec::new(),
     };
+    player.engine.keep_records();
     player.begin(song, synths.len());
     for together in score.events.chunk_by(|a, b| a.tick == b.tick) {
         let (tick, time) = (together[0].tick, score.time(together[0].tick));

@@ -102,6 +102,7 @@ fn resumed(stage: &Stage, state: &State) -> Engine {
 
 /// What each key about the middle sounds; `None` where it is silent.
 fn sounds(mut engine: Engine) -> Vec<Option<Pitch>> {
+    engine.keep_records();
     let keyboard = KeyboardId::new(0).expect("the first");
     let (synth, link) = (SynthId::new(0).expect("the first"), Link::Up);
     engine.handle_input(Time::START, Input::Synth { synth, link });

@@ -55,10 +55,12 @@ impl Rig {
             let tail = Duration::from_nanos(synth.tail.nanos());
             Receiver::new(kind, tail, RANGE_AT_POWER_ON)
         });
+        let mut engine = Engine::new(Box::new(plan.clone()));
+        engine.keep_records();
         Rig {
             stage: None,
             receivers: receivers.collect(),
-            engine: Engine::new(Box::new(plan.clone())),
+            engine,
             now: Time::START,
             sent: Vec::new(),
             lamps: Vec::new(),

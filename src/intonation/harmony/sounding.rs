@@ -7,6 +7,9 @@ use crate::pitch::Interval;
 use crate::time::Time;
 use crate::tuning::Key;
 
+/// Over a year of nanoseconds.
+const SINCE_MAX: u64 = (1 << 55) - 1;
+
 impl Harmony {
     /// A key goes down, which at rest stands so far from equal. Its place is known after [`Harmony::solve`].
     pub fn press(&mut self, now: Time, key: Key, rest: Interval, counted: bool) {
@@ -114,16 +117,23 @@ impl Harmony {
     /// keys, held ones first, the longer the better.
     pub(super) fn core(&self, chord: PitchClasses) -> PitchClasses {
         let mut core = chord;
+        if core.count() <= CORE_MAX {
+            return core;
+        }
         let bass = self.bass(chord);
+        // All that decides in one number each, the class last: this is asked at every key of a glissando.
+        let mut strengths = [u64::MAX; 12];
+        for class in chord.iter() {
+            let place = &self.places[class as usize];
+            let stays = Some(class) == bass || Some(class) == self.chord.root;
+            let older = SINCE_MAX - place.since.nanos().min(SINCE_MAX);
+            let keys = place.counted.min(15) as u64;
+            strengths[class as usize] =
+                (stays as u64) << 63 | keys << 59 | older << 4 | class as u64;
+        }
         while core.count() > CORE_MAX {
-            let strength = |class: &u8| {
-                let place = &self.places[*class as usize];
-                let stays = Some(*class) == bass || Some(*class) == self.chord.root;
-                (stays, place.counted, std::cmp::Reverse(place.since))
-            };
-            let Some(weakest) = core.iter().min_by_key(strength) else {
-                break;
-            };
+            let weakest = strengths.iter().fold(u64::MAX, |least, s| least.min(*s)) as u8 & 15;
+            strengths[weakest as usize] = u64::MAX;
             core = core.without(weakest);
         }
         core
