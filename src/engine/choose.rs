@@ -6,8 +6,8 @@ use super::following::Class;
 use super::plan::{ChannelSet, PartId, Steal};
 use super::synth::Synth;
 use super::voices::Voices;
+use crate::pitch::Interval;
 use crate::pitch::word::Bend;
-use crate::pitch::{Interval, Pitch};
 use crate::time::Time;
 use crate::tuning::Key;
 
@@ -81,12 +81,6 @@ enum Wish {
     Along,
     UnderPedal,
     Held,
-}
-
-impl Want {
-    pub fn target(&self) -> Pitch {
-        Pitch::of_key(self.number) + self.offset
-    }
 }
 
 /// Finds the channel for a note, or `None` where nothing may give way. Always the same for the same history.
