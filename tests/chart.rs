@@ -34,6 +34,17 @@ fn data_goes_to_stdout() {
 }
 
 #[test]
+fn a_tuning_dump_is_one_message() {
+    let plain = chart(&["--tuning", "vallotti", "--format", "syx"]).stdout;
+    assert_eq!((plain.len(), plain[0], plain[407]), (408, 0xF0, 0xF7));
+    assert_eq!(plain[..6], [0xF0, 0x7E, 0x7F, 8, 1, 0]);
+    let banked = ["--format", "syx", "--bank", "2", "--program", "128"];
+    let banked = chart(&[&["--tuning", "vallotti"], &banked[..]].concat()).stdout;
+    assert_eq!(banked.len(), 409);
+    assert_eq!(banked[..7], [0xF0, 0x7E, 0x7F, 8, 4, 1, 127]);
+}
+
+#[test]
 fn mistakes_go_to_stderr_with_the_remedy() {
     for (arguments, code, said) in [
         (
@@ -49,7 +60,7 @@ fn mistakes_go_to_stderr_with_the_remedy() {
         (
             &["--tuning", "vallotti", "--format", "svg"],
             64,
-            "possible values: text, json, csv",
+            "possible values: text, json, csv, syx",
         ),
         (
             &["no-such-stage.yaml"],

@@ -1,14 +1,16 @@
 //! `trued chart`: what every key sounds.
 
-use super::{Failure, print, read_stage};
+use super::{Failure, print, print_bytes, read_stage};
 use crate::offline::chart::Chart;
 use crate::offline::chart_text::sheet;
+use crate::offline::tuning_dump::{Slot, tuning_dump};
 use crate::stage::complaint::{Complaints, Trail};
 use crate::stage::expression::reference;
 use crate::stage::node::nearest;
 use crate::stage::tunings::{Library, TuningText};
 use crate::stage::{Song, Stage};
 use crate::tuning::{Pin, TuneError};
+use std::io::IsTerminal;
 use std::path::{Path, PathBuf};
 use std::rc::Rc;
 
@@ -29,17 +31,24 @@ pub struct Args {
     /// Every tuning there is, by name
     #[arg(long, conflicts_with_all = ["stage", "tuning", "song", "pitch"])]
     list: bool,
-    /// A sheet for people, or figures for programs
+    /// A sheet for people, figures for programs, or a tuning dump for synths (into a file)
     #[arg(long, value_enum, default_value = "text")]
     format: Format,
+    /// In a tuning dump: the synth's tuning program
+    #[arg(long, value_name = "1-128", default_value = "1", value_parser = clap::value_parser!(u8).range(1..=128))]
+    program: u8,
+    /// In a tuning dump: the bank, for synths that have some
+    #[arg(long, value_name = "1-128", value_parser = clap::value_parser!(u8).range(1..=128))]
+    bank: Option<u8>,
 }
 
-/// Pictures and tuning messages are not made here yet; clap names what is.
+/// Pictures are not made here yet; clap names what is.
 #[derive(Clone, Copy, clap::ValueEnum)]
 enum Format {
     Text,
     Json,
     Csv,
+    Syx,
 }
 
 pub fn run(args: Args) -> Result<(), Failure> {
@@ -54,11 +63,24 @@ pub fn run(args: Args) -> Result<(), Failure> {
         (None, Some(name)) => of_tuning(name, args.pitch.as_deref())?,
         (None, None) => unreachable!("clap asks for one of the two"),
     };
-    print(&match args.format {
-        Format::Text => sheet(&chart),
-        Format::Json => chart.json(),
-        Format::Csv => chart.csv(),
-    })
+    match args.format {
+        Format::Text => print(&sheet(&chart)),
+        Format::Json => print(&chart.json()),
+        Format::Csv => print(&chart.csv()),
+        Format::Syx => print_dump(&chart, &args),
+    }
+}
+
+fn print_dump(chart: &Chart, args: &Args) -> Result<(), Failure> {
+    if std::io::stdout().is_terminal() {
+        let text = "a tuning dump is nothing to read; send it to a file: `trued chart ... --format syx > tuning.syx`";
+        return Err(Failure::new(Failure::USAGE, text));
+    }
+    let slot = Slot {
+        bank: args.bank.map(|bank| bank - 1),
+        program: args.program - 1,
+    };
+    print_bytes(&tuning_dump(chart, slot))
 }
 
 fn song<'s>(stage: &'s Stage, title: Option<&str>) -> Result<&'s Song, Failure> {

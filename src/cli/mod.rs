@@ -219,11 +219,12 @@ pub fn unusable(path: &Path, complaints: &[Complaint]) -> Failure {
 
 /// Data for stdout. A reader that has seen enough (`| head`) is no error.
 pub fn print(text: &str) -> Result<(), Failure> {
+    print_bytes(text.as_bytes())
+}
+
+pub fn print_bytes(bytes: &[u8]) -> Result<(), Failure> {
     let mut stdout = std::io::stdout().lock();
-    match stdout
-        .write_all(text.as_bytes())
-        .and_then(|()| stdout.flush())
-    {
+    match stdout.write_all(bytes).and_then(|()| stdout.flush()) {
         Err(error) if error.kind() != std::io::ErrorKind::BrokenPipe => Err(Failure::new(
             Failure::IO,
             format!("standard output cannot be written: {error}"),

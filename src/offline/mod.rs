@@ -22,3 +22,4 @@ pub mod receiver;
 pub mod retune;
 pub mod score_clock;
 pub mod score_file;
+pub mod tuning_dump;
