@@ -14,7 +14,13 @@ use crate::ports::{Broken, Ring, Tally};
 use crate::time::{Span, Time};
 use std::sync::Arc;
 use std::sync::mpsc::{Receiver, Sender, channel};
+use std::time::Duration;
 use tracing::warn;
+
+/// What a synth was told last, its silence above all, has left the score but need not have arrived: JACK passes it on a
+/// cycle later where its server does not wait for its clients, or where they stand in a ring. Two cycles of 2048 frames.
+/// A sequencer has it at once.
+const LAST_WORDS: Duration = Duration::from_millis(100);
 
 /// The desk's side.
 pub struct Edits {
@@ -164,13 +170,15 @@ impl Desk {
         if moved.is_nothing() {
             return false;
         }
+        let at_once = self.edits.reload.keeps_ports();
+        let last_words = if at_once { Duration::ZERO } else { LAST_WORDS };
         if !moved.renamed() {
-            self.patch.part(moved);
+            self.patch.part(moved, last_words);
             self.reconnect();
             return false;
         }
         // The main thread waits for this, unless it is about to end; then it answers nothing.
-        self.patch.part(moved);
+        self.patch.part(moved, last_words);
         let wanted = (self.rig.clone(), moved.clone());
         let _ = self.edits.wanted.send(wanted);
         let Ok(opened) = self.edits.opened.recv() else {
@@ -201,7 +209,7 @@ impl Desk {
 
 impl Patch {
     /// Disconnects the devices that want other ports than before; the rest stays as it is.
-    fn part(&mut self, moved: &Moved) {
+    fn part(&mut self, moved: &Moved, last_words: Duration) {
         let old = std::mem::take(&mut self.choice);
         let keyboards = old.keyboards.iter().zip(&self.keyboards).enumerate();
         let from_keyboards = keyboards
@@ -211,17 +219,26 @@ impl Patch {
         let to_synths = synths
             .filter(|(place, _)| !moved.synths.stays(*place))
             .filter_map(|(_, (to, own))| Some((*own, (*to)?)));
-        let ways: Vec<(Address, Address)> = from_keyboards.chain(to_synths).collect();
-        for (from, to) in ways {
-            if let Err(Broken { wrong, .. }) = self.patchbay.disconnect(from, to) {
-                warn!("a port could not be disconnected: {wrong}");
-            }
+        let from_keyboards: Vec<(Address, Address)> = from_keyboards.collect();
+        let to_synths: Vec<(Address, Address)> = to_synths.collect();
+        self.disconnect(&from_keyboards);
+        if !to_synths.is_empty() {
+            std::thread::sleep(last_words);
         }
+        self.disconnect(&to_synths);
         self.choice = Choice {
             keyboards: kept(&moved.keyboards, &old.keyboards),
             synths: kept(&moved.synths, &old.synths),
             ..old
         };
+    }
+
+    fn disconnect(&self, ways: &[(Address, Address)]) {
+        for (from, to) in ways {
+            if let Err(Broken { wrong, .. }) = self.patchbay.disconnect(*from, *to) {
+                warn!("a port could not be disconnected: {wrong}");
+            }
+        }
     }
 }
 

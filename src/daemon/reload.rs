@@ -110,6 +110,10 @@ impl Reload {
         }
     }
 
+    pub fn keeps_ports(&self) -> bool {
+        self.keeps_ports
+    }
+
     pub fn news(&self) -> Arc<Mutex<StageNews>> {
         self.news.clone()
     }
